@@ -1,0 +1,1 @@
+"""From a vetted formula and records to a model matrix."""

@@ -1,0 +1,22 @@
+"""Maximising, profile limits, tests, separation and certificates, written once above every likelihood."""
+
+from oddsmodel.inference.certificate import Certificate, certify
+from oddsmodel.inference.maximise import Fit, Problem, maximise, maximise_all
+from oddsmodel.inference.profile import ProfileLimits, profile, profile_intervals
+from oddsmodel.inference.separation import Separation, separation
+from oddsmodel.inference.tests import likelihood_ratio
+
+__all__ = [
+    "Certificate",
+    "Fit",
+    "Problem",
+    "ProfileLimits",
+    "Separation",
+    "certify",
+    "likelihood_ratio",
+    "maximise",
+    "maximise_all",
+    "profile",
+    "profile_intervals",
+    "separation",
+]

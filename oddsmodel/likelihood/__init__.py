@@ -1,0 +1,6 @@
+"""What the model says about the coefficients, for many coefficient vectors at once."""
+
+from oddsmodel.likelihood.base import Evaluation, Likelihood
+from oddsmodel.likelihood.binomial import BinomialLikelihood
+
+__all__ = ["BinomialLikelihood", "Evaluation", "Likelihood"]

@@ -1,0 +1,60 @@
+"""The contract between a likelihood and everything that maximises, profiles and tests."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal, Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, slots=True)
+class Evaluation:
+    """Values at k coefficient vectors: log_likelihood (k,), score (k, p), information (k, p, p) or None.
+
+    Constants free of the coefficients are left out. The log-likelihood may be minus infinity, never NaN.
+    """
+
+    log_likelihood: Array
+    score: Array
+    information: Array | None
+
+
+class Likelihood(Protocol):
+    """A log-likelihood of p coefficients.
+
+    curvature: whether `information` is minus the Hessian or its expectation.
+    concave: whether the log-likelihood is concave, so that any stationary point is the maximum.
+    """
+
+    curvature: Literal["Hessian", "expected"]
+    concave: bool
+
+    @property
+    def parameters(self) -> int:
+        """The number p of coefficients."""
+
+    @property
+    def rows(self) -> int:
+        """The number of rows a pass reads."""
+
+    def evaluate(self, beta: Array, *, member: NDArray[np.int64] | None = None, information: bool = True) -> Evaluation:
+        """All values at beta (k, p) in one pass; `member` (k,) names the data set of each row of beta."""
+
+    def gram(self) -> Array:
+        """X'NX with the trials N on its diagonal (p, p): four times the largest information there can be."""
+
+    def transformed(self, basis: Array) -> Likelihood:
+        """The likelihood of gamma (r,) with beta = basis gamma, basis (p, r) taken as exact."""
+
+    def thinned(self, leaves: int) -> Likelihood:
+        """The likelihood of an evenly spaced part of the rows, to start from."""
+
+    def triangle(self) -> Array:
+        """R of a QR factorisation of the rows' matrix, by columns (p, p), signs free."""
+
+    def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
+        """The score at beta (p,) computed in the widest floating point the machine has."""

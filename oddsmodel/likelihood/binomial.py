@@ -1,0 +1,203 @@
+"""The binomial likelihood with the logit link, of single records or of covariate patterns."""
+
+from __future__ import annotations
+
+from functools import cached_property
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from oddsmodel.likelihood.base import Array, Evaluation
+from oddsmodel.passes import Leaf, MemoryPasses, Passes
+
+PRODUCT_BYTES = 1 << 20
+"""Pairwise products of the columns are formed for so many bytes of rows at a time, to stay in cache."""
+
+MANY = 4
+"""From so many coefficient vectors on, pairwise products of the columns are formed once and shared."""
+
+
+class BinomialLikelihood:
+    """Log-likelihood of beta (p,) for events (n,) out of trials (n,) with logit risk X beta + offset.
+
+        l(beta) = sum_i  y_i eta_i - n_i log(1 + exp(eta_i))
+        score   = X'(y - n mu),   information = X' diag(n mu (1 - mu)) X        (McCullagh & Nelder 1989, section 4.4)
+
+    The binomial coefficients are left out, so that collapsing equal rows changes nothing. X is read as it is and
+    never copied (a C-ordered float64 array is best). trials and offset of None mean 1 and 0 for every row.
+
+    Raises ValueError where shapes disagree, a number is not finite, or events lie outside 0..trials.
+    """
+
+    curvature: Literal["Hessian", "expected"] = "Hessian"
+    concave = True
+
+    def __init__(self, X: Any, events: Any, trials: Any = None, offset: Any = None) -> None:
+        matrix = np.ascontiguousarray(X, dtype=np.float64)
+        if matrix.ndim != 2:
+            raise ValueError("X must have two axes, rows and coefficients")
+        arrays: dict[str, NDArray[Any]] = {"X": matrix}
+        for name, values in (("events", events), ("trials", trials), ("offset", offset)):
+            if values is None:
+                continue
+            vector = np.ascontiguousarray(values, dtype=np.float64)
+            if vector.shape != matrix.shape[:1]:
+                raise ValueError(f"{name} must have one number for each row of X")
+            if not np.isfinite(vector).all():
+                raise ValueError(f"{name} must be finite")
+            arrays[name] = vector
+        if not np.isfinite(matrix.sum()) and not np.isfinite(matrix).all():
+            raise ValueError("X must be finite")
+        limit = arrays.get("trials", np.float64(1.0))
+        if (arrays["events"] < 0).any() or (arrays["events"] > limit).any():
+            raise ValueError("events must lie between 0 and trials")
+        self.passes: Passes = MemoryPasses(arrays)
+        self._parameters = int(matrix.shape[1])
+
+    @classmethod
+    def over(cls, passes: Passes, parameters: int) -> BinomialLikelihood:
+        """The likelihood over rows that a pass already holds, known to be in order."""
+        likelihood = cls.__new__(cls)
+        likelihood.passes = passes
+        likelihood._parameters = parameters
+        return likelihood
+
+    @property
+    def parameters(self) -> int:
+        return self._parameters
+
+    @property
+    def rows(self) -> int:
+        return self.passes.rows
+
+    def evaluate(self, beta: Array, *, member: NDArray[np.int64] | None = None, information: bool = True) -> Evaluation:
+        if member is not None and np.any(member):
+            raise ValueError("this likelihood has one data set only, member 0")
+        points = np.atleast_2d(np.asarray(beta, dtype=np.float64))
+        kernel = _Value(information)
+        answer = self.passes.reduce([kernel], points)[0]
+        log_likelihood, score = answer[0], answer[1].T
+        lost = ~np.isfinite(log_likelihood)
+        if lost.any():
+            log_likelihood = np.where(lost, -np.inf, log_likelihood)
+            score = np.where(lost[:, None], 0.0, score)
+        curvature = None
+        if information:
+            curvature = answer[2]
+            if curvature.ndim == 2:
+                curvature = _unpack(curvature, self.parameters)
+            if lost.any():
+                curvature = np.where(lost[:, None, None], 0.0, curvature)
+        return Evaluation(log_likelihood, np.ascontiguousarray(score), curvature)
+
+    @cached_property
+    def _gram(self) -> Array:
+        return self.passes.reduce([_Gram()], None)[0][0]
+
+    def gram(self) -> Array:
+        return self._gram
+
+    def transformed(self, basis: Array) -> BinomialLikelihood:
+        if not isinstance(self.passes, MemoryPasses):
+            raise TypeError("rows that are not in memory cannot be transformed")
+        X = self.passes.arrays["X"]
+        exact = np.asarray(basis, dtype=np.longdouble)
+        moved = np.empty((X.shape[0], basis.shape[1]))
+        for start in range(0, X.shape[0], 4096):
+            moved[start : start + 4096] = X[start : start + 4096].astype(np.longdouble) @ exact
+        return BinomialLikelihood.over(MemoryPasses({**self.passes.arrays, "X": moved}), basis.shape[1])
+
+    def thinned(self, leaves: int) -> BinomialLikelihood:
+        return BinomialLikelihood.over(self.passes.thinned(leaves), self._parameters)
+
+    def triangle(self) -> Array:
+        if not isinstance(self.passes, MemoryPasses):
+            raise TypeError("rows that are not in memory cannot be factorised")
+        X = self.passes.arrays["X"]
+        size = max(4096, 4 * X.shape[1])
+        triangle = np.zeros((0, X.shape[1]))
+        for start in range(0, X.shape[0], size):
+            triangle = np.linalg.qr(np.vstack([triangle, X[start : start + size]]), mode="r")
+        return triangle
+
+    def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
+        return self.passes.reduce([_ExtendedScore()], beta)[0][0]
+
+
+class _Value:
+    """Log-likelihood, score and, where asked, information at many coefficient vectors."""
+
+    def __init__(self, information: bool) -> None:
+        self.information = information
+
+    def leaf(self, rows: Leaf, beta: Array) -> tuple[Array, ...]:
+        X, events = rows["X"], rows["events"]
+        trials, offset = rows.get("trials"), rows.get("offset")
+        with np.errstate(over="ignore", invalid="ignore", under="ignore"):
+            linear = X @ beta.T
+            if offset is not None:
+                linear += offset[:, None]
+            small = np.exp(-np.abs(linear))
+            whole = 1.0 + small
+            risk = np.where(linear >= 0.0, 1.0, small) / whole
+            normaliser = np.log1p(small)
+            normaliser += np.maximum(linear, 0.0)
+            if trials is None:
+                log_likelihood = events @ linear - normaliser.sum(axis=0)
+                residual = events[:, None] - risk
+            else:
+                log_likelihood = events @ linear - trials @ normaliser
+                residual = events[:, None] - trials[:, None] * risk
+            score = X.T @ residual
+            if not self.information:
+                return log_likelihood, score
+            weight = small / (whole * whole)
+            if trials is not None:
+                weight *= trials[:, None]
+            return log_likelihood, score, _weighted_products(X, weight)
+
+
+def _weighted_products(X: Array, weight: Array) -> Array:
+    """X' diag(w) X for each column w of weight (n, k): (k, p, p), or packed (p(p+1)/2, k) where k is large."""
+    p, k = X.shape[1], weight.shape[1]
+    if k < MANY:
+        products = np.empty((k, p, p))
+        for one in range(k):
+            products[one] = X.T @ (X * weight[:, one : one + 1])
+        return products
+    first, second = np.triu_indices(p)
+    packed = np.zeros((first.size, k))
+    step = max(64, PRODUCT_BYTES // (8 * first.size))
+    for start in range(0, X.shape[0], step):
+        block = X[start : start + step]
+        packed += (block[:, first] * block[:, second]).T @ weight[start : start + step]
+    return packed
+
+
+def _unpack(packed: Array, p: int) -> Array:
+    first, second = np.triu_indices(p)
+    full = np.empty((packed.shape[1], p, p))
+    full[:, first, second] = packed.T
+    full[:, second, first] = packed.T
+    return full
+
+
+class _Gram:
+    def leaf(self, rows: Leaf, state: None) -> tuple[Array]:
+        X, trials = rows["X"], rows.get("trials")
+        return (X.T @ X if trials is None else X.T @ (X * trials[:, None]),)
+
+
+class _ExtendedScore:
+    """The score in extended precision at one coefficient vector held in extended precision."""
+
+    def leaf(self, rows: Leaf, beta: NDArray[np.longdouble]) -> tuple[NDArray[np.longdouble]]:
+        X = rows["X"].astype(np.longdouble)
+        linear = X @ beta
+        if "offset" in rows:
+            linear += rows["offset"]
+        small = np.exp(-np.abs(linear))
+        risk = np.where(linear >= 0, np.longdouble(1), small) / (1 + small)
+        expected = risk if "trials" not in rows else rows["trials"] * risk
+        return ((rows["events"] - expected) @ X,)

@@ -1,0 +1,41 @@
+"""Wald intervals and tests of single coefficients, from an estimate and its standard error."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+from scipy.special import ndtr, ndtri
+
+
+@dataclass(frozen=True, slots=True)
+class Wald:
+    """Limits on the scale of the estimate, and the two-sided p-value of the hypothesis that it is 0."""
+
+    lower: float
+    upper: float
+    p: float
+
+
+def normal_quantile(level: float) -> float:
+    """The z with probability `level` between -z and z under the standard normal distribution."""
+    if not 0.0 < level < 1.0:
+        raise ValueError("a confidence level lies between 0 and 1")
+    return float(-ndtri((1.0 - level) / 2.0))
+
+
+def wald(estimate: float, standard_error: float, level: float = 0.95) -> Wald:
+    """Estimate ± z·standard error, and p = 2 Φ(−|estimate| / standard error) (Wald 1943).
+
+    The estimate is on the log-odds scale, as the limits then are. Raises ValueError where the estimate is not
+    finite or the standard error not positive and finite: such a coefficient has no Wald interval.
+
+    >>> limits = wald(math.log(1.832), 0.1228)
+    >>> round(math.exp(limits.lower), 2), round(math.exp(limits.upper), 2)
+    (1.44, 2.33)
+    """
+    if not math.isfinite(estimate) or not math.isfinite(standard_error) or standard_error <= 0.0:
+        raise ValueError("a Wald interval needs a finite estimate and a positive, finite standard error")
+    reach = normal_quantile(level) * standard_error
+    p = 2.0 * float(ndtr(-abs(estimate) / standard_error))
+    return Wald(lower=estimate - reach, upper=estimate + reach, p=p)

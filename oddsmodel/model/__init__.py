@@ -1,0 +1,1 @@
+"""A fit with its names, its design and the records it rests on."""

@@ -1,0 +1,72 @@
+"""Passes over arrays in memory, on all cores of the machine."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Sequence
+from concurrent.futures import ThreadPoolExecutor
+from functools import cache
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from oddsmodel.passes.base import LEAF_ROWS, Answer, Kernel, Tree
+
+TASK_HEIGHT = 4
+"""A task is a subtree of 16 leaves, whatever the number of threads."""
+
+
+@cache
+def _workers() -> ThreadPoolExecutor | None:
+    cores = len(os.sched_getaffinity(0)) if hasattr(os, "sched_getaffinity") else (os.cpu_count() or 1)
+    return ThreadPoolExecutor(cores, thread_name_prefix="oddsmodel-pass") if cores > 1 else None
+
+
+class MemoryPasses:
+    """Named arrays that share their first axis; views of them go to the kernels, never copies.
+
+    Matrix products inside a kernel run on one thread each, so that bits do not depend on the machine's cores.
+    """
+
+    def __init__(self, arrays: dict[str, NDArray[Any]]) -> None:
+        lengths = {array.shape[0] for array in arrays.values()}
+        if len(lengths) != 1:
+            raise ValueError(f"arrays of one length are needed, not of {sorted(lengths)}")
+        self.arrays = arrays
+        self.rows = lengths.pop()
+
+    def reduce(self, kernels: Sequence[Kernel], state: Any) -> list[Answer]:
+        from threadpoolctl import threadpool_limits
+
+        leaves = max(1, -(-self.rows // LEAF_ROWS))
+        task_leaves = 1 << TASK_HEIGHT
+        tasks = range(0, leaves, task_leaves)
+
+        def task(first: int) -> list[Answer]:
+            tree = Tree()
+            for leaf in range(first, min(first + task_leaves, leaves)):
+                rows = {
+                    name: array[leaf * LEAF_ROWS : (leaf + 1) * LEAF_ROWS] for name, array in self.arrays.items()
+                }
+                tree.add([kernel.leaf(rows, state) for kernel in kernels])
+            return tree.total()
+
+        with threadpool_limits(limits=1, user_api="blas"):
+            workers = _workers() if len(tasks) > 1 else None
+            tree = Tree()
+            for answers in map(task, tasks) if workers is None else workers.map(task, tasks):
+                tree.add(answers, TASK_HEIGHT)
+        return tree.total()
+
+    def thinned(self, leaves: int) -> MemoryPasses:
+        total = -(-self.rows // LEAF_ROWS)
+        if total <= leaves:
+            return self
+        chosen = np.linspace(0, total - 2, leaves).astype(int)
+        return MemoryPasses(
+            {
+                name: np.concatenate([array[leaf * LEAF_ROWS : (leaf + 1) * LEAF_ROWS] for leaf in chosen])
+                for name, array in self.arrays.items()
+            }
+        )

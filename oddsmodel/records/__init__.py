@@ -1,0 +1,1 @@
+"""From a file of records to a coded frame, and who of it is analysed."""

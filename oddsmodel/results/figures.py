@@ -1,0 +1,132 @@
+"""Figures as values: what is to be drawn, as plain numbers, before disclosure and drawing.
+
+One class a kind of figure. All sequences are tuples of plain floats, ints or text.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from typing import Literal
+
+
+@dataclass(frozen=True, slots=True)
+class EstimateMark:
+    """An estimate with its interval on the odds-ratio scale; a limit of None is one that does not exist."""
+
+    label: str
+    series: str
+    estimate: float | None
+    lower: float | None
+    upper: float | None
+    note: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class EstimatesFigure:
+    """Odds ratios with intervals on a log axis, line at 1; `series` tells crude from adjusted or models apart."""
+
+    id: str
+    title: str
+    alt: str
+    marks: tuple[EstimateMark, ...]
+    axis: str = "Odds ratio (log scale)"
+
+
+@dataclass(frozen=True, slots=True)
+class FlowFigure:
+    """Records read, left out by reason in order, analysed. A count of None is withheld."""
+
+    id: str
+    title: str
+    alt: str
+    read: int | None
+    left_out: tuple[tuple[str, int | None], ...]
+    analysed: int | None
+    events: int | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class CalibrationGroup:
+    predicted: float
+    observed: float
+    lower: float
+    upper: float
+    records: int
+    events: int
+
+
+@dataclass(frozen=True, slots=True)
+class CalibrationFigure:
+    """Observed share against predicted risk: groups, and a smooth curve with its band where there is one."""
+
+    id: str
+    title: str
+    alt: str
+    groups: tuple[CalibrationGroup, ...]
+    smooth: tuple[tuple[float, float], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class StepFigure:
+    """A receiver operating characteristic curve: points (false positive share, true positive share)."""
+
+    id: str
+    title: str
+    alt: str
+    points: tuple[tuple[float, float], ...]
+    area: float
+
+
+@dataclass(frozen=True, slots=True)
+class CurveFigure:
+    """Odds ratio against the value of a number column, relative to `reference`, log axis.
+
+    `straight` is the same relation from the model with a straight line. `density` holds (lower edge,
+    upper edge, records) of bins of the column.
+    """
+
+    id: str
+    title: str
+    alt: str
+    x_label: str
+    x: tuple[float, ...]
+    curve: tuple[float, ...]
+    lower: tuple[float, ...]
+    upper: tuple[float, ...]
+    straight: tuple[float, ...]
+    reference: float
+    density: tuple[tuple[float, float, int | None], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class HistogramFigure:
+    """Shares over the same bins for two or more groups; `counts` per series, None where withheld."""
+
+    id: str
+    title: str
+    alt: str
+    x_label: str
+    edges: tuple[float, ...]
+    series: tuple[tuple[str, tuple[int | None, ...]], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class ScatterFigure:
+    """Points of covariate patterns; `records` is each pattern's number of records (disclosure reads it)."""
+
+    id: str
+    title: str
+    alt: str
+    x_label: str
+    y_label: str
+    x: tuple[float, ...]
+    y: tuple[float, ...]
+    size: tuple[float, ...]
+    records: tuple[int, ...]
+    lines: tuple[float, ...] = field(default=())
+    kind: Literal["scatter"] = "scatter"
+
+
+Figure = (
+    EstimatesFigure | FlowFigure | CalibrationFigure | StepFigure | CurveFigure | HistogramFigure | ScatterFigure
+)

@@ -1,0 +1,7 @@
+"""Sentences of the checks floor, by code."""
+
+from __future__ import annotations
+
+from oddsmodel.wording.say import Sentence
+
+SENTENCES: dict[str, Sentence] = {}
