@@ -11,6 +11,7 @@ import numpy as np
 from scipy.linalg import LinAlgError, cho_factor, cho_solve
 
 from oddsmodel.inference.conditioning import Coordinates, Relation, coordinates
+from oddsmodel.inference.separation import separation
 from oddsmodel.likelihood.base import Array, Likelihood
 
 Status = Literal["converged", "no finite maximum", "aliased", "not converged"]
@@ -93,7 +94,7 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
     A direction v is flat when v'Iv < 1e-9 v'X'NXv. If the records are separated along v, every record moved by
     v has x'v of the sign of its outcome, so v'Iv <= max|x'v| s'v; at a decrement of 1e-16 the curvature is then
     below 1e-16 of v'X'NXv: no separated data set converges without a flat direction. A flat direction alone is
-    only a symptom; `separation` decides.
+    only a symptom; the linear program of `separation` then decides, so that clean records pay nothing.
 
     near: the fit of a larger space, whose quadratic approximation gives the starting points.
     Large data start from the maximum over an evenly spaced part of the rows.
@@ -176,16 +177,21 @@ class _Run:
         step = _solve(reduced, reduced_score)
         self.decrement = float(reduced_score @ step)
         if self.decrement <= DECREMENT:
-            self.flat = _flat(reduced, self.gram)
+            self.flat = self._separated_along(_flat(reduced, self.gram))
             if self.flat is None:
                 self.h = self.h + step
             self.done = True
             return
-        if self.steps >= 25 and (flat := _flat(reduced, self.gram)) is not None and self.decrement < 1e-8:
-            self.flat, self.done = flat, True
-            return
         self.step = step
         self.failed = self.steps >= MOST_STEPS
+
+    def _separated_along(self, flat: Array | None) -> Array | None:
+        """A direction of separation within this space, sought only where a flat direction is the symptom."""
+        if flat is None:
+            return None
+        X, events, trials = self.space.working.rows_apart()
+        verdict = separation(X if self.basis is None else X @ self.basis, events, trials)
+        return verdict.direction if verdict.separated else None
 
     def fit(self, likelihood: Likelihood) -> Fit:
         gamma = self.gamma(self.h)

@@ -58,3 +58,6 @@ class Likelihood(Protocol):
 
     def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
         """The score at beta (p,) computed in the widest floating point the machine has."""
+
+    def rows_apart(self) -> tuple[Array, Array, Array]:
+        """X (n, p), events (n,) and trials (n,), for deciding whether the rows are separated."""

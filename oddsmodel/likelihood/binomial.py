@@ -47,7 +47,9 @@ class BinomialLikelihood:
             if not np.isfinite(vector).all():
                 raise ValueError(f"{name} must be finite")
             arrays[name] = vector
-        if not np.isfinite(matrix.sum()) and not np.isfinite(matrix).all():
+        with np.errstate(invalid="ignore", over="ignore"):
+            suspect = not np.isfinite(matrix.sum())
+        if suspect and not np.isfinite(matrix).all():
             raise ValueError("X must be finite")
         limit = arrays.get("trials", np.float64(1.0))
         if (arrays["events"] < 0).any() or (arrays["events"] > limit).any():
@@ -120,6 +122,12 @@ class BinomialLikelihood:
         for start in range(0, X.shape[0], size):
             triangle = np.linalg.qr(np.vstack([triangle, X[start : start + size]]), mode="r")
         return triangle
+
+    def rows_apart(self) -> tuple[Array, Array, Array]:
+        if not isinstance(self.passes, MemoryPasses):
+            raise TypeError("separation is decided on rows in memory")
+        arrays = self.passes.arrays
+        return arrays["X"], arrays["events"], arrays.get("trials", np.ones(self.rows))
 
     def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
         return self.passes.reduce([_ExtendedScore()], beta)[0][0]

@@ -7,7 +7,6 @@ from collections.abc import Callable
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.special import logsumexp
 
 Array = NDArray[np.float64]
 
@@ -31,7 +30,7 @@ class Conditional:
 
         # log P(x+1)/P(x) at θ = 0, for x from first to last - 1.
         x = np.arange(first, last, dtype=np.float64)
-        step = np.log(exposed - x) + np.log(events - x) - np.log(x + 1.0) - np.log(unexposed - events + x + 1.0)
+        step = np.log((exposed - x) / (x + 1.0) * ((events - x) / (unexposed - events + x + 1.0)))
         above = np.cumsum(step[self._place :])
         below = np.cumsum(-step[: self._place][::-1])[::-1]
         self._log_weight = np.concatenate([below, [0.0], above])
@@ -70,10 +69,10 @@ class Conditional:
 
     def _log_tail(self, theta: float, *, upper: bool, share: float) -> float:
         weight = self._log_weight + theta * self._distance
-        whole = float(logsumexp(weight))
+        whole = _log_sum(weight)
         weight[self._place] += math.log(share)
         part = weight[self._place :] if upper else weight[: self._place + 1]
-        return float(logsumexp(part)) - whole
+        return _log_sum(part) - whole
 
     def _root(self, rising: Callable[[float], float]) -> float:
         """The zero of a function that rises from negative to positive."""
@@ -88,3 +87,9 @@ class Conditional:
             reach *= 2.0
             upper += reach
         return float(brentq(rising, lower, upper, xtol=1e-14, rtol=4.0 * np.finfo(float).eps, maxiter=500))
+
+
+def _log_sum(logs: Array) -> float:
+    """log of the sum of exponentials."""
+    largest = float(logs.max())
+    return largest + math.log(float(np.exp(logs - largest).sum()))

@@ -69,7 +69,7 @@ def two_by_two(a: int, b: int, c: int, d: int, level: float = 0.95) -> TwoByTwo:
     >>> round(table.odds_ratio, 3), round(table.woolf.lower, 2), round(table.woolf.upper, 2)
     (1.832, 1.44, 2.33)
     """
-    cells = _vetted(a, b, c, d, level)
+    cells = vetted_cells(a, b, c, d, level)
     a, b, c, d = cells
 
     # An empty margin: the other margins alone make the table, whatever the odds ratio is.
@@ -109,7 +109,8 @@ def two_by_two(a: int, b: int, c: int, d: int, level: float = 0.95) -> TwoByTwo:
     )
 
 
-def _vetted(a: int, b: int, c: int, d: int, level: float) -> tuple[int, int, int, int]:
+def vetted_cells(a: int, b: int, c: int, d: int, level: float) -> tuple[int, int, int, int]:
+    """The cells as plain whole numbers. Raises InputFault with every cell, and the level, that cannot be used."""
     faults = []
     cells = []
     for name, value in zip("abcd", (a, b, c, d), strict=True):
