@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.linalg import LinAlgError, cholesky
 
 from oddsmodel.inference.maximise import Fit, _solve
@@ -69,7 +70,7 @@ def certify(fit: Fit) -> Certificate:
     )
 
 
-def _newton_step(fit: Fit, score: Array) -> tuple[Array, float]:
+def _newton_step(fit: Fit, score: NDArray[np.longdouble]) -> tuple[Array, float]:
     """The step I^-1 s for a score in beta coordinates, and the squared decrement s'I^-1 s."""
     to_beta = fit.space.to_beta
     if to_beta is None:
@@ -89,7 +90,7 @@ def _rounding(fit: Fit, coefficients: Array) -> float:
     gram = np.diag(fit.likelihood.gram())
     eps = float(np.finfo(np.longdouble).eps)
     products = float(np.sqrt(gram) @ np.abs(coefficients))
-    return eps * (coefficients.size + 4) * (products + np.sqrt(fit.likelihood.rows))
+    return eps * (coefficients.size + 4) * (products + float(np.sqrt(fit.likelihood.rows)))
 
 
 def condition_number(fit: Fit) -> float:

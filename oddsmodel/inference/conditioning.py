@@ -108,9 +108,7 @@ def aliased_columns(triangle: Array) -> tuple[Relation, ...]:
         relations.append(
             Relation(
                 column,
-                tuple(
-                    (kept[j], _tidied(float(weights[j]))) for j in range(len(kept)) if size[j] > 1e-7 * size.max()
-                ),
+                tuple((kept[j], _tidied(float(weights[j]))) for j in range(len(kept)) if size[j] > 1e-7 * size.max()),
             )
         )
     return tuple(relations)

@@ -129,14 +129,14 @@ class _Run:
             self.basis = np.linalg.qr(moved)[0] if moved.shape[1] else moved
             self.gram = self.basis.T @ space.gram @ self.basis
         r = self.gram.shape[0]
-        self.h = np.zeros(r)
+        self.h: Array = np.zeros(r)
         if problem.start is not None:
             self.h = self._reduced(space.gamma(np.asarray(problem.start, float)) - self.origin)
         elif near is not None:
             pull = near.working_information @ (near.working - self.origin)
             reduced = near.working_information if self.basis is None else self._both(near.working_information)
             self.h = np.linalg.lstsq(reduced, self._reduced(pull), rcond=None)[0]
-        self.step = np.zeros(r)
+        self.step: Array = np.zeros(r)
         self.value = -np.inf
         self.decrement = np.inf
         self.information = np.zeros((p, p))

@@ -94,31 +94,31 @@ class _Search:
         while active.size:
             evaluation = self.fit.space.working.evaluate(self.point[active])
             going: list[int] = []
-            for k, bound in enumerate(active):
+            for k, bound in enumerate(active.tolist()):
                 value = float(evaluation.log_likelihood[k])
                 information = evaluation.information[k] if evaluation.information is not None else np.eye(0)
                 steps_left[bound] -= 1
                 if not value > self.fit.log_likelihood - 8.0 * self.quantile:
                     # far beyond the limit, where the quadratic approximation says nothing: come back
                     self.point[bound] = 0.5 * (self.point[bound] + previous[bound])
-                    (going if steps_left[bound] > 0 else single).append(int(bound))
+                    (going if steps_left[bound] > 0 else single).append(bound)
                     continue
-                step, distance = self._step(int(bound), value, evaluation.score[k], information)
+                step, distance = self._step(bound, value, evaluation.score[k], information)
                 previous[bound] = self.point[bound]
                 if step is None or steps_left[bound] <= 0:
-                    single.append(int(bound))
+                    single.append(bound)
                     continue
                 self.point[bound] = self.point[bound] + step
-                if distance <= SETTLED and self._side(int(bound)):
+                if distance <= SETTLED and self._side(bound):
                     self.theta[bound] = self.contrast[bound] @ self.point[bound]
                     self.status[bound] = "found"
                     continue
-                going.append(int(bound))
+                going.append(bound)
             if told is not None:
                 told(int(active.size) - len(going))
             active = np.array(going, dtype=int)
-        for bound in single:
-            self._search(bound)
+        for left in single:
+            self._search(left)
 
     def _side(self, bound: int) -> bool:
         return bool(self.sign[bound] * (self.contrast[bound] @ self.point[bound] - self.centre[bound]) > 0.0)

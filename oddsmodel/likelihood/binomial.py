@@ -120,7 +120,7 @@ class BinomialLikelihood:
         size = max(4096, 4 * X.shape[1])
         triangle = np.zeros((0, X.shape[1]))
         for start in range(0, X.shape[0], size):
-            triangle = np.linalg.qr(np.vstack([triangle, X[start : start + size]]), mode="r")
+            triangle = np.asarray(np.linalg.qr(np.vstack([triangle, X[start : start + size]]), mode="r"))
         return triangle
 
     def rows_apart(self) -> tuple[Array, Array, Array]:

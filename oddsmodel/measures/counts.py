@@ -9,6 +9,8 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from oddsmodel.model.fitted import FittedModel
+
 Array = NDArray[np.float64]
 
 
@@ -50,3 +52,13 @@ def level_codes(values: pd.Series, levels: Sequence[str]) -> NDArray[np.int64]:
 def whole(values: NDArray[np.float64] | NDArray[np.int64]) -> NDArray[np.int64]:
     """Sums of true frequencies as whole numbers."""
     return np.rint(values).astype(np.int64)
+
+
+def model_levels(model: FittedModel, name: str) -> tuple[str, ...]:
+    """The levels of a column in order: those of the records, or for a number taken as levels those of the model."""
+    levels = model.columns[name].levels
+    if levels:
+        return levels
+    own = [column for column in model.design.columns if column.sources == (name,) and column.kind == "level"]
+    found = dict.fromkeys(str(column.reference) for column in own)
+    return tuple(found | dict.fromkeys(str(column.level) for column in own))

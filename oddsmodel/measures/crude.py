@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
@@ -14,7 +13,7 @@ from oddsmodel.design.types import DesignColumn
 from oddsmodel.inference.maximise import maximise
 from oddsmodel.inference.profile import profile
 from oddsmodel.likelihood.binomial import BinomialLikelihood
-from oddsmodel.measures.counts import level_counts, whole
+from oddsmodel.measures.counts import level_counts, model_levels, whole
 from oddsmodel.measures.scale import exponential, limits_on_ratio_scale
 from oddsmodel.measures.wald import wald
 from oddsmodel.model.fitted import FittedModel
@@ -102,9 +101,8 @@ def _estimate(
     model: FittedModel, column: DesignColumn, records: KeptRecords, key: str, reasons: dict[str, str]
 ) -> CrudeEstimate:
     """The crude estimate on some records; where there is none, the reason goes under `key`."""
-    levels = model.columns[column.sources[0]].levels
     if column.kind == "level":
-        X, events, trials, number = _level_table(column, levels, records)
+        X, events, trials, number = _level_table(column, model_levels(model, column.sources[0]), records)
     else:
         X, events, trials = _number_table(column, records)
         number = int(whole(np.array([trials.sum()]))[0])
@@ -141,11 +139,8 @@ def _level_table(
     column: DesignColumn, levels: tuple[str, ...], records: KeptRecords
 ) -> tuple[Array, Array, Array, int]:
     """Matrix (2, 2), events (2,), trials (2,) of the reference and the level; and the records at any level."""
-    name, level, reference = column.sources[0], column.level, column.reference
-    if level is None or reference is None:
-        raise ValueError(f"the column {column.name} has no level or no reference")
-    counted = level_counts(records.frame[name], records.event, records.counts, levels or (reference, level))
-    pair = [counted.levels.index(reference), counted.levels.index(level)]
+    counted = level_counts(records.frame[column.sources[0]], records.event, records.counts, levels)
+    pair = [counted.levels.index(str(column.reference)), counted.levels.index(str(column.level))]
     X = np.array([[1.0, 0.0], [1.0, 1.0]])
     return X, counted.events[pair].astype(float), counted.records[pair].astype(float), int(counted.records.sum())
 
@@ -156,14 +151,7 @@ def _number_table(column: DesignColumn, records: KeptRecords) -> tuple[Array, Ar
     recorded = np.isfinite(values)
     weight = np.ones(int(recorded.sum())) if records.counts is None else records.counts[recorded]
     distinct, place = np.unique(values[recorded], return_inverse=True)
-    trials = np.bincount(place, weights=weight)
-    events = np.bincount(place, weights=weight * records.event[recorded])
+    trials = np.bincount(place, weights=weight).astype(np.float64)
+    events = np.bincount(place, weights=weight * records.event[recorded]).astype(np.float64)
     X = np.column_stack([np.ones(distinct.size), distinct])
     return X, events, trials
-
-
-def wald_standard_error(lower: float, upper: float, level: float) -> float:
-    """The standard error of a log odds ratio from its Wald limits on the odds-ratio scale."""
-    from oddsmodel.measures.wald import normal_quantile
-
-    return (math.log(upper) - math.log(lower)) / (2.0 * normal_quantile(level))

@@ -39,3 +39,8 @@ def wald(estimate: float, standard_error: float, level: float = 0.95) -> Wald:
     reach = normal_quantile(level) * standard_error
     p = 2.0 * float(ndtr(-abs(estimate) / standard_error))
     return Wald(lower=estimate - reach, upper=estimate + reach, p=p)
+
+
+def standard_error_from_ratios(lower: float, upper: float, level: float) -> float:
+    """The standard error of a log odds ratio, from its Wald limits on the odds-ratio scale."""
+    return (math.log(upper) - math.log(lower)) / (2.0 * normal_quantile(level))

@@ -46,9 +46,7 @@ class MemoryPasses:
         def task(first: int) -> list[Answer]:
             tree = Tree()
             for leaf in range(first, min(first + task_leaves, leaves)):
-                rows = {
-                    name: array[leaf * LEAF_ROWS : (leaf + 1) * LEAF_ROWS] for name, array in self.arrays.items()
-                }
+                rows = {name: array[leaf * LEAF_ROWS : (leaf + 1) * LEAF_ROWS] for name, array in self.arrays.items()}
                 tree.add([kernel.leaf(rows, state) for kernel in kernels])
             return tree.total()
 

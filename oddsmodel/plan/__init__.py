@@ -1,0 +1,1 @@
+"""The study plan: read, validated and written."""

@@ -127,6 +127,4 @@ class ScatterFigure:
     kind: Literal["scatter"] = "scatter"
 
 
-Figure = (
-    EstimatesFigure | FlowFigure | CalibrationFigure | StepFigure | CurveFigure | HistogramFigure | ScatterFigure
-)
+Figure = EstimatesFigure | FlowFigure | CalibrationFigure | StepFigure | CurveFigure | HistogramFigure | ScatterFigure

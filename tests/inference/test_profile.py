@@ -16,7 +16,7 @@ from oddsmodel.inference.profile_search import search_limit
 from oddsmodel.likelihood import BinomialLikelihood
 
 sys.path.insert(0, str(Path(__file__).parent))
-from exact import KINDS, calendar, exact_fit, exact_limit  # noqa: E402
+from exact import KINDS, calendar, exact_fit, exact_limit
 
 
 def budworm() -> BinomialLikelihood:
@@ -98,9 +98,7 @@ def test_sparse_tables_with_strong_effects() -> None:
         assert set(limits.lower_status) | set(limits.upper_status) == {"found"}
         for j in range(3):
             for limit in (limits.lower[j], limits.upper[j]):
-                slice_fit = maximise(
-                    fit.likelihood, basis=np.delete(np.eye(3), j, axis=1), origin=limit * np.eye(3)[j]
-                )
+                slice_fit = maximise(fit.likelihood, basis=np.delete(np.eye(3), j, axis=1), origin=limit * np.eye(3)[j])
                 drop = 2 * (fit.log_likelihood - slice_fit.log_likelihood)
                 assert drop == pytest.approx(chi2.ppf(0.95, 1), abs=1e-7)
         assert (limits.lower < fit.coefficients).all()

@@ -21,10 +21,7 @@ def separated_by_brute_force(X: np.ndarray, y: np.ndarray) -> bool:
     p = X.shape[1]
     for chosen in itertools.combinations(range(len(signed)), p - 1):
         rows = signed[list(chosen)]
-        if p == 2:
-            ray = np.array([-rows[0][1], rows[0][0]])
-        else:
-            ray = np.cross(rows[0], rows[1])
+        ray = np.array([-rows[0][1], rows[0][0]]) if p == 2 else np.cross(rows[0], rows[1])
         for v in (ray, -ray):
             if v.any() and (signed @ v >= 0).all():
                 return True

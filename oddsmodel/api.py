@@ -1,0 +1,181 @@
+"""The Python front: fit a model to a data frame, look at it, send the report."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from functools import cached_property
+from os import PathLike
+from pathlib import Path
+from typing import Any
+
+import pandas as pd
+
+from oddsmodel.disclosure import disclose
+from oddsmodel.errors import Fault, InputFault
+from oddsmodel.findings import Finding
+from oddsmodel.model.fitted import FittedModel
+from oddsmodel.plan.read import PlanFile, plan_from_values
+from oddsmodel.records.load import records_from_frame
+from oddsmodel.records.outcome import code_outcome
+from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
+from oddsmodel.study.answer import answer
+from oddsmodel.study.check import CheckedPlan
+from oddsmodel.study.prepare import prepare
+
+
+@dataclass(frozen=True)
+class Model:
+    """An estimated model with everything the report says of it. Made by `fit`."""
+
+    results: StudyResults
+    fitted: FittedModel | None
+    hide_counts_below: int
+
+    @property
+    def result(self) -> ModelResult:
+        """All numbers of the model, before small counts are hidden."""
+        return self.results.models[0]
+
+    @property
+    def findings(self) -> tuple[Finding, ...]:
+        """What the analyst should know: of the records, then of the model."""
+        return (*self.results.findings, *self.result.findings)
+
+    def odds_ratios(self) -> pd.DataFrame:
+        """A row a coefficient: odds ratio, Wald limits and p, profile limits; empty where there is no number."""
+        rows = [
+            {
+                "coefficient": one.label,
+                "role": one.role,
+                "odds_ratio": one.odds_ratio,
+                "wald_lower": one.wald.lower,
+                "wald_upper": one.wald.upper,
+                "wald_p": one.wald.p,
+                "profile_lower": one.profile.lower,
+                "profile_upper": one.profile.upper,
+            }
+            for one in self.result.coefficients
+        ]
+        return pd.DataFrame(rows).set_index("coefficient") if rows else pd.DataFrame(rows)
+
+    def compare(self) -> pd.DataFrame:
+        """A row an exposure coefficient: crude beside adjusted, on the same records and on all that have the column."""
+        rows = []
+        for one in self.result.coefficients:
+            if one.role != "exposure":
+                continue
+            crude, everyone = one.crude, one.crude_all_records
+            rows.append(
+                {
+                    "coefficient": one.label,
+                    "crude_odds_ratio": crude.odds_ratio if crude else None,
+                    "crude_lower": crude.profile.lower if crude and crude.profile else None,
+                    "crude_upper": crude.profile.upper if crude and crude.profile else None,
+                    "adjusted_odds_ratio": one.odds_ratio,
+                    "adjusted_lower": one.profile.lower,
+                    "adjusted_upper": one.profile.upper,
+                    "records": self.result.records,
+                    "crude_on_all_records": everyone.odds_ratio if everyone else None,
+                    "all_records": everyone.records if everyone else None,
+                }
+            )
+        return pd.DataFrame(rows).set_index("coefficient") if rows else pd.DataFrame(rows)
+
+    def checks(self) -> pd.DataFrame:
+        """A row a check: what it is about, its verdict and its sentence."""
+        rows = [
+            {"check": one.title, "about": one.family, "verdict": one.verdict, "found": one.line}
+            for one in self.result.checks
+        ]
+        return pd.DataFrame(rows).set_index("check") if rows else pd.DataFrame(rows)
+
+    def report(self, path: str | PathLike[str] | None = None, *, audience: str = "shareable") -> str:
+        """The HTML report; written to `path` where one is given (an internal one needs INTERNAL in its name)."""
+        from oddsmodel.export.files import write_text
+        from oddsmodel.report.document import render_report
+
+        if audience == "internal" and path is not None and "INTERNAL" not in Path(path).name:
+            raise InputFault(
+                Fault("an internal report shows small counts.", f"report path {path}", "Put INTERNAL in the file name.")
+            )
+        text = render_report(self._disclosed(audience))
+        if path is not None:
+            write_text(Path(path), text)
+        return text
+
+    def _disclosed(self, audience: str = "shareable") -> DisclosedResults:
+        return disclose(self.results, audience=audience, hide_counts_below=self.hide_counts_below)
+
+    @cached_property
+    def _summary(self) -> str:
+        from oddsmodel.report.notebook import notebook_summary
+
+        return notebook_summary(self._disclosed())
+
+    def _repr_html_(self) -> str:
+        return self._summary
+
+
+def fit(
+    formula: str,
+    frame: pd.DataFrame,
+    *,
+    exposures: Sequence[str],
+    event: Any = None,
+    design: str = "cohort",
+    title: str = "",
+    question: str = "",
+    columns: Mapping[str, Mapping[str, Any]] | None = None,
+    keep: str | None = None,
+    count: str | None = None,
+    not_measured: Sequence[str] = (),
+    level: float = 0.95,
+    hide_counts_below: int = 5,
+) -> Model:
+    """Fit one logistic model to a data frame.
+
+    formula: "outcome ~ exposure + adjustment", in the vetted formula language. event: the outcome's value that
+    means the event happened. exposures: the columns the question is about. columns: per column what a plan would
+    say in its section ({"age": {"per": 10, "units": "years"}}). The rest is as in a plan.
+
+    Raises InputFault with every fault found. A model without a finite, unique estimate has `result.status` other
+    than "converged" and the reason among its findings.
+
+    >>> import oddsmodel, pandas
+    >>> frame = pandas.DataFrame({"died": [1, 0, 1, 0, 0, 1, 0, 1], "smoker": ["yes", "no"] * 4})
+    >>> oddsmodel.fit("died ~ smoker", frame, event=1, exposures=["smoker"]).result.status
+    'converged'
+    """
+    outcome, tilde, _ = formula.partition("~")
+    if not tilde or not outcome.strip():
+        raise InputFault(
+            Fault("it names no outcome.", "formula", "Write the outcome, a tilde and the terms: “died ~ smoker + age”.")
+        )
+    file: PlanFile = plan_from_values(
+        {
+            "study": {
+                "title": title or formula,
+                "question": question,
+                "design": design,
+                "not_measured": list(not_measured),
+            },
+            "records": {
+                key: value
+                for key, value in (("source", "data frame"), ("keep", keep), ("count", count))
+                if value is not None
+            },
+            "columns": {name: dict(section) for name, section in (columns or {}).items()},
+            "outcome": {
+                "column": outcome.strip(),
+                **({} if event is None else {"event": str(event)}),
+            },
+            "models": [{"name": "main", "formula": formula, "exposures": list(exposures), "level": level}],
+            "report": {"hide_counts_below": hide_counts_below},
+        }
+    )
+    records = records_from_frame(frame, file.plan)
+    coded = code_outcome(records, file.plan.outcome)
+    checked = CheckedPlan(file, records, coded, prepare(file.plan, records, coded))
+    results, fitted = answer(checked)
+    return Model(results, fitted[0].model, hide_counts_below)

@@ -1,0 +1,37 @@
+"""Independence: what the analysis takes for granted about how the records came together."""
+
+from __future__ import annotations
+
+from oddsmodel.model.fitted import FittedModel
+from oddsmodel.results.study import CheckResult
+from oddsmodel.wording import finding, say
+
+
+def check(model: FittedModel) -> CheckResult:
+    """No test: independence cannot be seen in the records, save that an identifier does not repeat among them.
+
+    Where the plan declares no identifier, or the records are grouped, nobody has looked: the line says so. Matched
+    sets analysed as if they were single records are told as a caution (Breslow & Day 1980, chapter 7).
+    """
+    identifiers = [
+        name for name, column in model.columns.items() if column.kind == "identifier" and name in model.frame
+    ]
+    matched = model.study_design == "matched case-control"
+    distinct = model.counts is None and any(model.frame[name].is_unique for name in identifiers)
+    if matched:
+        line = say("independence-matched")
+    elif model.counts is not None:
+        line = say("independence-grouped")
+    elif distinct:
+        line = say("independence-identifier")
+    else:
+        line = say("independence-unchecked")
+    return CheckResult(
+        name="independence",
+        family="independence",
+        title=say("independence-title"),
+        verdict="caution" if matched else "fine" if distinct else "look",
+        line=line,
+        findings=(finding("caution", "independence-matched"),) if matched else (),
+        explanation=say("independence-explanation"),
+    )

@@ -1,0 +1,70 @@
+"""A smooth curve of the observed share against the fitted probability."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+Array = NDArray[np.float64]
+
+SPAN = 0.75
+"""Share of the records that a point of the curve looks at, as in Austin & Steyerberg 2014."""
+
+POINTS = 60
+TAIL = 0.01
+"""Share of the records at either end where no curve is drawn: there it would follow a handful of records."""
+
+MOST_BINS = 2000
+FEWEST_VALUES = 10
+FEWEST_RECORDS = 50
+
+
+def smooth_share(probability: Array, records: Array, events: Array) -> tuple[tuple[float, float], ...]:
+    """Points (fitted probability, smoothed observed share); none where there are under 10 values or 50 records.
+
+    probability (j,) rising, with records and events (j,) at each. Local straight lines with tricube weights over
+    the nearest three quarters of the records (Cleveland 1979, Journal of the American Statistical Association
+    74:829-836, without the robust steps, which make no sense for a binary outcome), cut off at 0 and 1. More than
+    2,000 values are first put into 2,000 bins of about equal numbers of records.
+    """
+    total = float(records.sum())
+    if probability.size < FEWEST_VALUES or total < FEWEST_RECORDS:
+        return ()
+    if probability.size > MOST_BINS:
+        before = np.cumsum(records) - records
+        bins = np.floor(MOST_BINS * (before + records / 2.0) / total).astype(np.int64)
+        bins = np.cumsum(np.diff(bins, prepend=bins[0]) > 0)
+        weighted = np.bincount(bins, weights=probability * records)
+        records, events = np.bincount(bins, weights=records), np.bincount(bins, weights=events)
+        probability = weighted / records
+    reached = np.cumsum(records)
+    first, last = np.searchsorted(reached, [TAIL * total, (1.0 - TAIL) * total])
+    low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])
+    if not high > low:
+        return ()
+    grid = np.linspace(low, high, POINTS)
+    fitted = _local_lines(grid, probability, records, events / records)
+    return tuple(zip(grid.tolist(), np.clip(fitted, 0.0, 1.0).tolist(), strict=True))
+
+
+def _local_lines(grid: Array, x: Array, weight: Array, y: Array) -> Array:
+    """The value at each grid point (g,) of a weighted straight line through the nearest records."""
+    offset = x[None, :] - grid[:, None]
+    distance = np.abs(offset)
+    order = np.argsort(distance, axis=1, kind="stable")
+    near = np.take_along_axis(distance, order, axis=1)
+    reached = np.cumsum(weight[order], axis=1)
+    edge = np.argmax(reached >= SPAN * reached[:, -1:] * (1.0 - 1e-12), axis=1)
+    width = near[np.arange(grid.size), edge][:, None]
+    # A heap of records at one value can fill the whole span: the line then reaches to everything.
+    width = np.where(width > 0.0, width, near[:, -1:]) * (1.0 + 1e-9)
+    tricube = weight * np.clip(1.0 - (distance / width) ** 3, 0.0, 1.0) ** 3
+    s0 = tricube.sum(axis=1)
+    centre = (tricube * offset).sum(axis=1) / s0
+    level = (tricube * y).sum(axis=1) / s0
+    apart = offset - centre[:, None]
+    spread = (tricube * apart**2).sum(axis=1)
+    slope = np.divide(
+        (tricube * apart * y).sum(axis=1), spread, out=np.zeros_like(s0), where=spread > 1e-12 * s0 * width[:, 0] ** 2
+    )
+    return np.asarray(level - slope * centre)

@@ -1,0 +1,192 @@
+"""Which counts to hide: the small ones, and others with them until no small one can be worked out."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, field
+
+from oddsmodel.disclosure.feasible import Bounds, Equation, components, feasible_bounds
+from oddsmodel.disclosure.system import Counts, Relation
+
+HINTED = 3
+"""With a threshold under 3 a reader who knows that a count is small knows it is 1: nothing can hide that."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Reader:
+    """What a reader knows beside the counts shown.
+
+    known: sums printed elsewhere. links: whether the equalities that may hold are seen. hinted: whether of each hidden
+    count it is known to be under the threshold or not.
+    """
+
+    relations: tuple[Relation, ...]
+    known: frozenset[int]
+    links: bool
+    hinted: bool
+
+
+@dataclass(slots=True)
+class Suppression:
+    """Chooses the counts to hide.
+
+    A count between 0 and the threshold is hidden wherever it stands; zero stays unless it would give one away. Then,
+    for two readers, the feasible bounds of every hidden count are worked out from everything shown:
+
+    1. one who knows the counts shown and how they add up must find at least two values for each hidden count, and for
+       a small one at least one value that is not under the threshold (so that it cannot be told to be small);
+    2. one who knows in addition which hidden counts are under the threshold (a finding may say so) must still find
+       at least two values for each.
+
+    Counts that only follow from others (records without the event, the difference of two models' records) are
+    protected as if they were shown. While a count fails, the smallest count beside it whose hiding helps is hidden
+    too; totals come last.
+    """
+
+    counts: Counts
+    threshold: int
+    hidden: set[int] = field(default_factory=set)
+    unprotected: set[int] = field(default_factory=set)
+    """Counts that nothing in the output could protect further: all that stands beside them is hidden."""
+    _bounds: dict[tuple[int, frozenset[int]], dict[int, Bounds]] = field(default_factory=dict)
+    _readers: tuple[_Reader, ...] = ()
+    _touching: dict[int, list[Relation]] = field(default_factory=dict)
+
+    def run(self) -> frozenset[int]:
+        """The numbers of the counts to hide."""
+        values, shown = self.counts.values, self.counts.shown
+        self._readers = tuple(self._all_readers())
+        for relation in self.counts.relations:
+            for number in relation.terms:
+                self._touching.setdefault(number, []).append(relation)
+        self._hide(number for number in range(len(values)) if shown[number] and self._small(number))
+        while (failing := self._first_failing()) is not None:
+            helper = self._helper(failing)
+            if helper is None:
+                self.unprotected.add(failing)
+            else:
+                self._hide([helper])
+        return frozenset(self.hidden)
+
+    def _all_readers(self) -> Iterable[_Reader]:
+        counts = self.counts
+        plain = tuple(relation for relation in counts.relations if not relation.link)
+        linked = frozenset(
+            number for relation in counts.relations if relation.link for number in relation.terms
+        )
+        # A sum under the threshold is a small count itself, not something to take as printed.
+        printed = frozenset(number for number in counts.totals if not self._small(number))
+        for hinted in (False, True) if self.threshold >= HINTED else (False,):
+            yield _Reader(plain, printed, False, hinted)
+            if linked:
+                yield _Reader(counts.relations, printed - linked, True, hinted)
+
+    def _small(self, number: int) -> bool:
+        return 0 < self.counts.values[number] < self.threshold and number not in self.counts.locked
+
+    def _hide(self, numbers: Iterable[int]) -> None:
+        waiting = list(numbers)
+        while waiting:
+            number = waiting.pop()
+            if number in self.hidden or number in self.counts.locked:
+                continue
+            self.hidden.add(number)
+            waiting += [other for tie in self.counts.ties if number in tie for other in tie]
+
+    def _known(self, number: int, reader: _Reader) -> bool:
+        return number in reader.known or (self.counts.shown[number] and number not in self.hidden)
+
+    def _equation(self, relation: Relation, reader: _Reader) -> Equation | None:
+        terms, constant = {}, 0
+        for number, sign in relation.terms.items():
+            if self._known(number, reader):
+                constant -= sign * self.counts.values[number]
+            else:
+                terms[number] = sign
+        return Equation(terms, constant) if terms else None
+
+    def _own_bounds(self, number: int, reader: _Reader) -> Bounds:
+        value, most = self.counts.values[number], 10 * max(self.counts.values) + 10 * self.threshold
+        if not reader.hinted:
+            return 0, most
+        if value >= self.threshold:
+            return self.threshold, most
+        return min(value, 1), self.threshold - 1
+
+    def _protected(self, number: int) -> bool:
+        return self._small(number) or number in self.hidden
+
+    def _passes(self, number: int, bounds: Bounds, reader: _Reader) -> bool:
+        lower, upper = bounds
+        return upper > lower and (reader.hinted or not self._small(number) or upper >= self.threshold)
+
+    def _component_bounds(
+        self, which: int, members: frozenset[int], equations: list[Equation]
+    ) -> dict[int, Bounds]:
+        key = (which, members)
+        if key not in self._bounds:
+            reader = self._readers[which]
+            wanted = [number for number in members if self._protected(number)]
+            self._bounds[key] = feasible_bounds(equations, lambda number: self._own_bounds(number, reader), wanted)
+        return self._bounds[key]
+
+    def _first_failing(self) -> int | None:
+        """The smallest hidden count that a reader could work out, of those that something may still protect."""
+        failing: set[int] = set()
+        for which, reader in enumerate(self._readers):
+            found = [self._equation(relation, reader) for relation in reader.relations]
+            for members, equations in components([one for one in found if one is not None]):
+                for number, bounds in self._component_bounds(which, members, equations).items():
+                    if number not in self.unprotected and not self._passes(number, bounds, reader):
+                        failing.add(number)
+        return min(failing, key=lambda number: (self.counts.values[number], number), default=None)
+
+    def _around(self, number: int, reader: _Reader) -> tuple[frozenset[int], list[Equation], set[int]]:
+        """The unknowns that have to do with a count, their equations, and the shown counts in these."""
+        members, waiting = {number}, [number]
+        equations, shown, seen = [], set(), set()
+        while waiting:
+            for relation in self._touching.get(waiting.pop(), ()):
+                if id(relation) in seen or (relation.link and not reader.links):
+                    continue
+                seen.add(id(relation))
+                equation = self._equation(relation, reader)
+                if equation is not None:
+                    equations.append(equation)
+                    waiting += [other for other in equation.terms if other not in members]
+                    members |= equation.terms.keys()
+                shown |= {other for other in relation.terms if self._known(other, reader)}
+        return frozenset(members), equations, shown
+
+    def _standing(self, number: int) -> tuple[int, int]:
+        """How many readers fail to work a count out, and how many values they are left with in all."""
+        passed = width = 0
+        for which, reader in enumerate(self._readers):
+            members, equations, _ = self._around(number, reader)
+            bounds = self._component_bounds(which, members, equations)[number]
+            passed += self._passes(number, bounds, reader)
+            width += bounds[1] - bounds[0]
+        return passed, width
+
+    def _helper(self, failing: int) -> int | None:
+        """The count to hide next: the first that protects the failing one, else the one that helps most."""
+        near: set[int] = set()
+        for reader in self._readers:
+            near |= self._around(failing, reader)[2]
+        counts = self.counts
+        choices = sorted(
+            (n for n in near if counts.shown[n] and n not in self.hidden and n not in counts.locked),
+            key=lambda number: (*counts.ranks[number], counts.values[number], number),
+        )
+        present = self._standing(failing)
+        best, found = present, None
+        for choice in choices:
+            before = set(self.hidden)
+            self._hide([choice])
+            standing = self._standing(failing)
+            self.hidden = before
+            if standing[0] == len(self._readers):
+                return choice
+            if standing > best:
+                best, found = standing, choice
+        return found

@@ -1,0 +1,72 @@
+"""Several models of one study side by side: each exposure's odds ratio under each model."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.results.study import CoefficientResult, ModelResult
+from oddsmodel.results.tables import Cell, Table, TableColumn
+from oddsmodel.wording import say
+
+Key = tuple[str, str | None, str | None, str]
+
+
+def compare_models(models: Sequence[ModelResult]) -> Table | None:
+    """A row for each exposure coefficient and model, coefficients in blocks; None with fewer than two models.
+
+    A model that was not estimated, or that has no such coefficient, has a row with its records and an empty estimate;
+    the note says why.
+    """
+    if len(models) < 2:
+        return None
+    columns = (
+        TableColumn("exposure", "Exposure"),
+        TableColumn("model", "Model"),
+        TableColumn("records", "Records", "count"),
+        TableColumn("events", "Events", "count", part_of="records"),
+        TableColumn("odds_ratio", "Odds ratio", "odds_ratio", hidden_with=("records", "events")),
+        TableColumn("interval", "Interval", "interval", hidden_with=("records", "events")),
+    )
+    rows: list[tuple[Cell, ...]] = []
+    blocks: list[int] = []
+    notes: dict[str, None] = {}
+    for block, (key, label) in enumerate(exposure_keys(models).items()):
+        for model in models:
+            coefficient = exposure_coefficients(model).get(key)
+            if coefficient is None or coefficient.odds_ratio is None:
+                rows.append((label, model.name, model.records, model.events, None, None))
+                notes[_why_missing(model, label, coefficient)] = None
+            else:
+                limits = lead_interval(coefficient.profile, coefficient.wald)
+                rows.append((label, model.name, model.records, model.events, coefficient.odds_ratio, limits))
+            blocks.append(block)
+    levels = sorted({round(100 * model.level, 1) for model in models})
+    text = " and ".join(f"{level:g}%" for level in levels)
+    if len({model.records for model in models}) > 1:
+        notes[say("compare-models-different-records")] = None
+    note = " ".join([say("compare-models-note", levels=text), *notes])
+    return Table("models", "The models side by side", columns, tuple(rows), note, tuple(blocks))
+
+
+def exposure_coefficients(model: ModelResult) -> dict[Key, CoefficientResult]:
+    """The exposure coefficients that are shown, by what tells them apart."""
+    return {
+        (one.term, one.level, one.reference, one.label): one
+        for one in model.coefficients
+        if one.role == "exposure" and one.shown
+    }
+
+
+def exposure_keys(models: Sequence[ModelResult]) -> dict[Key, str]:
+    """Every exposure coefficient that some model shows, in the order of the models, with its label."""
+    return {key: one.label for model in models for key, one in exposure_coefficients(model).items()}
+
+
+def _why_missing(model: ModelResult, label: str, coefficient: CoefficientResult | None) -> str:
+    if coefficient is not None:
+        reason = coefficient.reasons.get("odds_ratio", say("odds-ratio-out-of-range"))
+        return say("compare-models-withheld", model=model.name, label=label, reason=reason)
+    if model.status != "converged":
+        return say("compare-models-not-estimated", model=model.name, status=model.status)
+    return say("compare-models-not-in-model", model=model.name, label=label)

@@ -1,0 +1,210 @@
+"""What must hold between the keys of a plan, before any record is read."""
+
+from __future__ import annotations
+
+import unicodedata
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from oddsmodel.errors import Fault
+from oddsmodel.plan.faults import fault, key_path
+from oddsmodel.plan.later import LATER_CHECKS, LATER_DESIGN
+from oddsmodel.plan.schema import ChecksSection, ColumnSection, ModelSection, Outcome, RecordsSection, Study
+from oddsmodel.plan.translate import offer
+from oddsmodel.wording.plain import quoted
+
+LONGEST_MODEL_NAME = 120
+WITH_LEVELS = ("category", "ordered", "yes-no")
+KEYS_FOR_LEVELS = ("levels", "reference", "other_levels")
+KEYS_FOR_NUMBERS = ("per", "units")
+KEYS_FOR_COVARIATES = ("reference", "per", "units", "timing", "why", "other_levels")
+
+
+@dataclass(frozen=True)
+class Parts:
+    """The sections of a plan that are valid on their own; None or absent where one is not.
+
+    models: by their position in the plan. data: the whole plan as read, for key paths. name: its file name.
+    """
+
+    study: Study | None
+    records: RecordsSection | None
+    columns: Mapping[str, ColumnSection]
+    outcome: Outcome | None
+    models: Mapping[int, ModelSection]
+    checks: ChecksSection | None
+    data: Mapping[str, Any]
+    name: str
+
+    def at(self, *location: str | int) -> str:
+        return f"{self.name}, {key_path(location, self.data)}"
+
+
+def cross_check(parts: Parts) -> Iterator[Fault]:
+    """The faults between the keys of a plan, section by section in the order of the contract."""
+    yield from _study(parts)
+    yield from _records(parts)
+    for name, column in parts.columns.items():
+        yield from _column(parts, name, column)
+    yield from _outcome(parts)
+    yield from _models(parts)
+    yield from _checks(parts)
+
+
+def _study(parts: Parts) -> Iterator[Fault]:
+    if parts.study and parts.study.design in LATER_DESIGN:
+        yield fault(LATER_DESIGN[parts.study.design], parts.at("study", "design"))
+
+
+def _records(parts: Parts) -> Iterator[Fault]:
+    if parts.records is None:
+        return
+    if "://" in parts.records.source:
+        yield fault("later-database", parts.at("records", "source"))
+    count = parts.records.count
+    if count is not None and parts.outcome and parts.outcome.column == count:
+        yield fault("outcome-is-the-count", parts.at("records", "count"), column=quoted(count))
+
+
+def _column(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
+    if parts.outcome and name == parts.outcome.column:
+        yield from _outcome_column(parts, name, column)
+    elif parts.records and name == parts.records.count:
+        yield from _count_column(parts, name, column)
+    else:
+        yield from _kind_and_keys(parts, name, column)
+    yield from _levels(parts, name, column)
+
+
+def _kind_and_keys(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
+    """Keys that the column's kind has no use for."""
+    if column.kind is None:
+        if column.per is not None and column.levels is not None:
+            yield fault("per-beside-levels", parts.at("columns", name, "per"))
+        return
+    if column.kind not in WITH_LEVELS:
+        for key in _given(column, KEYS_FOR_LEVELS):
+            yield fault("key-for-levels", parts.at("columns", name, key), key=key, kind=column.kind)
+    if column.kind != "number":
+        for key in _given(column, KEYS_FOR_NUMBERS):
+            yield fault("key-for-numbers", parts.at("columns", name, key), key=key, kind=column.kind)
+    if column.kind == "ordered" and column.levels is None:
+        yield fault("levels-missing-ordered", parts.at("columns", name))
+    if column.kind == "yes-no" and column.levels is not None and len(set(column.levels)) > 2:
+        yield fault("levels-yes-no", parts.at("columns", name, "levels"), number=len(set(column.levels)))
+
+
+def _given(column: ColumnSection, keys: Sequence[str]) -> list[str]:
+    return [key for key in keys if key in column.model_fields_set]
+
+
+def _levels(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
+    if column.levels is None:
+        return
+    where = parts.at("columns", name, "levels")
+    is_outcome = parts.outcome is not None and name == parts.outcome.column
+    if len(column.levels) < 2 and not is_outcome:
+        yield fault("levels-too-few", where, number=len(column.levels))
+    yield from _repeated(column.levels, where, "level-repeated", "level")
+
+    unrecorded = set(_not_recorded(parts, name))
+    for level in dict.fromkeys(column.levels):
+        if level in unrecorded:
+            yield fault("level-not-recorded", where, level=quoted(level))
+    if column.reference is not None and column.levels and column.reference not in column.levels and not is_outcome:
+        yield fault(
+            "reference-not-a-level",
+            parts.at("columns", name, "reference"),
+            reference=quoted(column.reference),
+            **offer(column.reference, column.levels),
+        )
+
+
+def _repeated(words: Sequence[str], where: str, code: str, fact: str) -> Iterator[Fault]:
+    seen: set[str] = set()
+    told: set[str] = set()
+    for word in words:
+        if word in seen and word not in told:
+            told.add(word)
+            yield fault(code, where, **{fact: quoted(word)})
+        seen.add(word)
+
+
+def _outcome_column(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
+    for key in _given(column, KEYS_FOR_COVARIATES):
+        code = "outcome-reference" if key == "reference" else "outcome-key"
+        yield fault(code, parts.at("columns", name, key), column=quoted(name), key=key)
+    if column.kind in ("identifier", "date", "ordered"):
+        yield fault("outcome-kind", parts.at("columns", name, "kind"), kind=column.kind)
+    if column.levels is None:
+        return
+    if len(set(column.levels)) != 2:
+        yield fault("outcome-levels", parts.at("columns", name, "levels"), number=len(set(column.levels)))
+    event = parts.outcome.event if parts.outcome else None
+    if event is not None and event not in column.levels:
+        yield fault(
+            "event-not-a-level", parts.at("outcome", "event"), event=quoted(event), **offer(event, column.levels)
+        )
+
+
+def _count_column(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
+    for key in _given(column, (*KEYS_FOR_LEVELS, *KEYS_FOR_NUMBERS)):
+        yield fault("count-key", parts.at("columns", name, key), column=quoted(name), key=key)
+    if column.kind not in (None, "number"):
+        yield fault("count-kind", parts.at("columns", name, "kind"), kind=column.kind)
+
+
+def _outcome(parts: Parts) -> Iterator[Fault]:
+    outcome = parts.outcome
+    if outcome and outcome.event is not None and outcome.event in _not_recorded(parts, outcome.column):
+        yield fault("event-not-recorded", parts.at("outcome", "event"), event=quoted(outcome.event))
+
+
+def _not_recorded(parts: Parts, column: str) -> Sequence[str]:
+    """The texts that mean "not recorded" in a column: its own, or else those of all records."""
+    section = parts.columns.get(column)
+    if section and section.not_recorded is not None:
+        return section.not_recorded
+    return parts.records.not_recorded if parts.records else ()
+
+
+def _models(parts: Parts) -> Iterator[Fault]:
+    if parts.data.get("models") == []:
+        yield fault("no-models", parts.name)
+    yield from _model_names(parts)
+    for position, model in parts.models.items():
+        where = parts.at("models", position, "exposures")
+        if not model.exposures:
+            yield fault("no-exposures", where)
+        yield from _repeated(model.exposures, where, "exposure-repeated", "exposure")
+        for exposure in dict.fromkeys(model.exposures):
+            if parts.outcome and exposure == parts.outcome.column:
+                yield fault("exposure-is-the-outcome", where, exposure=quoted(exposure))
+            elif parts.records and exposure == parts.records.count:
+                yield fault("exposure-is-the-count", where, exposure=quoted(exposure))
+
+
+def _model_names(parts: Parts) -> Iterator[Fault]:
+    """Names must differ by more than capital letters and spaces, for they head tables and name files."""
+    first: dict[str, int] = {}
+    models = parts.data.get("models")
+    for position, model in enumerate(models if isinstance(models, list) else []):
+        name = model.get("name") if isinstance(model, dict) else None
+        if not isinstance(name, str) or not name.strip():
+            continue
+        where = parts.at("models", position, "name")
+        if len(name) > LONGEST_MODEL_NAME:
+            yield fault("model-name-too-long", where, longest=LONGEST_MODEL_NAME)
+        if any(unicodedata.category(character) in ("Cc", "Zl", "Zp") for character in name):
+            yield fault("model-name-control", where)
+        key = " ".join(name.split()).casefold()
+        if key in first:
+            yield fault("model-name-repeated", where, first=first[key] + 1, second=position + 1)
+        first.setdefault(key, position)
+
+
+def _checks(parts: Parts) -> Iterator[Fault]:
+    for position, check in enumerate(parts.checks.also if parts.checks else ()):
+        code = "check-not-yet" if check in LATER_CHECKS else "check-unknown"
+        yield fault(code, parts.at("checks", "also", position), check=quoted(check))

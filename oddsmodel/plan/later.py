@@ -1,0 +1,79 @@
+"""Keys of the plan that a later version brings: recognised, and told as "not yet" with what to do meanwhile."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+LATER_SECTIONS: dict[str, str] = {
+    "derived": "later-derived",
+    "outcomes": "later-outcomes",
+    "missing": "later-missing",
+}
+"""Section → the code of its sentence."""
+
+LATER_KEYS: dict[str, dict[str, str]] = {
+    "study": {
+        "prevalence": "later-risks",
+        "sampling_fractions": "later-risks",
+        "control_sampling": "later-control-sampling",
+        "smallest_important": "later-smallest-important",
+    },
+    "records": {
+        "query": "later-database",
+        "table": "later-database",
+        "repeats": "later-one-row",
+        "grouped_by": "later-one-row",
+        "matched_set": "later-matched",
+        "weight": "later-weight",
+        "strata": "later-survey",
+        "primary_unit": "later-survey",
+    },
+    "columns": {
+        "from": "later-from",
+        "plausible": "later-plausible",
+        "compare_with": "later-compare-with",
+    },
+    "outcome": {
+        "start": "later-dates",
+        "event_date": "later-dates",
+        "followed_to": "later-dates",
+        "within_days": "later-dates",
+        "extracted": "later-dates",
+        "event_when": "later-dates",
+    },
+    "models": {
+        "based_on": "later-based-on",
+        "add": "later-based-on",
+        "leave_out": "later-based-on",
+        "role": "later-model-notes",
+        "why": "later-model-notes",
+        "planned": "later-model-notes",
+        "trend": "later-trend",
+        "modifiers": "later-modifiers",
+        "method": "later-method",
+        "prior": "later-method",
+        "compare_with": "later-compare-with",
+        "smallest_important": "later-smallest-important",
+    },
+    "report": {
+        "hide_zero": "later-hiding",
+        "round_counts_to": "later-hiding",
+        "earlier": "later-earlier",
+        "smallest_important": "later-smallest-important",
+    },
+    "run": {"memory": "later-memory"},
+}
+"""Section → key → the code of its sentence."""
+
+LATER_DESIGN = {"matched case-control": "later-matched"}
+LATER_CHECKS = ("box_tidwell",)
+
+
+def later(location: Sequence[str | int]) -> str | None:
+    """The code of the sentence for the key at `location` (section, column or model, key), if a later version brings it."""
+    section, *rest = location
+    if not rest:
+        return LATER_SECTIONS.get(str(section))
+    if section in ("columns", "models"):
+        rest = rest[1:]
+    return LATER_KEYS.get(str(section), {}).get(str(rest[0])) if len(rest) == 1 else None

@@ -1,0 +1,76 @@
+"""What a column is, where the plan does not say it."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+
+import numpy as np
+import pandas as pd
+
+from oddsmodel.plan.schema import ColumnSection, Kind
+from oddsmodel.records.raw import RawType
+from oddsmodel.records.same_value import is_yes_no_pair, same_value_key
+
+NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,3})?")
+DATE = re.compile(
+    r"[0-9]{4}[-/.][0-9]{1,2}[-/.][0-9]{1,2}(?:[T ][0-9:.+Z-]+)?|[0-9]{1,2}[-/.][0-9]{1,2}[-/.](?:[0-9]{2}|[0-9]{4})"
+)
+SPELLED_TYPES: dict[RawType, Kind] = {
+    "number": "number",
+    "yes-no": "yes-no",
+    "date": "date",
+    "category": "category",
+    "ordered": "ordered",
+    "empty": "category",
+}
+FEWEST_FOR_IDENTIFIER = 50
+FEWEST_NUMBERS = 10
+MOSTLY = 0.9
+
+
+def kind_of(values: pd.Series, raw_type: RawType, section: ColumnSection | None) -> Kind:
+    """The kind by the plan, by the keys that the plan gives the column, or by its values (not recorded: NaN)."""
+    if section is not None and section.kind is not None:
+        return section.kind
+    if section is not None and (section.levels is not None or section.reference is not None):
+        return "ordered" if raw_type == "ordered" else "category"
+    if section is not None and (section.per is not None or section.units is not None):
+        return "number"
+    return kind_of_texts(values) if raw_type == "text" else SPELLED_TYPES[raw_type]
+
+
+def kind_of_texts(values: pd.Series) -> Kind:
+    """The kind of a column of texts.
+
+    Numbers if nine in ten records hold one and more than ten different ones are met: the others are then stray
+    texts. An identifier if no text is met twice in fifty records or more.
+    """
+    codes = np.asarray(values.cat.codes)
+    counts = np.bincount(codes[codes >= 0], minlength=len(values.cat.categories))
+    texts: Sequence[str] = [text for text, met in zip(values.cat.categories, counts, strict=True) if met]
+    counts = counts[counts > 0]
+    if not texts:
+        return "category"
+    sample = texts[:1000]
+    if sum(DATE.fullmatch(text) is not None for text in sample) >= MOSTLY * len(sample):
+        return "date"
+    if len(texts) <= 6 and is_yes_no_pair({same_value_key(text).casefold() for text in texts}):
+        return "yes-no"
+    if all(is_number(text) for text in texts):
+        return "category" if any(_leading_zero(text) for text in texts) else "number"
+    if sum(is_number(text) for text in sample) > min(FEWEST_NUMBERS, 0.5 * len(sample)):
+        numeric = np.asarray([is_number(text) for text in texts])
+        if numeric.sum() > FEWEST_NUMBERS and counts[numeric].sum() >= MOSTLY * counts.sum():
+            return "number"
+    once = len(texts) == counts.sum() and len(texts) >= FEWEST_FOR_IDENTIFIER
+    return "identifier" if once else "category"
+
+
+def is_number(text: str) -> bool:
+    return NUMBER.fullmatch(text) is not None
+
+
+def _leading_zero(text: str) -> bool:
+    digits = text.lstrip("+-")
+    return len(digits) > 1 and digits[0] == "0" and digits[1].isdigit()

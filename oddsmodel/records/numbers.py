@@ -1,0 +1,83 @@
+"""A column of numbers: float64, NaN where not recorded, and every value that is no number found by its row."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Collection
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from oddsmodel.errors import Fault
+from oddsmodel.records.faults import fault
+from oddsmodel.records.kinds import is_number
+from oddsmodel.records.same_value import same_value_key
+from oddsmodel.wording.plain import quoted
+
+ROWS_NAMED = 5
+WHOLE_BOUND = 2**53
+DECIMAL_COMMA = re.compile(r"[+-]?[0-9]+,[0-9]+")
+
+
+def code_number(
+    values: pd.Series, not_recorded: Collection[str], *, where: str, first_row: int
+) -> tuple[NDArray[np.float64], list[Fault]]:
+    """The numbers (n,) and the faults: stray texts, infinite values, whole numbers beyond 2^53.
+
+    not_recorded: keys (`same_value_key`) of the texts that mean "not recorded". Faults name their first rows.
+    """
+    if isinstance(values.dtype, pd.CategoricalDtype):
+        return _from_texts(values, not_recorded, where, first_row)
+    numbers = values.to_numpy(dtype=np.float64)
+    codes = [float(key) for key in not_recorded if is_number(key)]
+    if codes and (absent := np.isin(numbers, codes)).any():
+        numbers = np.where(absent, np.nan, numbers)
+    infinite = np.flatnonzero(np.isinf(numbers))
+    if len(infinite):
+        rows = [int(row) + first_row for row in infinite[:ROWS_NAMED]]
+        return numbers, [fault("number-infinite", where, rows=rows, total=len(infinite))]
+    return numbers, []
+
+
+def _from_texts(
+    values: pd.Series, not_recorded: Collection[str], where: str, first_row: int
+) -> tuple[NDArray[np.float64], list[Fault]]:
+    texts = list(values.cat.categories)
+    parsed = np.full(len(texts) + 1, np.nan)
+    stray = np.zeros(len(texts) + 1, dtype=bool)
+    large = np.zeros(len(texts) + 1, dtype=bool)
+    for position, text in enumerate(texts):
+        if same_value_key(text) in not_recorded:
+            continue
+        if not is_number(text):
+            stray[position] = True
+            continue
+        parsed[position] = float(text)
+        large[position] = text.lstrip("+-").isdigit() and abs(parsed[position]) > WHOLE_BOUND
+    codes = np.asarray(values.cat.codes, dtype=np.intp)
+    faults: list[Fault] = []
+    found = _met(stray, codes, texts, first_row)
+    if found:
+        rows, said, total = found
+        comma = any(DECIMAL_COMMA.fullmatch(text.strip('"')) for text in said)
+        shown = [quoted(text) for text in said]
+        faults.append(fault("number-with-text", where, rows=rows, values=shown, total=total, comma=comma))
+    for code, at in (("number-infinite", np.isinf(parsed)), ("number-too-large", large)):
+        found = _met(at, codes, texts, first_row)
+        if found:
+            faults.append(fault(code, where, rows=found[0], total=found[2]))
+    return parsed[codes], faults
+
+
+def _met(
+    wanted: NDArray[np.bool_], codes: NDArray[np.intp], texts: list[str], first_row: int
+) -> tuple[list[int], list[str], int] | None:
+    """First rows, their texts and the number of rows that hold a wanted text; None where no row does."""
+    if not wanted.any():
+        return None
+    at = np.flatnonzero(wanted[codes])
+    if len(at) == 0:
+        return None
+    named = at[:ROWS_NAMED]
+    return [int(row) + first_row for row in named], [texts[codes[row]] for row in named], len(at)

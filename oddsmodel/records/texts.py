@@ -1,0 +1,39 @@
+"""Texts at the door: dictionary codes to a clean categorical."""
+
+from __future__ import annotations
+
+import numpy as np
+import pandas as pd
+import pyarrow as pa
+import pyarrow.compute as pc
+from numpy.typing import NDArray
+
+from oddsmodel.records.raw import RawColumn, RawType
+
+NOT_SHOWN = r"[\x00-\x1f\x7f-\x{9f}\x{200b}\x{202a}-\x{202e}\x{2066}-\x{2069}\x{feff}]+"
+
+
+def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) -> RawColumn:
+    """A column of texts from its different texts and one code a row (n,), -1 for an empty cell.
+
+    Spaces around a text go; runs of control and direction-changing characters become one space (they could make
+    a text look like another one); composed and decomposed accents are one (Unicode NFC). A text of which nothing
+    remains is an empty cell.
+    """
+    texts = dictionary.cast(pa.string())
+    trimmed = pc.utf8_trim_whitespace(texts)
+    shown = pc.utf8_trim_whitespace(pc.replace_substring_regex(trimmed, NOT_SHOWN, " "))
+    clean = pc.utf8_normalize(shown, form="NFC")
+    counts = np.bincount(codes + 1, minlength=len(texts) + 1)[1:]
+    stripped = int(counts[pc.not_equal(texts, trimmed).to_numpy(zero_copy_only=False)].sum())
+    cleaned = int(counts[pc.not_equal(trimmed, shown).to_numpy(zero_copy_only=False)].sum())
+    if not clean.equals(texts) or pc.any(pc.equal(clean, "")).as_py():
+        merged = clean.dictionary_encode()
+        clean = merged.dictionary
+        remaining = pc.not_equal(clean, "").to_numpy(zero_copy_only=False)
+        position = np.where(remaining, np.cumsum(remaining) - 1, -1)
+        clean = clean.filter(pa.array(remaining))
+        codes = np.append(position[merged.indices.to_numpy()], -1)[codes]
+    categories = pd.Index(clean.to_pylist(), dtype=object)
+    values = pd.Series(pd.Categorical.from_codes(codes, categories=categories))
+    return RawColumn(values, kind, stripped=stripped, cleaned=cleaned)

@@ -1,0 +1,35 @@
+"""Figures as inline SVG: one module a kind of figure."""
+
+from __future__ import annotations
+
+from oddsmodel.report.figures import calibration, curve, estimates, flow, histogram, roc, scatter
+from oddsmodel.report.figures.canvas import Sheet, drawing_settings
+from oddsmodel.report.figures.inline import inline_svg
+from oddsmodel.results import figures as values
+
+__all__ = ["svg"]
+
+
+def svg(figure: values.Figure, prefix: str) -> str:
+    """The figure as an inline SVG element whose ids all begin with `prefix`."""
+    with drawing_settings():
+        source = _sheet(figure).source()
+    return inline_svg(source, prefix=prefix, title=figure.title, alt=figure.alt)
+
+
+def _sheet(figure: values.Figure) -> Sheet:
+    match figure:
+        case values.EstimatesFigure():
+            return estimates.draw(figure)
+        case values.FlowFigure():
+            return flow.draw(figure)
+        case values.CalibrationFigure():
+            return calibration.draw(figure)
+        case values.StepFigure():
+            return roc.draw(figure)
+        case values.CurveFigure():
+            return curve.draw(figure)
+        case values.HistogramFigure():
+            return histogram.draw(figure)
+        case values.ScatterFigure():
+            return scatter.draw(figure)

@@ -1,0 +1,168 @@
+"""Odds ratios with their intervals: one row an estimate, a log axis, the line at 1, the numbers at the right."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from itertools import groupby
+
+from oddsmodel.report.figures.canvas import (
+    FIRST,
+    INK,
+    LINE,
+    MARKERS,
+    MUTED,
+    PAPER,
+    RULE,
+    SERIES,
+    SMALL,
+    TEXT,
+    WIDTH,
+    Sheet,
+)
+from oddsmodel.report.figures.lettering import fold, width_of
+from oddsmodel.report.figures.scales import ratio_label, ratio_range, ratio_ticks
+from oddsmodel.results.figures import EstimateMark, EstimatesFigure
+from oddsmodel.wording import numbers, say
+
+_NUMBERS_WIDTH = 138.0
+_NAMES_WIDTH = 96.0
+_GAP = 8.0
+_TOP = 6.0
+CRUDE = "crude"
+"""The series that is drawn in the background colour, wherever it stands."""
+
+
+@dataclass(frozen=True, slots=True)
+class _Row:
+    mark: EstimateMark
+    name: tuple[str, ...]
+    numbers: tuple[str, ...]
+    note: tuple[str, ...]
+
+    @property
+    def height(self) -> float:
+        return 24.0 + LINE * (max(len(self.name), len(self.numbers), 1) - 1) + 15.0 * len(self.note)
+
+
+@dataclass(frozen=True, slots=True)
+class _Axis:
+    low: float
+    high: float
+    left: float
+    right: float
+
+    def at(self, value: float) -> float:
+        share = math.log(value / self.low) / math.log(self.high / self.low)
+        return self.left + share * (self.right - self.left)
+
+
+def draw(figure: EstimatesFigure) -> Sheet:
+    names = list(dict.fromkeys(mark.series for mark in figure.marks))
+    drawn_as = {name: place for place, name in enumerate(sorted(names, key=lambda name: name == CRUDE))}
+    several = len(names) > 1
+    widest = max((width_of(name, SMALL) for name in names), default=0.0)
+    left = min(widest, _NAMES_WIDTH) + 12.0 if several else 6.0
+    axis = _axis(figure.marks, left, WIDTH - _NUMBERS_WIDTH - 6.0)
+    blocks = [
+        (fold(label, TEXT, WIDTH), [_row(mark, several) for mark in marks])
+        for label, marks in groupby(figure.marks, key=lambda mark: mark.label)
+    ]
+    height = _TOP + sum(LINE * len(label) + sum(row.height for row in rows) + _GAP for label, rows in blocks)
+
+    sheet = Sheet(height + 58.0)
+    _grid(sheet, axis, height, figure.axis)
+    top = _TOP
+    for label, rows in blocks:
+        for line in label:
+            sheet.text(0, top + 12, line, weight="bold")
+            top += LINE
+        for row in rows:
+            _estimate(sheet, row, axis, top, drawn_as[row.mark.series])
+            top += row.height
+        top += _GAP
+    return sheet
+
+
+def _row(mark: EstimateMark, several: bool) -> _Row:
+    if mark.estimate is None:
+        words = [say("figure-no-estimate")]
+    else:
+        ratio = numbers.ratio(mark.estimate)
+        room = _NUMBERS_WIDTH - 8.0
+        interval = numbers.interval(mark.lower, mark.upper)
+        beside = room - width_of(ratio, SMALL) - 8.0
+        folded = fold(interval, SMALL, beside)
+        words = [ratio, *(folded if len(folded) == 1 else fold(interval, SMALL, room))]
+        words = [f"{words[0]}\u2003{words[1]}"] if len(folded) == 1 else words
+    return _Row(
+        mark=mark,
+        name=tuple(fold(mark.series, SMALL, _NAMES_WIDTH)) if several else (),
+        numbers=tuple(words),
+        note=tuple(fold(mark.note, SMALL, WIDTH - 12.0)) if mark.note else (),
+    )
+
+
+def _axis(marks: tuple[EstimateMark, ...], left: float, right: float) -> _Axis:
+    low, high = ratio_range(
+        (mark.estimate for mark in marks if mark.estimate is not None),
+        (limit for mark in marks for limit in (mark.lower, mark.upper) if limit is not None),
+    )
+    return _Axis(low, high, left, right)
+
+
+def _grid(sheet: Sheet, axis: _Axis, bottom: float, title: str) -> None:
+    one = axis.at(1.0)
+    for tick in ratio_ticks(axis.low, axis.high, axis.right - axis.left):
+        x = axis.at(tick)
+        sheet.line([x, x], [_TOP, bottom], RULE, linewidth=0.8, zorder=0)
+        sheet.text(x, bottom + 15, ratio_label(tick), size=SMALL, colour=MUTED, ha="center")
+    sheet.line([one, one], [0, bottom + 2], MUTED, linewidth=1.4, zorder=1)
+    if one - axis.left > 78:
+        sheet.text(one - 8, bottom + 33, say("figure-lower-odds"), size=SMALL, colour=MUTED, ha="right")
+    if axis.right - one > 50:
+        sheet.text(one + 8, bottom + 33, say("figure-higher-odds"), size=SMALL, colour=MUTED)
+    sheet.text(axis.left, bottom + 52, title, size=SMALL, colour=MUTED)
+
+
+def _estimate(sheet: Sheet, row: _Row, axis: _Axis, top: float, series: int) -> None:
+    middle = top + 11.0
+    mark = row.mark
+    colour = SERIES[series % len(SERIES)]
+    for number, words in enumerate(row.name):
+        sheet.text(0, middle + 4 + LINE * number, words, size=SMALL, colour=MUTED)
+    x = axis.right + 14.0
+    for number, words in enumerate(row.numbers):
+        sheet.text(x, middle + 4 + LINE * number, words, size=SMALL, colour=INK if mark.estimate else MUTED)
+    if mark.estimate is not None:
+        _interval(sheet, mark, axis, middle, colour)
+        hollow = series % len(SERIES) != 0
+        sheet.page.plot(
+            [axis.at(mark.estimate)],
+            [middle],
+            marker=MARKERS[series % len(MARKERS)],
+            markersize=8.0 if series == 0 else 7.0,
+            markerfacecolor=PAPER if hollow else FIRST,
+            markeredgecolor=colour,
+            markeredgewidth=1.8,
+            linestyle="",
+            zorder=4,
+        )
+    bottom = top + row.height - 15.0 * len(row.note)
+    for number, words in enumerate(row.note):
+        sheet.text(axis.left, bottom + 8 + 15.0 * number, words, size=SMALL, colour=MUTED)
+
+
+def _interval(sheet: Sheet, mark: EstimateMark, axis: _Axis, middle: float, colour: str) -> None:
+    """The interval's bar; an arrow where it goes on past the axis or has no limit."""
+    beyond_left = mark.lower is None or mark.lower < axis.low
+    beyond_right = mark.upper is None or mark.upper > axis.high
+    start = axis.left if beyond_left else axis.at(mark.lower or axis.low)
+    stop = axis.right if beyond_right else axis.at(mark.upper or axis.high)
+    sheet.line([start, stop], [middle, middle], colour, linewidth=2.2, zorder=3, solid_capstyle="butt")
+    for end, beyond, away in ((start, beyond_left, -1.0), (stop, beyond_right, 1.0)):
+        if beyond:
+            tip = [end - 6.0 * away, end, end - 6.0 * away]
+            sheet.line(tip, [middle - 4.5, middle, middle + 4.5], colour, linewidth=2.0, zorder=3)
+        else:
+            sheet.line([end, end], [middle - 4.0, middle + 4.0], colour, linewidth=1.8, zorder=3)

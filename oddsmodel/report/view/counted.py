@@ -1,0 +1,30 @@
+"""Who was counted, and who they were."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from oddsmodel.report.view.sheet import FigureView, Sheets
+from oddsmodel.report.view.tables import TableView
+from oddsmodel.results.figures import FlowFigure
+from oddsmodel.results.study import ModelResult, StudyResults
+
+
+@dataclass(frozen=True, slots=True)
+class CountedView:
+    flow: FigureView | None
+    notes: tuple[str, ...]
+
+
+def counted(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> CountedView:
+    """The flow of the model that answers, and what the study noted on its records."""
+    figures = lead.figures if lead is not None else ()
+    flow = next((figure for figure in figures if isinstance(figure, FlowFigure)), None)
+    return CountedView(
+        flow=sheets.figure(flow) if flow is not None else None,
+        notes=tuple(dict.fromkeys([*(one.message for one in study.findings if one.severity == "note"), *study.notes])),
+    )
+
+
+def characteristics(study: StudyResults, sheets: Sheets) -> TableView | None:
+    return sheets.table(study.characteristics) if study.characteristics is not None else None

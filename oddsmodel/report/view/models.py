@@ -1,0 +1,173 @@
+"""The estimates of each model, and the models side by side."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from oddsmodel.findings import Finding
+from oddsmodel.report.view.checks import ChecksView, checks
+from oddsmodel.report.view.lead import exposures_shown, has_profile, is_estimated
+from oddsmodel.report.view.sheet import FigureView, Sheets
+from oddsmodel.report.view.tables import TableView
+from oddsmodel.results.figures import EstimatesFigure, FlowFigure
+from oddsmodel.results.study import CoefficientResult, ModelResult, StudyResults
+from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
+from oddsmodel.wording import say
+
+CRUDE_TABLES = ("levels", "crude_to_adjusted")
+
+
+@dataclass(frozen=True, slots=True)
+class EstimatesView:
+    """The exposures' table up front; adjustment columns and whole-term tests folded."""
+
+    exposures: TableView | None
+    lead_interval: str
+    adjustment: TableView | None
+    terms: TableView | None
+    further: tuple[TableView, ...]
+    figures: tuple[FigureView, ...]
+    reasons: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class CrudeView:
+    by_level: TableView | None
+    change: TableView | None
+    notes: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class OtherModelView:
+    """A model beside the one that answers, or one that could not be estimated (`estimates` None)."""
+
+    id: str
+    name: str
+    differs: str
+    why: str
+    added: str
+    formula: str
+    estimates: EstimatesView | None
+    picture: FigureView | None
+    checks: ChecksView | None
+    findings: tuple[Finding, ...]
+    status: str
+
+
+@dataclass(frozen=True, slots=True)
+class ComparisonView:
+    table: TableView | None
+    figure: FigureView | None
+
+
+def crude(model: ModelResult, sheets: Sheets) -> CrudeView:
+    by_id = {table.id: table for table in model.tables}
+    levels, change = (by_id.get(name) for name in CRUDE_TABLES)
+    notes = tuple(one.message for one in model.findings if one.code in ("noncollapsibility", "adjustment-in-a-trial"))
+    return CrudeView(
+        by_level=sheets.table(levels) if levels is not None else None,
+        change=sheets.table(change) if change is not None else None,
+        notes=notes or ((say("same-records-caution"),) if model.adjustment else ()),
+    )
+
+
+def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
+    shown = exposures_shown(model)
+    adjustment = tuple(one for one in model.coefficients if one.role == "adjustment" and one.shown)
+    figures = [one for one in model.figures if not isinstance(one, EstimatesFigure | FlowFigure)]
+    return EstimatesView(
+        exposures=sheets.table(_coefficients(model, shown, "exposures")) if shown else None,
+        lead_interval=say("lead-profile" if has_profile(model) else "lead-wald"),
+        adjustment=sheets.table(_coefficients(model, adjustment, "adjustment")) if adjustment else None,
+        terms=sheets.table(_terms(model)) if model.terms else None,
+        further=sheets.tables(table for table in model.tables if table.id not in CRUDE_TABLES),
+        figures=sheets.figures(figures),
+        reasons=tuple(
+            say("no-value-reason", label=one.label, reason=reason)
+            for one in shown
+            for key, reason in one.reasons.items()
+            if not key.startswith("crude")
+        ),
+    )
+
+
+def _coefficients(model: ModelResult, coefficients: tuple[CoefficientResult, ...], id_: str) -> Table:
+    percent = say("level", level=model.level)
+    profile = has_profile(model)
+    columns = [
+        TableColumn("label", say("column-contrast" if id_ == "exposures" else "column-adjustment-contrast")),
+        TableColumn("odds_ratio", say("column-odds-ratio"), "odds_ratio"),
+        *([TableColumn("profile", say("column-profile", level=percent), "interval")] if profile else []),
+        TableColumn("wald", say("column-wald", level=percent), "interval"),
+        TableColumn("p", say("column-p"), "p"),
+    ]
+    rows: list[tuple[Cell, ...]] = []
+    for one in coefficients:
+        missing = one.odds_ratio is None
+        intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
+        intervals.append(Interval(one.wald.lower, one.wald.upper))
+        intervals = [None] * len(intervals) if missing else intervals
+        rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
+    return Table(id_, say(f"{id_}-table"), tuple(columns), tuple(rows))
+
+
+def _terms(model: ModelResult) -> Table:
+    columns = (
+        TableColumn("term", say("column-term")),
+        TableColumn("df", say("column-df"), "count"),
+        TableColumn("likelihood_ratio", say("column-likelihood-ratio"), "number"),
+        TableColumn("p", say("column-term-p"), "p"),
+    )
+    rows: list[tuple[Cell, ...]] = []
+    reasons: dict[str, None] = {}
+    for term in model.terms:
+        name = say(term.term) if term.term in ("all exposure columns", "whole model") else term.term
+        rows.append((name, term.df, term.likelihood_ratio, term.p))
+        if term.reason:
+            reasons[say("no-value-reason", label=name, reason=term.reason)] = None
+    return Table("terms", say("terms-table"), columns, tuple(rows), " ".join([say("terms-note"), *reasons]))
+
+
+def other_models(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> tuple[OtherModelView, ...]:
+    """The estimated models beside the one that answers."""
+    return tuple(
+        _other(model, place, sheets)
+        for place, model in enumerate(study.models)
+        if model is not lead and is_estimated(model)
+    )
+
+
+def not_estimated(study: StudyResults, sheets: Sheets) -> tuple[OtherModelView, ...]:
+    """The models that could not be estimated, in words."""
+    return tuple(
+        _other(model, place, sheets) for place, model in enumerate(study.models) if not is_estimated(model)
+    )
+
+
+def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
+    estimated = is_estimated(model)
+    picture = next((figure for figure in model.figures if isinstance(figure, EstimatesFigure)), None)
+    return OtherModelView(
+        id=f"model-{place + 1}",
+        name=model.name,
+        differs=say(
+            "model-differs", adjustment=list(model.adjustment_labels), records=model.records, events=model.events
+        ),
+        why=say("model-why", why=model.why) if model.why else "",
+        added=say("added-by-program") if model.added_by_program else "",
+        formula=model.formula,
+        picture=sheets.figure(picture) if estimated and picture is not None and picture.marks else None,
+        estimates=estimates(model, sheets) if estimated else None,
+        checks=checks(model, sheets) if estimated else None,
+        findings=model.findings,
+        status=say("not-estimated", status=model.status),
+    )
+
+
+def comparison(study: StudyResults, sheets: Sheets) -> ComparisonView | None:
+    if study.comparison is None and study.comparison_figure is None:
+        return None
+    return ComparisonView(
+        figure=sheets.figure(study.comparison_figure) if study.comparison_figure is not None else None,
+        table=sheets.table(study.comparison) if study.comparison is not None else None,
+    )

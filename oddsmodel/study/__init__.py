@@ -1,0 +1,1 @@
+"""Runs a plan from records to results; the one place that strings the parts together."""

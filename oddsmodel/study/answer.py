@@ -1,0 +1,117 @@
+"""Fit every model of a checked plan and gather the study's results."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from oddsmodel.findings import Finding
+from oddsmodel.measures.characteristics import study_characteristics
+from oddsmodel.measures.compare_models import compare_models, models_figure
+from oddsmodel.measures.crude import KeptRecords
+from oddsmodel.model.fitted import FittedModel
+from oddsmodel.progress import Progress, Silent
+from oddsmodel.records.accounting import account
+from oddsmodel.results.study import AdjustmentColumn, ModelResult, RecordsResult, StudyResults
+from oddsmodel.study.check import CheckedPlan
+from oddsmodel.study.estimate import estimate
+from oddsmodel.study.fitting import Fitted, fit_model
+from oddsmodel.study.prepare import Prepared, on_records_of
+from oddsmodel.study.provenance import provenance
+from oddsmodel.wording import finding
+from oddsmodel.wording.numbers import ratio
+
+
+def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[StudyResults, tuple[Fitted, ...]]:
+    """The results of the whole study, internal until disclosure has seen them, and the fits they rest on."""
+    progress = progress or Silent()
+    plan, records, models = checked.file.plan, checked.records, checked.models
+    progress.stage("fitting", len(models))
+    fitted = []
+    for prepared in models:
+        fitted.append(fit_model(prepared, plan, records))
+        progress.advance()
+    results = []
+    for prepared, fit in zip(models, fitted, strict=True):
+        kept = _kept(checked, prepared)
+        results.append(estimate(prepared, fit, plan, records, kept, progress))
+    differing = _records_differ(checked, tuple(fitted), tuple(results))
+    main = results[0]
+    used = dict.fromkeys(column for prepared in models for column in (*prepared.exposures, *prepared.adjustment))
+    outcome = records.columns[plan.outcome.column]
+    comparable = plan.study.design not in ("case-control", "matched case-control")
+    share = main.events / main.records if comparable and main.records and main.events is not None else None
+    study = StudyResults(
+        title=plan.study.title,
+        question=plan.study.question,
+        design=plan.study.design,
+        aim=plan.study.aim,
+        audience=plan.report.audience,
+        outcome=plan.outcome.column,
+        outcome_label=plan.outcome.label or outcome.label,
+        event=checked.outcome.event_label,
+        event_share=share,
+        not_measured=plan.study.not_measured,
+        columns=tuple(
+            AdjustmentColumn(name, records.columns[name].label, records.columns[name].timing, records.columns[name].why)
+            for name in used
+        ),
+        records=RecordsResult(
+            source=records.source, sha256=records.sha256, read=records.read, excluded=main.flow.left_out
+        ),
+        models=tuple(results),
+        characteristics=study_characteristics(models[0], checked),
+        findings=(*checked.records.findings, *differing),
+        provenance=provenance(checked.file),
+        comparison=compare_models(results),
+        comparison_figure=models_figure(results),
+    )
+    return study, tuple(fitted)
+
+
+def _kept(checked: CheckedPlan, prepared: Prepared) -> KeptRecords:
+    """Records that belong to the model's study population and have the outcome, complete or not."""
+    plan, records = checked.file.plan, checked.records
+    keep = [condition for condition in (plan.records.keep, prepared.section.keep) if condition is not None]
+    rows: NDArray[np.bool_] = account(records, checked.outcome, keep=keep, exposures=(), adjustment=()).included
+    counts = None if records.counts is None else np.asarray(records.counts, dtype=np.float64)[rows]
+    return KeptRecords(records.frame.loc[rows].reset_index(drop=True), checked.outcome.event[rows], counts)
+
+
+def _records_differ(
+    checked: CheckedPlan, fitted: tuple[Fitted, ...], results: tuple[ModelResult, ...]
+) -> tuple[Finding, ...]:
+    """For a model on its own records: what its exposure's odds ratio is on the records the others share."""
+    sharing = [prepared for prepared in checked.models if prepared.section.same_records]
+    found: list[Finding] = []
+    for prepared, fit, result in zip(checked.models, fitted, results, strict=True):
+        if prepared.section.same_records or not sharing or fit.model is None:
+            continue
+        again = on_records_of(prepared, sharing[0], checked.records)
+        other = fit_model(again, checked.file.plan, checked.records).model if again is not None else None
+        if other is None or other.records == fit.model.records:
+            continue
+        found.extend(_difference(result, fit.model, other))
+    return tuple(found)
+
+
+def _difference(result: ModelResult, own: FittedModel, shared: FittedModel) -> list[Finding]:
+    places = {column.name: position for position, column in enumerate(shared.design.columns)}
+    told = []
+    for position, column in enumerate(own.design.columns):
+        if column.role == "exposure" and column.shown and column.name in places:
+            values = [
+                float(np.exp(model.fit.coefficients[place] * column.per))
+                for model, place in ((own, position), (shared, places[column.name]))
+            ]
+            told.append(
+                finding(
+                    "note",
+                    "records-differ",
+                    model=result.name,
+                    label=column.label,
+                    own=ratio(values[0]),
+                    shared=ratio(values[1]),
+                )
+            )
+    return told

@@ -1,0 +1,136 @@
+"""Sentences that answer the question: direction, size, interval, and what the records are compatible with."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from oddsmodel.wording.numbers import count, interval, listed, plural, ratio
+from oddsmodel.wording.say import Sentence
+
+YES = frozenset({"yes", "y", "true", "1", "event", "case"})
+CASE_CONTROL = ("case-control", "matched case-control")
+WIDE = 3.0
+NARROW = 1.25
+
+
+def outcome_words(label: str, event: str) -> str:
+    """The outcome as it stands in a sentence; its value is told unless it only says "yes"."""
+    return f"“{label}”" if event.strip().lower() in YES or event == label else f"“{label}: {event}”"
+
+
+def _as_change(value: float) -> str:
+    """An odds ratio as a change of the odds: "13% lower", "52% higher", "2.40 times as high"."""
+    percent = round(100 * (value - 1.0))
+    if value >= 2.0:
+        return f"{ratio(value)} times as high"
+    if percent == 0:
+        return "unchanged"
+    if value < 0.005:
+        return f"lower by a factor of {count(round(1 / value))}" if value > 1e-6 else "almost nothing"
+    return f"{abs(percent)}% {'higher' if percent > 0 else 'lower'}"
+
+
+def _direction(value: float) -> str:
+    if ratio(value) == "1.00":
+        return "about the same"
+    return "higher" if value > 1.0 else "lower"
+
+
+def _who(facts: Mapping[str, Any]) -> str:
+    """Whose odds, of what, compared with whom: the beginning of the sentence, by design."""
+    outcome, design, stepwise = facts["outcome"], facts["design"], facts["reference"] is None
+    if design in CASE_CONTROL and not stepwise:
+        return f"the odds of “{facts['level']}” rather than “{facts['reference']}” among cases were"
+    if design in CASE_CONTROL:
+        return f"the odds of being a case ({outcome}) were"
+    if design == "cross-sectional":
+        return f"the odds of {outcome} at the time of recording were"
+    if design == "trial":
+        return f"the odds of {outcome} after allocation were"
+    return f"the odds of {outcome} were"
+
+
+def _compared(facts: Mapping[str, Any]) -> str:
+    if facts["reference"] is None:
+        return "for each such step"
+    return "those among controls" if facts["design"] in CASE_CONTROL else f"those with “{facts['reference']}”"
+
+
+def _answer(facts: Mapping[str, Any]) -> str:
+    value = facts["odds_ratio"]
+    limits = f"{facts['percent']} interval {interval(facts['lower'], facts['upper'])}"
+    adjusted = "" if facts["adjusted"] else ", not adjusted"
+    start = _who(facts)
+    start = start[0].upper() + start[1:]
+    direction = _direction(value)
+    if direction == "about the same":
+        compared = "for each such step" if facts["reference"] is None else f"as {_compared(facts)}"
+        return f"{start} about the same {compared}: odds ratio {ratio(value)} ({limits}{adjusted})."
+    times = f"{ratio(value)} times {_compared(facts)}"
+    if facts["reference"] is None:
+        times = f"{ratio(value)} times as high {_compared(facts)}"
+    return f"{start} {direction}: {times} ({limits}{adjusted})."
+
+
+def _compatible(facts: Mapping[str, Any]) -> str:
+    lower, upper = facts["lower"], facts["upper"]
+    if lower is None and upper is None:
+        return "No limits can be given, so the records leave the size open."
+    if upper is None:
+        return f"The records are compatible with odds ratios from {ratio(lower)} upwards; they set no upper limit."
+    if lower is None:
+        return f"The records are compatible with odds ratios up to {ratio(upper)}; they set no lower limit."
+    span = f"from {_as_change(lower)} to {_as_change(upper)}"
+    if lower <= 1.0 <= upper:
+        if upper / lower <= NARROW:
+            return f"The odds that the records are compatible with lie close together, {span}; the direction is open."
+        words = f"The records are compatible with odds {span}: they leave the direction open."
+        if upper / lower > WIDE:
+            words += " The interval is wide; it is no evidence that the odds are alike."
+        return words
+    words = f"The records are compatible with odds {span}"
+    return f"{words}; the interval is wide, so the size is uncertain." if upper / lower > WIDE else f"{words}."
+
+
+def _basis(facts: Mapping[str, Any]) -> str:
+    words = f"Adjusted for {listed(facts['adjustment'])}" if facts["adjustment"] else "Not adjusted for anything"
+    if facts["mutually"]:
+        words += "; the exposures are mutually adjusted, each for the others"
+    if facts["records"] is not None:
+        words += f". {plural(facts['records'], 'record')}"
+        if facts["events"] is not None:
+            many = "cases" if facts["design"] in CASE_CONTROL else "with the event"
+            words += f", {count(facts['events'])} {many}"
+    return f"{words}."
+
+
+def _several_columns(facts: Mapping[str, Any]) -> str:
+    words = (
+        f"{facts['labels']} enters the model through several columns that have no odds ratio of their own; "
+        "its shape is in the figures"
+    )
+    return f"{words}. The likelihood-ratio test of all its columns together gives p = {facts['p']}." if facts["p"] else (
+        f"{words}."
+    )
+
+
+SENTENCES: dict[str, Sentence] = {
+    "answer": _answer,
+    "compatible": _compatible,
+    "answer-basis": _basis,
+    "answer-no-estimate": "No odds ratio can be shown: {reason}",
+    "answer-several-columns": _several_columns,
+    "answer-not-estimated": (
+        "The model that was to answer this question, “{name}”, could not be estimated. No number stands in its place; "
+        "what stood in the way is told below."
+    ),
+    "answer-no-model": "No model was estimated, so the question is not answered here.",
+    "answer-more": "The other contrasts, {number} in all, are in the picture and among the estimates.",
+    "answer-case-control": (
+        "Cases and controls were sampled apart, so this report says nothing of how common {outcome} is."
+    ),
+    "answer-no-reason": "it was withheld.",
+    "crude-beside": "Crude, on the same records: {crude}.",
+    "interval-of": lambda facts: f"{facts['percent']} interval {interval(facts['lower'], facts['upper'])}",
+}
