@@ -43,7 +43,7 @@ HEADING = (
 
 
 def logistic(log_odds: np.ndarray) -> np.ndarray:
-    return 1.0 / (1.0 + np.exp(-log_odds))
+    return np.asarray(1.0 / (1.0 + np.exp(-log_odds)))
 
 
 def people(rng: np.random.Generator) -> dict[str, np.ndarray]:

@@ -93,7 +93,7 @@ def inflation_by_part(model: FittedModel) -> tuple[Part, ...]:
     are one part: their overlap with each other says nothing about the overlap with other columns.
     """
     space = model.fit.space
-    root = np.linalg.cholesky(model.fit.working_information).T
+    root = np.asarray(np.linalg.cholesky(model.fit.working_information).T, dtype=np.float64)
     if space.from_beta is not None:
         root = root @ space.from_beta
     columns = model.design.columns
@@ -116,21 +116,23 @@ def inflation_by_part(model: FittedModel) -> tuple[Part, ...]:
 
 
 def _parts(model: FittedModel) -> dict[tuple[str, ...], tuple[int, ...]]:
-    """Positions of the columns of terms joined by shared record columns, under those record columns."""
-    joined: list[tuple[list[str], list[int]]] = []
-    for i, column in enumerate(model.design.columns):
+    """Positions of the columns of terms joined by shared record columns, under those record columns, in order."""
+    columns = model.design.columns
+    order = list(dict.fromkeys(source for column in columns for source in column.sources))
+    joined: list[tuple[set[str], set[int]]] = []
+    for i, column in enumerate(columns):
         if column.kind == "intercept":
             continue
-        names, positions = list(column.sources), [i]
+        names, positions = set(column.sources), {i}
         apart = []
         for other in joined:
-            if set(other[0]) & set(names):
-                names = [*other[0], *(name for name in names if name not in other[0])]
-                positions = [*other[1], *positions]
+            if other[0] & names:
+                names, positions = names | other[0], positions | other[1]
             else:
                 apart.append(other)
         joined = [*apart, (names, positions)]
-    return {tuple(names): tuple(sorted(positions)) for names, positions in sorted(joined, key=lambda one: min(one[1]))}
+    joined.sort(key=lambda one: min(one[1]))
+    return {tuple(sorted(names, key=order.index)): tuple(sorted(positions)) for names, positions in joined}
 
 
 def _projected(onto: Array, vectors: Array) -> Array:
@@ -160,10 +162,10 @@ def _table(parts: tuple[Part, ...]) -> Table:
         id="collinearity",
         title=say("collinearity-table"),
         columns=(
-            TableColumn("part", say("heading-part")),
-            TableColumn("columns", say("heading-coefficients"), "number"),
-            TableColumn("inflation", say("heading-inflation"), "number"),
-            TableColumn("factor", say("heading-standard-error-factor"), "number"),
+            TableColumn("part", say("form-heading-part")),
+            TableColumn("columns", say("form-heading-coefficients"), "number"),
+            TableColumn("inflation", say("form-heading-inflation"), "number"),
+            TableColumn("factor", say("form-heading-standard-error-factor"), "number"),
         ),
         rows=tuple((part.label, len(part.positions), part.inflation, _finite(part)) for part in parts),
     )

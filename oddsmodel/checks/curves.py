@@ -23,13 +23,14 @@ LEAST_OFF_THE_PILE = 0.1
 class Line:
     """A number column, or a function of one such as its log, that enters the model as a straight line.
 
-    position: of its column in the model matrix. label, units: for words and axes.
+    position: of its column in the model matrix. source: the record column. label: for words; axis: of the record
+    column with its units.
     """
 
     position: int
-    name: str
+    source: str
     label: str
-    units: str | None
+    axis: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -80,9 +81,8 @@ def straight_lines(model: FittedModel) -> tuple[Line, ...]:
         if sum(source in other.sources for other in columns) > 1 or source not in model.columns:
             continue
         label, units = model.columns[source].label, model.columns[source].units
-        if column.kind == "transform":
-            label, units = f"{label} as {column.term}", None
-        lines.append(Line(position, column.term, label, units))
+        axis = f"{label} ({units})" if units else label
+        lines.append(Line(position, source, f"{label} as {column.term}" if column.kind == "transform" else label, axis))
     return tuple(lines)
 
 

@@ -2,15 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from oddsmodel.checks.deletion import Deletion, without
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
 from oddsmodel.checks.influence_views import deletions_table, patterns_table, scatter
-from oddsmodel.checks.one_step import OneStep, one_step, ranked
+from oddsmodel.checks.one_step import one_step, ranked
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.wording import finding, say
@@ -18,18 +18,23 @@ from oddsmodel.wording import finding, say
 LISTED = 10
 LEFT_OUT = (1, 5, 10)
 FEW_RECORDS = 0.05
-"""Share of the records that may be called few; what a larger part does when left out is no sign of anything wrong."""
+"""Share of the records that may be called few; that a larger part moves the estimate is no sign of anything wrong."""
 
 MUCH = 1.0
 SOME = 0.5
 """Shifts, in standard errors of the coefficient, that few records should not bring about."""
 
-ORDER: tuple[Verdict, ...] = ("not applicable", "fine", "look", "caution")
+DIGITS = 3
+"""Significant digits of what is reported: more would let a single record be worked out from the difference."""
 
 
 @dataclass(frozen=True)
 class Judged:
-    """A deletion with what it does: the shift in standard errors, and the odds ratio moved most, where it has one."""
+    """A deletion and what it does: the largest shift in standard errors, and the odds ratio that moves most.
+
+    few: whether at most a twentieth of the records, or one record, was left out. shift is None where the exposure
+    has no estimate without them; moved is None there, and where no column of it has an odds ratio of its own.
+    """
 
     deletion: Deletion
     few: bool
@@ -42,9 +47,8 @@ def check(model: FittedModel) -> CheckResult:
     """Diagnostics by covariate pattern, and exact fits without the 1, 5 and 10 that move the exposure most.
 
     Patterns are put in order by the one-step shift of the exposure's coefficients, standardised by their
-    covariance. A caution where at most a twentieth of the records (or the first pattern alone) moves a coefficient by
-    a standard error and its odds ratio by ten per cent, or leaves it without an estimate; a look from half a standard
-    error on.
+    covariance. "Caution" where few records move a coefficient by a standard error and its odds ratio by ten per
+    cent, or leave it without an estimate; "look" from half a standard error on.
     """
     targets = model.exposure_indices or tuple(
         i for i, column in enumerate(model.design.columns) if column.role != "intercept"
@@ -57,25 +61,25 @@ def check(model: FittedModel) -> CheckResult:
     steps = one_step(model, targets)
     score = np.where(steps.essential, 2.0 * steps.target_distance.max() + 1.0, steps.target_distance)
     top = ranked(score, LISTED)
-    judged = [_judge(model, without(model, top[:k], targets), targets) for k in LEFT_OUT if 2 * k <= patterns]
+    judged = [_judge(model, without(model, top[:k], targets), targets) for k in LEFT_OUT if k == 1 or 2 * k <= patterns]
     spoken = _spoken(judged)
-    facts = _facts(model, spoken)
-    code = _code(spoken)
-    statistics = {
+    code, facts = _said(model, spoken)
+    statistics: dict[str, float | int | None] = {
         "patterns": patterns,
         "patterns_left_out": spoken.deletion.patterns,
-        "shift_in_standard_errors": _brief(spoken.shift),
-        "odds_ratio_without": None if spoken.moved is None else _brief(spoken.moved.after),
+        "shift_in_standard_errors": None if spoken.shift is None else _rounded(spoken.shift),
+        "odds_ratio_without": None if spoken.moved is None else _rounded(spoken.moved.after),
     }
+    missing = say("influence-no-odds-ratio" if spoken.shift is not None else "influence-no-estimate")
     return CheckResult(
         name="influence",
         family="influence",
         title=say("influence-title"),
         verdict=spoken.verdict,
-        line=say(f"{code}-line", **facts),
+        line=say(code, **facts),
         statistics=statistics,
-        reasons=_reasons(spoken, statistics),
-        findings=() if spoken.verdict in ("fine", "not applicable") else (finding("caution", code, **facts),),
+        reasons={name: missing for name, value in statistics.items() if value is None},
+        findings=() if spoken.verdict == "fine" else (finding("caution", code, **facts),),
         tables=(
             deletions_table(model, [one.deletion for one in judged]),
             patterns_table(model, steps, top, targets),
@@ -100,7 +104,7 @@ def _not_applicable(reason: str) -> CheckResult:
 
 
 def _judge(model: FittedModel, deletion: Deletion, targets: tuple[int, ...]) -> Judged:
-    few = deletion.records <= FEW_RECORDS * model.records
+    few = deletion.records <= max(1.0, FEW_RECORDS * model.records)
     if deletion.coefficients is None:
         return Judged(deletion, few, None, None, "caution" if few else "fine")
     chosen = list(targets)
@@ -111,3 +115,38 @@ def _judge(model: FittedModel, deletion: Deletion, targets: tuple[int, ...]) -> 
     if few and largest >= SOME and (ratio is None or ratio.change >= MATTERS):
         verdict = "caution" if largest >= MUCH else "look"
     return Judged(deletion, few, largest, ratio, verdict)
+
+
+def _spoken(judged: Sequence[Judged]) -> Judged:
+    """The deletion that the sentence tells of: the smallest of the worst, or the largest that changes little."""
+    for verdict in ("caution", "look"):
+        for one in judged:
+            if one.verdict == verdict:
+                return one
+    few = [one for one in judged if one.few]
+    return few[-1] if few else judged[0]
+
+
+def _said(model: FittedModel, spoken: Judged) -> tuple[str, dict[str, str | int | float | bool]]:
+    """The code of the sentence and its facts, rounded."""
+    facts: dict[str, str | int | float | bool] = {
+        "patterns": spoken.deletion.patterns,
+        "exposed": bool(model.exposure_indices),
+        "exposure": "",
+    }
+    if spoken.moved is not None:
+        facts |= {
+            "exposure": spoken.moved.label,
+            "before": _rounded(spoken.moved.before),
+            "after": _rounded(spoken.moved.after),
+        }
+    if spoken.shift is None:
+        return ("few-patterns-carry-the-exposure" if spoken.few else "influence-coarse-carried"), facts
+    facts["shift"] = _rounded(spoken.shift)
+    if spoken.verdict != "fine":
+        return "few-patterns-move-the-exposure", facts
+    return ("influence-little" if spoken.few else "influence-coarse"), facts
+
+
+def _rounded(value: float) -> float:
+    return float(f"{value:.{DIGITS}g}")

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from oddsmodel.checks.curves import Curve, Curves, fit_curves, straight_lines, weighted_quantiles
+from oddsmodel.checks.curves import Curve, Curves, Line, fit_curves, straight_lines, weighted_quantiles
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
 from oddsmodel.findings import Finding
 from oddsmodel.model.fitted import Array, FittedModel
@@ -22,6 +22,7 @@ LARGE = 1.25
 
 GRID = 101
 BINS = 20
+LONGEST_WHOLE_GRID = 200
 LARGEST_DRAWN_LOG = 12.0
 
 
@@ -148,9 +149,7 @@ def _finding(one: Judged) -> Finding:
     )
 
 
-def _statistics(
-    judged: list[Judged], otherwise: Moved | None
-) -> tuple[dict[str, float | int | None], dict[str, str]]:
+def _statistics(judged: list[Judged], otherwise: Moved | None) -> tuple[dict[str, float | int | None], dict[str, str]]:
     departures = [one.departure for one in judged]
     known = [departure for departure in departures if departure is not None]
     statistics: dict[str, float | int | None] = {
@@ -172,13 +171,13 @@ def _table(judged: list[Judged]) -> Table:
         id="linearity",
         title=say("linearity-table"),
         columns=(
-            TableColumn("column", say("heading-column")),
-            TableColumn("statistic", say("heading-likelihood-ratio"), "number"),
-            TableColumn("df", say("heading-degrees-of-freedom"), "number"),
-            TableColumn("p", say("heading-p"), "p"),
-            TableColumn("departure", say("heading-departure"), "odds_ratio"),
-            TableColumn("before", say("heading-exposure-with-line"), "odds_ratio"),
-            TableColumn("after", say("heading-exposure-with-curve"), "odds_ratio"),
+            TableColumn("column", say("form-heading-column")),
+            TableColumn("statistic", say("form-heading-likelihood-ratio"), "number"),
+            TableColumn("df", say("form-heading-degrees-of-freedom"), "number"),
+            TableColumn("p", say("form-heading-p"), "p"),
+            TableColumn("departure", say("form-heading-departure"), "odds_ratio"),
+            TableColumn("before", say("form-heading-exposure-with-line"), "odds_ratio"),
+            TableColumn("after", say("form-heading-exposure-with-curve"), "odds_ratio"),
         ),
         rows=tuple(
             (
@@ -199,26 +198,34 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
     """Odds ratio against the column's value, relative to the median, over the middle 95% of the records."""
     from scipy.special import ndtri
 
-    x, trials = model.patterns.X[:, curve.line.position], model.patterns.trials
+    line, trials = curve.line, model.patterns.trials
+    entered = model.patterns.X[:, line.position]
+    x, axis = _in_own_units(model, line, entered)
+    whole = bool((x == np.rint(x)).all())
     lower, reference, upper = weighted_quantiles(x, trials, (0.025, 0.5, 0.975)).tolist()
     if not lower < upper:
         return None
     grid = np.linspace(lower, upper, GRID)
-    log_odds, error = curve.log_odds(grid, reference)
+    if whole and upper - lower <= LONGEST_WHOLE_GRID:
+        lower, upper = math.floor(lower), math.ceil(upper)
+        grid = np.arange(lower, upper + 1.0)
+    order = np.argsort(x, kind="stable")
+    entered_grid = np.interp(grid, x[order], entered[order])
+    entered_reference = float(np.interp(reference, x[order], entered[order]))
+    log_odds, error = curve.log_odds(entered_grid, entered_reference)
     half = float(ndtri(0.5 + model.level / 2.0)) * error
-    straight = model.fit.coefficients[curve.line.position] * (grid - reference)
+    straight = model.fit.coefficients[line.position] * (entered_grid - entered_reference)
     drawn = np.stack([log_odds, log_odds - half, log_odds + half, straight])
     if not np.abs(drawn).max() <= LARGEST_DRAWN_LOG:
         return None
     ratios = [tuple(row) for row in np.exp(drawn).tolist()]
-    line = curve.line
-    edges = _edges(lower, upper, whole=bool((x == np.rint(x)).all()))
+    edges = _edges(lower, upper, whole=whole)
     records = np.rint(np.histogram(x, edges, weights=trials)[0]).astype(int)
     return CurveFigure(
         id=f"linearity-{line.position}",
         title=say("linearity-figure-title", column=line.label),
         alt=say("linearity-figure-alt", column=line.label, statistic=curve.statistic, df=curve.df, p=curve.p),
-        x_label=f"{line.label} ({line.units})" if line.units else line.label,
+        x_label=axis,
         x=tuple(grid.tolist()),
         curve=ratios[0],
         lower=ratios[1],
@@ -227,6 +234,16 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
         reference=reference,
         density=tuple(zip(edges[:-1].tolist(), edges[1:].tolist(), records.tolist(), strict=True)),
     )
+
+
+def _in_own_units(model: FittedModel, line: Line, entered: Array) -> tuple[Array, str]:
+    """The record column's values by pattern (m,) and its axis, where what entered rises or falls with them steadily.
+
+    Otherwise (a column such as (x - 3)**2) the values as they entered the model.
+    """
+    own = model.frame[line.source].to_numpy(dtype=np.float64)[model.patterns.first_row]
+    steps = np.diff(entered[np.argsort(own, kind="stable")])
+    return (own, line.axis) if (steps >= 0).all() or (steps <= 0).all() else (entered, line.label)
 
 
 def _edges(lower: float, upper: float, *, whole: bool) -> Array:

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
 from oddsmodel.checks.preference import BINS, Comparison, compare, fit_kept, variation_explained
@@ -18,6 +19,9 @@ from oddsmodel.wording import finding, say
 
 SOME, MANY = 0.05, 0.20
 """Shares of the records outside the overlap from which the check asks for a look, and for caution."""
+
+A_FEW = 20
+"""Fewer records than this, outside or inside the overlap, are told without a share that would give them away."""
 
 MUCH, MOST = 0.75, 0.90
 """The same for the share of a number exposure's variance that the adjustment columns explain."""
@@ -109,7 +113,7 @@ def _category(model: FittedModel, exposure: str, gathered: _Gathered) -> None:
     facts = {
         "group": f"{label}: {worst.level}",
         "other": worst.reference,
-        "share": round(worst.share, 2),
+        "share": _told_share(worst),
         "any_outside": bool(outside.any()),
         "alone": any(one.alone for one in comparisons),
         "exposure": inside.label if inside else None,
@@ -133,7 +137,7 @@ def _category(model: FittedModel, exposure: str, gathered: _Gathered) -> None:
         gathered.figures.append(_figure(f"overlap-{len(gathered.figures) + 1}", label, one))
 
 
-def _refitted(model: FittedModel, exposure: str, outside: np.ndarray) -> Moved | None:
+def _refitted(model: FittedModel, exposure: str, outside: NDArray[np.bool_]) -> Moved | None:
     """The exposure's odds ratio without the patterns outside the overlap; None where it has none there."""
     patterns = model.patterns
     rows = np.flatnonzero(~outside & (patterns.trials > 0))
@@ -148,11 +152,18 @@ def _refitted(model: FittedModel, exposure: str, outside: np.ndarray) -> Moved |
     return moved(model, coefficients, own)
 
 
+def _told_share(one: Comparison) -> float:
+    """The share outside the overlap in whole per cent; 0 for a few of the records, 1 for nearly all of them."""
+    if one.outside_records < A_FEW:
+        return 0.0
+    return 1.0 if one.records - one.outside_records < A_FEW else round(one.share, 2)
+
+
 def _figure(identity: str, label: str, one: Comparison) -> HistogramFigure:
     return HistogramFigure(
         id=identity,
         title=say("overlap-figure-title", group=f"{label}: {one.level}", other=one.reference),
-        alt=say("overlap-figure-alt", group=one.level, other=one.reference, share=round(one.share, 2)),
+        alt=say("overlap-figure-alt", group=one.level, other=one.reference),
         x_label=say("overlap-figure-axis", group=one.level),
         edges=tuple(np.linspace(0.0, 1.0, BINS + 1).tolist()),
         series=((one.level, one.at_level), (one.reference, one.at_reference)),
@@ -164,12 +175,12 @@ def _table(rows: list[tuple[Cell, ...]]) -> Table:
         id="overlap",
         title=say("overlap-table"),
         columns=(
-            TableColumn("exposure", say("heading-exposure")),
-            TableColumn("level", say("heading-level")),
-            TableColumn("reference", say("heading-against")),
-            TableColumn("records", say("heading-records"), "count"),
-            TableColumn("outside", say("heading-outside"), "count", part_of="records"),
-            TableColumn("share", say("heading-share"), "percent", hidden_with=("outside",)),
+            TableColumn("exposure", say("form-heading-exposure")),
+            TableColumn("level", say("form-heading-level")),
+            TableColumn("reference", say("form-heading-against")),
+            TableColumn("records", say("form-heading-records"), "count"),
+            TableColumn("outside", say("form-heading-outside"), "count", part_of="records"),
+            TableColumn("share", say("form-heading-share"), "percent", hidden_with=("outside",)),
         ),
         rows=tuple(rows),
     )

@@ -40,8 +40,8 @@ def pattern_residuals(model: FittedModel) -> PatternResiduals:
     probability, complement = expit(linear), expit(-linear)
     raw = events * complement - others * probability
     variance = trials * probability * complement
-    missed = np.sign(raw) * np.inf
-    pearson = np.divide(raw, np.sqrt(variance), out=np.where(raw == 0.0, 0.0, missed), where=variance > 0.0)
+    edge = np.where(raw == 0.0, 0.0, np.copysign(np.inf, raw))
+    pearson = np.divide(raw, np.sqrt(variance), out=edge, where=variance > 0.0)
     apart = (
         xlogy(events, events / trials)
         - events * log_expit(linear)

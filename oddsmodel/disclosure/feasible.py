@@ -98,9 +98,7 @@ def _narrow(equations: list[Equation], bounds: dict[int, Bounds]) -> _Narrowed:
                 leaf = next((number for number in equation.terms if uses[number] == 1), None)
                 if leaf is not None:
                     source = next(number for number in equation.terms if number != leaf)
-                    found.bounds[source] = _meet(
-                        found.bounds[source], _other(equation, leaf, source, found.bounds)
-                    )
+                    found.bounds[source] = _meet(found.bounds[source], _other(equation, leaf, source, found.bounds))
                     found.follows.append((leaf, source, equation))
                     found.equations.remove(equation)
                     uses[source] -= 1
@@ -153,9 +151,7 @@ def _closed_form(equation: Equation, bounds: Mapping[int, Bounds]) -> dict[int, 
     return found
 
 
-def _integer_programs(
-    equations: list[Equation], bounds: Mapping[int, Bounds], wanted: list[int]
-) -> dict[int, Bounds]:
+def _integer_programs(equations: list[Equation], bounds: Mapping[int, Bounds], wanted: list[int]) -> dict[int, Bounds]:
     import numpy as np
     from scipy.optimize import Bounds as Box
     from scipy.optimize import LinearConstraint, milp

@@ -71,9 +71,7 @@ class Suppression:
     def _all_readers(self) -> Iterable[_Reader]:
         counts = self.counts
         plain = tuple(relation for relation in counts.relations if not relation.link)
-        linked = frozenset(
-            number for relation in counts.relations if relation.link for number in relation.terms
-        )
+        linked = frozenset(number for relation in counts.relations if relation.link for number in relation.terms)
         # A sum under the threshold is a small count itself, not something to take as printed.
         printed = frozenset(number for number in counts.totals if not self._small(number))
         for hinted in (False, True) if self.threshold >= HINTED else (False,):
@@ -120,9 +118,7 @@ class Suppression:
         lower, upper = bounds
         return upper > lower and (reader.hinted or not self._small(number) or upper >= self.threshold)
 
-    def _component_bounds(
-        self, which: int, members: frozenset[int], equations: list[Equation]
-    ) -> dict[int, Bounds]:
+    def _component_bounds(self, which: int, members: frozenset[int], equations: list[Equation]) -> dict[int, Bounds]:
         key = (which, members)
         if key not in self._bounds:
             reader = self._readers[which]

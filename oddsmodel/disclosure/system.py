@@ -83,6 +83,9 @@ class CountSystem:
     def value(self, number: int) -> int:
         return self._values[number]
 
+    def at(self, place: Place) -> int:
+        return self._places[place]
+
     def root(self, number: int) -> int:
         while self._parent[number] != number:
             self._parent[number] = self._parent[self._parent[number]]

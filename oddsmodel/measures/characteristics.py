@@ -12,7 +12,8 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from oddsmodel.measures.counts import level_codes, whole
-from oddsmodel.measures.groups import Groups
+from oddsmodel.measures.crude import KeptRecords
+from oddsmodel.measures.groups import Groups, groups_of_study
 from oddsmodel.measures.standardised_difference import (
     standardised_difference_of_means,
     standardised_difference_of_shares,
@@ -36,6 +37,23 @@ class _Line:
     records: NDArray[np.int64]
     summaries: Sequence[str | None]
     difference: float | None = None
+
+
+def study_characteristics(
+    study_design: str,
+    kept: KeptRecords,
+    columns: Mapping[str, Column],
+    exposures: Sequence[str],
+    adjustment: Sequence[str],
+    analysed: NDArray[np.bool_],
+) -> Table:
+    """The characteristics of a study: by case status in a case-control study, else by its first exposure.
+
+    kept: the n records that belong to the study and have outcome and exposures; analysed (n,): those the model uses.
+    """
+    groups = groups_of_study(study_design, columns[exposures[0]], kept.frame, kept.event, kept.counts)
+    names = tuple(dict.fromkeys((*exposures, *adjustment)))
+    return characteristics(kept.frame, columns, names, groups, analysed=analysed, counts=kept.counts)
 
 
 def characteristics(

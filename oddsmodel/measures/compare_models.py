@@ -5,8 +5,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.results.figures import EstimateMark, EstimatesFigure
 from oddsmodel.results.study import CoefficientResult, ModelResult
-from oddsmodel.results.tables import Cell, Table, TableColumn
+from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 from oddsmodel.wording import say
 
 Key = tuple[str, str | None, str | None, str]
@@ -31,9 +32,9 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
     rows: list[tuple[Cell, ...]] = []
     blocks: list[int] = []
     notes: dict[str, None] = {}
-    for block, (key, label) in enumerate(exposure_keys(models).items()):
+    for block, (key, label) in enumerate(_exposures(models).items()):
         for model in models:
-            coefficient = exposure_coefficients(model).get(key)
+            coefficient = _keyed(model).get(key)
             if coefficient is None or coefficient.odds_ratio is None:
                 rows.append((label, model.name, model.records, model.events, None, None))
                 notes[_why_missing(model, label, coefficient)] = None
@@ -49,7 +50,26 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
     return Table("models", "The models side by side", columns, tuple(rows), note, tuple(blocks))
 
 
-def exposure_coefficients(model: ModelResult) -> dict[Key, CoefficientResult]:
+def models_figure(models: Sequence[ModelResult]) -> EstimatesFigure | None:
+    """The same odds ratios on one axis, a series for each model; None with fewer than two models."""
+    if len(models) < 2:
+        return None
+    marks = []
+    for key, label in _exposures(models).items():
+        for model in models:
+            coefficient = _keyed(model).get(key)
+            if coefficient is None or coefficient.odds_ratio is None:
+                continue
+            limits = lead_interval(coefficient.profile, coefficient.wald)
+            lower, upper = (limits.lower, limits.upper) if isinstance(limits, Interval) else (None, None)
+            marks.append(EstimateMark(label, model.name, coefficient.odds_ratio, lower, upper))
+    if not marks:
+        return None
+    title = "Odds ratios under each model"
+    return EstimatesFigure("models", title, say("compare-models-alt", models=[m.name for m in models]), tuple(marks))
+
+
+def _keyed(model: ModelResult) -> dict[Key, CoefficientResult]:
     """The exposure coefficients that are shown, by what tells them apart."""
     return {
         (one.term, one.level, one.reference, one.label): one
@@ -58,9 +78,9 @@ def exposure_coefficients(model: ModelResult) -> dict[Key, CoefficientResult]:
     }
 
 
-def exposure_keys(models: Sequence[ModelResult]) -> dict[Key, str]:
+def _exposures(models: Sequence[ModelResult]) -> dict[Key, str]:
     """Every exposure coefficient that some model shows, in the order of the models, with its label."""
-    return {key: one.label for model in models for key, one in exposure_coefficients(model).items()}
+    return {key: one.label for model in models for key, one in _keyed(model).items()}
 
 
 def _why_missing(model: ModelResult, label: str, coefficient: CoefficientResult | None) -> str:

@@ -1,9 +1,6 @@
-"""What each study design allows to be said."""
+"""Which study designs take their records by the outcome."""
 
 from __future__ import annotations
 
 CASE_CONTROL = ("case-control", "matched case-control")
-"""Designs that take their records by the outcome: no risk, no share of events, no interpreted intercept."""
-
-QUANTITY = {"cohort": "risk", "trial": "risk", "cross-sectional": "prevalence"}
-"""What the share of events is called in each design that has one."""
+"""Designs without a risk, a share of events or an interpreted intercept."""

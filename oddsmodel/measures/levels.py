@@ -8,8 +8,9 @@ from dataclasses import dataclass
 from oddsmodel.findings import Finding
 from oddsmodel.measures.counts import level_counts, model_levels
 from oddsmodel.measures.crude import plain_exposures
-from oddsmodel.measures.designs import CASE_CONTROL, QUANTITY
+from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CoefficientResult
 from oddsmodel.results.tables import Cell, Table, TableColumn

@@ -7,11 +7,13 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 
 from oddsmodel.errors import Fault, InputFault
-from oddsmodel.measures.designs import QUANTITY
 from oddsmodel.measures.two_by_two import vetted_cells
 from oddsmodel.measures.wald import normal_quantile
 from oddsmodel.results.tables import Interval
 from oddsmodel.wording import say
+
+QUANTITY = {"cohort": "risk", "trial": "risk", "cross-sectional": "prevalence"}
+"""What the share of events is called in each design that has one."""
 
 NONE = Interval(None, None)
 

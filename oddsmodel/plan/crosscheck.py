@@ -16,6 +16,7 @@ from oddsmodel.wording.plain import quoted
 
 LONGEST_MODEL_NAME = 120
 WITH_LEVELS = ("category", "ordered", "yes-no")
+SAME_VALUES = {"1.0": ("true", "yes", "y"), "0.0": ("false", "no", "n")}
 KEYS_FOR_LEVELS = ("levels", "reference", "other_levels")
 KEYS_FOR_NUMBERS = ("per", "units")
 KEYS_FOR_COVARIATES = ("reference", "per", "units", "timing", "why", "other_levels")
@@ -112,13 +113,34 @@ def _levels(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
     for level in dict.fromkeys(column.levels):
         if level in unrecorded:
             yield fault("level-not-recorded", where, level=quoted(level))
-    if column.reference is not None and column.levels and column.reference not in column.levels and not is_outcome:
+    if (
+        column.reference is not None
+        and column.levels
+        and not _is_among(column.reference, column.levels)
+        and not is_outcome
+    ):
         yield fault(
             "reference-not-a-level",
             parts.at("columns", name, "reference"),
             reference=quoted(column.reference),
-            **offer(column.reference, column.levels),
+            **offer(column.reference, tuple(dict.fromkeys(column.levels))),
         )
+
+
+def _is_among(value: str, levels: Sequence[str]) -> bool:
+    """Whether a value may be one of the levels in some spelling (1, 1.0, true, yes); the records floor decides."""
+    return _spelling(value) in {_spelling(level) for level in levels}
+
+
+def _spelling(value: str) -> str:
+    text = value.strip().casefold()
+    for number, words in SAME_VALUES.items():
+        if text in words:
+            return number
+    try:
+        return repr(float(text))
+    except ValueError:
+        return text
 
 
 def _repeated(words: Sequence[str], where: str, code: str, fact: str) -> Iterator[Fault]:
@@ -142,7 +164,7 @@ def _outcome_column(parts: Parts, name: str, column: ColumnSection) -> Iterator[
     if len(set(column.levels)) != 2:
         yield fault("outcome-levels", parts.at("columns", name, "levels"), number=len(set(column.levels)))
     event = parts.outcome.event if parts.outcome else None
-    if event is not None and event not in column.levels:
+    if event is not None and not _is_among(event, column.levels):
         yield fault(
             "event-not-a-level", parts.at("outcome", "event"), event=quoted(event), **offer(event, column.levels)
         )

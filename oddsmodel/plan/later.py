@@ -70,7 +70,7 @@ LATER_CHECKS = ("box_tidwell",)
 
 
 def later(location: Sequence[str | int]) -> str | None:
-    """The code of the sentence for the key at `location` (section, column or model, key), if a later version brings it."""
+    """The code of the sentence for the key at `location`, if it is one that a later version brings."""
     section, *rest = location
     if not rest:
         return LATER_SECTIONS.get(str(section))

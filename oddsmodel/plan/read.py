@@ -6,6 +6,7 @@ import copy
 import hashlib
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
+from itertools import islice
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -25,6 +26,7 @@ from oddsmodel.plan.schema import (
     StudyPlan,
 )
 from oddsmodel.plan.syntax import parse
+from oddsmodel.plan.toml_text import document
 from oddsmodel.plan.translate import Error, translate
 from oddsmodel.wording.plain import plain
 
@@ -52,28 +54,32 @@ def read_plan(path: Path) -> PlanFile:
     """
     raw = _bytes(path)
     text = _text(raw, path)
-    data = parse(text, plain(path.name))
-    return PlanFile(
-        plan=plan_from(data, plain(path.name)), path=path, text=text, sha256=hashlib.sha256(raw).hexdigest()
-    )
+    name = plain(path.name)
+    plan = _validated(parse(text, name), name)
+    return PlanFile(plan=plan, path=path, text=text, sha256=hashlib.sha256(raw).hexdigest())
 
 
-def plan_from(data: Mapping[str, Any], name: str) -> StudyPlan:
-    """The plan from plain values as TOML gives them. `name` stands for the plan in messages.
+def plan_from_values(values: Mapping[str, Any], name: str = "oddsmodel.fit") -> PlanFile:
+    """The plan from plain values, laid out as TOML would give them. `name` stands for the plan in messages.
 
-    Raises InputFault with all faults.
+    Its text is the same plan written as TOML. Raises InputFault with all faults.
     """
-    plan: StudyPlan | None = None
+    plan = _validated(values, name)
+    text = document(values)
+    return PlanFile(plan=plan, path=Path(name), text=text, sha256=hashlib.sha256(text.encode()).hexdigest())
+
+
+def _validated(data: Mapping[str, Any], name: str) -> StudyPlan:
     errors: list[Error] = []
+    plan: StudyPlan | None = None
     try:
         plan = StudyPlan.model_validate(data)
     except ValidationError as error:
-        errors = [
-            Error(one["type"], one["loc"], one["input"], one["msg"], name, data)
-            for one in error.errors(include_url=False)
-        ]
-    _stop_at(_all_faults(errors, data, name), name)
-    assert plan is not None
+        found = error.errors(include_url=False)
+        errors = [Error(one["type"], one["loc"], one["input"], one["msg"], name, data) for one in found]
+    faults = _told(_all_faults(errors, data, name), name)
+    if faults or plan is None:
+        raise InputFault(faults)
     return plan
 
 
@@ -85,19 +91,11 @@ def _all_faults(errors: list[Error], data: Mapping[str, Any], name: str) -> Iter
     yield from cross_check(_parts(data, errors, name))
 
 
-def _stop_at(faults: Iterator[Fault], name: str) -> None:
-    """Raise the faults, if there are any; of very many the first, with the number of the others."""
-    told = []
-    others = 0
-    for one in faults:
-        if len(told) < MOST_FAULTS:
-            told.append(one)
-        else:
-            others += 1
-    if others:
-        told.append(fault("more-faults", name, number=others))
-    if told:
-        raise InputFault(told)
+def _told(faults: Iterator[Fault], name: str) -> list[Fault]:
+    """The faults; of very many the first, with the number of the others."""
+    told = list(islice(faults, MOST_FAULTS))
+    others = sum(1 for _ in faults)
+    return [*told, fault("more-faults", name, number=others)] if others else told
 
 
 def _parts(data: Mapping[str, Any], errors: list[Error], name: str) -> Parts:
@@ -142,7 +140,7 @@ def _without(data: Mapping[str, Any], errors: list[Error]) -> dict[str, Any]:
         holder: Any = sound
         *way, last = error.location[: 3 if error.section in ("columns", "models") else 2]
         for part in way:
-            holder = holder[part] if isinstance(holder, list) else holder.get(part, {})
+            holder = holder[int(part)] if isinstance(holder, list) else holder.get(part, {})
         if isinstance(holder, list):
             holder[int(last)] = None
         elif isinstance(holder, dict):
@@ -162,9 +160,8 @@ def _bytes(path: Path) -> bytes:
             raise InputFault(fault("plan-not-a-file", where))
         with path.open("rb") as file:
             raw = file.read(limit + 1)
-    except (OSError, ValueError) as error:
-        reason = error.strerror if isinstance(error, OSError) and error.strerror else "its name cannot be used"
-        raise InputFault(fault("plan-unreadable", where, reason=reason)) from None
+    except OSError as error:
+        raise InputFault(fault("plan-unreadable", where, reason=error.strerror or type(error).__name__)) from None
     if len(raw) > limit:
         raise InputFault(fault("plan-too-large", where, megabytes=LARGEST_PLAN_MEGABYTES))
     return raw

@@ -43,7 +43,7 @@ class DelimitedText:
         Raises: pyarrow.ArrowInvalid when the rows cannot be told apart.
         """
         options = pa_csv.ConvertOptions(
-            column_types={name: TEXT for name in text_columns},
+            column_types=dict.fromkeys(text_columns, TEXT),
             include_columns=list(only),
             null_values=sorted({"", *self.not_recorded}),
             strings_can_be_null=False,
@@ -119,9 +119,7 @@ def _with_numbers_as_written(table: pa.Table, text: DelimitedText) -> pa.Table:
     takes for one ("nan", "inf").
     """
     doubtful = [name for name in table.column_names if _is_not_finite_or_large(table[name])]
-    numbers = [
-        name for name in table.column_names if name not in doubtful and _is_number(table[name].type)
-    ]
+    numbers = [name for name in table.column_names if name not in doubtful and _is_number(table[name].type)]
     zeros = numbers if numbers and _has_leading_zeros(text.content, text.delimiter) else []
     if not doubtful and not zeros:
         return table

@@ -7,10 +7,13 @@ from collections.abc import Sequence
 
 import numpy as np
 import pandas as pd
+import pyarrow as pa
+import pyarrow.compute as pc
+from numpy.typing import NDArray
 
 from oddsmodel.plan.schema import ColumnSection, Kind
 from oddsmodel.records.raw import RawType
-from oddsmodel.records.same_value import is_yes_no_pair, same_value_key
+from oddsmodel.records.same_value import yes_or_no
 
 NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,3})?")
 DATE = re.compile(
@@ -48,23 +51,28 @@ def kind_of_texts(values: pd.Series) -> Kind:
     """
     codes = np.asarray(values.cat.codes)
     counts = np.bincount(codes[codes >= 0], minlength=len(values.cat.categories))
-    texts: Sequence[str] = [text for text, met in zip(values.cat.categories, counts, strict=True) if met]
+    texts = list(values.cat.categories[counts > 0])
     counts = counts[counts > 0]
     if not texts:
         return "category"
     sample = texts[:1000]
     if sum(DATE.fullmatch(text) is not None for text in sample) >= MOSTLY * len(sample):
         return "date"
-    if len(texts) <= 6 and is_yes_no_pair({same_value_key(text).casefold() for text in texts}):
-        return "yes-no"
-    if all(is_number(text) for text in texts):
+    numeric = number_mask(texts)
+    if numeric.all():
         return "category" if any(_leading_zero(text) for text in texts) else "number"
-    if sum(is_number(text) for text in sample) > min(FEWEST_NUMBERS, 0.5 * len(sample)):
-        numeric = np.asarray([is_number(text) for text in texts])
-        if numeric.sum() > FEWEST_NUMBERS and counts[numeric].sum() >= MOSTLY * counts.sum():
-            return "number"
+    if len(texts) <= 8 and {yes_or_no(text) for text in texts} == {"yes", "no"}:
+        return "yes-no"
+    if numeric.sum() > FEWEST_NUMBERS and counts[numeric].sum() >= MOSTLY * counts.sum():
+        return "number"
     once = len(texts) == counts.sum() and len(texts) >= FEWEST_FOR_IDENTIFIER
     return "identifier" if once else "category"
+
+
+def number_mask(texts: Sequence[str]) -> NDArray[np.bool_]:
+    """Which texts (k,) are numbers: digits with at most one decimal point, a sign, an exponent."""
+    matched = pc.match_substring_regex(pa.array(texts, pa.string()), f"^(?:{NUMBER.pattern})$")
+    return np.asarray(matched.to_numpy(zero_copy_only=False), dtype=np.bool_)
 
 
 def is_number(text: str) -> bool:

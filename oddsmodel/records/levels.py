@@ -37,7 +37,12 @@ class CodedLevels:
 
 
 def code_levels(
-    values: pd.Series, not_recorded: Collection[str], *, levels: Sequence[str] | None, kind: str, keep_order: bool = False
+    values: pd.Series,
+    not_recorded: Collection[str],
+    *,
+    levels: Sequence[str] | None,
+    kind: str,
+    keep_order: bool = False,
 ) -> CodedLevels:
     """The levels of a column.
 

@@ -11,12 +11,13 @@ from numpy.typing import NDArray
 
 from oddsmodel.errors import Fault
 from oddsmodel.records.faults import fault
-from oddsmodel.records.kinds import is_number
-from oddsmodel.records.same_value import same_value_key
+from oddsmodel.records.kinds import is_number, number_mask
+from oddsmodel.records.same_value import absent_mask
 from oddsmodel.wording.plain import quoted
 
 ROWS_NAMED = 5
 WHOLE_BOUND = 2**53
+WHOLE = re.compile(r"[+-]?[0-9]+")
 DECIMAL_COMMA = re.compile(r"[+-]?[0-9]+,[0-9]+")
 
 
@@ -44,17 +45,13 @@ def _from_texts(
     values: pd.Series, not_recorded: Collection[str], where: str, first_row: int
 ) -> tuple[NDArray[np.float64], list[Fault]]:
     texts = list(values.cat.categories)
+    numeric = number_mask(texts)
+    absent = absent_mask(texts, not_recorded)
     parsed = np.full(len(texts) + 1, np.nan)
-    stray = np.zeros(len(texts) + 1, dtype=bool)
-    large = np.zeros(len(texts) + 1, dtype=bool)
-    for position, text in enumerate(texts):
-        if same_value_key(text) in not_recorded:
-            continue
-        if not is_number(text):
-            stray[position] = True
-            continue
-        parsed[position] = float(text)
-        large[position] = text.lstrip("+-").isdigit() and abs(parsed[position]) > WHOLE_BOUND
+    parsed[:-1][numeric & ~absent] = [float(text) for text in values.cat.categories[numeric & ~absent]]
+    stray = np.append(~numeric & ~absent, False)
+    large = np.abs(parsed) > WHOLE_BOUND
+    large[:-1] &= [bool(WHOLE.fullmatch(text)) if at else False for text, at in zip(texts, large, strict=False)]
     codes = np.asarray(values.cat.codes, dtype=np.intp)
     faults: list[Fault] = []
     found = _met(stray, codes, texts, first_row)

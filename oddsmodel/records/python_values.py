@@ -41,8 +41,8 @@ def series_column(series: pd.Series) -> RawColumn | str:
     if isinstance(dtype, pd.CategoricalDtype):
         return _categorical(series, dtype.ordered)
     if isinstance(dtype, pd.SparseDtype):
-        return series_column(series.sparse.to_dense())
-    if isinstance(dtype, pd.PeriodDtype | pd.IntervalDtype) or dtype == object:
+        return series_column(pd.Series(np.asarray(series)))
+    if isinstance(dtype, pd.PeriodDtype | pd.IntervalDtype) or dtype.kind == "O":
         return values_column(series.to_numpy(dtype=object))
     if dtype.kind == "c":
         return "complex numbers"
@@ -81,7 +81,7 @@ def _categorical(series: pd.Series, ordered: bool | None) -> RawColumn | str:
 
 
 def _is_plain(value: Hashable) -> bool:
-    return isinstance(value, str | bool | np.bool_ | pd.Interval) or isinstance(value, WHOLE + REAL + DATES)
+    return isinstance(value, (*WHOLE, *REAL, *DATES, str, bool, np.bool_, pd.Interval))
 
 
 def _type_of(values: list[Any]) -> RawType:

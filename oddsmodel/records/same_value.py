@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import re
 import unicodedata
-from collections.abc import Iterable
+from collections.abc import Collection, Iterable, Sequence
 from decimal import Decimal
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 
 PLAIN_NUMBER = re.compile(r"[+-]?(?:(?:0|[1-9][0-9]*)(?:\.[0-9]*)?|\.[0-9]+)")
 LONGEST_NUMBER = 300
@@ -63,3 +64,12 @@ def matching(value: object, candidates: Iterable[str]) -> str | None:
     if said is not None and is_yes_no_pair(offered):
         return next(candidate for candidate in offered if yes_or_no(candidate) == said)
     return None
+
+
+def absent_mask(texts: Sequence[str], not_recorded: Collection[str]) -> NDArray[np.bool_]:
+    """Which of the texts (k,) mean "not recorded"; `not_recorded` are the keys of the texts that do."""
+    if any(PLAIN_NUMBER.fullmatch(key) for key in not_recorded):
+        found = [same_value_key(text) in not_recorded for text in texts]
+    else:
+        found = [text in not_recorded for text in texts]
+    return np.asarray(found, dtype=np.bool_)

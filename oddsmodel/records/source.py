@@ -25,9 +25,7 @@ from oddsmodel.wording import finding
 PARQUET, ZIP, OLD_SPREADSHEET, GZIP = b"PAR1", b"PK\x03\x04", b"\xd0\xcf\x11\xe0", b"\x1f\x8b"
 
 
-def read_table(
-    path: Path, *, text_columns: Collection[str] = (), not_recorded: Sequence[str] = ("",)
-) -> RawTable:
+def read_table(path: Path, *, text_columns: Collection[str] = (), not_recorded: Sequence[str] = ("",)) -> RawTable:
     """The table in a CSV, TSV, Parquet or .xlsx file or in a folder of Parquet files.
 
     What kind of file it is, is told from its first bytes, not from its name.

@@ -7,11 +7,8 @@ from collections.abc import Iterable
 import numpy as np
 from numpy.typing import NDArray
 
-CODES = tuple(
-    sign * number
-    for sign in (1, -1)
-    for number in (7, 8, 9, 77, 88, 96, 97, 98, 99, 777, 888, 997, 998, 999, 7777, 8888, 9998, 9999, 88888, 99999, 999999)
-) + (-1, -2)
+CODES = (7, 8, 9, 77, 88, 96, 97, 98, 99, 777, 888, 997, 998, 999, 7777, 8888, 9998, 9999, 88888, 99999, 999999)
+BELOW = (-1, -2)
 LIKE_NOT_RECORDED = {
     "na", "n/a", "n.a.", "nan", "nd", "n.d.", "null", "none", "nil", "-", "--", ".", "..", "?", "??", "missing",
     "unknown", "unk", "not known", "not recorded", "not stated", "not available", "not applicable", "no data", "#n/a",
@@ -36,21 +33,25 @@ def suspected_codes(values: NDArray[np.float64], counts: NDArray[np.int64]) -> l
     """
     lower, upper = 0, len(values)
     found: list[float] = []
-    while upper - lower > 2 and values[upper - 1] in CODES and values[upper - 1] > 0:
+    while upper - lower > 2 and values[upper - 1] in CODES:
         edge = _edge_codes(values, lower, upper)
-        if edge == 0 or not _apart(values[lower:upper], counts[lower:upper], edge):
+        if not _apart(values[lower:upper], counts[lower:upper], edge):
             break
         found.extend(float(value) for value in values[upper - edge : upper])
         upper -= edge
-    while upper - lower > 2 and values[lower] in CODES and values[lower] < 0:
+    while upper - lower > 2 and _is_code(values[lower]) and values[lower] < 0:
         edge = _edge_codes(-values[::-1], len(values) - upper, len(values) - lower)
         inner = values[lower + edge : upper]
         alone = len(inner) > 0 and inner[0] >= 0
-        if edge == 0 or not (alone or _apart(-values[lower:upper][::-1], counts[lower:upper][::-1], edge)):
+        if not (alone or _apart(-values[lower:upper][::-1], counts[lower:upper][::-1], edge)):
             break
         found.extend(float(value) for value in values[lower : lower + edge])
         lower += edge
     return sorted(found)
+
+
+def _is_code(value: float) -> bool:
+    return abs(value) in CODES or value in BELOW
 
 
 def _edge_codes(values: NDArray[np.float64], lower: int, upper: int) -> int:
@@ -58,7 +59,7 @@ def _edge_codes(values: NDArray[np.float64], lower: int, upper: int) -> int:
     edge = 1
     while (
         upper - edge - 1 > lower + 1
-        and abs(values[upper - edge - 1]) in CODES
+        and _is_code(values[upper - edge - 1])
         and values[upper - edge] - values[upper - edge - 1] == 1
     ):
         edge += 1

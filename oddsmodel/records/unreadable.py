@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 from collections.abc import Sequence
 
 import numpy as np
@@ -28,17 +29,13 @@ def why_unreadable(content: bytes, delimiter: str, names: Sequence[str], source:
             uneven.append((row.number or 0, row.actual_columns))
         return "skip"
 
-    try:
+    with contextlib.suppress(pa.ArrowInvalid):
         pa_csv.read_csv(
             pa.BufferReader(content),
             pa_csv.ReadOptions(column_names=list(names), skip_rows=1, use_threads=False, block_size=1 << 22),
-            pa_csv.ParseOptions(
-                delimiter=delimiter, newlines_in_values=b'"' in content, invalid_row_handler=note
-            ),
+            pa_csv.ParseOptions(delimiter=delimiter, newlines_in_values=b'"' in content, invalid_row_handler=note),
             pa_csv.ConvertOptions(column_types={name: pa.string() for name in names}),
         )
-    except pa.ArrowInvalid:
-        pass
     too_long = _long_line(content, source)
     if too_long:
         return too_long

@@ -13,10 +13,11 @@ from oddsmodel.model.fitted import FittedModel
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.records.accounting import account
 from oddsmodel.results.study import AdjustmentColumn, ModelResult, RecordsResult, StudyResults
+from oddsmodel.results.tables import Table
 from oddsmodel.study.check import CheckedPlan
 from oddsmodel.study.estimate import estimate
 from oddsmodel.study.fitting import Fitted, fit_model
-from oddsmodel.study.prepare import Prepared, on_records_of
+from oddsmodel.study.prepare import Prepared, conditions, on_records_of
 from oddsmodel.study.provenance import provenance
 from oddsmodel.wording import finding
 from oddsmodel.wording.numbers import ratio
@@ -33,7 +34,7 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         progress.advance()
     results = []
     for prepared, fit in zip(models, fitted, strict=True):
-        kept = _kept(checked, prepared)
+        kept = _kept(checked, _rows_kept(checked, prepared, ()))
         results.append(estimate(prepared, fit, plan, records, kept, progress))
     differing = _records_differ(checked, tuple(fitted), tuple(results))
     main = results[0]
@@ -60,7 +61,7 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
             source=records.source, sha256=records.sha256, read=records.read, excluded=main.flow.left_out
         ),
         models=tuple(results),
-        characteristics=study_characteristics(models[0], checked),
+        characteristics=_characteristics(checked, models[0]),
         findings=(*checked.records.findings, *differing),
         provenance=provenance(checked.file),
         comparison=compare_models(results),
@@ -69,13 +70,28 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
     return study, tuple(fitted)
 
 
-def _kept(checked: CheckedPlan, prepared: Prepared) -> KeptRecords:
-    """Records that belong to the model's study population and have the outcome, complete or not."""
-    plan, records = checked.file.plan, checked.records
-    keep = [condition for condition in (plan.records.keep, prepared.section.keep) if condition is not None]
-    rows: NDArray[np.bool_] = account(records, checked.outcome, keep=keep, exposures=(), adjustment=()).included
+def _rows_kept(checked: CheckedPlan, prepared: Prepared, exposures: tuple[str, ...]) -> NDArray[np.bool_]:
+    """Records of the model's study population that have the outcome and the exposures named, complete or not."""
+    keep = conditions(checked.file.plan, prepared.section)
+    return account(checked.records, checked.outcome, keep=keep, exposures=exposures, adjustment=()).included
+
+
+def _kept(checked: CheckedPlan, rows: NDArray[np.bool_]) -> KeptRecords:
+    records = checked.records
     counts = None if records.counts is None else np.asarray(records.counts, dtype=np.float64)[rows]
     return KeptRecords(records.frame.loc[rows].reset_index(drop=True), checked.outcome.event[rows], counts)
+
+
+def _characteristics(checked: CheckedPlan, main: Prepared) -> Table:
+    rows = _rows_kept(checked, main, main.exposures)
+    return study_characteristics(
+        checked.file.plan.study.design,
+        _kept(checked, rows),
+        checked.records.columns,
+        main.exposures,
+        main.adjustment,
+        main.accounting.included[rows],
+    )
 
 
 def _records_differ(

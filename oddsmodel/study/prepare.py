@@ -18,6 +18,7 @@ from oddsmodel.plan.schema import ModelSection, StudyPlan
 from oddsmodel.records.accounting import Accounting, account
 from oddsmodel.records.outcome import CodedOutcome
 from oddsmodel.records.types import Records
+from oddsmodel.records.usable import unusable_in_formula
 from oddsmodel.wording import finding
 
 Array = NDArray[np.float64]
@@ -81,6 +82,11 @@ def prepare(plan: StudyPlan, records: Records, outcome: CodedOutcome) -> tuple[P
     return tuple(prepared)
 
 
+def conditions(plan: StudyPlan, section: ModelSection) -> list[str]:
+    """Who belongs: the plan's condition and the model's own."""
+    return [condition for condition in (plan.records.keep, section.keep) if condition is not None]
+
+
 def on_records_of(prepared: Prepared, other: Prepared, records: Records) -> Prepared | None:
     """The model on the records it shares with another one; None where it cannot be built there."""
     both = prepared.accounting.included & other.accounting.included
@@ -111,7 +117,7 @@ def on_records_of(prepared: Prepared, other: Prepared, records: Records) -> Prep
 def _vet(section: ModelSection, records: Records, outcome: str) -> _Vetted:
     where = f"[[models]] “{section.name}” formula"
     formula = vet_formula(section.formula, columns=records.columns, outcome=outcome, where=where)
-    faults = []
+    faults = unusable_in_formula(records.columns, formula.columns, where)
     for exposure in section.exposures:
         if exposure not in formula.columns:
             near = nearest(exposure, formula.columns)
@@ -138,11 +144,10 @@ def _prepare(
 ) -> Prepared:
     section, formula = vetted.section, vetted.formula
     exposures = tuple(section.exposures)
-    keep = [condition for condition in (plan.records.keep, section.keep) if condition is not None]
     accounting = account(
         records,
         outcome,
-        keep=keep,
+        keep=conditions(plan, section),
         exposures=exposures,
         adjustment=tuple(column for column in needed if column not in exposures),
     )

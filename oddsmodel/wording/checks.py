@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from oddsmodel.wording.checks_fit import FIT_SENTENCES
+from oddsmodel.wording.checks_form import FORM_SENTENCES
 from oddsmodel.wording.say import Sentence
 
-SENTENCES: dict[str, Sentence] = {}
+SENTENCES: dict[str, Sentence] = {**FIT_SENTENCES, **FORM_SENTENCES}

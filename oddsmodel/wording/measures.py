@@ -126,10 +126,6 @@ SENTENCES: dict[str, Sentence] = {
         "The models rest on different records, so that a part of what differs may come from the records and not from "
         "the adjustment."
     ),
-    "crude-and-adjusted-alt": lambda facts: (
-        "Odds ratios with their intervals on a log axis, crude and adjusted, for "
-        f"{listed(facts['labels'])}; a line marks an odds ratio of 1."
-    ),
     "compare-models-alt": lambda facts: (
         "Odds ratios of the exposure with their intervals on a log axis, one series for each model: "
         f"{listed(facts['models'])}."

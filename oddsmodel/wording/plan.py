@@ -19,6 +19,10 @@ def _nearest_or_all(facts: Mapping[str, Any]) -> str:
     return f"{meant}{facts['choice']} {choice}." if valid else meant.strip()
 
 
+def _others(facts: Mapping[str, Any]) -> str:
+    return f"{facts['number']} more {'fault was' if facts['number'] == 1 else 'faults were'} found."
+
+
 FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     # The file.
     "plan-missing": (
@@ -60,7 +64,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "toml-line-end": (
         "Something follows where the value has ended{line}.",
-        "Write one key = value a line, numbers with a decimal point, a text that has double quotes in it in single quotes.",
+        "Write one key = value a line, numbers with a decimal point, texts with double quotes inside in single ones.",
     ),
     "toml-statement": ("This is neither a key, a [section] nor a # comment{line}.", "Begin the line with one of them."),
     "toml-name": (
@@ -103,7 +107,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Head each model with [[models]], in double brackets, and give it a name below.",
     ),
     "wrong-kind-of-value": ("This is {found} where {wanted} is wanted.", "Write it as {example}."),
-    "empty-text": ("The text is empty.", "Write something there, such as {example}, or take the line out."),
+    "empty-text": ("The text is empty.", "Write something there, such as {example}."),
     "not-one-of": ("{found} is not one of the values that this key can have.", _nearest_or_all),
     "per-not-positive": ("{found} cannot be the step of an odds ratio.", 'Give a number above 0, or "SD".'),
     "out-of-range": ("{found} is outside the range from {least} to {most}.", "Give a number within it."),
@@ -112,7 +116,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "For a {found}% interval write level = {share}.",
     ),
     "not-readable-as": ("The value cannot be used here ({problem}).", "Write it as {example}."),
-    "more-faults": ("There are {number} more faults of this kind.", "Put these right first and check the plan again."),
+    "more-faults": (_others, "Put these right first and check the plan again."),
     # What a later version brings.
     "later-derived": (
         "This version makes no columns from others yet.",
@@ -272,16 +276,66 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         '{key} has a meaning only for numbers, and this column is of the kind "{kind}".',
         'Take the line out, or write kind = "number".',
     ),
+    "draft-outcome-name": (
+        "The outcome's name is empty, longer than 200 characters or holds characters that no text file can.",
+        "Rename the column.",
+    ),
+    "draft-no-exposure": (
+        "No column besides the outcome can be an exposure: each has one value only, too many, or names or dates.",
+        "Add the column that the question is about.",
+    ),
     "check-unknown": (
         "There is no check called {check} to ask for.",
         "Take it out of the list: the usual checks are always done.",
     ),
     "check-not-yet": (
         "This version cannot do the check {check} yet.",
-        "Until then, take it out of the list; whether each number column is straight on the log-odds scale is always checked.",
+        "Until then, take it out of the list: the linearity of each number column is always checked in another way.",
     ),
 }
 
-SENTENCES: dict[str, Sentence] = {code: what for code, (what, _) in FAULTS.items()} | {
-    f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()
+DRAFT: dict[str, Sentence] = {
+    "draft-title": "A starter plan for {source} ({records}), written by `oddsmodel draft`.",
+    "draft-how": "Lines that begin with # are comments. Settle the points below, then check the plan and run it.",
+    "draft-to-settle": "To settle:",
+    "draft-settle-event": "Which value of {column} is the event? Say it under [outcome].",
+    "draft-settle-exposure": (
+        "What is the question about? The model has {column} as its exposure, being the first column that can be one."
+    ),
+    "draft-settle-adjustment": (
+        "Which columns to adjust for? Those that bear on the outcome and on who was exposed. A column measured after "
+        "the exposure may be one of its effects: leave it out."
+    ),
+    "draft-settle-design": "How did the records come about? The design decides what the report may say.",
+    "draft-settle-columns": "Is each column what it was taken for, and is its reference the level to compare with?",
+    "draft-settle-values": "{column} must have exactly two values to be an outcome; now it does not.",
+    "draft-settle": "To settle: {question}",
+    "draft-settle-these": "to settle: do these mean not recorded?",
+    "draft-settle-codes": "to settle: and these?",
+    "draft-question": "the question in one sentence",
+    "draft-design": "or cross-sectional, case-control, trial",
+    "draft-not-measured": 'confounders that nobody recorded, such as ["frailty"]',
+    "draft-not-recorded": "cell texts that mean not recorded",
+    "draft-keep": "who belongs to the study",
+    "draft-count": "the column that says how many equal records a row stands for",
+    "draft-event-open": "to settle",
+    "draft-values": "Values, with rounded numbers of records: {values}",
+    "draft-label": "what the report calls it",
+    "draft-without-value": "Not recorded: {records}",
+    "draft-per": 'the odds ratio is for a step of this size; "SD" for one standard deviation',
+    "draft-reference": "the level that the others are compared with",
+    "draft-levels-unlisted": "{number} different values, too few or too many to compare as levels",
+    "draft-timing": "before or after the exposure?",
+    "draft-name-unusable": "A column is left out here: its name is too long or cannot be written.",
+    "draft-columns-left": "{number} more columns are not described here; they can be used all the same.",
+    "draft-candidates": "With every other candidate (take out what does not belong):",
+    "draft-exposures": "what the question is about",
+    "draft-audience": 'or "internal", which shows small counts',
+    "draft-hide": "counts below this are hidden",
 }
+
+SENTENCES: dict[str, Sentence] = (
+    {code: what for code, (what, _) in FAULTS.items()}
+    | {f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()}
+    | DRAFT
+)

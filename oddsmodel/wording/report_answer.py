@@ -131,6 +131,6 @@ SENTENCES: dict[str, Sentence] = {
         "Cases and controls were sampled apart, so this report says nothing of how common {outcome} is."
     ),
     "answer-no-reason": "it was withheld.",
-    "crude-beside": "Crude, on the same records: {crude}.",
-    "interval-of": lambda facts: f"{facts['percent']} interval {interval(facts['lower'], facts['upper'])}",
+    "measure-adjusted": "adjusted odds ratio",
+    "measure-unadjusted": "odds ratio, not adjusted",
 }

@@ -28,12 +28,12 @@ def _unknown(facts: Mapping[str, Any]) -> str:
     was = "Was" if len(labels) == 1 else "Were"
     return (
         f"{was} {_quoted(labels)} measured before the exposure or after it? The plan does not say; write it there "
-        "(`timing`)."
+        "as “timing”."
     )
 
 
 def _no_reason(facts: Mapping[str, Any]) -> str:
-    return f"Why is {_quoted(facts['labels'])} adjusted for? The plan gives no reason; write it there (`why`)."
+    return f"Why is {_quoted(facts['labels'])} adjusted for? The plan gives no reason; write it there as “why”."
 
 
 def _not_measured(facts: Mapping[str, Any]) -> str:
@@ -70,7 +70,7 @@ SENTENCES: dict[str, Sentence] = {
     "cause-not-measured": _not_measured,
     "cause-nothing-named": (
         "The plan names no confounder that was not recorded. There almost always is one: think again, and write it "
-        "there (`not_measured`)."
+        "there as “not_measured”."
     ),
     "cause-no-adjustment": "Nothing was adjusted for, so any common cause of exposure and outcome is still in the answer.",
     "cause-table": "What was adjusted for, and why",

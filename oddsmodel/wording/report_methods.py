@@ -99,7 +99,7 @@ def _model(facts: Mapping[str, Any]) -> str:
 
 
 def _several(facts: Mapping[str, Any]) -> str:
-    return f"{plural(facts['number'], 'model').capitalize()} were set in the plan: {listed(facts['names'])}."
+    return f"The plan sets {plural(facts['number'], 'model')}: {listed(facts['names'])}."
 
 
 SENTENCES: dict[str, Sentence] = {

@@ -71,16 +71,18 @@ def draw(figure: EstimatesFigure) -> Sheet:
     height = _TOP + sum(LINE * len(label) + sum(row.height for row in rows) + _GAP for label, rows in blocks)
 
     sheet = Sheet(height + 58.0)
-    _grid(sheet, axis, height, figure.axis)
+    ticks = ratio_ticks(axis.low, axis.high, axis.right - axis.left)
     top = _TOP
     for label, rows in blocks:
         for line in label:
             sheet.text(0, top + 12, line, weight="bold")
             top += LINE
+        _grid(sheet, axis, ticks, top, top + sum(row.height for row in rows))
         for row in rows:
             _estimate(sheet, row, axis, top, drawn_as[row.mark.series])
             top += row.height
         top += _GAP
+    _scale(sheet, axis, ticks, height, figure.axis)
     return sheet
 
 
@@ -108,21 +110,31 @@ def _axis(marks: tuple[EstimateMark, ...], left: float, right: float) -> _Axis:
         (mark.estimate for mark in marks if mark.estimate is not None),
         (limit for mark in marks for limit in (mark.lower, mark.upper) if limit is not None),
     )
+    open_room = (high / low) ** 0.12
+    low = low / open_room if any(mark.lower is None for mark in marks if mark.estimate is not None) else low
+    high = high * open_room if any(mark.upper is None for mark in marks if mark.estimate is not None) else high
     return _Axis(low, high, left, right)
 
 
-def _grid(sheet: Sheet, axis: _Axis, bottom: float, title: str) -> None:
-    one = axis.at(1.0)
-    for tick in ratio_ticks(axis.low, axis.high, axis.right - axis.left):
+def _grid(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], top: float, bottom: float) -> None:
+    """Quiet rules behind the rows of one label, the line at 1 stronger."""
+    for tick in ticks:
+        sheet.line([axis.at(tick)] * 2, [top, bottom], RULE, linewidth=0.8, zorder=0)
+    sheet.line([axis.at(1.0)] * 2, [top - 1, bottom + 1], MUTED, linewidth=1.4, zorder=1)
+
+
+def _scale(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], bottom: float, title: str) -> None:
+    sheet.line([axis.left, axis.right], [bottom, bottom], RULE)
+    for tick in ticks:
         x = axis.at(tick)
-        sheet.line([x, x], [_TOP, bottom], RULE, linewidth=0.8, zorder=0)
-        sheet.text(x, bottom + 15, ratio_label(tick), size=SMALL, colour=MUTED, ha="center")
-    sheet.line([one, one], [0, bottom + 2], MUTED, linewidth=1.4, zorder=1)
+        sheet.line([x, x], [bottom, bottom + 4], RULE)
+        sheet.text(x, bottom + 17, ratio_label(tick), size=SMALL, colour=MUTED, ha="center")
+    one = axis.at(1.0)
     if one - axis.left > 78:
-        sheet.text(one - 8, bottom + 33, say("figure-lower-odds"), size=SMALL, colour=MUTED, ha="right")
+        sheet.text(one - 8, bottom + 35, say("figure-lower-odds"), size=SMALL, colour=MUTED, ha="right")
     if axis.right - one > 50:
-        sheet.text(one + 8, bottom + 33, say("figure-higher-odds"), size=SMALL, colour=MUTED)
-    sheet.text(axis.left, bottom + 52, title, size=SMALL, colour=MUTED)
+        sheet.text(one + 8, bottom + 35, say("figure-higher-odds"), size=SMALL, colour=MUTED)
+    sheet.text(axis.left, bottom + 53, title, size=SMALL, colour=MUTED)
 
 
 def _estimate(sheet: Sheet, row: _Row, axis: _Axis, top: float, series: int) -> None:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, PAPER, RULE, SECOND, SMALL, TEXT, WIDTH, Sheet
-from oddsmodel.report.figures.lettering import fold
+from oddsmodel.report.figures.lettering import fold, width_of
 from oddsmodel.results.figures import FlowFigure
 from oddsmodel.wording import numbers, say
 
@@ -49,7 +49,7 @@ def _station(sheet: Sheet, y: float, count: int | None, words: str, colour: str)
     amount = numbers.count(count) if count is not None else say("figure-withheld")
     size = _BIG if count is not None else TEXT
     sheet.text(_BRANCH - 10, y + 7.5, amount, size=size, colour=colour, weight="bold")
-    offset = 0.66 * size * len(amount) + 12
+    offset = 1.06 * width_of(amount, size) + 9
     sheet.text(_BRANCH - 10 + offset, y + 7.5, words, size=TEXT, colour=INK)
 
 

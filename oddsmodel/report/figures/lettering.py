@@ -6,7 +6,7 @@ import unicodedata
 
 from oddsmodel.wording.plain import plain
 
-_NARROW = frozenset("ijlftrI.,:;'|!()[]{} /-‐–")
+_NARROW = frozenset("ijlftrI.,:;'|!()[]{} /-‐–\u202f\u2009\u00a0")
 _WIDE = frozenset("mwMW@%&—")
 LONGEST = 160
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 from oddsmodel.report.view.lead import exposures_shown, has_profile, is_estimated
@@ -10,43 +11,79 @@ from oddsmodel.wording import numbers, say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
 from oddsmodel.wording.report_methods import REFERENCES, WAYS
 
+Told = tuple[str, tuple[str, ...]]
+"""A sentence and the references it cites."""
+
 
 @dataclass(frozen=True, slots=True)
 class MethodsView:
-    paragraph: tuple[str, ...]
+    paragraphs: tuple[str, ...]
     formulas: tuple[tuple[str, str], ...]
     references: tuple[str, ...]
 
 
 def methods(disclosed: DisclosedResults, lead: ModelResult | None) -> MethodsView:
     study = disclosed.study
-    sentences: list[str] = []
-    cited: set[str] = set()
-
-    def tell(code: str, *references: str, **facts: object) -> None:
-        sentences.append(say(code, **facts))
-        cited.update(references)
-
-    flow = lead.flow if lead is not None else None
-    tell(
-        "methods-records",
-        design=study.design,
-        read=study.records.read,
-        analysed=flow.analysed if flow is not None else None,
-        events=lead.events if lead is not None else None,
+    parts = [list(_records(study, lead))]
+    if lead is not None and is_estimated(lead):
+        parts += [list(_model(study, lead)), list(_described(study, lead))]
+    parts.append(list(_written(disclosed)))
+    cited = sorted({reference for part in parts for _, references in part for reference in references})
+    return MethodsView(
+        paragraphs=tuple(" ".join(sentence for sentence, _ in part) for part in parts if part),
+        formulas=tuple((model.name, model.formula) for model in study.models),
+        references=tuple(REFERENCES[code] for code in cited),
     )
-    tell("methods-complete-records")
-    if lead is not None:
-        _model(study, lead, tell)
-    _described(study, lead, tell)
+
+
+def _records(study: StudyResults, lead: ModelResult | None) -> Iterator[Told]:
+    analysed, events = (lead.flow.analysed, lead.events) if lead is not None else (None, None)
+    yield say("methods-records", design=study.design, read=study.records.read, analysed=analysed, events=events), ()
+    yield say("methods-complete-records"), ()
+
+
+def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
+    facts = {
+        "outcome": outcome_words(study.outcome_label, study.event),
+        "method": lead.method,
+        "exposures": list(lead.exposure_labels),
+        "adjustment": list(lead.adjustment_labels),
+    }
+    yield say("methods-model", **facts), ("cox-1958",)
+    if study.design in CASE_CONTROL:
+        yield say("methods-case-control"), ("prentice-pyke-1979",)
+    level = say("level", level=lead.level)
+    if has_profile(lead):
+        yield say("methods-profile", level=level), ("venzon-moolgavkar-1988", "wald-1943")
+    else:
+        yield say("methods-wald", level=level), ("wald-1943",)
+    if any(term.p is not None for term in lead.terms):
+        yield say("methods-terms"), ()
+    if any(one.crude is not None for one in exposures_shown(lead)):
+        yield say("methods-crude"), ("greenland-1999",)
+    if any(table.id.startswith("two_by_two") for table in lead.tables):
+        yield say("methods-two-by-two"), ("woolf-1955", "breslow-day-1980")
+    if lead.adjustment:
+        yield say("methods-adjustment"), ("westreich-greenland-2013",)
+    others = [model.name for model in study.models if not model.added_by_program]
+    if len(others) > 1:
+        yield say("methods-several-models", number=len(others), names=others), ()
+
+
+def _described(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
+    if study.characteristics is not None:
+        yield say("methods-characteristics"), ("austin-2009",)
+    done = [check.name for check in lead.checks if check.verdict != "not applicable"]
+    ways = [WAYS[name] for name in dict.fromkeys(done) if name in WAYS]
+    if ways:
+        cited = tuple(reference for _, references in ways for reference in references)
+        yield say("methods-checks", ways=[say(code) for code, _ in ways]), cited
+
+
+def _written(disclosed: DisclosedResults) -> Iterator[Told]:
     if disclosed.audience == "shareable" and disclosed.hide_counts_below > 0:
-        tell("methods-disclosure", below=disclosed.hide_counts_below)
-    versions = study.provenance.versions
+        yield say("methods-disclosure", below=disclosed.hide_counts_below), ()
+    versions = disclosed.study.provenance.versions
     named = [f"{name} {versions[name]}" for name in ("oddsmodel", "Python") if name in versions]
     if named:
-        tell("methods-software", versions=numbers.listed(named))
-    return MethodsView(
-        paragraph=tuple(sentences),
-        formulas=tuple((model.name, model.formula) for model in study.models),
-        references=tuple(REFERENCES[code] for code in sorted(cited)),
-    )
+        yield say("methods-software", versions=numbers.listed(named)), ()

@@ -17,11 +17,11 @@ MOST_ANSWERS = 4
 
 @dataclass(frozen=True, slots=True)
 class AnswerView:
-    """One contrast: its label, its odds ratio with interval, and two sentences."""
+    """One contrast: its label, its odds ratio, and two sentences."""
 
     label: str
     odds_ratio: str
-    interval: str
+    measure: str
     sentence: str
     compatible: str
 
@@ -75,7 +75,7 @@ def _answer(study: StudyResults, model: ModelResult, one: CoefficientResult) -> 
     if one.odds_ratio is None:
         reason = one.reasons.get("odds_ratio", say("answer-no-reason"))
         return AnswerView(one.label, "", "", say("answer-no-estimate", reason=reason), "")
-    percent = say("level", level=model.level)
+    adjusted = bool(model.adjustment) or len(model.exposures) > 1
     sentence = say(
         "answer",
         design=study.design,
@@ -85,13 +85,13 @@ def _answer(study: StudyResults, model: ModelResult, one: CoefficientResult) -> 
         odds_ratio=one.odds_ratio,
         lower=limits.lower,
         upper=limits.upper,
-        percent=percent,
-        adjusted=bool(model.adjustment) or len(model.exposures) > 1,
+        percent=say("level", level=model.level),
+        adjusted=adjusted,
     )
     return AnswerView(
         label=one.label,
         odds_ratio=numbers.ratio(one.odds_ratio),
-        interval=say("interval-of", percent=percent, lower=limits.lower, upper=limits.upper),
+        measure=say("measure-adjusted" if adjusted else "measure-unadjusted"),
         sentence=sentence,
         compatible=say("compatible", lower=limits.lower, upper=limits.upper),
     )

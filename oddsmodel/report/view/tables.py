@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from oddsmodel.results.tables import Cell, CellKind, Hidden, Interval, Table, TableColumn
 from oddsmodel.wording import numbers, say
 
-MOST_DIGITS = 4
+MOST_DIGITS = 6
 
 
 @dataclass(frozen=True, slots=True)
@@ -121,13 +121,11 @@ def _is_ratio(cells: Sequence[Cell]) -> bool:
 
 
 def _digits(cells: Sequence[Cell]) -> int:
-    """Decimals that leave the smallest number of a column two figures, and none where all are whole."""
+    """Decimals that leave the largest number of a column three figures, and none where all are whole."""
     values = [abs(value) for value in _values(cells) if value != 0]
     if all(value == int(value) for value in values):
         return 0
-    smallest = min(values)
-    needed = 2 if smallest >= 0.1 else 1 - math.floor(math.log10(smallest))
-    return 1 if smallest >= 100 else min(needed, MOST_DIGITS)
+    return min(max(2 - math.floor(math.log10(max(values))), 0), MOST_DIGITS)
 
 
 def _stems(table: Table, blocks: Sequence[int]) -> list[str]:
@@ -137,6 +135,8 @@ def _stems(table: Table, blocks: Sequence[int]) -> list[str]:
         above, here = table.rows[place - 1][0], table.rows[place][0]
         if blocks[place] == blocks[place - 1] and isinstance(above, str) and isinstance(here, str):
             stem, colon, _ = here.rpartition(": ")
-            if colon and above.startswith(f"{stem}: "):
+            if here == above:
+                stems[place] = here
+            elif colon and above.startswith(f"{stem}: "):
                 stems[place] = f"{stem}: "
     return stems

@@ -1,0 +1,72 @@
+"""Does the model fit? One check a file; here they are run, and the few lines that speak for all of them chosen."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from importlib import import_module
+from typing import TYPE_CHECKING, NamedTuple, get_args
+
+from oddsmodel.progress import Progress, Silent
+from oddsmodel.results.study import CheckResult, Family, Flow, Verdict
+
+if TYPE_CHECKING:
+    from oddsmodel.model.fitted import FittedModel
+
+__all__ = ["SummaryLine", "run_checks", "summary_lines"]
+
+FAMILIES: tuple[Family, ...] = get_args(Family)
+"""The seven families, in the order in which they are read."""
+
+CHECKS = (
+    "events_per_parameter",
+    "sparse_cells",
+    "overlap",
+    "hosmer_lemeshow",
+    "residual_tests",
+    "calibration",
+    "roc",
+    "brier",
+    "linearity",
+    "influence",
+    "collinearity",
+    "independence",
+)
+
+WORST: tuple[Verdict, ...] = ("caution", "look", "fine", "not applicable")
+
+SILENT = Silent()
+
+
+class SummaryLine(NamedTuple):
+    """The one sentence of a family."""
+
+    family: Family
+    verdict: Verdict
+    line: str
+
+
+def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | None = None) -> tuple[CheckResult, ...]:
+    """All checks of a fit, by family. flow: the model's accounting, for the share of records left out."""
+    from oddsmodel.checks import counting
+
+    progress.stage("checking", len(CHECKS) + 1)
+    results = [counting.check(model, flow)]
+    progress.advance()
+    for name in CHECKS:
+        results.append(import_module(f"oddsmodel.checks.{name}").check(model))
+        progress.advance()
+    return tuple(sorted(results, key=lambda result: FAMILIES.index(result.family)))
+
+
+def summary_lines(checks: Iterable[CheckResult]) -> tuple[SummaryLine, ...]:
+    """At most seven lines, one a family: that of the worst verdict, the first of equals. A check may have none."""
+    spoken: dict[Family, CheckResult] = {}
+    for check in checks:
+        if not check.line:
+            continue
+        before = spoken.get(check.family)
+        if before is None or WORST.index(check.verdict) < WORST.index(before.verdict):
+            spoken[check.family] = check
+    return tuple(
+        SummaryLine(family, spoken[family].verdict, spoken[family].line) for family in FAMILIES if family in spoken
+    )

@@ -1,0 +1,254 @@
+"""All counts of a study, in tables, flows and figures, as one system of sums."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from itertools import combinations
+
+from oddsmodel.disclosure.calibration import merge_groups
+from oddsmodel.disclosure.system import EVENTS, READ, RECORDS, SIDE, Counts, CountSystem, Place
+from oddsmodel.disclosure.table_counts import Sightings, TableCounts, row_text
+from oddsmodel.results.figures import CalibrationFigure
+from oddsmodel.results.study import ModelResult, StudyResults
+from oddsmodel.results.tables import Table
+
+
+@dataclass(slots=True)
+class _Ordered:
+    """Records in order of fitted probability, cut into groups: the groups' records and events as counts."""
+
+    model: int
+    records: list[int]
+    events: list[int]
+
+
+@dataclass(slots=True)
+class _Gathered:
+    system: CountSystem
+    threshold: int
+    sightings: Sightings = field(default_factory=Sightings)
+    keyed: list[dict[tuple[str, str, int, str], int]] = field(default_factory=list)
+    ordered: list[_Ordered] = field(default_factory=list)
+
+
+def gather(study: StudyResults, threshold: int) -> Counts:
+    """The counts of a study under a threshold of at least 2.
+
+    Equal counts that stand in several places are recognised by the words of their row or by what they are a part of;
+    where that is not certain they are tied, to be hidden together. Two models whose records differ by a small count
+    give that count away, so the differences of models of which one's records hold the other's are counts too.
+    """
+    found = _Gathered(CountSystem(), threshold)
+    read = _enter_flows(found, study)
+    scalars = [_enter_model(found, study, m, read) for m in range(len(study.models))]
+    main: Mapping[int, int] = scalars[0] if scalars else {}
+    if study.characteristics is not None:
+        _enter_table(found, study.characteristics, ("characteristics",), main, 0)
+    if study.comparison is not None:
+        everywhere = {value: number for known in reversed(scalars) for value, number in known.items()}
+        cells = _enter_table(found, study.comparison, ("comparison",), {}, 0)
+        for number in cells.cells.values():
+            same = everywhere.get(found.system.value(number))
+            if same is not None:
+                found.system.merge(number, same)
+    _enter_nested(found, study)
+    _enter_ordered(found)
+    _recognise(found)
+    return found.system.freeze()
+
+
+def _enter_flows(found: _Gathered, study: StudyResults) -> dict[int, int]:
+    """Records read and left out, before the models; returns the counts of records read by size."""
+    system = found.system
+    read: dict[int, int] = {}
+    sizes = [model.flow.read for model in study.models] + [study.records.read]
+    for size in sizes:
+        if size is not None and size not in read:
+            read[size] = system.add(size, ("read", size), rank=READ)
+    left_out: dict[tuple[str, str, int], int] = {}
+
+    def enter(place: Place, code: str, reason: str, records: int | None, model: int) -> None:
+        if records is None:
+            return
+        number = system.add(records, place, model=model)
+        same = left_out.setdefault((code, reason, records), number)
+        system.merge(same, number)
+        found.sightings.wholes.setdefault(records, []).append((("flow",), number))
+
+    for m, model in enumerate(study.models):
+        for i, one in enumerate(model.flow.left_out):
+            enter(("left out", m, i), one.code, one.reason, one.records, m)
+    for i, one in enumerate(study.records.excluded):
+        enter(("excluded", i), one.code, one.reason, one.records, 0)
+    return read
+
+
+def _enter_model(found: _Gathered, study: StudyResults, m: int, read: Mapping[int, int]) -> dict[int, int]:
+    """A model's totals, flow, tables and checks; returns its totals by size."""
+    system, model = found.system, study.models[m]
+    keyed: dict[tuple[str, str, int, str], int] = {}
+    found.keyed.append(keyed)
+    scalars: dict[int, int] = {}
+    analysed, happened = analysed_and_events(model)
+    if analysed is not None:
+        records = system.add(analysed, ("records", m), rank=RECORDS, model=m)
+        keyed["", "", 0, "records"] = records
+        _enter_flow_sum(found, model, m, read, records)
+        if happened is not None:
+            events = system.add(happened, ("events", m), rank=EVENTS, model=m)
+            others = system.add(analysed - happened, rank=EVENTS, model=m)
+            system.relate([events, others], records)
+            keyed["", "", 0, "events"] = events
+            scalars = {analysed - happened: others, happened: events}
+        scalars[analysed] = records
+        for c, coefficient in enumerate(model.coefficients):
+            everyone = coefficient.crude_all_records
+            if everyone is not None and everyone.records is not None:
+                number = system.add(everyone.records, ("crude all", m, c), rank=SIDE, model=m)
+                _enter_difference(found, number, records, m)
+    for t, table in enumerate(model.tables):
+        cells = _enter_table(found, table, ("model", m, t), scalars, m)
+        seen: dict[tuple[str, str, str], int] = {}
+        for (r, k), number in cells.cells.items():
+            words, key = row_text(table, table.rows[r]), table.columns[k].key
+            times = seen[table.id, words, key] = seen.get((table.id, words, key), -1) + 1
+            keyed[f"{table.id} {words}", key, times, "cell"] = number
+            if analysed is not None and table.columns[k].part_of is None:
+                _enter_difference(found, number, scalars[analysed], m)
+    for c, check in enumerate(model.checks):
+        for t, table in enumerate(check.tables):
+            cells = _enter_table(found, table, ("check", m, c, t), scalars, m)
+            _see_ordered(found, table, cells, m)
+        for figure in check.figures:
+            if isinstance(figure, CalibrationFigure):
+                _enter_calibration(found, figure, m)
+    return scalars
+
+
+def analysed_and_events(model: ModelResult) -> tuple[int | None, int | None]:
+    """A model's records and events, from its accounting where it was not estimated."""
+    records = model.records if model.records is not None else model.flow.analysed
+    return records, model.events if model.events is not None else model.flow.events
+
+
+def _enter_flow_sum(found: _Gathered, model: ModelResult, m: int, read: Mapping[int, int], analysed: int) -> None:
+    flow, system = model.flow, found.system
+    if flow.read is None or any(one.records is None for one in flow.left_out):
+        return
+    if sum(one.records or 0 for one in flow.left_out) + system.value(analysed) != flow.read:
+        return
+    system.relate([*(system.at(("left out", m, i)) for i in range(len(flow.left_out))), analysed], read[flow.read])
+
+
+def _enter_difference(found: _Gathered, larger: int, smaller: int, model: int) -> None:
+    """Two counts of which one holds the other: what lies between them, where it is small, is a count to protect."""
+    difference = found.system.value(larger) - found.system.value(smaller)
+    if 0 < difference < found.threshold:
+        between = found.system.add(difference, model=model)
+        found.system.relate([smaller, between], larger)
+
+
+def _enter_table(found: _Gathered, table: Table, owner: Place, scalars: Mapping[int, int], model: int) -> TableCounts:
+    cells = TableCounts(found.system, found.sightings, table, owner, scalars, model)
+    cells.enter()
+    return cells
+
+
+def _enter_nested(found: _Gathered, study: StudyResults) -> None:
+    """Differences between two models, where the records of one seem to hold those of the other."""
+    for (i, first), (j, second) in combinations(enumerate(found.keyed), 2):
+        shared = first.keys() & second.keys()
+        differences = {key: found.system.value(first[key]) - found.system.value(second[key]) for key in shared}
+        signs = {difference > 0 for difference in differences.values() if difference}
+        if len(signs) > 1 or ("", "", 0, "records") not in shared:
+            continue
+        for key in sorted(shared):
+            one, other = first[key], second[key]
+            if differences[key] == 0:
+                found.system.merge(one, other)
+            elif differences[key] > 0:
+                _enter_difference(found, one, other, j)
+            else:
+                _enter_difference(found, other, one, max(i, j))
+
+
+def _see_ordered(found: _Gathered, table: Table, cells: TableCounts, model: int) -> None:
+    """A table of groups numbered 1, 2, ... with records and events may cut the same order as another one."""
+    numbered = [row[0] for row in table.rows] == [str(k + 1) for k in range(len(table.rows))]
+    if not numbered or not {"records", "events"} <= cells.positions.keys():
+        return
+    columns = [[cells.cells.get((r, cells.positions[key])) for r in range(len(table.rows))] for key in _PAIR]
+    records, events = ([number for number in column if number is not None] for column in columns)
+    if len(records) == len(events) == len(table.rows):
+        found.ordered.append(_Ordered(model, records, events))
+
+
+_PAIR = ("records", "events")
+
+
+def _enter_calibration(found: _Gathered, figure: CalibrationFigure, model: int) -> None:
+    """The groups as they will be drawn: their counts can be read off the figure and stay."""
+    groups = merge_groups(figure.groups, found.threshold)
+    found.ordered.append(
+        _Ordered(
+            model,
+            [found.system.add(group.records, locked=True) for group in groups],
+            [found.system.add(group.events, locked=True) for group in groups],
+        )
+    )
+
+
+def _enter_ordered(found: _Gathered) -> None:
+    """Two ways to cut the same order: between cuts that both have, both sums are the same."""
+    system = found.system
+    for one, other in combinations(found.ordered, 2):
+        if one.model != other.model:
+            continue
+        cuts = [_cuts(system, groups) for groups in (one, other)]
+        common = sorted(cuts[0].keys() & cuts[1].keys())
+        if not common or common[-1] != max(cuts[0]) or common[-1] != max(cuts[1]):
+            continue
+        starts = [0, 0]
+        for cut in common:
+            ends = [cuts[0][cut], cuts[1][cut]]
+            for kind in _PAIR:
+                parts = [
+                    getattr(groups, kind)[start:end]
+                    for groups, start, end in zip((one, other), starts, ends, strict=True)
+                ]
+                sums = {sum(map(system.value, part)) for part in parts}
+                if len(sums) == 1:
+                    together = system.add(sums.pop())
+                    for part in parts:
+                        system.relate(part, together)
+            starts = ends
+
+
+def _cuts(system: CountSystem, groups: _Ordered) -> dict[tuple[int, int], int]:
+    """Records and events up to each cut, with the number of groups before it."""
+    records = events = 0
+    found = {}
+    for k, (one, other) in enumerate(zip(groups.records, groups.events, strict=True)):
+        records, events = records + system.value(one), events + system.value(other)
+        found[records, events] = k + 1
+    return found
+
+
+def _recognise(found: _Gathered) -> None:
+    """Merge counts that are certainly the same, tie those that may be, link sums to the cells they may be."""
+    system, sightings = found.system, found.sightings
+    for signature, seen in sightings.by_signature.items():
+        if len(seen) < 2:
+            continue
+        tables = [sorted({system.root(number) for number in numbers}) for numbers in seen.values()]
+        if all(len(numbers) == 1 for numbers in tables):
+            for (number,) in tables[1:]:
+                system.merge(tables[0][0], number)
+        elif signature[0] != "row" and isinstance(signature[1], int) and signature[1] >= found.threshold:
+            system.tie(number for numbers in tables for number in numbers)
+    for owner, number in sightings.totals:
+        value = system.value(number)
+        for other, cell in sightings.wholes.get(value, ()) if value >= found.threshold else ():
+            if other != owner and system.root(cell) != system.root(number):
+                system.link(number, cell)

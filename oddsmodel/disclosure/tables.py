@@ -1,0 +1,86 @@
+"""Tables with their hidden counts, and the shares and estimates that hang on these, taken out."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import replace
+
+from oddsmodel.disclosure.hiding import Hiding
+from oddsmodel.disclosure.system import Place
+from oddsmodel.disclosure.table_counts import row_blocks
+from oddsmodel.results.tables import Cell, Hidden, Interval, Table, TableColumn
+from oddsmodel.wording import say
+
+ESTIMATES = ("number", "odds_ratio", "interval", "p")
+
+
+def hidden_estimates(table: Table, owner: Place, hiding: Hiding) -> Iterator[float]:
+    """The estimates in a table that are hidden with a count: they must not stand anywhere else either."""
+    state = _State(table, owner, hiding)
+    for r, row in enumerate(table.rows):
+        for column, cell in zip(table.columns, row, strict=True):
+            if column.kind in ESTIMATES and column.hidden_with_block and state.hangs_on_hidden(r, column):
+                yield from estimates_in(cell)
+
+
+def estimates_in(cell: Cell) -> Iterator[float]:
+    """The numbers of an estimate that tell it from another: not 0 and 1, which stand for nothing."""
+    values = (cell.lower, cell.upper) if isinstance(cell, Interval) else (cell,)
+    yield from (value for value in values if isinstance(value, float) and value not in (0.0, 1.0))
+
+
+def disclosed_table(table: Table, owner: Place, hiding: Hiding) -> Table:
+    """The table with `Hidden` in each cell that may not be shown; its words say no small number of records."""
+    state = _State(table, owner, hiding)
+    text = hiding.withheld.text
+    rows = tuple(
+        tuple(state.cell(r, k, column, row[k]) for k, column in enumerate(table.columns))
+        for r, row in enumerate(table.rows)
+    )
+    columns = tuple(replace(column, heading=text(column.heading)) for column in table.columns)
+    return replace(table, title=text(table.title), columns=columns, rows=rows, note=text(table.note))
+
+
+class _State:
+    """Which counts of a table are hidden, by row, block and column."""
+
+    def __init__(self, table: Table, owner: Place, hiding: Hiding) -> None:
+        self.table, self.owner, self.hiding = table, owner, hiding
+        self.blocks = row_blocks(table)
+        self.keys = [
+            {column.key for k, column in enumerate(table.columns) if hiding.hides("cell", owner, r, k)}
+            for r in range(len(table.rows))
+        ]
+        self.in_block: dict[int, bool] = {}
+        for block, keys in zip(self.blocks, self.keys, strict=True):
+            self.in_block[block] = self.in_block.get(block, False) or bool(keys)
+        # A row that is a block of its own may hold a column's total: with it hidden, no share of it may stand.
+        alone = (r for r, block in enumerate(self.blocks) if self.blocks.count(block) == 1)
+        self.totals = {key for r in alone for key in self.keys[r]} if len(set(self.blocks)) > 1 else set()
+        self.part_of = {column.key: column.part_of for column in table.columns}
+
+    def hangs_on_hidden(self, row: int, column: TableColumn) -> bool:
+        """Whether a cell that is no count would give a hidden count away."""
+        needed = set(column.hidden_with)
+        needed |= {whole for key in column.hidden_with if (whole := self.part_of.get(key)) is not None}
+        if needed & self.keys[row] or set(column.hidden_with) & self.totals:
+            return True
+        return column.hidden_with_block and self.in_block[self.blocks[row]]
+
+    def cell(self, row: int, k: int, column: TableColumn, cell: Cell) -> Cell:
+        if self.hiding.hides("cell", self.owner, row, k):
+            return self._hidden("count-hidden")
+        if cell is None or isinstance(cell, Hidden):
+            return cell
+        words_for_a_number = isinstance(cell, str) and column.kind != "text"
+        if not words_for_a_number and self.hangs_on_hidden(row, column):
+            return self._hidden("estimate-hidden")
+        if isinstance(cell, str):
+            return self.hiding.withheld.text(cell)
+        if column.kind in ESTIMATES and any(one in self.hiding.withheld.estimates for one in estimates_in(cell)):
+            return self._hidden("estimate-hidden")
+        return cell
+
+    def _hidden(self, code: str) -> Hidden:
+        self.hiding.taken += 1
+        return Hidden(say(code))

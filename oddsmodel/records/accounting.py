@@ -1,0 +1,109 @@
+"""Who is analysed and who is left out, each record once, under the first reason that holds."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from oddsmodel.records.condition import vet_condition
+from oddsmodel.records.outcome import CodedOutcome
+from oddsmodel.records.types import Records
+from oddsmodel.results.study import Exclusion, Flow
+from oddsmodel.wording import say
+
+Mask = NDArray[np.bool_]
+
+
+@dataclass(frozen=True, slots=True)
+class Accounting:
+    """included: rows (n,) that are analysed; flow: how many records that is, and why the others are not."""
+
+    included: Mask
+    flow: Flow
+
+
+def account(
+    records: Records,
+    outcome: CodedOutcome,
+    *,
+    keep: Sequence[str],
+    exposures: Sequence[str],
+    adjustment: Sequence[str],
+) -> Accounting:
+    """The accounting of one model.
+
+    keep: conditions that must all hold. A record that is left out is counted once, under the first of: not kept;
+    undecided whether it is kept; outcome, exposure, adjustment column not recorded; level not in the plan.
+    Each row counts as many records as `records.counts` says. Reasons that no record has are not listed.
+
+    Raises: InputFault for a condition that does not fit the columns.
+    """
+    n = len(records.frame)
+    conditions = [vet_condition(text, records.columns, "keep") for text in keep]
+    holds, fails = np.ones(n, dtype=np.bool_), np.zeros(n, dtype=np.bool_)
+    for condition in conditions:
+        true, known = condition.evaluate(records.frame, records.outside_levels)
+        holds &= true
+        fails |= known & ~true
+    asked = tuple(dict.fromkeys(name for condition in conditions for name in condition.columns))
+    others = tuple(name for name in dict.fromkeys(adjustment) if name not in exposures)
+    in_model = (outcome.column, *exposures, *others)
+    reasons: list[tuple[str, tuple[str, ...], Mask]] = [
+        ("not-kept", (), fails),
+        ("keep-undecided", asked, ~(holds | fails)),
+        ("outcome-not-recorded", (outcome.column,), ~outcome.recorded & ~_outside(records, (outcome.column,))),
+        ("exposure-not-recorded", tuple(exposures), _not_recorded(records, exposures)),
+        ("adjustment-not-recorded", others, _not_recorded(records, others)),
+        ("level-not-in-plan", in_model, _outside(records, in_model)),
+    ]
+    included = np.ones(n, dtype=np.bool_)
+    left_out: list[Exclusion] = []
+    for code, columns, mask in reasons:
+        here = included & mask
+        included &= ~mask
+        number = _records(records, here)
+        if number:
+            concerned = _concerned(records, code, columns, here)
+            labels = [records.columns[name].label for name in concerned]
+            left_out.append(Exclusion(code, say(f"left-out-{code}", labels=labels, conditions=list(keep)), number))
+    flow = Flow(
+        read=records.read,
+        left_out=tuple(left_out),
+        analysed=_records(records, included),
+        events=_records(records, included & outcome.event),
+    )
+    return Accounting(included, flow)
+
+
+def _records(records: Records, rows: Mask) -> int:
+    """How many records some rows stand for."""
+    if records.counts is None:
+        return int(rows.sum())
+    return int(records.counts.to_numpy(dtype=np.float64)[rows].sum())
+
+
+def _not_recorded(records: Records, columns: Sequence[str]) -> Mask:
+    """Rows (n,) in which any of the columns is not recorded; a level that is not in the plan is recorded."""
+    found = np.zeros(len(records.frame), dtype=np.bool_)
+    for name in columns:
+        found |= records.frame[name].isna().to_numpy(dtype=np.bool_) & ~_outside(records, (name,))
+    return found
+
+
+def _outside(records: Records, columns: Sequence[str]) -> Mask:
+    """Rows (n,) in which any of the columns has a level that is not in the plan."""
+    found = np.zeros(len(records.frame), dtype=np.bool_)
+    for name in columns:
+        if name in records.outside_levels:
+            found |= records.outside_levels[name].to_numpy(dtype=np.bool_)
+    return found
+
+
+def _concerned(records: Records, code: str, columns: Sequence[str], rows: Mask) -> list[str]:
+    """Of the columns of a reason those that bring it about in some of the rows."""
+    if code == "level-not-in-plan":
+        return [name for name in columns if (_outside(records, (name,)) & rows).any()]
+    return [name for name in columns if (_not_recorded(records, (name,)) & rows).any()]

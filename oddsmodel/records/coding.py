@@ -1,0 +1,264 @@
+"""One column as the plan sees it: its kind, its values coded, and everything about it that must be said."""
+
+from __future__ import annotations
+
+from collections.abc import Collection
+from dataclasses import dataclass, replace
+from typing import Literal
+
+import numpy as np
+import pandas as pd
+from numpy.typing import NDArray
+
+from oddsmodel.errors import Fault
+from oddsmodel.findings import Finding
+from oddsmodel.plan.nearest import nearest
+from oddsmodel.plan.schema import ColumnSection, Kind
+from oddsmodel.records.faults import fault, in_column, in_plan
+from oddsmodel.records.kinds import kind_of
+from oddsmodel.records.levels import CodedLevels, code_levels, spelled_alike
+from oddsmodel.records.numbers import code_number
+from oddsmodel.records.raw import RawType
+from oddsmodel.records.same_value import absent_mask, matching, same_value_key
+from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
+from oddsmodel.records.types import Column
+from oddsmodel.wording import finding
+from oddsmodel.wording.plain import quoted
+
+Use = Literal["model", "outcome", "count", "none"]
+WITH_LEVELS = ("category", "ordered", "yes-no")
+FEW_WHOLE_NUMBERS = 10
+MANY_LEVELS = 50
+LEVELS_NAMED = 10
+
+
+@dataclass(frozen=True, slots=True)
+class CodedColumn:
+    """A coded column (see `Records.frame`), with what is to be said of it.
+
+    outside: the mask (n,) of rows whose level is not in the plan, where any is.
+    """
+
+    values: pd.Series
+    column: Column
+    outside: NDArray[np.bool_] | None = None
+    findings: tuple[Finding, ...] = ()
+    faults: tuple[Fault, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class RawValues:
+    """A raw column with its name and place. not_recorded: the plan's texts for this column; first_row: see RawTable."""
+
+    name: str
+    values: pd.Series
+    type: RawType
+    source: str
+    first_row: int
+    not_recorded: Collection[str]
+
+    @property
+    def where(self) -> str:
+        return in_column(self.source, self.name)
+
+    @property
+    def keys(self) -> frozenset[str]:
+        return frozenset(same_value_key(text) for text in self.not_recorded)
+
+    def recorded(self) -> pd.Series:
+        """The texts with those that mean "not recorded" taken out; numbers unchanged."""
+        if not isinstance(self.values.dtype, pd.CategoricalDtype):
+            return self.values
+        categories = self.values.cat.categories
+        absent = absent_mask(list(categories), self.keys)
+        return self.values.cat.remove_categories(categories[absent]) if absent.any() else self.values
+
+
+def code_column(raw: RawValues, section: ColumnSection | None, use: Use) -> CodedColumn:
+    """The column coded by its kind. Columns that the plan does not use carry no findings and no faults."""
+    kind = kind_of(raw.recorded(), raw.type, section)
+    column = _described(raw.name, kind, section)
+    if use == "none":
+        return _unused(raw, column)
+    if raw.type == "empty":
+        coded = _number(raw, column, section, use) if kind == "number" else _levels(raw, column, section, use)
+        return replace(coded, findings=(finding("caution", "column-empty", column=raw.name),))
+    if kind == "number":
+        return _number(raw, column, section, use)
+    if kind in WITH_LEVELS:
+        return _levels(raw, column, section, use)
+    return _texts(raw, column)
+
+
+def _described(name: str, kind: Kind, section: ColumnSection | None) -> Column:
+    if section is None:
+        return Column(name, kind, name)
+    per = section.per if section.per is not None else 1.0
+    return Column(
+        name,
+        kind,
+        section.label or name,
+        units=section.units,
+        per=per,
+        timing=section.timing,
+        why=section.why,
+        other_levels=section.other_levels,
+    )
+
+
+def _unused(raw: RawValues, column: Column) -> CodedColumn:
+    if column.kind == "number":
+        numbers, faults = code_number(raw.values, raw.keys, where=raw.where, first_row=raw.first_row)
+        if not faults or raw.type == "number":
+            return CodedColumn(pd.Series(numbers), column)
+        column = replace(column, kind="category")
+    if column.kind in WITH_LEVELS and raw.type != "empty" and len(raw.recorded().cat.categories) <= 1000:
+        coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind, keep_order=_ordered(raw))
+        return CodedColumn(coded.series(column.kind == "ordered"), replace(column, levels=coded.levels))
+    return _texts(raw, column)
+
+
+def _number(raw: RawValues, column: Column, section: ColumnSection | None, use: Use) -> CodedColumn:
+    numbers, faults = code_number(raw.values, raw.keys, where=raw.where, first_row=raw.first_row)
+    findings: list[Finding] = []
+    if use == "model" and not faults:
+        declared = section is not None and (section.kind, section.per, section.units) != (None, None, None)
+        findings = _questions_of_numbers(raw.name, numbers, declared)
+    return CodedColumn(pd.Series(numbers), column, None, tuple(findings), tuple(faults))
+
+
+def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: bool) -> list[Finding]:
+    """What is asked about a column of numbers: few whole numbers, and codes that may mean "not recorded"."""
+    found, counts = numbers_met(numbers)
+    questions: list[Finding] = []
+    if not declared and 0 < len(found) <= FEW_WHOLE_NUMBERS and np.all(found == np.trunc(found)):
+        questions.append(
+            finding("note", "few-whole-numbers", column=name, values=[same_value_key(number) for number in found])
+        )
+    codes = suspected_codes(found, counts)
+    if codes:
+        records = [int(counts[np.searchsorted(found, code)]) for code in codes]
+        texts = [same_value_key(code) for code in codes]
+        questions.append(finding("caution", "suspected-codes", column=name, values=texts, with_records=records))
+    return questions
+
+
+def numbers_met(numbers: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
+    """The different recorded numbers in order, and in how many rows each is met."""
+    codes, found = pd.factorize(numbers)
+    counts = np.bincount(codes[codes >= 0], minlength=len(found)).astype(np.int64)
+    order = np.argsort(found)
+    return np.asarray(found, dtype=np.float64)[order], counts[order]
+
+
+def _levels(raw: RawValues, column: Column, section: ColumnSection | None, use: Use) -> CodedColumn:
+    planned = section.levels if section is not None else None
+    coded = code_levels(raw.values, raw.keys, levels=planned, kind=column.kind, keep_order=_ordered(raw))
+    column = replace(column, levels=coded.levels)
+    faults: list[Fault] = []
+    outside = None
+    if coded.outside:
+        if planned is not None and column.other_levels == "exclude and count":
+            outside = coded.codes == -2
+        else:
+            faults.append(_outside_fault(raw, column, coded, planned is not None))
+    findings = _questions_of_levels(raw.name, coded, planned is not None, use)
+    reference, reference_faults = _reference(column, coded, section)
+    return CodedColumn(
+        coded.series(column.kind == "ordered"),
+        replace(column, reference=reference),
+        outside,
+        tuple(findings),
+        (*faults, *reference_faults),
+    )
+
+
+def _outside_fault(raw: RawValues, column: Column, coded: CodedLevels, planned: bool) -> Fault:
+    code = "level-not-in-plan" if planned else "not-yes-or-no"
+    first = coded.outside[:LEVELS_NAMED]
+    return fault(
+        code,
+        raw.where,
+        values=[quoted(text) for text, _ in first],
+        with_records=[count for _, count in first],
+        total=len(coded.outside),
+        section=in_plan(column.name),
+        nearest=[_nearest(text, coded.levels) for text, _ in first],
+    )
+
+
+def _nearest(text: str, levels: Collection[str]) -> str:
+    found = nearest(text, levels)
+    return "" if found is None else quoted(found)
+
+
+def _reference(column: Column, coded: CodedLevels, section: ColumnSection | None) -> tuple[str | None, list[Fault]]:
+    """The reference by the plan, else the first level that is met."""
+    met = [level for level, count in zip(coded.levels, coded.counts, strict=True) if count]
+    wanted = section.reference if section is not None else None
+    if wanted is None:
+        return (met[0] if met else None), []
+    found = matching(wanted, met)
+    if found is not None:
+        return found, []
+    where = in_plan(column.name, "reference")
+    shown = [quoted(level) for level in met[:LEVELS_NAMED]]
+    return None, [
+        fault("reference-not-met", where, reference=quoted(wanted), levels=shown, nearest=_nearest(wanted, met))
+    ]
+
+
+def _questions_of_levels(name: str, coded: CodedLevels, planned: bool, use: Use) -> list[Finding]:
+    questions: list[Finding] = []
+    met = [level for level, count in zip(coded.levels, coded.counts, strict=True) if count]
+    absent = [level for level, count in zip(coded.levels, coded.counts, strict=True) if not count]
+    if planned and absent:
+        questions.append(finding("note", "level-absent", column=name, levels=absent))
+    if planned or use == "outcome":
+        return questions
+    alike = spelled_alike(met)
+    if alike:
+        questions.append(finding("note", "levels-differ-by-case", column=name, levels=alike[:LEVELS_NAMED]))
+    suspects = looks_not_recorded(met) + _codes_among(coded)
+    if suspects:
+        records = [count for level, count in zip(coded.levels, coded.counts, strict=True) if level in suspects]
+        questions.append(finding("caution", "suspected-codes", column=name, values=suspects, with_records=records))
+    if len(met) > MANY_LEVELS:
+        questions.append(finding("caution", "many-levels", column=name, levels=len(met)))
+    return questions
+
+
+def _codes_among(coded: CodedLevels) -> list[str]:
+    """Levels that are numbers and stand apart as codes do, where every level is a number."""
+    keys = [same_value_key(level) for level in coded.levels]
+    try:
+        numbers = np.asarray([float(key) for key in keys])
+    except ValueError:
+        return []
+    order = np.argsort(numbers)
+    codes = suspected_codes(numbers[order], np.asarray(coded.counts, dtype=np.int64)[order])
+    return [level for level, number in zip(coded.levels, numbers, strict=True) if number in codes]
+
+
+def _texts(raw: RawValues, column: Column) -> CodedColumn:
+    """An identifier, a date or a column that is only kept: a categorical of its texts."""
+    if isinstance(raw.values.dtype, pd.CategoricalDtype):
+        values = raw.recorded()
+    else:
+        coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind)
+        values = coded.series()
+    findings: tuple[Finding, ...] = ()
+    if column.kind == "identifier":
+        met = np.asarray(values.cat.codes)
+        met = met[met >= 0]
+        different = len(np.unique(met))
+        if different < len(met):
+            findings = (
+                finding("stop", "identifier-repeats", column=column.name, records=len(met), different=different),
+            )
+    return CodedColumn(values, column, None, findings)
+
+
+def _ordered(raw: RawValues) -> bool:
+    """Whether the categories came with an order of their own."""
+    return raw.type in ("category", "ordered")

@@ -1,0 +1,1 @@
+"""The report as one HTML file, made from disclosed results only."""

@@ -1,0 +1,86 @@
+"""The report: one HTML file that loads nothing from outside and works with scripts off."""
+
+from __future__ import annotations
+
+from functools import cache
+from typing import Any
+
+from jinja2 import Environment, PackageLoader, StrictUndefined
+from markupsafe import Markup, escape
+
+from oddsmodel.progress import Progress, Silent
+from oddsmodel.report.view.cause import cause, closing_cautions
+from oddsmodel.report.view.checks import checks
+from oddsmodel.report.view.counted import characteristics, counted
+from oddsmodel.report.view.lead import is_estimated, lead_model
+from oddsmodel.report.view.methods import methods
+from oddsmodel.report.view.models import comparison, crude, estimates, not_estimated, other_models
+from oddsmodel.report.view.opening import opening
+from oddsmodel.report.view.sheet import Sheets
+from oddsmodel.results.study import DisclosedResults, StudyResults
+from oddsmodel.wording import say
+from oddsmodel.wording.plain import plain
+
+
+def render_report(disclosed: DisclosedResults, progress: Progress | None = None) -> str:
+    """The whole report as the text of an HTML file; the same results give the same text."""
+    progress = progress or Silent()
+    study = disclosed.study
+    progress.stage("drawing", number_of_figures(study))
+    sheets = Sheets(disclosed.hide_counts_below, progress)
+    lead = lead_model(study)
+    answered = lead if lead is not None and is_estimated(lead) else None
+
+    # In the order of the page: figures and tables take their numbers as they are asked for.
+    view: dict[str, Any] = {
+        "internal": disclosed.audience == "internal",
+        "opening": opening(study, lead, sheets),
+        "crude": crude(answered, sheets) if answered is not None else None,
+        "counted": counted(study, lead, sheets),
+        "characteristics": characteristics(study, sheets),
+        "estimates": estimates(answered, sheets) if answered is not None else None,
+        "comparison": comparison(study, sheets),
+        "other_models": other_models(study, lead, sheets),
+        "not_estimated": not_estimated(study, sheets),
+        "checks": checks(answered, sheets) if answered is not None else None,
+        "methods": methods(disclosed, lead),
+        "cause": cause(study, lead, sheets),
+        "cautions": closing_cautions(study),
+        "records": study.records,
+        "provenance": study.provenance,
+    }
+    return _environment().get_template("report.html").render(view)
+
+
+def number_of_figures(study: StudyResults) -> int:
+    """How many figures there are to draw, at most."""
+    of_models = sum(
+        len(model.figures) + sum(len(check.figures) for check in model.checks) for model in study.models
+    )
+    return of_models + (study.comparison_figure is not None)
+
+
+@cache
+def _environment() -> Environment:
+    environment = Environment(
+        loader=PackageLoader("oddsmodel.report", "templates"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        finalize=_one_line,
+        trim_blocks=True,
+        lstrip_blocks=True,
+        keep_trailing_newline=True,
+    )
+    environment.globals["say"] = say
+    environment.filters["lines"] = _several_lines
+    return environment
+
+
+def _one_line(value: object) -> object:
+    """Text without control or direction marks; markup, which is ours, as it is."""
+    return plain(value) if isinstance(value, str) and not isinstance(value, Markup) else value
+
+
+def _several_lines(text: str) -> Markup:
+    """Text of several lines, each without control or direction marks, escaped here."""
+    return escape("\n".join(plain(line.replace("\t", "    ")) for line in text.splitlines()))
