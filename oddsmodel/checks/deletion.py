@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,12 +15,16 @@ from oddsmodel.model.fitted import FittedModel
 Array = NDArray[np.float64]
 
 
+LARGEST_LOG = math.log(1e6)
+"""An odds ratio beyond a million either way, where that of the whole was not, is no estimate to be shown."""
+
+
 @dataclass(frozen=True)
 class Deletion:
     """A fit without `patterns` covariate patterns, which held `records` records.
 
-    coefficients (p,): of the exact fit; None where the coefficients of interest have no estimate without them. A
-    column of no interest that the rest of the records cannot tell from others has 0.
+    coefficients (p,): of the exact fit; None where the coefficients of interest have no usable estimate without them.
+    A column of no interest that the rest of the records cannot tell from others has 0.
     """
 
     patterns: int
@@ -49,4 +54,11 @@ def without(model: FittedModel, left_out: NDArray[np.int64], targets: tuple[int,
         return Deletion(left_out.size, records, None)
     coefficients = np.zeros(X.shape[1])
     coefficients[columns] = fit.coefficients
-    return Deletion(left_out.size, records, coefficients)
+    usable = not _beyond(model, coefficients, targets) or _beyond(model, model.fit.coefficients, targets)
+    return Deletion(left_out.size, records, coefficients if usable else None)
+
+
+def _beyond(model: FittedModel, coefficients: Array, targets: tuple[int, ...]) -> bool:
+    """Whether an odds ratio that is shown lies beyond a million either way."""
+    shown = [(i, model.design.columns[i].per) for i in targets if model.design.columns[i].shown]
+    return any(abs(float(coefficients[i]) * per) > LARGEST_LOG for i, per in shown)

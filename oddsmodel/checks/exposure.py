@@ -6,11 +6,13 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from oddsmodel.measures.scale import exponential
 from oddsmodel.model.fitted import Array, FittedModel
 
 MATTERS = math.log(1.10)
 """Change of the exposure's log odds ratio from which a departure is said to matter: ten per cent of the ratio."""
+
+LARGEST_LOG = math.log(1e6)
+"""Log odds ratios beyond this, either way, are no answer: the records hardly bound them."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -36,8 +38,8 @@ def moved(model: FittedModel, coefficients: Array, positions: Sequence[int] | No
     found: list[Moved] = []
     for i in model.exposure_indices if positions is None else positions:
         column = model.design.columns[i]
-        before = exponential(float(model.fit.coefficients[i]) * column.per)
-        after = exponential(float(coefficients[i]) * column.per)
-        if column.shown and before is not None and after is not None:
-            found.append(Moved(column.label, before, after))
+        before = float(model.fit.coefficients[i]) * column.per
+        after = float(coefficients[i]) * column.per
+        if column.shown and max(abs(before), abs(after)) <= LARGEST_LOG:
+            found.append(Moved(column.label, math.exp(before), math.exp(after)))
     return max(found, key=lambda one: one.change, default=None)

@@ -86,11 +86,12 @@ def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecord
     """Why there is no test, or None.
 
     1. More than 25,000 records: misfit too small to matter is found (Paul et al. 2013).
-    2. Fewer than 6 groups formed: hardly any misfit is found (Hosmer & Lemeshow 2000, section 5.2.2).
+    2. Fewer than 6 groups formed: hardly any misfit is found (Hosmer & Lemeshow 2000, section 5.2.2, from
+       memory).
     3. Covariate patterns are few: fewer than five distinct fitted probabilities a group, unless four in five records
        have one of their own.
     4. Expected counts too small (or groups of a record or two): the statistic's variance under the fitted model,
-       2g + sum of κ4/V² over the groups with V the variance and κ4 the fourth cumulant of the group's count, is not
+       2(g − 2) + sum of κ4/V² over the groups with V the variance and κ4 the fourth cumulant of the group's count, is not
        between half and twice that of chi-square.
     5. No intercept in the span of the columns: events and their expectations then have different totals.
     """

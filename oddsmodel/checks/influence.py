@@ -18,11 +18,14 @@ from oddsmodel.wording import finding, say
 LISTED = 10
 LEFT_OUT = (1, 5, 10)
 FEW_RECORDS = 0.05
-"""Share of the records that may be called few; that a larger part moves the estimate is no sign of anything wrong."""
+SEVERAL_RECORDS = 0.02
+"""Shares of the records that one pattern, and several, may hold to be called few: a larger part may well move the
+estimate without anything being wrong."""
 
 MUCH = 1.0
-SOME = 0.5
-"""Shifts, in standard errors of the coefficient, that few records should not bring about."""
+SOME = 0.75
+"""Shifts that k patterns of few records should not bring about, in standard errors times the square root of k. The
+patterns of most influence always move the estimate: ten of a thousand ordinary records by about 1.5 standard errors."""
 
 DIGITS = 3
 """Significant digits of what is reported: more would let a single record be worked out from the difference."""
@@ -32,7 +35,7 @@ DIGITS = 3
 class Judged:
     """A deletion and what it does: the largest shift in standard errors, and the odds ratio that moves most.
 
-    few: whether at most a twentieth of the records, or one record, was left out. shift is None where the exposure
+    few: whether few records were left out (one alone always is). shift is None where the exposure
     has no estimate without them; moved is None there, and where no column of it has an odds ratio of its own.
     """
 
@@ -47,8 +50,9 @@ def check(model: FittedModel) -> CheckResult:
     """Diagnostics by covariate pattern, and exact fits without the 1, 5 and 10 that move the exposure most.
 
     Patterns are put in order by the one-step shift of the exposure's coefficients, standardised by their
-    covariance. "Caution" where few records move a coefficient by a standard error and its odds ratio by ten per
-    cent, or leave it without an estimate; "look" from half a standard error on.
+    covariance. "Caution" where k patterns of few records move a coefficient by sqrt(k) standard errors and its odds
+    ratio by ten per cent, or one pattern leaves it without an estimate; "look" from three quarters of that on, and
+    where several patterns leave it without one.
     """
     targets = model.exposure_indices or tuple(
         i for i, column in enumerate(model.design.columns) if column.role != "intercept"
@@ -104,16 +108,18 @@ def _not_applicable(reason: str) -> CheckResult:
 
 
 def _judge(model: FittedModel, deletion: Deletion, targets: tuple[int, ...]) -> Judged:
-    few = deletion.records <= max(1.0, FEW_RECORDS * model.records)
+    one = deletion.patterns == 1
+    few = deletion.records <= max(1.0, (FEW_RECORDS if one else SEVERAL_RECORDS) * model.records)
     if deletion.coefficients is None:
-        return Judged(deletion, few, None, None, "caution" if few else "fine")
+        return Judged(deletion, few, None, None, "fine" if not few else "caution" if one else "look")
     chosen = list(targets)
     shift = np.abs(deletion.coefficients - model.fit.coefficients)[chosen] / model.fit.standard_errors[chosen]
     largest = float(shift.max())
     ratio = moved(model, deletion.coefficients)
+    unusual = largest / float(np.sqrt(deletion.patterns))
     verdict: Verdict = "fine"
-    if few and largest >= SOME and (ratio is None or ratio.change >= MATTERS):
-        verdict = "caution" if largest >= MUCH else "look"
+    if few and unusual >= SOME and (ratio is None or ratio.change >= MATTERS):
+        verdict = "caution" if unusual >= MUCH else "look"
     return Judged(deletion, few, largest, ratio, verdict)
 
 

@@ -143,7 +143,7 @@ def _refitted(model: FittedModel, exposure: str, outside: NDArray[np.bool_]) -> 
     rows = np.flatnonzero(~outside & (patterns.trials > 0))
     if rows.size == 0:
         return None
-    fit, kept = fit_kept(patterns.X[rows], patterns.events[rows], patterns.trials[rows])
+    fit, kept = fit_kept(patterns.X[rows], patterns.events[rows], patterns.trials[rows], model.fit.coefficients)
     if fit.status != "converged":
         return None
     coefficients = np.zeros(patterns.X.shape[1])

@@ -41,14 +41,17 @@ class Comparison:
         return self.outside_records / self.records
 
 
-def fit_kept(X: Array, events: Array, trials: Array) -> tuple[Fit, list[int]]:
-    """The fit of events out of trials (m,) on X (m, p) without its aliased columns, and the columns kept."""
+def fit_kept(X: Array, events: Array, trials: Array, start: Array) -> tuple[Fit, list[int]]:
+    """The fit of events out of trials (m,) on X (m, p) without its aliased columns, and the columns kept.
+
+    start (p,): coefficients to start from.
+    """
     kept = [i for i in range(X.shape[1]) if X[:, i].any()]
-    fit = maximise(BinomialLikelihood(X[:, kept], events, trials=trials))
+    fit = maximise(BinomialLikelihood(X[:, kept], events, trials=trials), start=start[kept])
     if fit.status == "aliased":
         aliased = {relation.column for relation in fit.aliased}
         kept = [column for i, column in enumerate(kept) if i not in aliased]
-        fit = maximise(BinomialLikelihood(X[:, kept], events, trials=trials))
+        fit = maximise(BinomialLikelihood(X[:, kept], events, trials=trials), start=start[kept])
     return fit, kept
 
 
@@ -88,11 +91,13 @@ def _against(
     among = np.flatnonzero(((codes == level) | (codes == reference)) & (trials > 0))
     X, records = adjustment[among], trials[among]
     exposed = np.where(codes[among] == level, records, 0.0)
-    fit, kept = fit_kept(X, exposed, records)
+    share = exposed.sum() / records.sum()
+    start = np.zeros(X.shape[1])
+    start[0] = np.log(share / (1.0 - share))
+    fit, kept = fit_kept(X, exposed, records, start)
     if fit.status not in ("converged", "no finite maximum"):
         return None
-    share = exposed.sum() / records.sum()
-    linear = X[:, kept] @ fit.coefficients - np.log(share / (1.0 - share))
+    linear = X[:, kept] @ fit.coefficients - start[0]
     preference = 1.0 / (1.0 + np.exp(-np.clip(linear, -500.0, 500.0)))
     beyond = (preference < EDGE) | (preference > 1.0 - EDGE)
     outside = np.zeros(codes.size, dtype=bool)

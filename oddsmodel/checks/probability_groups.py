@@ -40,11 +40,18 @@ class OrderedRecords:
     def summed(self, group: NDArray[np.int64]) -> OrderedRecords:
         """The same sums over groups (j,) numbered 0, 1, ... in order without a gap."""
         count = int(group[-1]) + 1
-        sums = (np.bincount(group, weights=values, minlength=count) for values in self._values())
-        return OrderedRecords(*sums)
 
-    def _values(self) -> tuple[Array, ...]:
-        return (self.records, self.events, self.expected, self.unexpected, self.variance, self.fourth)
+        def total(values: Array) -> Array:
+            return np.bincount(group, weights=values, minlength=count).astype(np.float64)
+
+        return OrderedRecords(
+            records=total(self.records),
+            events=total(self.events),
+            expected=total(self.expected),
+            unexpected=total(self.unexpected),
+            variance=total(self.variance),
+            fourth=total(self.fourth),
+        )
 
 
 def ordered_records(model: FittedModel) -> OrderedRecords:
@@ -54,7 +61,7 @@ def ordered_records(model: FittedModel) -> OrderedRecords:
     linear = linear[order]
     trials, events = model.patterns.trials[order], model.patterns.events[order]
     apart = np.diff(linear, prepend=linear[0]) > TIE * max(1.0, float(np.abs(linear).max()))
-    block = np.cumsum(apart)
+    block = np.cumsum(apart, dtype=np.int64)
     probability, complement = expit(linear), expit(-linear)
     spread = probability * complement
     single = OrderedRecords(
@@ -63,16 +70,20 @@ def ordered_records(model: FittedModel) -> OrderedRecords:
     return single.summed(block)
 
 
-def grouped(ordered: OrderedRecords, groups: int) -> OrderedRecords:
-    """At most `groups` groups of about equal numbers of records; equal fitted probabilities stay together.
+def group_numbers(records: Array, groups: int) -> NDArray[np.int64]:
+    """The group of each entry (j,), numbered 0, 1, ... without a gap, for at most `groups` about equal groups.
 
     Entry j, with t_j records after c_j others, goes where its middle lies: to group floor(groups·(c_j + t_j/2)/n).
     Fewer groups are formed where an entry spans several.
     """
-    before = np.cumsum(ordered.records) - ordered.records
-    middle = 2.0 * before + ordered.records
-    place = np.floor(groups * middle / (2.0 * ordered.records.sum()))
-    return ordered.summed(np.cumsum(np.diff(place, prepend=place[0]) > 0))
+    before = np.cumsum(records) - records
+    place = np.floor(groups * (2.0 * before + records) / (2.0 * records.sum()))
+    return np.cumsum(np.diff(place, prepend=place[0]) > 0, dtype=np.int64)
+
+
+def grouped(ordered: OrderedRecords, groups: int) -> OrderedRecords:
+    """At most `groups` groups of about equal numbers of records; equal fitted probabilities stay together."""
+    return ordered.summed(group_numbers(ordered.records, groups))
 
 
 def group_table(groups: OrderedRecords, *, cases: bool) -> Table:

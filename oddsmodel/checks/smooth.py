@@ -5,6 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from oddsmodel.checks.probability_groups import group_numbers
+
 Array = NDArray[np.float64]
 
 SPAN = 0.75
@@ -31,12 +33,9 @@ def smooth_share(probability: Array, records: Array, events: Array) -> tuple[tup
     if probability.size < FEWEST_VALUES or total < FEWEST_RECORDS:
         return ()
     if probability.size > MOST_BINS:
-        before = np.cumsum(records) - records
-        bins = np.floor(MOST_BINS * (before + records / 2.0) / total).astype(np.int64)
-        bins = np.cumsum(np.diff(bins, prepend=bins[0]) > 0)
-        weighted = np.bincount(bins, weights=probability * records)
-        records, events = np.bincount(bins, weights=records), np.bincount(bins, weights=events)
-        probability = weighted / records
+        bins = group_numbers(records, MOST_BINS)
+        heaped = np.array([np.bincount(bins, weights=values) for values in (probability * records, records, events)])
+        probability, records, events = heaped[0] / heaped[1], heaped[1], heaped[2]
     reached = np.cumsum(records)
     first, last = np.searchsorted(reached, [TAIL * total, (1.0 - TAIL) * total])
     low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from dataclasses import replace
-from typing import Literal
 
 from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.flow import disclosed_exclusions
@@ -25,12 +24,10 @@ from oddsmodel.results.study import DisclosedResults, ModelResult, RecordsResult
 from oddsmodel.results.tables import Table
 
 
-def disclose(
-    study: StudyResults, *, audience: Literal["shareable", "internal"], hide_counts_below: int
-) -> DisclosedResults:
+def disclose(study: StudyResults, *, audience: str, hide_counts_below: int) -> DisclosedResults:
     """What of a study's results may be shown to an audience.
 
-    An internal audience sees everything. For a shareable report
+    An audience "internal" sees everything. For any other the report is shareable:
 
     - counts between 0 and `hide_counts_below` are hidden in every table, flow and finding, and with them as many
       others as it takes to protect them (`Suppression` states when a count is protected);

@@ -178,7 +178,7 @@ def _integer_programs(equations: list[Equation], bounds: Mapping[int, Bounds], w
                 objective,
                 constraints=LinearConstraint(matrix, constants, constants),
                 bounds=box,
-                integrality=np.ones(len(unknowns)),
+                integrality=np.ones(len(unknowns), dtype=np.uint8),
             )
             # The true counts satisfy every equation, so a program without an answer is a failure of the solver:
             # the count is then taken as worked out, and more is hidden.

@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from dataclasses import replace
 
 from oddsmodel.disclosure.calibration import coarsen_calibration
-from oddsmodel.disclosure.figures import coarsen_curve, coarsen_histogram, coarsen_scatter, coarsen_steps
+from oddsmodel.disclosure.curve import coarsen_curve
 from oddsmodel.disclosure.findings import COUNTS, disclosed_finding, ends_with
 from oddsmodel.disclosure.flow import disclosed_flow, disclosed_flow_figure
 from oddsmodel.disclosure.gather import analysed_and_events
 from oddsmodel.disclosure.hiding import Hiding
+from oddsmodel.disclosure.histogram import coarsen_histogram
+from oddsmodel.disclosure.scatter import coarsen_scatter
+from oddsmodel.disclosure.steps import coarsen_steps
 from oddsmodel.disclosure.table_counts import row_blocks, row_text
 from oddsmodel.disclosure.tables import disclosed_table
 from oddsmodel.results.figures import (

@@ -176,9 +176,9 @@ def _records(found: DraftRecords) -> list[str]:
 
 def _outcome(found: DraftRecords) -> list[str]:
     outcome = found.outcome
-    written = [value for value, _ in outcome.levels[:MOST_LEVELS] if writable(value)]
     if found.event is None or not writable(found.event):
-        line = _line(f"# event = {text_value(written[-1] if written else 'yes')}", say("draft-event-open"))
+        rarest = min(outcome.levels, key=lambda value: value[1], default=("yes", 0))[0]
+        line = _line(f"# event = {text_value(rarest if _usable(rarest) else 'yes')}", say("draft-event-open"))
     else:
         line = f"event = {text_value(found.event)}"
     suspects = _suspects(outcome)

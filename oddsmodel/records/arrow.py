@@ -11,6 +11,7 @@ from oddsmodel.records.raw import RawColumn
 from oddsmodel.records.texts import text_column
 
 WHOLE_BOUND = 2**53
+NO_FRACTION = r"(:[0-9]{2})\.0+(Z|$)"
 MIDNIGHT = r"[ T]00:00(:00(\.0+)?)?$"
 
 
@@ -67,8 +68,8 @@ def _texts(column: pa.ChunkedArray, kind: str) -> RawColumn:
 
 
 def _dates(column: pa.ChunkedArray) -> pa.ChunkedArray:
-    """Dates as texts, without a time of day where every one is midnight."""
-    texts = column.cast(pa.string())
+    """Dates as texts, without fractions of 0 and without a time of day where every one is midnight."""
+    texts = pc.replace_substring_regex(column.cast(pa.string()), NO_FRACTION, r"\1\2")
     if pa.types.is_time(column.type) or not pc.all(pc.match_substring_regex(texts, MIDNIGHT), min_count=0).as_py():
         return texts
     return pc.replace_substring_regex(texts, MIDNIGHT, "")

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, replace
 
@@ -21,6 +22,8 @@ from oddsmodel.records.unreadable import LONGEST_FIELD, why_unreadable
 from oddsmodel.wording import finding
 
 TEXT = pa.dictionary(pa.int32(), pa.string())
+SOMETHING = re.compile(rb"\S")
+BLANK_LINE = re.compile(rb"\n\r?\n(?=[\r\n]*[^\r\n])")
 BLOCK = 1 << 22
 WINDOW = 1 << 24
 WHOLE_BOUND = 2.0**53
@@ -72,7 +75,7 @@ def read_delimited(
     """
     converted, notes = to_utf8(data, source)
     content = converted.lstrip(b"\r\n") if converted[:1] in (b"\r", b"\n") else converted
-    if not content.strip():
+    if SOMETHING.search(content) is None:
         raise InputFault(fault("file-empty", source))
     text, delimiter_notes = _layout(content, source, tuple(not_recorded))
     known = tuple(name for name in text.names if name in set(text_columns))
@@ -97,7 +100,7 @@ def _layout(content: bytes, source: str, not_recorded: tuple[str, ...]) -> tuple
         raise InputFault(fault("one-column", f"{source}, row 1"))
     end = header_end(content)
     names = header_names(content[:end], delimiter, source)
-    if not content[end:].strip():
+    if SOMETHING.search(content, end) is None:
         raise InputFault(fault("no-rows", source))
     usual = "\t" if source.lower().endswith((".tsv", ".tab")) else ","
     notes = () if delimiter == usual else (finding("note", "delimiter", delimiter=DELIMITER_NAMES[delimiter]),)
@@ -190,5 +193,11 @@ def _refuse_long_fields(table: pa.Table, source: str) -> None:
 
 
 def _blank_lines(content: bytes) -> tuple[Finding, ...]:
-    inner = content.rstrip(b"\r\n") if content[-1:] in (b"\r", b"\n") else content
-    return (finding("note", "blank-lines"),) if b"\n\n" in inner or b"\n\r\n" in inner else ()
+    """A note where a blank line stands before another row, so that row numbers are not those of an editor."""
+    quotes = counted = 0
+    for blank in BLANK_LINE.finditer(content):
+        quotes += content.count(b'"', counted, blank.start())
+        counted = blank.start()
+        if quotes % 2 == 0:
+            return (finding("note", "blank-lines"),)
+    return ()

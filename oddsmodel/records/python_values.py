@@ -42,7 +42,7 @@ def series_column(series: pd.Series) -> RawColumn | str:
         return _categorical(series, dtype.ordered)
     if isinstance(dtype, pd.SparseDtype):
         return series_column(pd.Series(np.asarray(series)))
-    if isinstance(dtype, pd.PeriodDtype | pd.IntervalDtype) or dtype.kind == "O":
+    if isinstance(dtype, pd.PeriodDtype | pd.IntervalDtype) or dtype == np.dtype("O"):
         return values_column(series.to_numpy(dtype=object))
     if dtype.kind == "c":
         return "complex numbers"

@@ -2,13 +2,10 @@
 
 from __future__ import annotations
 
-from functools import cache
 from typing import Any
 
-from jinja2 import Environment, PackageLoader, StrictUndefined
-from markupsafe import Markup, escape
-
 from oddsmodel.progress import Progress, Silent
+from oddsmodel.report.environment import environment
 from oddsmodel.report.view.cause import cause, closing_cautions
 from oddsmodel.report.view.checks import checks
 from oddsmodel.report.view.counted import characteristics, counted
@@ -18,8 +15,6 @@ from oddsmodel.report.view.models import comparison, crude, estimates, not_estim
 from oddsmodel.report.view.opening import opening
 from oddsmodel.report.view.sheet import Sheets
 from oddsmodel.results.study import DisclosedResults, StudyResults
-from oddsmodel.wording import say
-from oddsmodel.wording.plain import plain
 
 
 def render_report(disclosed: DisclosedResults, progress: Progress | None = None) -> str:
@@ -49,38 +44,10 @@ def render_report(disclosed: DisclosedResults, progress: Progress | None = None)
         "records": study.records,
         "provenance": study.provenance,
     }
-    return _environment().get_template("report.html").render(view)
+    return environment().get_template("report.html").render(view)
 
 
 def number_of_figures(study: StudyResults) -> int:
     """How many figures there are to draw, at most."""
-    of_models = sum(
-        len(model.figures) + sum(len(check.figures) for check in model.checks) for model in study.models
-    )
+    of_models = sum(len(model.figures) + sum(len(check.figures) for check in model.checks) for model in study.models)
     return of_models + (study.comparison_figure is not None)
-
-
-@cache
-def _environment() -> Environment:
-    environment = Environment(
-        loader=PackageLoader("oddsmodel.report", "templates"),
-        autoescape=True,
-        undefined=StrictUndefined,
-        finalize=_one_line,
-        trim_blocks=True,
-        lstrip_blocks=True,
-        keep_trailing_newline=True,
-    )
-    environment.globals["say"] = say
-    environment.filters["lines"] = _several_lines
-    return environment
-
-
-def _one_line(value: object) -> object:
-    """Text without control or direction marks; markup, which is ours, as it is."""
-    return plain(value) if isinstance(value, str) and not isinstance(value, Markup) else value
-
-
-def _several_lines(text: str) -> Markup:
-    """Text of several lines, each without control or direction marks, escaped here."""
-    return escape("\n".join(plain(line.replace("\t", "    ")) for line in text.splitlines()))

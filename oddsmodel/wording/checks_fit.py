@@ -34,7 +34,7 @@ def _counting_line(facts: Facts) -> str:
     if share is None:
         return f"{line}."
     left_out = _share(share)
-    if left_out == "none":
+    if share == 0:
         return f"{line}; none that belongs to the study had to be left out."
     line = f"{line}; {left_out} of those that belong to the study had to be left out"
     if share < 0.05:
@@ -103,7 +103,7 @@ def _calibration_line(facts: Facts) -> str:
     )
     if facts["looks"]:
         return f"{line}; {outside} of the {level} intervals leave the fitted share out, so the shape is worth a look."
-    return f"{line}; {groups - outside} of {groups} intervals ({level}) hold the fitted share."
+    return f"{line}; {groups - outside} of the {level} intervals hold the fitted share, so no departure shows."
 
 
 def _calibration_departs(facts: Facts) -> str:
@@ -146,8 +146,8 @@ def _moves(facts: Facts) -> str:
 
 def _influence_little(facts: Facts) -> str:
     return (
-        f"Leaving out {_patterns(facts['patterns'])} with most influence {_moves(facts)}: the result does not hang on "
-        "a few records."
+        f"Leaving out {_patterns(facts['patterns'])} with most influence {_moves(facts)}: no more than that "
+        "usually does."
     )
 
 
@@ -278,8 +278,8 @@ FIT_SENTENCES: dict[str, Sentence] = {
     ),
     "few-patterns-move-the-exposure": _influence_much,
     "few-patterns-carry-the-exposure": lambda facts: (
-        f"Without {_patterns(facts['patterns'])} with most influence there is no estimate of the exposure's odds "
-        "ratio: a few records alone decide it."
+        f"Without {_patterns(facts['patterns'])} with most influence there is no usable estimate of the "
+        "exposure's odds ratio: few records decide it."
     ),
     "influence-no-columns": "The model has no column besides the intercept that a record could influence.",
     "influence-saturated": (
@@ -287,7 +287,9 @@ FIT_SENTENCES: dict[str, Sentence] = {
         "none can be left out."
     ),
     "influence-no-odds-ratio": "No column of the exposure has an odds ratio of its own.",
-    "influence-no-estimate": "Without these records the exposure's odds ratio has no finite estimate.",
+    "influence-no-estimate": (
+        "Without these records the exposure's odds ratio has no finite estimate, or one beyond a million."
+    ),
     "influence-deletions-title": "The exposure's odds ratio without the patterns of most influence",
     "influence-patterns-title": "Covariate patterns that move the exposure's coefficients most",
     "influence-one-step-heading": "Odds ratio without it, to one step: {label}",
@@ -297,8 +299,11 @@ FIT_SENTENCES: dict[str, Sentence] = {
         "Records with equal values of all columns form a covariate pattern. Leverage, the falls in Pearson chi-square "
         "and deviance, and the shift of the coefficients without a pattern are taken to one step of the fit "
         "(Pregibon 1981); patterns are put in order by how far the exposure's coefficients shift. The odds ratios "
-        "without the 1, 5 and 10 patterns of most influence are exact: the model is fitted again. It is a caution "
-        "where at most 5% of the records move a coefficient by a standard error and its odds ratio by 10%, and worth "
-        "a look from half a standard error on. Odd records are to be checked, not left out because they are odd."
+        "without the 1, 5 and 10 patterns of most influence are exact: the model is fitted again. Leaving out the "
+        "records of most influence always moves an estimate: ten of a thousand ordinary records by about one and a "
+        "half standard errors. It is a caution where one pattern (at most 5% of the records) moves a coefficient by "
+        "a standard error, or k patterns (at most 2%) by the square root of k standard errors, and the odds ratio by "
+        "10%; worth a look from three quarters of that on. Odd records are to be checked for mistakes, not left out "
+        "because they are odd."
     ),
 }

@@ -46,7 +46,9 @@ SENTENCES: dict[str, Sentence] = {
     "why-estimate-hidden": (
         "Hidden: with the counts that are shown, it would give away one that is hidden because it is small."
     ),
-    "why-likelihood-hidden": "Hidden: with the number of records, it would give away a number of events that is hidden.",
+    "why-likelihood-hidden": (
+        "Hidden: with the number of records, it would give away a number of events that is hidden."
+    ),
     "why-check-hidden": (
         "Hidden: this model has a parameter for each group that it tells apart, so that its answers would give away "
         "counts that are hidden because they are small."

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from oddsmodel.wording.numbers import count, listed, plural
@@ -18,6 +18,11 @@ def _rows(facts: Facts) -> str:
     if more > 0:
         rows.append(f"{count(more)} more")
     return f"{'row' if len(rows) == 1 else 'rows'} {listed(rows)}"
+
+
+def _numbered(word: str, numbers: Sequence[int]) -> str:
+    """ "column 2", "columns 2 and 4"."""
+    return f"{word}{'' if len(numbers) == 1 else 's'} {listed([str(number) for number in numbers])}"
 
 
 def _with_rows(before: str, after: str) -> Sentence:
@@ -159,11 +164,11 @@ WHOLE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Keep the columns that the study needs.",
     ),
     "name-empty": (
-        lambda facts: f"No name is given for column {listed([str(at) for at in facts['positions']])}.",
+        lambda facts: f"No name is given for {_numbered('column', facts['positions'])}.",
         "Give each column a name, or take it out.",
     ),
     "name-twice": (
-        lambda facts: f"The name {facts['name']} is given to columns {listed([str(at) for at in facts['positions']])}.",
+        lambda facts: f"The name {facts['name']} is given to {_numbered('column', facts['positions'])}.",
         "Give each column a name of its own.",
     ),
     "name-not-usable": (

@@ -5,32 +5,15 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from oddsmodel.wording.numbers import count, interval, listed, plural, ratio
+from oddsmodel.wording.numbers import count, listed, plural
 from oddsmodel.wording.report_answer import SENTENCES as ANSWER
 from oddsmodel.wording.report_cause import SENTENCES as CAUSE
 from oddsmodel.wording.report_methods import SENTENCES as METHODS
 from oddsmodel.wording.say import Sentence
 
 
-def _flow_alt(facts: Mapping[str, Any]) -> str:
-    read, analysed, events = facts["read"], facts["analysed"], facts["events"]
-    left_out = [f"{reason}: {count(number) if number is not None else 'withheld'}" for reason, number in facts["out"]]
-    words = f"{count(read)} records were read" if read is not None else "The number of records read is withheld"
-    words += f"; left out, {'; '.join(left_out)}" if left_out else "; none was left out"
-    words += f"; {count(analysed)} were analysed" if analysed is not None else "; the number analysed is withheld"
-    return f"{words}, {_events(events)}." if events is not None else f"{words}."
-
-
 def _events(events: int) -> str:
     return f"{count(events)} of them with the event"
-
-
-def _estimates_alt(facts: Mapping[str, Any]) -> str:
-    told = []
-    for label, series, estimate, lower, upper in facts["marks"]:
-        words = f"{ratio(estimate)} ({interval(lower, upper)})" if estimate is not None else "no estimate"
-        told.append(f"{label}, {series}: {words}")
-    return f"Odds ratios with {facts['level']} intervals. {'; '.join(told)}."
 
 
 def _level(facts: Mapping[str, Any]) -> str:
@@ -38,7 +21,9 @@ def _level(facts: Mapping[str, Any]) -> str:
 
 
 def _seen(facts: Mapping[str, Any]) -> str:
-    words = f"{facts['source']}: {plural(facts['read'], 'record')} read" if facts["read"] is not None else facts["source"]
+    words = (
+        f"{facts['source']}: {plural(facts['read'], 'record')} read" if facts["read"] is not None else facts["source"]
+    )
     return f"{words}, fingerprint (SHA-256)"
 
 
@@ -90,8 +75,9 @@ SENTENCES: dict[str, Sentence] = {
     "heading-cautions": "Before you use this",
     "heading-provenance": "What it was made from",
     "heading-not-estimated": "Not estimated: {name}",
-    "heading-findings": "Read this first",
-    "heading-other-model": "{name}",
+    "heading-stops": "Read this first",
+    "heading-warnings": "Keep in mind",
+    "fold-warnings": "More to keep in mind",
     "heading-other-models": "The other models",
     "heading-further-checks": "Further checks",
     # Eyebrows and small labels
@@ -106,15 +92,16 @@ SENTENCES: dict[str, Sentence] = {
     "severity-stop": "Stop",
     "figure-number": "Figure {number}",
     "table-number": "Table {number}",
-    "scrolls-sideways": "Table, scrolls sideways: {title}",
+    "scrolls-sideways": "Table {number}: {title}",
     "cell-withheld": "withheld",
     "cell-no-limit": "no finite limit",
-    "hidden-cells-note": "“withheld” stands for a count under {below}, or for a number from which one could be worked out.",
-    "none-left-out": "No record was left out.",
+    "hidden-cells-note": (
+        "“withheld” stands for a count under {below}, or for a number from which one could be worked out."
+    ),
     "no-value-reason": "{label}: {reason}",
     # The estimates
-    "column-contrast": "Contrast",
-    "column-adjustment-contrast": "Adjustment column",
+    "column-exposure": "Contrast",
+    "column-adjustment": "Adjustment column",
     "column-odds-ratio": "Odds ratio",
     "column-profile": "{level} interval, profile likelihood",
     "column-wald": "{level} interval, Wald",
@@ -123,8 +110,8 @@ SENTENCES: dict[str, Sentence] = {
     "column-df": "Degrees of freedom",
     "column-likelihood-ratio": "Likelihood-ratio statistic",
     "column-term-p": "p-value",
-    "exposures-table": "Adjusted odds ratios of the exposures",
-    "adjustment-table": "Odds ratios of the adjustment columns",
+    "table-exposure": "Adjusted odds ratios of the exposures",
+    "table-adjustment": "Odds ratios of the adjustment columns",
     "terms-table": "Likelihood-ratio tests",
     "terms-note": "Each line compares the model with one that leaves out the term and all terms that contain it.",
     "all exposure columns": "All exposure columns together",
@@ -132,6 +119,7 @@ SENTENCES: dict[str, Sentence] = {
     "fold-adjustment": "Odds ratios of the adjustment columns",
     "fold-terms": "Tests of whole terms",
     "fold-crude-adjusted": "What adjustment changed, in numbers",
+    "columns-not-shown": "Not shown, because their columns change together: {terms}.",
     "adjustment-caution": (
         "These odds ratios are not answers of their own. The columns were chosen to adjust the exposure, so each of "
         "these numbers may itself be confounded, or may lack the part that runs through the exposure (Westreich & "
@@ -158,7 +146,6 @@ SENTENCES: dict[str, Sentence] = {
     # Checks
     "checks-lead": "What was looked at, each in one line. The detail is folded beneath its line.",
     "checks-none": "No check of this model could be done.",
-    "check-fold": "Detail",
     "fold-certificate": "How exact the numbers are",
     "fold-notes": "Notes",
     "certificate": _certificate,
@@ -169,14 +156,6 @@ SENTENCES: dict[str, Sentence] = {
     "versions": "Made with",
     "seed": "Seed of all random numbers",
     # Pictures
-    "picture-answer": "Crude and adjusted odds ratios of the exposures",
-    "picture-answer-single": "Odds ratios of the exposures",
-    "picture-answer-alt": _estimates_alt,
-    "picture-flow": "From the records read to the records analysed",
-    "picture-flow-alt": _flow_alt,
-    "series-adjusted": "adjusted",
-    "series-crude": "crude",
-    "series-unadjusted": "as fitted",
     "figure-no-estimate": "no estimate",
     "figure-lower-odds": "← lower odds",
     "figure-higher-odds": "higher odds →",

@@ -25,7 +25,7 @@ def _as_change(value: float) -> str:
     if value >= 2.0:
         return f"{ratio(value)} times as high"
     if percent == 0:
-        return "unchanged"
+        return "about the same"
     if value < 0.005:
         return f"lower by a factor of {count(round(1 / value))}" if value > 1e-6 else "almost nothing"
     return f"{abs(percent)}% {'higher' if percent > 0 else 'lower'}"
@@ -107,12 +107,12 @@ def _basis(facts: Mapping[str, Any]) -> str:
 
 def _several_columns(facts: Mapping[str, Any]) -> str:
     words = (
-        f"{facts['labels']} enters the model through several columns that have no odds ratio of their own; "
-        "its shape is in the figures"
+        f"{facts['labels']} enters the model through several columns that change together, so no single odds ratio "
+        "stands for it"
     )
-    return f"{words}. The likelihood-ratio test of all its columns together gives p = {facts['p']}." if facts["p"] else (
-        f"{words}."
-    )
+    if not facts["p"]:
+        return f"{words}."
+    return f"{words}. The likelihood-ratio test of all its columns together gives p = {facts['p']}."
 
 
 SENTENCES: dict[str, Sentence] = {

@@ -72,7 +72,9 @@ SENTENCES: dict[str, Sentence] = {
         "The plan names no confounder that was not recorded. There almost always is one: think again, and write it "
         "there as “not_measured”."
     ),
-    "cause-no-adjustment": "Nothing was adjusted for, so any common cause of exposure and outcome is still in the answer.",
+    "cause-no-adjustment": (
+        "Nothing was adjusted for, so any common cause of exposure and outcome is still in the answer."
+    ),
     "cause-table": "What was adjusted for, and why",
     "cause-column": "Column",
     "cause-timing": "Measured",
@@ -82,7 +84,7 @@ SENTENCES: dict[str, Sentence] = {
     "timing-unknown": "not stated",
     "why-none": "none given",
     "questions-open": "Still to be answered",
-    "caution-association": "Association is not causation: an odds ratio describes how exposure and outcome go together.",
+    "caution-association": "Association is not causation: an odds ratio tells how exposure and outcome go together.",
     "caution-one-person": "Nothing here is for decisions about one person's care.",
     "caution-review": "Have the results reviewed by a qualified analyst before they are used.",
     "caution-rules": "Local data-protection, ethics and reporting rules come first.",

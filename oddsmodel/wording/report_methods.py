@@ -91,9 +91,10 @@ def _records(facts: Mapping[str, Any]) -> str:
 
 
 def _model(facts: Mapping[str, Any]) -> str:
+    role = "exposure" if len(facts["exposures"]) == 1 else "exposures"
     words = (
-        f"The odds of {facts['outcome']} were modelled by logistic regression (Cox, 1958), fitted by {facts['method']}, "
-        f"with {listed(facts['exposures'])} as {'exposure' if len(facts['exposures']) == 1 else 'exposures'}"
+        f"The odds of {facts['outcome']} were modelled by logistic regression (Cox, 1958), fitted by "
+        f"{facts['method']}, with {listed(facts['exposures'])} as {role}"
     )
     return f"{words}, adjusted for {listed(facts['adjustment'])}." if facts["adjustment"] else f"{words}."
 
@@ -143,9 +144,13 @@ SENTENCES: dict[str, Sentence] = {
         "Counts under {below}, and the numbers from which they could be worked out, are withheld from this report."
     ),
     "methods-software": "The analysis was carried out with {versions}.",
-    "way-hosmer_lemeshow": "the Hosmer–Lemeshow test on covariate patterns (Hosmer & Lemeshow, 1980; Paul, Pennell & "
-    "Lemeshow, 2013)",
-    "way-auc": "the area under the receiver operating characteristic curve with its DeLong interval (DeLong et al., 1988)",
+    "way-hosmer_lemeshow": (
+        "the Hosmer–Lemeshow test on covariate patterns (Hosmer & Lemeshow, 1980; Paul, Pennell & Lemeshow, 2013)"
+    ),
+    "way-auc": (
+        "the area under the receiver operating characteristic curve with its interval (DeLong, DeLong & "
+        "Clarke-Pearson, 1988)"
+    ),
     "way-brier": "the Brier score (Brier, 1950)",
     "way-calibration": "observed shares against predicted risks",
     "way-collinearity": "generalised variance inflation (Fox & Monette, 1992)",

@@ -14,7 +14,7 @@ from typing import Any
 from oddsmodel.findings import Finding, Severity
 
 Sentence = str | Callable[[Mapping[str, Any]], str]
-MODULES = ("plan", "records", "design", "inference", "measures", "checks", "disclosure", "study", "report")
+MODULES = ("plan", "records", "design", "inference", "measures", "checks", "disclosure", "study", "report", "cli")
 
 
 @cache

@@ -55,7 +55,8 @@ def test_counts_smooth_as_repeated_records() -> None:
     records = rng.integers(1, 30, 40).astype(float)
     events = rng.binomial(records.astype(int), x).astype(float)
     grouped = np.array(smooth_share(x, records, events))
-    repeated = np.concatenate([np.repeat([1.0, 0.0], [int(e), int(n - e)]) for e, n in zip(events, records)])
+    both = np.column_stack([events, records - events]).astype(int)
+    repeated = np.repeat(np.tile([1.0, 0.0], 40), both.ravel())
     single = np.array(smooth_share(np.repeat(x, records.astype(int)), np.ones(repeated.size), repeated))
     assert grouped == pytest.approx(single, abs=1e-9)
 

@@ -14,7 +14,7 @@ from oddsmodel.checks.residual_tests import check
 from oddsmodel.checks.residuals import pattern_residuals
 
 sys.path.insert(0, str(Path(__file__).parent))
-from fit_models import grouped_model, record_model, vaso
+from fit_models import grouped_model, vaso
 
 # Tobacco budworm, Collett 1991; Venables & Ripley 2002, section 7.2 (published checks, row 9)
 DEAD = np.array([1, 4, 9, 13, 18, 20, 0, 2, 6, 10, 12, 16], dtype=float)

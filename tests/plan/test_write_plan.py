@@ -69,7 +69,7 @@ def test_no_small_count_stands_in_a_draft() -> None:
 
 
 def test_an_open_event_is_not_guessed(tmp_path: Path) -> None:
-    records = DraftRecords("r.csv", 40, DraftColumn("state", "category", (("a", 20), ("b", 20))), [SMOKING])
+    records = DraftRecords("r.csv", 40, DraftColumn("state", "category", (("a", 21), ("b", 20))), [SMOKING])
     text = draft_plan(records)
     assert read_back(text, tmp_path).plan.outcome.event is None
     assert '# event = "b"' in text

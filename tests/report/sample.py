@@ -154,13 +154,19 @@ def calibration_figure() -> CalibrationFigure:
         groups.append(CalibrationGroup(predicted, observed, observed - 0.035, observed + 0.04, 387, 60))
     smooth = tuple((0.04 + 0.0037 * k, 0.04 + 0.0037 * k + 0.008 * math.sin(k / 14)) for k in range(90))
     return CalibrationFigure(
-        "calibration", "Observed and predicted", "Observed shares lie within 2 points of the predicted.", tuple(groups), smooth
+        "calibration",
+        "Observed and predicted",
+        "Observed shares lie within 2 points of the predicted.",
+        tuple(groups),
+        smooth,
     )
 
 
 def roc_figure() -> StepFigure:
     points = tuple((k / 800, (k / 800) ** 0.45) for k in range(801))
-    return StepFigure("roc", "How well the model tells events apart", "The area under the curve is 0.690.", points, 0.69)
+    return StepFigure(
+        "roc", "How well the model tells events apart", "The area under the curve is 0.690.", points, 0.69
+    )
 
 
 def curve_figure() -> CurveFigure:
@@ -177,7 +183,9 @@ def curve_figure() -> CurveFigure:
         tuple(v * 1.18 for v in curve),
         tuple(math.exp(0.018 * (v - 50)) for v in x),
         50.0,
-        tuple((18 + 4 * k, 22 + 4 * k, None if k == 17 else int(300 * math.exp(-(((k - 9) / 5) ** 2)))) for k in range(18)),
+        tuple(
+            (18 + 4 * k, 22 + 4 * k, None if k == 17 else int(300 * math.exp(-(((k - 9) / 5) ** 2)))) for k in range(18)
+        ),
     )
 
 
@@ -305,7 +313,12 @@ def check(name: str, verdict: str, line: str, *figures: Figure, title: str = "",
 
 
 CHECKS = (
-    check("events_per_parameter", "fine", "There are 68 events for each of the 9 coefficients.", explanation="Few events bias."),
+    check(
+        "events_per_parameter",
+        "fine",
+        "There are 68 events for each of the 9 coefficients.",
+        explanation="Few events bias.",
+    ),
     check("sparse_cells", "look", f"The smallest cell holds few records: {WARD}.", title="Sparse cells"),
     check(
         "hosmer_lemeshow",
@@ -316,7 +329,11 @@ CHECKS = (
             Table(
                 "groups",
                 "Groups of predicted risk",
-                (TableColumn("group", "Group"), TableColumn("o", "Observed", "count"), TableColumn("e", "Expected", "number")),
+                (
+                    TableColumn("group", "Group"),
+                    TableColumn("o", "Observed", "count"),
+                    TableColumn("e", "Expected", "number"),
+                ),
                 (("1", 20, 18.25), ("2", 31, 33.4)),
             ),
         ),
@@ -375,7 +392,9 @@ def model(**changes: object) -> ModelResult:
         ),
         checks=CHECKS,
         certificate=CertificateResult(11.4, 2.3e7),
-        findings=(Finding("note", "noncollapsibility", "Odds ratios change on adjustment even where nothing confounds."),),
+        findings=(
+            Finding("note", "noncollapsibility", "Odds ratios change on adjustment even where nothing confounds."),
+        ),
         tables=(LEVELS, CHANGE, TWO_BY_TWO),
         figures=(flow_figure(FLOW, "main-flow"), estimates_figure("main-estimates")),
     )
@@ -405,9 +424,7 @@ def study(**changes: object) -> StudyResults:
         figures=(),
         log_likelihood=None,
         certificate=CertificateResult(None, None),
-        findings=(
-            Finding("stop", "separated", "No finite estimate exists: everyone in hospital “K” had the event."),
-        ),
+        findings=(Finding("stop", "separated", "No finite estimate exists: everyone in hospital “K” had the event."),),
     )
     full = StudyResults(
         title="Smoking and readmission in a hospital network",

@@ -2,24 +2,37 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, PAPER, RULE, SECOND, SMALL, Sheet
 from oddsmodel.report.figures.scales import percent_labels, plain_ticks
 from oddsmodel.results.figures import CalibrationFigure
 from oddsmodel.wording import say
 
-_LEFT, _TOP, _SIDE = 52.0, 52.0, 330.0
+_LEFT, _SIDE = 48.0, 318.0
 
 
 def draw(figure: CalibrationFigure) -> Sheet:
-    sheet = Sheet(_TOP + _SIDE + 52.0)
-    top = _highest(figure)
-    axes = sheet.plot(_LEFT, _TOP, _SIDE, _SIDE)
-    axes.set_xlim(0, top)
-    axes.set_ylim(0, top)
-    ticks = plain_ticks(0.0, top)
+    entries: list[tuple[str, str, dict[str, Any]]] = [
+        (say("figure-agreement"), MUTED, {"linewidth": 1.2, "linestyle": (0, (4, 3))})
+    ]
+    if figure.groups:
+        ring = {"linestyle": "", "marker": "o", "markerfacecolor": PAPER, "markeredgewidth": 1.8}
+        entries.append((say("figure-groups"), SECOND, ring))
+    if figure.smooth:
+        entries.append((say("figure-smooth"), FIRST, {}))
+    top = Sheet.key_height(entries) + 30.0
+    sheet = Sheet(top + _SIDE + 50.0)
+    sheet.key(entries)
+
+    highest = _highest(figure)
+    axes = sheet.plot(_LEFT, top, _SIDE, _SIDE)
+    axes.set_xlim(0, highest)
+    axes.set_ylim(0, highest)
+    ticks = plain_ticks(0.0, highest)
     axes.set_xticks(ticks, labels=percent_labels(ticks))
     axes.set_yticks(ticks, labels=percent_labels(ticks))
-    axes.plot([0, top], [0, top], color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
+    axes.plot([0, highest], [0, highest], color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
     for group in figure.groups:
         axes.plot([group.predicted] * 2, [group.lower, group.upper], color=SECOND, linewidth=1.6, zorder=3)
     axes.plot(
@@ -33,16 +46,10 @@ def draw(figure: CalibrationFigure) -> Sheet:
         markeredgewidth=1.8,
         zorder=4,
     )
-    entries = [(say("figure-agreement"), MUTED, {"linewidth": 1.2, "linestyle": (0, (4, 3))})]
-    if figure.groups:
-        style = {"linestyle": "", "marker": "o", "markerfacecolor": PAPER, "markeredgewidth": 1.8}
-        entries.append((say("figure-groups"), SECOND, style))
     if figure.smooth:
         axes.plot(*zip(*figure.smooth, strict=True), color=FIRST, linewidth=2.2, zorder=2)
-        entries.append((say("figure-smooth"), FIRST, {}))
-    sheet.key(_LEFT, 14.0, entries)
-    sheet.text(0, _TOP - 10, say("figure-observed-share"), size=SMALL, colour=INK)
-    sheet.text(_LEFT + _SIDE, _TOP + _SIDE + 42, say("figure-predicted-risk"), size=SMALL, colour=INK, ha="right")
+    sheet.text(0, top - 10, say("figure-observed-share"), size=SMALL, colour=INK)
+    sheet.text(_LEFT + _SIDE, top + _SIDE + 42, say("figure-predicted-risk"), size=SMALL, colour=INK, ha="right")
     axes.grid(color=RULE, linewidth=0.6)
     axes.set_axisbelow(True)
     return sheet

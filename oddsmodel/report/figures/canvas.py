@@ -18,9 +18,9 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure as Drawing
 
-WIDTH = 400.0
-TEXT = 13.0
-SMALL = 12.0
+WIDTH = 380.0
+TEXT = 13.5
+SMALL = 12.75
 LINE = 17.0
 
 INK = "#010101"
@@ -55,6 +55,11 @@ _SETTINGS: dict[str, Any] = {
     "font.size": SMALL,
     "path.simplify": True,
 }
+_KEY_GAP = 14.0
+
+
+def _key_width(words: str) -> float:
+    return 24.0 + width_of(plain(words), SMALL) + _KEY_GAP
 
 
 class Sheet:
@@ -101,18 +106,29 @@ class Sheet:
     def line(self, x: Sequence[float], y: Sequence[float], colour: str = INK, **style: Any) -> None:
         self.page.plot(x, y, color=colour, linewidth=style.pop("linewidth", 1.2), **style)
 
-    def key(self, left: float, baseline: float, entries: Sequence[tuple[str, str, dict[str, Any]]]) -> None:
-        """A key in one or more rows: (words, colour, how its sample is drawn)."""
-        x = left
+    def key(self, entries: Sequence[tuple[str, str, dict[str, Any]]]) -> None:
+        """A key in one or more rows at the top: (words, colour, how its sample is drawn)."""
+        x, baseline = 0.0, 14.0
         for words, colour, style in entries:
-            need = 26 + width_of(plain(words), SMALL) + 14
-            if x > left and x + need > self.width + 10:
-                x, baseline = left, baseline + LINE
+            need = _key_width(words)
+            if x > 0 and x + need > self.width + _KEY_GAP:
+                x, baseline = 0.0, baseline + LINE
             drawn = {"linewidth": 2.0, **style}
             xs = [x + 9] if drawn.get("marker") and drawn.get("linestyle") == "" else [x, x + 18]
             self.page.plot(xs, [baseline - 4] * len(xs), color=colour, **drawn)
             self.text(x + 24, baseline, words, size=SMALL, colour=MUTED)
             x += need
+
+    @staticmethod
+    def key_height(entries: Sequence[tuple[str, str, dict[str, Any]]]) -> float:
+        """The height of a key over the whole width of a sheet."""
+        rows, x = 1, 0.0
+        for words, _, _ in entries:
+            need = _key_width(words)
+            if x > 0 and x + need > WIDTH + _KEY_GAP:
+                rows, x = rows + 1, 0.0
+            x += need
+        return LINE * rows
 
     def source(self) -> str:
         """The SVG as matplotlib writes it."""
@@ -127,11 +143,8 @@ def drawing_settings() -> Iterator[None]:
     since the reader's browser draws the text."""
     from matplotlib import rc_context, rcParamsDefault
 
-    defaults = {name: value for name, value in rcParamsDefault.items() if not name.startswith(("backend", "toolbar"))}
-    with warnings.catch_warnings(), rc_context():
+    kept = ("backend", "toolbar", "interactive", "figure.hooks")
+    settings: Any = {name: value for name, value in rcParamsDefault.items() if not name.startswith(kept)} | _SETTINGS
+    with warnings.catch_warnings(), rc_context(settings):
         warnings.simplefilter("ignore")
-        from matplotlib import rcParams
-
-        rcParams.update(defaults)
-        rcParams.update(_SETTINGS)
         yield

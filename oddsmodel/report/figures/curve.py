@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING, Any
+
 import numpy as np
 
 from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, PAPER, RULE, SECOND, SMALL, WIDTH, Sheet
@@ -10,15 +12,25 @@ from oddsmodel.report.figures.scales import plain_labels, plain_ticks, ratio_lab
 from oddsmodel.results.figures import CurveFigure
 from oddsmodel.wording import say
 
-_LEFT, _TOP, _WIDTH, _HEIGHT, _STRIP = 44.0, 56.0, 344.0, 220.0, 46.0
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
+_LEFT, _WIDTH, _HEIGHT, _STRIP = 46.0, 326.0, 210.0, 46.0
 
 
 def draw(figure: CurveFigure) -> Sheet:
     title = fold(figure.x_label, SMALL, _WIDTH)
-    bottom = _TOP + _HEIGHT + (_STRIP if figure.density else 0.0)
+    ring = {"linestyle": "", "marker": "o", "markerfacecolor": PAPER, "markersize": 7, "linewidth": 1}
+    entries: list[tuple[str, str, dict[str, Any]]] = [
+        (say("figure-curve"), FIRST, {}),
+        (say("figure-straight"), SECOND, {"linestyle": (0, (5, 3))}),
+        (say("figure-reference", value=plain_labels([figure.reference])[0]), INK, ring),
+    ]
+    top = Sheet.key_height(entries) + 30.0
+    bottom = top + _HEIGHT + (_STRIP if figure.density else 0.0)
     sheet = Sheet(bottom + 28.0 + 16.0 * len(title))
     low, high = ratio_range((*figure.curve, *figure.straight), (*figure.lower, *figure.upper), beyond=4.0)
-    axes = sheet.plot(_LEFT, _TOP, _WIDTH, _HEIGHT)
+    axes = sheet.plot(_LEFT, top, _WIDTH, _HEIGHT)
     axes.set_yscale("log")
     axes.set_xlim(min(figure.x), max(figure.x))
     axes.set_ylim(low, high)
@@ -34,31 +46,20 @@ def draw(figure: CurveFigure) -> Sheet:
     axes.plot([figure.reference], [1.0], marker="o", markersize=7, markerfacecolor=PAPER, markeredgecolor=INK, zorder=5)
 
     ticks = plain_ticks(min(figure.x), max(figure.x))
-    labelled = _density(sheet, figure) if figure.density else axes
+    labelled = _density(sheet, figure, top + _HEIGHT) if figure.density else axes
     labelled.set_xticks(ticks, labels=plain_labels(ticks))
     if labelled is not axes:
         axes.set_xticks(())
-    sheet.key(
-        0,
-        14.0,
-        [
-            (say("figure-curve"), FIRST, {}),
-            (say("figure-straight"), SECOND, {"linestyle": (0, (5, 3))}),
-            (
-                say("figure-reference", value=plain_labels([figure.reference])[0]),
-                INK,
-                {"linestyle": "", "marker": "o", "markerfacecolor": PAPER, "markersize": 7, "linewidth": 1},
-            ),
-        ],
-    )
-    sheet.text(0, _TOP - 8, say("figure-odds-ratio-log"), size=SMALL, colour=INK)
+    sheet.key(entries)
+    sheet.text(0, top - 8, say("figure-odds-ratio-log"), size=SMALL, colour=INK)
     for number, words in enumerate(title):
         sheet.text(min(_LEFT + _WIDTH, WIDTH), bottom + 36 + 16 * number, words, size=SMALL, ha="right")
     return sheet
 
 
-def _density(sheet: Sheet, figure: CurveFigure):  # noqa: ANN202
-    strip = sheet.plot(_LEFT, _TOP + _HEIGHT, _WIDTH, _STRIP)
+def _density(sheet: Sheet, figure: CurveFigure, top: float) -> Axes:
+    """Where the records lie: bars by bin, their heights records per unit of the column."""
+    strip = sheet.plot(_LEFT, top, _WIDTH, _STRIP)
     lower, upper, records = (np.array(values, dtype=float) for values in zip(*figure.density, strict=True))
     share = np.nan_to_num(records) / np.maximum(upper - lower, 1e-300)
     strip.bar(lower, share, width=upper - lower, align="edge", color=MUTED, alpha=0.45, linewidth=0)

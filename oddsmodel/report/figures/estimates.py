@@ -26,7 +26,7 @@ from oddsmodel.results.figures import EstimateMark, EstimatesFigure
 from oddsmodel.wording import numbers, say
 
 _NUMBERS_WIDTH = 138.0
-_NAMES_WIDTH = 96.0
+_NAMES_WIDTH = 84.0
 _GAP = 8.0
 _TOP = 6.0
 CRUDE = "crude"

@@ -4,24 +4,24 @@ from __future__ import annotations
 
 import numpy as np
 
-from oddsmodel.report.figures.canvas import INK, RULE, SERIES, SMALL, Sheet
-from oddsmodel.report.figures.lettering import fold, width_of
+from oddsmodel.report.figures.canvas import INK, LINE, MUTED, RULE, SERIES, SMALL, Sheet
+from oddsmodel.report.figures.lettering import fold
 from oddsmodel.report.figures.scales import percent_labels, plain_labels, plain_ticks
 from oddsmodel.results.figures import HistogramFigure
 from oddsmodel.wording import say
 
-_LEFT, _WIDTH, _HEIGHT = 44.0, 344.0, 230.0
+_LEFT, _WIDTH, _HEIGHT = 46.0, 322.0, 220.0
 _STYLES = ("-", (0, (5, 2)), (0, (1.5, 1.5)), (0, (7, 2, 1.5, 2)))
 
 
 def draw(figure: HistogramFigure) -> Sheet:
     withheld = any(count is None for _, counts in figure.series for count in counts)
     entries = [
-        (fold(name, SMALL, 330.0, lines=1)[0], SERIES[k % len(SERIES)], {"linestyle": _STYLES[k % len(_STYLES)]})
+        (fold(name, SMALL, _WIDTH, lines=1)[0], SERIES[k % len(SERIES)], {"linestyle": _STYLES[k % len(_STYLES)]})
         for k, (name, _) in enumerate(figure.series)
     ]
-    rows = _key_rows([words for words, _, _ in entries], Sheet(10).width)
-    top = 14.0 + 17.0 * rows + (17.0 if withheld else 0.0) + 14.0
+    key = Sheet.key_height(entries)
+    top = key + (LINE if withheld else 0.0) + 30.0
     title = fold(figure.x_label, SMALL, _WIDTH)
     sheet = Sheet(top + _HEIGHT + 28.0 + 16.0 * len(title))
     axes = sheet.plot(_LEFT, top, _WIDTH, _HEIGHT)
@@ -43,20 +43,10 @@ def draw(figure: HistogramFigure) -> Sheet:
     axes.set_yticks(ticks, labels=percent_labels(ticks))
     axes.grid(axis="y", color=RULE, linewidth=0.6)
     axes.set_axisbelow(True)
-    sheet.key(0, 14.0, entries)
+    sheet.key(entries)
     if withheld:
-        sheet.text(0, 14.0 + 17.0 * rows, say("figure-bins-withheld"), size=SMALL)
+        sheet.text(0, 14.0 + key, say("figure-bins-withheld"), size=SMALL, colour=MUTED)
     sheet.text(0, top - 8, say("figure-share-of-group"), size=SMALL, colour=INK)
     for number, words in enumerate(title):
         sheet.text(_LEFT + _WIDTH, top + _HEIGHT + 36 + 16 * number, words, size=SMALL, ha="right")
     return sheet
-
-
-def _key_rows(words: list[str], room: float) -> int:
-    rows, x = 1, 0.0
-    for text in words:
-        need = 40.0 + width_of(text, SMALL)
-        if x > 0 and x + need > room + 10:
-            rows, x = rows + 1, 0.0
-        x += need
-    return rows

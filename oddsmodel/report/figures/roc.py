@@ -9,7 +9,7 @@ from oddsmodel.report.figures.scales import percent_labels, plain_ticks
 from oddsmodel.results.figures import StepFigure
 from oddsmodel.wording import numbers, say
 
-_LEFT, _TOP, _SIDE = 52.0, 30.0, 330.0
+_LEFT, _TOP, _SIDE = 48.0, 30.0, 312.0
 _MOST_POINTS = 400
 
 

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterable, Sequence
+from itertools import pairwise
 
 from oddsmodel.wording import numbers
 
 _HALF_TENTHS = tuple(round(0.05 * step, 2) for step in range(10, 41))
 _TENTHS = tuple(round(0.1 * step, 1) for step in range(3, 31))
 _FAMILIAR = (0.2, 0.25, 0.3, 0.4, 0.5, 0.6, 0.8, 1.0, 1.25, 1.5, 2.0, 2.5, 3.0, 4.0, 5.0)
+_HALVES = (0.25, 0.5, 0.75, 1.0, 1.5, 2.0, 3.0, 4.0)
 _ROUND = tuple(factor * 10.0**power for power in range(-6, 7) for factor in (1, 2, 5))
 _THIRDS = tuple(factor * 10.0**power for power in range(-6, 7) for factor in (1, 3))
 _TENS = tuple(10.0**power for power in range(-9, 10))
@@ -30,9 +32,9 @@ def ratio_range(estimates: Iterable[float], limits: Iterable[float], *, beyond: 
 def ratio_ticks(low: float, high: float, room: float, *, apart: float = 38.0) -> tuple[float, ...]:
     """Round values of a log axis from `low` to `high` over `room` units, no two nearer than `apart`."""
     span = math.log(high / low)
-    for candidates in (_HALF_TENTHS, _TENTHS, _FAMILIAR, _ROUND, _THIRDS, _TENS, _THOUSANDS):
+    for candidates in (_HALF_TENTHS, _TENTHS, _FAMILIAR, _HALVES, _ROUND, _THIRDS, _TENS, _THOUSANDS):
         inside = [value for value in candidates if low <= value <= high]
-        gaps = [math.log(b / a) / span * room for a, b in zip(inside, inside[1:], strict=False)]
+        gaps = [math.log(b / a) / span * room for a, b in pairwise(inside)]
         complete = candidates[0] <= low or inside[:1] != list(candidates[:1])
         complete = complete and (candidates[-1] >= high or inside[-1:] != list(candidates[-1:]))
         if complete and len(inside) >= 2 and min(gaps) >= apart:

@@ -10,7 +10,7 @@ from oddsmodel.report.figures.lettering import fold
 from oddsmodel.report.figures.scales import plain_labels, plain_ticks
 from oddsmodel.results.figures import ScatterFigure
 
-_LEFT, _TOP, _WIDTH, _HEIGHT = 52.0, 30.0, 336.0, 260.0
+_LEFT, _TOP, _WIDTH, _HEIGHT = 48.0, 30.0, 322.0, 250.0
 _SIZES = (3.0, 5.0, 7.5, 10.5, 14.0)
 _GRID = 1.5
 

@@ -9,6 +9,9 @@ from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import FlowFigure
 from oddsmodel.results.study import ModelResult, StudyResults
 
+ABOUT_ADJUSTMENT = ("noncollapsibility", "adjustment-in-a-trial")
+"""Codes of the notes that stand beside the crude and adjusted estimates."""
+
 
 @dataclass(frozen=True, slots=True)
 class CountedView:
@@ -17,12 +20,14 @@ class CountedView:
 
 
 def counted(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> CountedView:
-    """The flow of the model that answers, and what the study noted on its records."""
+    """The flow of the model that answers, and what was noted on the records and on the model."""
     figures = lead.figures if lead is not None else ()
     flow = next((figure for figure in figures if isinstance(figure, FlowFigure)), None)
+    of_model = [one for one in lead.findings if one.code not in ABOUT_ADJUSTMENT] if lead is not None else []
+    found = [*study.findings, *of_model]
     return CountedView(
         flow=sheets.figure(flow) if flow is not None else None,
-        notes=tuple(dict.fromkeys([*(one.message for one in study.findings if one.severity == "note"), *study.notes])),
+        notes=tuple(dict.fromkeys([*(one.message for one in found if one.severity == "note"), *study.notes])),
     )
 
 

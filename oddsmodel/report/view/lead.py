@@ -20,9 +20,7 @@ def is_estimated(model: ModelResult) -> bool:
 
 def has_profile(model: ModelResult) -> bool:
     """Whether the model has a likelihood whose profile gives limits."""
-    return any(
-        limit is not None for one in model.coefficients for limit in (one.profile.lower, one.profile.upper)
-    )
+    return any(limit is not None for one in model.coefficients for limit in (one.profile.lower, one.profile.upper))
 
 
 def lead_interval(model: ModelResult, estimate: CoefficientResult | CrudeEstimate) -> Interval:

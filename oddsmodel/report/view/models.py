@@ -6,13 +6,14 @@ from dataclasses import dataclass
 
 from oddsmodel.findings import Finding
 from oddsmodel.report.view.checks import ChecksView, checks
+from oddsmodel.report.view.counted import ABOUT_ADJUSTMENT
 from oddsmodel.report.view.lead import exposures_shown, has_profile, is_estimated
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import EstimatesFigure, FlowFigure
-from oddsmodel.results.study import CoefficientResult, ModelResult, StudyResults
+from oddsmodel.results.study import ModelResult, Role, StudyResults
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
-from oddsmodel.wording import say
+from oddsmodel.wording import numbers, say
 
 CRUDE_TABLES = ("levels", "crude_to_adjusted")
 
@@ -63,7 +64,7 @@ class ComparisonView:
 def crude(model: ModelResult, sheets: Sheets) -> CrudeView:
     by_id = {table.id: table for table in model.tables}
     levels, change = (by_id.get(name) for name in CRUDE_TABLES)
-    notes = tuple(one.message for one in model.findings if one.code in ("noncollapsibility", "adjustment-in-a-trial"))
+    notes = tuple(one.message for one in model.findings if one.code in ABOUT_ADJUSTMENT)
     return CrudeView(
         by_level=sheets.table(levels) if levels is not None else None,
         change=sheets.table(change) if change is not None else None,
@@ -72,43 +73,53 @@ def crude(model: ModelResult, sheets: Sheets) -> CrudeView:
 
 
 def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
-    shown = exposures_shown(model)
-    adjustment = tuple(one for one in model.coefficients if one.role == "adjustment" and one.shown)
+    exposures, adjustment = exposures_table(model), _coefficients(model, "adjustment")
     figures = [one for one in model.figures if not isinstance(one, EstimatesFigure | FlowFigure)]
+    # In the order of the page, which gives figures and tables their numbers.
     return EstimatesView(
-        exposures=sheets.table(_coefficients(model, shown, "exposures")) if shown else None,
+        exposures=sheets.table(exposures) if exposures is not None else None,
         lead_interval=say("lead-profile" if has_profile(model) else "lead-wald"),
-        adjustment=sheets.table(_coefficients(model, adjustment, "adjustment")) if adjustment else None,
-        terms=sheets.table(_terms(model)) if model.terms else None,
-        further=sheets.tables(table for table in model.tables if table.id not in CRUDE_TABLES),
         figures=sheets.figures(figures),
+        further=sheets.tables(table for table in model.tables if table.id not in CRUDE_TABLES),
+        adjustment=sheets.table(adjustment) if adjustment is not None else None,
+        terms=sheets.table(_terms(model)) if model.terms else None,
         reasons=tuple(
             say("no-value-reason", label=one.label, reason=reason)
-            for one in shown
+            for one in exposures_shown(model)
             for key, reason in one.reasons.items()
             if not key.startswith("crude")
         ),
     )
 
 
-def _coefficients(model: ModelResult, coefficients: tuple[CoefficientResult, ...], id_: str) -> Table:
+def exposures_table(model: ModelResult) -> Table | None:
+    """The exposure's odds ratios with their intervals and p-values; None where none has an odds ratio of its own."""
+    return _coefficients(model, "exposure")
+
+
+def _coefficients(model: ModelResult, role: Role) -> Table | None:
+    of_role = [one for one in model.coefficients if one.role == role]
+    if not any(one.shown for one in of_role):
+        return None
     percent = say("level", level=model.level)
     profile = has_profile(model)
     columns = [
-        TableColumn("label", say("column-contrast" if id_ == "exposures" else "column-adjustment-contrast")),
+        TableColumn("label", say(f"column-{role}")),
         TableColumn("odds_ratio", say("column-odds-ratio"), "odds_ratio"),
         *([TableColumn("profile", say("column-profile", level=percent), "interval")] if profile else []),
         TableColumn("wald", say("column-wald", level=percent), "interval"),
         TableColumn("p", say("column-p"), "p"),
     ]
     rows: list[tuple[Cell, ...]] = []
-    for one in coefficients:
-        missing = one.odds_ratio is None
-        intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
-        intervals.append(Interval(one.wald.lower, one.wald.upper))
-        intervals = [None] * len(intervals) if missing else intervals
-        rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
-    return Table(id_, say(f"{id_}-table"), tuple(columns), tuple(rows))
+    for one in of_role:
+        if one.shown:
+            intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
+            intervals.append(Interval(one.wald.lower, one.wald.upper))
+            intervals = [None] * len(intervals) if one.odds_ratio is None else intervals
+            rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
+    together = list(dict.fromkeys(one.term for one in of_role if not one.shown))
+    note = say("columns-not-shown", terms=numbers.listed(together)) if together else ""
+    return Table(role, say(f"table-{role}"), tuple(columns), tuple(rows), note)
 
 
 def _terms(model: ModelResult) -> Table:
@@ -139,9 +150,7 @@ def other_models(study: StudyResults, lead: ModelResult | None, sheets: Sheets) 
 
 def not_estimated(study: StudyResults, sheets: Sheets) -> tuple[OtherModelView, ...]:
     """The models that could not be estimated, in words."""
-    return tuple(
-        _other(model, place, sheets) for place, model in enumerate(study.models) if not is_estimated(model)
-    )
+    return tuple(_other(model, place, sheets) for place, model in enumerate(study.models) if not is_estimated(model))
 
 
 def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:

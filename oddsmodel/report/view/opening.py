@@ -13,6 +13,7 @@ from oddsmodel.wording import numbers, say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
 
 MOST_ANSWERS = 4
+MOST_WARNINGS = 4
 
 
 @dataclass(frozen=True, slots=True)
@@ -35,17 +36,16 @@ class OpeningView:
     basis: str
     sampling: str
     picture: FigureView | None
+    stops: tuple[Finding, ...]
     warnings: tuple[Finding, ...]
+    further_warnings: tuple[Finding, ...]
 
 
 def opening(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> OpeningView:
-    answers, more, basis, picture = (AnswerView("", "", "", say("answer-no-model"), ""),), "", "", None
-    if lead is not None and not is_estimated(lead):
-        answers = (AnswerView("", "", "", say("answer-not-estimated", name=lead.name), ""),)
-    elif lead is not None:
-        contrasts = exposures_shown(lead)
-        answers = tuple(_answer(study, lead, one) for one in contrasts[:MOST_ANSWERS]) + _several_columns(lead)
-        more = say("answer-more", number=len(contrasts)) if len(contrasts) > MOST_ANSWERS else ""
+    more, basis, picture = "", "", None
+    if lead is not None and is_estimated(lead):
+        number = len(exposures_shown(lead))
+        more = say("answer-more", number=number) if number > MOST_ANSWERS else ""
         basis = say(
             "answer-basis",
             adjustment=list(lead.adjustment_labels),
@@ -56,18 +56,30 @@ def opening(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> Op
         )
         first = next((figure for figure in lead.figures if isinstance(figure, EstimatesFigure)), None)
         picture = sheets.figure(first) if first is not None and first.marks else None
-    sampled = study.design in CASE_CONTROL
+    found = serious(study, lead)
+    cautions = tuple(one for one in found if one.severity == "caution")
     outcome = outcome_words(study.outcome_label, study.event)
     return OpeningView(
         title=study.title,
         question=study.question,
-        answers=answers,
+        answers=answers(study, lead),
         more=more,
         basis=basis,
-        sampling=say("answer-case-control", outcome=outcome) if sampled else "",
+        sampling=say("answer-case-control", outcome=outcome) if study.design in CASE_CONTROL else "",
         picture=picture,
-        warnings=warnings(study, lead),
+        stops=tuple(one for one in found if one.severity == "stop"),
+        warnings=cautions[:MOST_WARNINGS],
+        further_warnings=cautions[MOST_WARNINGS:],
     )
+
+
+def answers(study: StudyResults, lead: ModelResult | None) -> tuple[AnswerView, ...]:
+    """One answer a contrast of the exposure, the first few; or why there is none."""
+    if lead is None:
+        return (AnswerView("", "", "", say("answer-no-model"), ""),)
+    if not is_estimated(lead):
+        return (AnswerView("", "", "", say("answer-not-estimated", name=lead.name), ""),)
+    return tuple(_answer(study, lead, one) for one in exposures_shown(lead)[:MOST_ANSWERS]) + _several_columns(lead)
 
 
 def _answer(study: StudyResults, model: ModelResult, one: CoefficientResult) -> AnswerView:
@@ -108,10 +120,10 @@ def _several_columns(model: ModelResult) -> tuple[AnswerView, ...]:
     return (AnswerView(labels, "", "", say("answer-several-columns", labels=labels, p=p), ""),)
 
 
-def warnings(study: StudyResults, lead: ModelResult | None) -> tuple[Finding, ...]:
-    """What must be read before the numbers: every caution and stop of the study and of its first model, stops first."""
+def serious(study: StudyResults, lead: ModelResult | None) -> tuple[Finding, ...]:
+    """What must be read with the numbers: every caution and stop of the study, of the model and of its checks, once."""
     found = [*study.findings]
     if lead is not None:
         found += [*lead.findings, *(one for check in lead.checks for one in check.findings)]
-    serious = {(one.code, one.message): one for one in found if one.severity != "note"}
-    return tuple(sorted(serious.values(), key=lambda one: one.severity != "stop"))
+    kept = {(one.code, one.message): one for one in found if one.severity != "note"}
+    return tuple(kept.values())

