@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from oddsmodel.design.splines import harrell_knots, restricted_cubic_basis
+from oddsmodel.design.weighted import weighted_quantiles
 from oddsmodel.inference.maximise import Fit, Problem, maximise_all
 from oddsmodel.inference.tests import likelihood_ratio
 from oddsmodel.likelihood.binomial import BinomialLikelihood
@@ -86,21 +87,10 @@ def straight_lines(model: FittedModel) -> tuple[Line, ...]:
     return tuple(lines)
 
 
-def weighted_quantiles(x: Array, counts: Array, shares: tuple[float, ...]) -> Array:
-    """Quantiles (len(shares),) of x (m,) repeated counts (m,) times, linear between neighbours (Hyndman & Fan 1996,
-    definition 7)."""
-    order = np.argsort(x, kind="stable")
-    sorted_x, ends = x[order], np.cumsum(counts[order])
-    place = (ends[-1] - 1.0) * np.asarray(shares)
-    low = sorted_x[np.searchsorted(ends, np.floor(place), side="right")]
-    high = sorted_x[np.minimum(np.searchsorted(ends, np.ceil(place), side="right"), x.size - 1)]
-    return np.asarray(low + (place - np.floor(place)) * (high - low))
-
-
 def choose_knots(x: Array, counts: Array) -> Array | str:
     """Knots for a restricted cubic spline of x (m,) with frequencies counts (m,), or the code of why there are none.
 
-    Four at Harrell's quantiles (Harrell 2015, Regression Modeling Strategies, table 2.3), three where values are few or
+    Four at Harrell's quantiles (Harrell 2001, Regression Modeling Strategies, table 2.3), three where values are few or
     four fall together. Where values pile up at one end (many zeros), a knot there and two among the others.
     """
     used = counts > 0
@@ -109,14 +99,14 @@ def choose_knots(x: Array, counts: Array) -> Array | str:
     if distinct < FEWEST_VALUES:
         return "linearity-few-values"
     for number in (4, 3) if distinct >= MANY_VALUES else (3,):
-        knots = np.asarray(harrell_knots(x, number, counts), dtype=np.float64)
+        knots = harrell_knots(x, number, counts)
         if np.unique(knots).size == number:
             return knots
     for end, shares in ((x.min(), (0.5, 0.95)), (x.max(), (0.05, 0.5))):
         rest = x != end
         if counts[rest].sum() < LEAST_OFF_THE_PILE * counts.sum():
             continue
-        knots = np.unique([end, *weighted_quantiles(x[rest], counts[rest], shares)])
+        knots = np.unique([end, *weighted_quantiles(x[rest], shares, counts[rest])])
         if knots.size == 3:
             return np.asarray(knots)
     return "linearity-values-pile-up"

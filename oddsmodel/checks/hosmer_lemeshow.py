@@ -91,8 +91,8 @@ def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecord
     3. Covariate patterns are few: fewer than five distinct fitted probabilities a group, unless four in five records
        have one of their own.
     4. Expected counts too small (or groups of a record or two): the statistic's variance under the fitted model,
-       2(g − 2) + sum of κ4/V² over the groups with V the variance and κ4 the fourth cumulant of the group's count, is not
-       between half and twice that of chi-square.
+       2(g − 2) + sum of κ4/V² over the g groups, with V and κ4 the variance and the fourth cumulant of the group's
+       count, is not between half and twice that of chi-square.
     5. No intercept in the span of the columns: events and their expectations then have different totals.
     """
     formed, distinct = int(groups.records.size), int(ordered.records.size)

@@ -57,14 +57,14 @@ def check(model: FittedModel) -> CheckResult:
     targets = model.exposure_indices or tuple(
         i for i, column in enumerate(model.design.columns) if column.role != "intercept"
     )
-    patterns = int(model.patterns.trials.size)
+    patterns = int((model.patterns.trials > 0.0).sum())
     if not targets:
         return _not_applicable(say("influence-no-columns"))
     if patterns <= model.fit.dimension:
         return _not_applicable(say("influence-saturated", patterns=patterns))
     steps = one_step(model, targets)
     score = np.where(steps.essential, 2.0 * steps.target_distance.max() + 1.0, steps.target_distance)
-    top = ranked(score, LISTED)
+    top = ranked(np.where(model.patterns.trials > 0.0, score, -1.0), min(LISTED, patterns))
     judged = [_judge(model, without(model, top[:k], targets), targets) for k in LEFT_OUT if k == 1 or 2 * k <= patterns]
     spoken = _spoken(judged)
     code, facts = _said(model, spoken)

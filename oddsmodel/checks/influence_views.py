@@ -122,7 +122,7 @@ def scatter(model: FittedModel, steps: OneStep) -> ScatterFigure:
 
     Of more than 2,000 patterns, the 500 that shift the coefficients most and a random sample of the others.
     """
-    usable = np.flatnonzero(~steps.alone)
+    usable = np.flatnonzero(~steps.alone & (model.patterns.trials > 0.0))
     sampled = usable.size > TOP_POINTS + SAMPLED_POINTS
     if sampled:
         top = usable[ranked(steps.distance[usable], TOP_POINTS)]
@@ -132,7 +132,9 @@ def scatter(model: FittedModel, steps: OneStep) -> ScatterFigure:
     return ScatterFigure(
         id="influence",
         title=say("influence-title"),
-        alt=say("influence-alt", patterns=int(steps.alone.size), drawn=int(usable.size), sampled=sampled),
+        alt=say(
+            "influence-alt", patterns=int((model.patterns.trials > 0.0).sum()), drawn=int(usable.size), sampled=sampled
+        ),
         x_label="Fitted probability",
         y_label="Fall in deviance without the pattern",
         x=tuple(steps.probability[usable].tolist()),

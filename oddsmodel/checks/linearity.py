@@ -7,8 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from oddsmodel.checks.curves import Curve, Curves, Line, fit_curves, straight_lines, weighted_quantiles
+from oddsmodel.checks.curves import Curve, Curves, Line, fit_curves, straight_lines
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
+from oddsmodel.design.weighted import weighted_quantiles
 from oddsmodel.findings import Finding
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.figures import CurveFigure
@@ -55,7 +56,7 @@ class Judged:
 def check(model: FittedModel) -> CheckResult:
     """A restricted cubic spline against the straight line of each number column.
 
-    Likelihood-ratio test of the bends (Durrleman & Simon 1989, Stat Med 8:551-561; Harrell 2015, Regression Modeling
+    Likelihood-ratio test of the bends (Durrleman & Simon 1989, Stat Med 8:551-561; Harrell 2001, Regression Modeling
     Strategies, section 2.4). With many records the smallest bend is seen, so its size and what it does to the
     exposure's odds ratio decide whether it matters, not p.
     """
@@ -103,7 +104,7 @@ def check(model: FittedModel) -> CheckResult:
 
 def _judge(model: FittedModel, curve: Curve, tests: int) -> Judged:
     x, trials = model.patterns.X[:, curve.line.position], model.patterns.trials
-    lower, middle, upper = weighted_quantiles(x, trials, (0.05, 0.5, 0.95)).tolist()
+    lower, middle, upper = weighted_quantiles(x, (0.05, 0.5, 0.95), trials).tolist()
     grid = np.linspace(lower, upper, GRID)
     bend = curve.log_odds(grid, middle)[0] - model.fit.coefficients[curve.line.position] * (grid - middle)
     largest = float(np.abs(bend).max())
@@ -202,7 +203,7 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
     entered = model.patterns.X[:, line.position]
     x, axis = _in_own_units(model, line, entered)
     whole = bool((x == np.rint(x)).all())
-    lower, reference, upper = weighted_quantiles(x, trials, (0.025, 0.5, 0.975)).tolist()
+    lower, reference, upper = weighted_quantiles(x, (0.025, 0.5, 0.975), trials).tolist()
     if not lower < upper:
         return None
     grid = np.linspace(lower, upper, GRID)

@@ -58,6 +58,7 @@ def ordered_records(model: FittedModel) -> OrderedRecords:
     """The records of a fit by rising fitted probability; equal probabilities are one entry. O(m log m)."""
     linear = model.patterns.X @ model.fit.coefficients
     order = np.argsort(linear, kind="stable")
+    order = order[model.patterns.trials[order] > 0.0]
     linear = linear[order]
     trials, events = model.patterns.trials[order], model.patterns.events[order]
     apart = np.diff(linear, prepend=linear[0]) > TIE * max(1.0, float(np.abs(linear).max()))

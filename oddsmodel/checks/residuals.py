@@ -36,6 +36,8 @@ def pattern_residuals(model: FittedModel) -> PatternResiduals:
     """Raw, Pearson and deviance residuals of every covariate pattern of a fit."""
     events, trials = model.patterns.events, model.patterns.trials
     others = trials - events
+    # A row of the records may stand for no record at all: its residuals are 0.
+    divisor = np.where(trials > 0.0, trials, 1.0)
     linear = model.patterns.X @ model.fit.coefficients
     probability, complement = expit(linear), expit(-linear)
     raw = events * complement - others * probability
@@ -43,9 +45,9 @@ def pattern_residuals(model: FittedModel) -> PatternResiduals:
     edge = np.where(raw == 0.0, 0.0, np.copysign(np.inf, raw))
     pearson = np.divide(raw, np.sqrt(variance), out=edge, where=variance > 0.0)
     apart = (
-        xlogy(events, events / trials)
+        xlogy(events, events / divisor)
         - events * log_expit(linear)
-        + xlogy(others, others / trials)
+        + xlogy(others, others / divisor)
         - others * log_expit(-linear)
     )
     deviance = np.sign(raw) * np.sqrt(2.0 * np.maximum(apart, 0.0))

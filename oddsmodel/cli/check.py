@@ -35,7 +35,7 @@ def check_command(plan: Path, records: Path | None) -> int:
         _write_flow(model.accounting.flow)
         if model.design is not None:
             write(say("model-has", coefficients=len(model.design.columns)), indent=2)
-    write_findings(checked.findings)
+    write_findings(checked.findings, say("what-was-found"))
 
     stopped = any(model.design is None for model in checked.models)
     stopped = stopped or any(finding.severity == "stop" for finding in checked.findings)

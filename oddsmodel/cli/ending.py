@@ -56,7 +56,8 @@ def _tell_faults(found: InputFault) -> None:
         tell()
         tell(fault.where)
         tell(fault.what, indent=2)
-        tell(fault.remedy, indent=2)
+        if fault.remedy:
+            tell(fault.remedy, indent=2)
 
 
 def _tell_failure(error: Exception) -> None:

@@ -12,31 +12,35 @@ from oddsmodel.wording import say
 
 if TYPE_CHECKING:
     from rich.progress import Progress as Bars
+    from rich.progress import TaskID
 
 STAGES = ("reading", "fitting", "profiling", "checking", "drawing")
 
 
 class Drawn:
-    """A line a stage: its name, a bar where the number of steps is known, the time it took."""
+    """A line a stage: its name, a bar that fills where the number of steps is known, the time it took."""
 
     def __init__(self, bars: Bars) -> None:
         self._bars = bars
-        self._task: int | None = None
+        self._task: TaskID | None = None
+        self._name = ""
 
     def stage(self, name: str, total: int | None = None) -> None:
+        if self._task is not None and name == self._name:
+            self._bars.update(self._task, total=total or None, completed=0)
+            return
         self.finish()
-        words = say(f"stage-{name}") if name in STAGES else name
-        self._task = self._bars.add_task(words, total=total or None)
+        self._name = name
+        self._task = self._bars.add_task(say(f"stage-{name}") if name in STAGES else name, total=total or None)
 
     def advance(self, steps: int = 1) -> None:
         if self._task is not None:
-            self._bars.advance(self._bars.task_ids[-1], steps)
+            self._bars.advance(self._task, steps)
 
     def finish(self) -> None:
         """The present stage is over."""
         if self._task is not None:
-            task = self._bars.tasks[-1]
-            self._bars.update(task.id, total=task.total or 1, completed=task.total or 1)
+            self._bars.update(self._task, total=1, completed=1)
             self._task = None
 
 

@@ -49,7 +49,7 @@ def write_answer(study: StudyResults) -> None:
     for more in (view.more, view.basis, view.sampling):
         if more:
             write(more)
-    write_findings(view.warnings)
+    write_findings((*view.stops, *view.warnings, *view.further_warnings), say("read-this-first"))
 
     for model in study.models:
         if model is not lead and not is_estimated(model):
@@ -57,12 +57,12 @@ def write_answer(study: StudyResults) -> None:
             write(say("model-not-estimated", name=model.name))
 
 
-def write_findings(findings: tuple[Finding, ...]) -> None:
-    """A line a finding, the first of very many."""
+def write_findings(findings: tuple[Finding, ...], heading: str) -> None:
+    """A line a finding below a heading, the first of very many; nothing where there is none."""
     if not findings:
         return
     write()
-    write(say("read-this-first"))
+    write(heading)
     for finding in findings[:MOST_FINDINGS]:
         write(f"- {say(f'severity-{finding.severity}')}: {finding.message}", indent=2)
     if len(findings) > MOST_FINDINGS:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from itertools import pairwise
 
 from oddsmodel.design.faults import formula_fault
 from oddsmodel.design.syntax import Items, Node, Number, Sign, Sum, Text
@@ -39,7 +40,7 @@ class Constants:
     def numbers(self, node: Node, most: int, least: int = 1) -> tuple[float, ...]:
         """A list of rising numbers."""
         values = [self.number(value) for value in self.items(node, most, least)]
-        if any(later <= earlier for earlier, later in zip(values, values[1:], strict=False)):
+        if any(later <= earlier for earlier, later in pairwise(values)):
             raise self.fault("formula-list-not-rising", node)
         return tuple(values)
 

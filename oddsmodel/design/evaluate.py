@@ -36,8 +36,8 @@ NUMPY: dict[str, Callable[[Array], Array]] = {
 def evaluate(expression: Expression, reader: Reader) -> Array:
     """The values (n,) of an expression whose `center` and `standardize` are settled.
 
-    InputFault where a column is not recorded, and where the expression has no value: log of a number that is not
-    above 0, sqrt of a negative one, division by 0, or a result beyond the largest number; with how many and the first row.
+    InputFault where a column is not recorded, and where the expression has no value (log of a number that is not
+    above 0, sqrt of a negative one, division by 0, a result beyond the largest number), with how many and the first.
     """
     with np.errstate(all="ignore"):
         return np.asarray(_value(expression, reader), dtype=np.float64)
@@ -120,14 +120,23 @@ def _finite(
 
 
 def _all_good(
-    good: NDArray[np.bool_] | np.bool_, reason: str, expression: Expression, inside: Expression, argument: Array, reader: Reader
+    good: NDArray[np.bool_] | np.bool_,
+    reason: str,
+    expression: Expression,
+    inside: Expression,
+    argument: Array,
+    reader: Reader,
 ) -> None:
-    """Raise the fault of the records where `good` does not hold; `argument` is the value of `inside` that is to blame."""
+    """Raise the fault of records where `good` does not hold; `argument` is the value of `inside` that is to blame."""
     if np.all(good):
         return
     bad = np.broadcast_to(~np.asarray(good), (reader.records,))
     row = int(np.argmax(bad))
     value = float(np.broadcast_to(argument, (reader.records,))[row])
-    why = say(f"design-value-{reason}", inside=piece(text_of(inside)), value=decimal(value, 0) if value.is_integer() else f"{value:.6g}")
+    why = say(
+        f"design-value-{reason}",
+        inside=piece(text_of(inside)),
+        value=decimal(value, 0) if value.is_integer() else f"{value:.6g}",
+    )
     facts = {"faulty_records": int(bad.sum()), "row": row + 1, "reason": why}
     raise InputFault(fault("design-no-value", reader.where, term=piece(text_of(expression)), **facts))

@@ -1,4 +1,4 @@
-"""Terms of a formula: what + - : * / ** make of factors, as Wilkinson & Rogers (1973) and patsy have it, within bounds."""
+"""Terms of a formula: what + - : * / ** make of factors (Wilkinson & Rogers 1973), as patsy has it, within bounds."""
 
 from __future__ import annotations
 

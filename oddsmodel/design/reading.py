@@ -39,7 +39,7 @@ class Reader:
         """
         series = self._series(column)
         categorical = series.array if isinstance(series.dtype, pd.CategoricalDtype) else pd.Categorical(series)
-        codes: NDArray[np.integer] = np.asarray(categorical.codes)
+        codes = np.asarray(categorical.codes)
         names = [str(name) for name in categorical.categories]
         if codes.size and codes.min() < 0:
             self._none_missing(column, codes < 0)
@@ -55,7 +55,11 @@ class Reader:
     def unseen(self, column: str, which: NDArray[np.bool_], level: str) -> None:
         """Raise the fault of records whose level the model does not know."""
         raise self.fault(
-            "design-level-unseen", column, level=piece(level), unseen_records=int(which.sum()), row=int(np.argmax(which)) + 1
+            "design-level-unseen",
+            column,
+            level=piece(level),
+            unseen_records=int(which.sum()),
+            row=int(np.argmax(which)) + 1,
         )
 
     def _series(self, column: str) -> pd.Series:

@@ -1,4 +1,4 @@
-"""The syntax tree of a formula: written by hand, bounded in depth, and unable to hold what the language does not have."""
+"""The syntax tree of a formula: parsed by hand, bounded in depth, unable to hold what the language does not have."""
 
 from __future__ import annotations
 
@@ -115,7 +115,7 @@ class _Parser:
         self.open = 0
 
     def formula(self) -> FormulaTree:
-        if self.now.kind == "end":
+        if self.at_end():
             raise self.fault("formula-empty")
         left = None
         if not self.meets("~"):
@@ -123,13 +123,13 @@ class _Parser:
             if not self.meets("~"):
                 return FormulaTree(None, self.ended(left), 0)
         self.step()
-        if self.now.kind == "end":
+        if self.at_end():
             raise self.fault("formula-no-right-side")
         start = self.now.at
         return FormulaTree(left, self.ended(self.sum()), start)
 
     def ended(self, node: Node) -> Node:
-        if self.now.kind != "end":
+        if not self.at_end():
             raise self.unexpected()
         return node
 
@@ -281,6 +281,9 @@ class _Parser:
     def now(self) -> Token:
         return self.tokens[self.position]
 
+    def at_end(self) -> bool:
+        return self.now.kind == "end"
+
     def step(self) -> Token:
         token = self.now
         self.position += 1
@@ -290,7 +293,7 @@ class _Parser:
         return self.now.kind == "operator" and self.now.text in operators
 
     def closed(self, bracket: str, opening: Token) -> None:
-        if self.now.kind == "end":
+        if self.at_end():
             raise formula_fault("formula-not-closed", self.where, opening.at, bracket=opening.text, closing=bracket)
         if not self.meets(bracket):
             raise self.unexpected()

@@ -106,7 +106,9 @@ def _token(text: str, at: int, where: str) -> Token:
     for operator in OPERATORS:
         if text.startswith(operator, at):
             return Token("operator", operator, at)
-    raise formula_fault("formula-character", where, at, name=unicodedata.name(character, "no name"), number=f"{ord(character):04X}")
+    raise formula_fault(
+        "formula-character", where, at, name=unicodedata.name(character, "no name"), number=f"{ord(character):04X}"
+    )
 
 
 def _name(text: str, at: int, where: str) -> Token:

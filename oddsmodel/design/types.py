@@ -21,10 +21,10 @@ class DesignColumn:
         numbers, "interaction" a product of several.
     level, reference: for kind "level".
     levels: for an interaction, each source column with its level (None for a number).
-    per: one coefficient times `per` is the log odds ratio that is reported (1.0 but for kind "number").
+    per: one coefficient times `per` is the log odds ratio that is reported (1.0 but for a number, centred or not).
     label: the wording of the coefficient ("Smoking: current against never", "Age, per 10 years").
-    shown: whether its own odds ratio has a meaning (a "level" or "number" column whose sources enter no
-        interaction, spline or further term).
+    shown: whether its own odds ratio has a meaning: a "level" column with a reference, a "number" column or the one
+        column of a function of numbers, whose sources enter no interaction, spline or further term.
     """
 
     name: str
@@ -42,7 +42,7 @@ class DesignColumn:
 
 @dataclass(frozen=True, slots=True)
 class DesignTerm:
-    """A term and the half-open range [start, stop) of its columns in the matrix; `factors` are the formula factors in it."""
+    """A term and the half-open range [start, stop) of its columns in the matrix; `factors` are those of the formula."""
 
     name: str
     factors: frozenset[str]

@@ -7,8 +7,8 @@ from collections.abc import Collection
 from oddsmodel.design import arithmetic as vetted
 from oddsmodel.design.constants import Constants
 from oddsmodel.design.factors import (
-    BasisSpline,
     Bands,
+    BasisSpline,
     Coding,
     Computed,
     CubicSpline,
@@ -216,7 +216,12 @@ class Vetter:
             if name not in keywords:
                 near = nearest(name, keywords) or ""
                 raise self.fault(
-                    "formula-keyword", value, function=call.function, keyword=piece(name), known=list(keywords), nearest=near
+                    "formula-keyword",
+                    value,
+                    function=call.function,
+                    keyword=piece(name),
+                    known=list(keywords),
+                    nearest=near,
                 )
         if not least <= len(call.arguments) <= most:
             raise self.fault("formula-arguments", call, function=call.function, least=least, most=most)

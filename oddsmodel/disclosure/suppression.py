@@ -60,13 +60,37 @@ class Suppression:
             for number in relation.terms:
                 self._touching.setdefault(number, []).append(relation)
         self._hide(number for number in range(len(values)) if shown[number] and self._small(number))
-        while (failing := self._first_failing()) is not None:
+        while (failing := min(self._failing(), key=self._by_size, default=None)) is not None:
             helper = self._helper(failing)
             if helper is None:
                 self.unprotected.add(failing)
             else:
                 self._hide([helper])
+        self._show_again()
         return frozenset(self.hidden)
+
+    def _by_size(self, number: int) -> tuple[int, int]:
+        return self.counts.values[number], number
+
+    def _show_again(self) -> None:
+        """Show what turned out not to be needed, the most useful first."""
+        order = sorted(self.hidden, key=lambda n: (self.counts.ranks[n], self.counts.values[n], n), reverse=True)
+        for number in order:
+            together = self._tied(number)
+            if number in self.hidden and not any(map(self._small, together)):
+                self.hidden -= together
+                if self._failing():
+                    self.hidden |= together
+
+    def _tied(self, number: int) -> set[int]:
+        """A count with all that must be hidden together with it."""
+        found, waiting = {number}, [number]
+        while waiting:
+            one = waiting.pop()
+            new = {other for tie in self.counts.ties if one in tie for other in tie} - found - self.counts.locked
+            found |= new
+            waiting += new
+        return found
 
     def _all_readers(self) -> Iterable[_Reader]:
         counts = self.counts
@@ -83,13 +107,8 @@ class Suppression:
         return 0 < self.counts.values[number] < self.threshold and number not in self.counts.locked
 
     def _hide(self, numbers: Iterable[int]) -> None:
-        waiting = list(numbers)
-        while waiting:
-            number = waiting.pop()
-            if number in self.hidden or number in self.counts.locked:
-                continue
-            self.hidden.add(number)
-            waiting += [other for tie in self.counts.ties if number in tie for other in tie]
+        for number in numbers:
+            self.hidden |= self._tied(number)
 
     def _known(self, number: int, reader: _Reader) -> bool:
         return number in reader.known or (self.counts.shown[number] and number not in self.hidden)
@@ -126,8 +145,8 @@ class Suppression:
             self._bounds[key] = feasible_bounds(equations, lambda number: self._own_bounds(number, reader), wanted)
         return self._bounds[key]
 
-    def _first_failing(self) -> int | None:
-        """The smallest hidden count that a reader could work out, of those that something may still protect."""
+    def _failing(self) -> set[int]:
+        """The counts that a reader could work out, without those that nothing can protect."""
         failing: set[int] = set()
         for which, reader in enumerate(self._readers):
             found = [self._equation(relation, reader) for relation in reader.relations]
@@ -135,7 +154,7 @@ class Suppression:
                 for number, bounds in self._component_bounds(which, members, equations).items():
                     if number not in self.unprotected and not self._passes(number, bounds, reader):
                         failing.add(number)
-        return min(failing, key=lambda number: (self.counts.values[number], number), default=None)
+        return failing
 
     def _around(self, number: int, reader: _Reader) -> tuple[frozenset[int], list[Equation], set[int]]:
         """The unknowns that have to do with a count, their equations, and the shown counts in these."""
@@ -165,24 +184,28 @@ class Suppression:
         return passed, width
 
     def _helper(self, failing: int) -> int | None:
-        """The count to hide next: the first that protects the failing one, else the one that helps most."""
-        near: set[int] = set()
-        for reader in self._readers:
-            near |= self._around(failing, reader)[2]
-        counts = self.counts
-        choices = sorted(
-            (n for n in near if counts.shown[n] and n not in self.hidden and n not in counts.locked),
-            key=lambda number: (*counts.ranks[number], counts.values[number], number),
-        )
+        """The count to hide next: one that protects the failing one, else one that helps, else the first beside it.
+
+        The last may help only together with another, for which it will ask itself, since it is not protected either.
+        """
+        touching = {number for relation in self._touching.get(failing, ()) for number in relation.terms}
+        near = {number for reader in self._readers for number in self._around(failing, reader)[2]}
         present = self._standing(failing)
-        best, found = present, None
-        for choice in choices:
-            before = set(self.hidden)
-            self._hide([choice])
-            standing = self._standing(failing)
-            self.hidden = before
-            if standing[0] == len(self._readers):
-                return choice
-            if standing > best:
-                best, found = standing, choice
-        return found
+        for numbers in (touching, near - touching):
+            choices = sorted(filter(self._can_hide, numbers), key=lambda n: (self.counts.ranks[n], self._by_size(n)))
+            best, found = present, choices[0] if choices else None
+            for choice in choices:
+                before = set(self.hidden)
+                self._hide([choice])
+                standing = self._standing(failing)
+                self.hidden = before
+                if standing[0] == len(self._readers):
+                    return choice
+                if standing > best:
+                    best, found = standing, choice
+            if found is not None:
+                return found
+        return None
+
+    def _can_hide(self, number: int) -> bool:
+        return self.counts.shown[number] and number not in self.hidden and number not in self.counts.locked

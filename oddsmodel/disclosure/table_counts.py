@@ -177,6 +177,7 @@ class TableCounts:
         known = self.scalars.get(value)
         if known is None:
             known = self.system.add(value, model=self.model)
+            self.sightings.totals.append((self.owner, known))
             self._sign(known, row, None, None)
         self.system.relate(numbers, known)
 

@@ -7,11 +7,12 @@ from dataclasses import replace
 
 from oddsmodel.disclosure.hiding import Hiding
 from oddsmodel.disclosure.system import Place
-from oddsmodel.disclosure.table_counts import row_blocks
+from oddsmodel.disclosure.table_counts import row_blocks, whole_number
 from oddsmodel.results.tables import Cell, Hidden, Interval, Table, TableColumn
 from oddsmodel.wording import say
 
-ESTIMATES = ("number", "odds_ratio", "interval", "p")
+RATIOS = ("odds_ratio", "interval")
+"""Kinds of numbers that are the same estimate wherever they stand to the last digit."""
 
 
 def hidden_estimates(table: Table, owner: Place, hiding: Hiding) -> Iterator[float]:
@@ -19,7 +20,7 @@ def hidden_estimates(table: Table, owner: Place, hiding: Hiding) -> Iterator[flo
     state = _State(table, owner, hiding)
     for r, row in enumerate(table.rows):
         for column, cell in zip(table.columns, row, strict=True):
-            if column.kind in ESTIMATES and column.hidden_with_block and state.hangs_on_hidden(r, column):
+            if column.kind in RATIOS and column.hidden_with_block and state.hangs_on_hidden(r, column):
                 yield from estimates_in(cell)
 
 
@@ -54,10 +55,21 @@ class _State:
         self.in_block: dict[int, bool] = {}
         for block, keys in zip(self.blocks, self.keys, strict=True):
             self.in_block[block] = self.in_block.get(block, False) or bool(keys)
-        # A row that is a block of its own may hold a column's total: with it hidden, no share of it may stand.
-        alone = (r for r, block in enumerate(self.blocks) if self.blocks.count(block) == 1)
-        self.totals = {key for r in alone for key in self.keys[r]} if len(set(self.blocks)) > 1 else set()
+        self.totals = set(self._hidden_totals())
         self.part_of = {column.key: column.part_of for column in table.columns}
+
+    def _hidden_totals(self) -> Iterator[str]:
+        """Keys of the columns whose total stands in a row of its own and is hidden there: no share of it may stand."""
+        rows_of: dict[int, list[int]] = {}
+        for row, block in enumerate(self.blocks):
+            rows_of.setdefault(block, []).append(row)
+        alone = [rows[0] for rows in rows_of.values() if len(rows) == 1]
+        for k, column in enumerate(self.table.columns):
+            hidden = {self.table.rows[row][k] for row in alone if column.key in self.keys[row]}
+            several = (rows for rows in rows_of.values() if len(rows) > 1) if hidden else ()
+            sums = {sum(whole_number(self.table.rows[row][k]) or 0 for row in rows) for rows in several}
+            if hidden & sums:
+                yield column.key
 
     def hangs_on_hidden(self, row: int, column: TableColumn) -> bool:
         """Whether a cell that is no count would give a hidden count away."""
@@ -77,7 +89,7 @@ class _State:
             return self._hidden("estimate-hidden")
         if isinstance(cell, str):
             return self.hiding.withheld.text(cell)
-        if column.kind in ESTIMATES and any(one in self.hiding.withheld.estimates for one in estimates_in(cell)):
+        if column.kind in RATIOS and any(one in self.hiding.withheld.estimates for one in estimates_in(cell)):
             return self._hidden("estimate-hidden")
         return cell
 

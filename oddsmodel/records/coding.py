@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Literal
 
 import numpy as np
@@ -21,6 +22,7 @@ from oddsmodel.records.numbers import code_number
 from oddsmodel.records.raw import RawType
 from oddsmodel.records.same_value import absent_mask, matching, same_value_key
 from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
+from oddsmodel.records.texts import without_texts
 from oddsmodel.records.types import Column
 from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
@@ -46,7 +48,7 @@ class CodedColumn:
     faults: tuple[Fault, ...] = ()
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True)
 class RawValues:
     """A raw column with its name and place. not_recorded: the plan's texts for this column; first_row: see RawTable."""
 
@@ -61,33 +63,32 @@ class RawValues:
     def where(self) -> str:
         return in_column(self.source, self.name)
 
-    @property
+    @cached_property
     def keys(self) -> frozenset[str]:
         return frozenset(same_value_key(text) for text in self.not_recorded)
 
+    @cached_property
     def recorded(self) -> pd.Series:
         """The texts with those that mean "not recorded" taken out; numbers unchanged."""
         if not isinstance(self.values.dtype, pd.CategoricalDtype):
             return self.values
-        categories = self.values.cat.categories
-        absent = absent_mask(list(categories), self.keys)
-        return self.values.cat.remove_categories(categories[absent]) if absent.any() else self.values
+        return without_texts(self.values, absent_mask(list(self.values.cat.categories), self.keys))
 
 
 def code_column(raw: RawValues, section: ColumnSection | None, use: Use) -> CodedColumn:
     """The column coded by its kind. Columns that the plan does not use carry no findings and no faults."""
-    kind = kind_of(raw.recorded(), raw.type, section)
+    kind = kind_of(raw.recorded, raw.type, section)
     column = _described(raw.name, kind, section)
     if use == "none":
         return _unused(raw, column)
-    if raw.type == "empty":
-        coded = _number(raw, column, section, use) if kind == "number" else _levels(raw, column, section, use)
-        return replace(coded, findings=(finding("caution", "column-empty", column=raw.name),))
     if kind == "number":
-        return _number(raw, column, section, use)
-    if kind in WITH_LEVELS:
-        return _levels(raw, column, section, use)
-    return _texts(raw, column)
+        coded = _number(raw, column, section, use)
+    elif kind in WITH_LEVELS:
+        coded = _levels(raw, column, section, use)
+    else:
+        coded = _texts(raw, column)
+    empty = not coded.faults and coded.outside is None and coded.values.isna().all()
+    return replace(coded, findings=(finding("caution", "column-empty", column=raw.name),)) if empty else coded
 
 
 def _described(name: str, kind: Kind, section: ColumnSection | None) -> Column:
@@ -112,7 +113,7 @@ def _unused(raw: RawValues, column: Column) -> CodedColumn:
         if not faults or raw.type == "number":
             return CodedColumn(pd.Series(numbers), column)
         column = replace(column, kind="category")
-    if column.kind in WITH_LEVELS and raw.type != "empty" and len(raw.recorded().cat.categories) <= 1000:
+    if column.kind in WITH_LEVELS and raw.type != "empty" and len(raw.recorded.cat.categories) <= 1000:
         coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind, keep_order=_ordered(raw))
         return CodedColumn(coded.series(column.kind == "ordered"), replace(column, levels=coded.levels))
     return _texts(raw, column)
@@ -243,19 +244,16 @@ def _codes_among(coded: CodedLevels) -> list[str]:
 def _texts(raw: RawValues, column: Column) -> CodedColumn:
     """An identifier, a date or a column that is only kept: a categorical of its texts."""
     if isinstance(raw.values.dtype, pd.CategoricalDtype):
-        values = raw.recorded()
+        values = raw.recorded
     else:
         coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind)
         values = coded.series()
     findings: tuple[Finding, ...] = ()
     if column.kind == "identifier":
-        met = np.asarray(values.cat.codes)
-        met = met[met >= 0]
-        different = len(np.unique(met))
-        if different < len(met):
-            findings = (
-                finding("stop", "identifier-repeats", column=column.name, records=len(met), different=different),
-            )
+        met = np.bincount(np.asarray(values.cat.codes) + 1, minlength=1)[1:]
+        if met.max(initial=0) > 1:
+            facts = {"records": int(met.sum()), "different": int((met > 0).sum())}
+            findings = (finding("stop", "identifier-repeats", column=column.name, **facts),)
     return CodedColumn(values, column, None, findings)
 
 

@@ -98,7 +98,7 @@ class _Reader:
             left = right
         if not parts:
             if first.kind == "name":
-                self.refuse(first, "condition-bare-column", column=quoted(first.text))
+                self.refuse(first, "condition-bare-column", column=quoted(self.column_of(first).name))
             self.unexpected("a comparison such as == or <")
         return parts[0] if len(parts) == 1 else nodes.AllOf(tuple(parts))
 

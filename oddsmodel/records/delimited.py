@@ -26,7 +26,7 @@ SOMETHING = re.compile(rb"\S")
 BLANK_LINE = re.compile(rb"\n\r?\n(?=[\r\n]*[^\r\n])")
 BLOCK = 1 << 22
 WINDOW = 1 << 24
-WHOLE_BOUND = 2.0**53
+WHOLE_BOUND = 2**53
 DELIMITER_NAMES = {",": "comma", ";": "semicolon", "\t": "tab", "|": "vertical bar"}
 
 
@@ -146,19 +146,23 @@ def _is_not_finite_or_large(column: pa.ChunkedArray) -> bool:
     if pa.types.is_floating(column.type) and not pc.all(pc.is_finite(column), min_count=0).as_py():
         return True
     bounds = pc.min_max(column).as_py()
-    if bounds["max"] is None or max(abs(bounds["min"]), abs(bounds["max"])) <= WHOLE_BOUND:
-        return False
-    return pa.types.is_integer(column.type) or bool(pc.all(pc.equal(column, pc.trunc(column))).as_py())
+    largest = 0 if bounds["max"] is None else max(abs(bounds["min"]), abs(bounds["max"]))
+    if pa.types.is_integer(column.type):
+        return largest > WHOLE_BOUND
+    return largest >= WHOLE_BOUND and bool(pc.all(pc.equal(column, pc.trunc(column))).as_py())
 
 
 def _has_leading_zeros(content: bytes, delimiter: str) -> bool:
-    """Whether any field starts with a zero before another digit, in quotation marks or not."""
-    before = np.zeros(256, dtype=bool)
-    before[[10, 13, 32, 34, 43, 45, ord(delimiter)]] = True
+    """Whether any field starts with a zero before another digit, in quotation marks, after a space or a sign or not."""
+    opens = np.zeros(256, dtype=bool)
+    opens[[10, 13, 34, ord(delimiter)]] = True
+    passed = np.zeros(256, dtype=bool)
+    passed[[32, 43, 45]] = True
     for start in range(0, len(content), WINDOW):
-        window = np.frombuffer(content, dtype=np.uint8, count=min(WINDOW + 2, len(content) - start), offset=start)
+        window = np.frombuffer(content, dtype=np.uint8, count=min(WINDOW + 3, len(content) - start), offset=start)
         zeros = np.flatnonzero(window[1:-1] == 48) + 1
-        zeros = zeros[before[window[zeros - 1]]]
+        before = window[zeros - 1]
+        zeros = zeros[opens[before] | (passed[before] & opens[window[np.maximum(zeros - 2, 0)]])]
         if np.any((window[zeros + 1] >= 48) & (window[zeros + 1] <= 57)):
             return True
     return False

@@ -80,14 +80,11 @@ def _coded(table: RawTable, plan: StudyPlan) -> Records:
         coded[name] = code_column(_raw_values(table, name, section, plan), section, _use(name, used, plan))
     for column in coded.values():
         faults.extend(column.faults)
-    counts = None
-    if plan.records.count in coded and not coded[plan.records.count].faults:
-        counts = coded[plan.records.count].values
-        where = in_column(table.source, plan.records.count)
-        faults.extend(faults_of_counts(counts.to_numpy(np.float64), where=where, first_row=table.first_row))
+    counts, count_faults = _counts(table, plan, coded)
+    faults.extend(count_faults)
     faults.extend(_faults_of_conditions(plan, coded))
     if plan.outcome.column in coded and not coded[plan.outcome.column].faults:
-        faults.extend(_faults_of_outcome(table, plan, coded))
+        faults.extend(_faults_of_outcome(table, plan, coded, counts))
     if faults:
         raise InputFault(faults)
     findings = [*table.findings, *(said for column in coded.values() for said in column.findings)]
@@ -131,6 +128,19 @@ def _columns_missing(table: RawTable, plan: StudyPlan, used: set[str]) -> list[F
     return faults
 
 
+def _counts(table: RawTable, plan: StudyPlan, coded: dict[str, CodedColumn]) -> tuple[pd.Series | None, list[Fault]]:
+    """The counts (n,) of grouped records, where there are any and they are in order; else why they are not."""
+    name = plan.records.count
+    if name is None or name not in coded or coded[name].faults:
+        return None, []
+    where = in_column(table.source, name)
+    if coded[name].column.kind != "number":
+        return None, [fault("count-not-number", where)]
+    counts = coded[name].values
+    faults = faults_of_counts(counts.to_numpy(np.float64), where=where, first_row=table.first_row)
+    return (None if faults else counts), faults
+
+
 def _faults_of_conditions(plan: StudyPlan, coded: dict[str, CodedColumn]) -> list[Fault]:
     """Faults of every `keep`, told where no column it could use is itself at fault."""
     columns = {name: column.column for name, column in coded.items()}
@@ -147,11 +157,14 @@ def _faults_of_conditions(plan: StudyPlan, coded: dict[str, CodedColumn]) -> lis
     return faults
 
 
-def _faults_of_outcome(table: RawTable, plan: StudyPlan, coded: dict[str, CodedColumn]) -> list[Fault]:
+def _faults_of_outcome(
+    table: RawTable, plan: StudyPlan, coded: dict[str, CodedColumn], counts: pd.Series | None
+) -> list[Fault]:
     name = plan.outcome.column
     frame = pd.DataFrame({name: coded[name].values})
+    columns = {name: coded[name].column}
     try:
-        code_outcome(Records(frame, {name: coded[name].column}, len(frame), table.source, table.sha256), plan.outcome)
+        code_outcome(Records(frame, columns, len(frame), table.source, table.sha256, counts=counts), plan.outcome)
     except InputFault as found:
         return list(found.faults)
     return []

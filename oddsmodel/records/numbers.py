@@ -17,6 +17,7 @@ from oddsmodel.wording.plain import quoted
 
 ROWS_NAMED = 5
 WHOLE_BOUND = 2**53
+LONGEST_WHOLE = 400
 WHOLE = re.compile(r"[+-]?[0-9]+")
 DECIMAL_COMMA = re.compile(r"[+-]?[0-9]+,[0-9]+")
 
@@ -50,8 +51,10 @@ def _from_texts(
     parsed = np.full(len(texts) + 1, np.nan)
     parsed[:-1][numeric & ~absent] = [float(text) for text in values.cat.categories[numeric & ~absent]]
     stray = np.append(~numeric & ~absent, False)
-    large = np.abs(parsed) > WHOLE_BOUND
-    large[:-1] &= [bool(WHOLE.fullmatch(text)) if at else False for text, at in zip(texts, large, strict=False)]
+    large = np.abs(parsed) >= WHOLE_BOUND
+    for position in np.flatnonzero(large):
+        text = texts[position]
+        large[position] = WHOLE.fullmatch(text) is not None and abs(int(text[:LONGEST_WHOLE])) > WHOLE_BOUND
     codes = np.asarray(values.cat.codes, dtype=np.intp)
     faults: list[Fault] = []
     found = _met(stray, codes, texts, first_row)

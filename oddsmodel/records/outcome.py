@@ -49,7 +49,7 @@ def code_outcome(records: Records, outcome: Outcome) -> CodedOutcome:
     found = [(values[at], int(met[at])) for at in range(len(values)) if met[at] > 0]
     where = in_column(records.source, outcome.column)
     if len(found) != 2:
-        found.sort(key=lambda value: (-value[1], value[0]))
+        found.sort(key=lambda value: -value[1])
         first = found[:VALUES_NAMED]
         raise InputFault(
             fault(

@@ -18,6 +18,7 @@ from oddsmodel.records.raw import RawType
 from oddsmodel.records.same_value import same_value_key
 from oddsmodel.records.source import read_table
 from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
+from oddsmodel.records.texts import without_texts
 from oddsmodel.wording import say
 
 MOST_LEVELS = 30
@@ -67,7 +68,7 @@ def _column(name: str, values: pd.Series, raw_type: RawType) -> ColumnSurvey:
     like: list[str] = []
     if isinstance(values.dtype, pd.CategoricalDtype):
         like = looks_not_recorded(values.cat.categories)
-        recorded = values.cat.remove_categories(like) if like else values
+        recorded = without_texts(values, np.asarray(values.cat.categories.isin(like)))
     else:
         recorded = values
     kind = kind_of(recorded, raw_type, None)
@@ -120,7 +121,7 @@ def _is_running_number(name: str, numbers: np.ndarray[tuple[int], np.dtype[np.fl
 def _texts(name: str, values: pd.Series, kind: Kind, like: list[str]) -> ColumnSurvey:
     not_recorded = int(values.isna().sum())
     if kind in ("identifier", "date"):
-        different = len(np.unique(np.asarray(values.cat.codes)[values.notna()]))
+        different = int((np.bincount(np.asarray(values.cat.codes) + 1, minlength=1)[1:] > 0).sum())
         questions = [*_asked_about_suspects(like), say(f"survey-{kind}")]
         return ColumnSurvey(name, kind, not_recorded, different, suspected=tuple(like), questions=tuple(questions))
     coded = code_levels(values, (), levels=None, kind=kind)

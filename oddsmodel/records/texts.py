@@ -13,6 +13,15 @@ from oddsmodel.records.raw import RawColumn, RawType
 NOT_SHOWN = r"[\x00-\x1f\x7f-\x{9f}\x{200b}\x{202a}-\x{202e}\x{2066}-\x{2069}\x{feff}]+"
 
 
+def without_texts(values: pd.Series, absent: NDArray[np.bool_]) -> pd.Series:
+    """A categorical whose categories marked absent (k,) are taken out; their rows become not recorded."""
+    if not absent.any():
+        return values
+    position = np.append(np.where(absent, -1, np.cumsum(~absent) - 1), -1)
+    codes = position[np.asarray(values.cat.codes, dtype=np.intp)]
+    return pd.Series(pd.Categorical.from_codes(codes, categories=values.cat.categories[~absent]))
+
+
 def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) -> RawColumn:
     """A column of texts from its different texts and one code a row (n,), -1 for an empty cell.
 

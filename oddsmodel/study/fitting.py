@@ -37,7 +37,8 @@ def fit_model(prepared: Prepared, plan: StudyPlan, records: Records) -> Fitted:
     if design is None:
         return Fitted("not estimated", None, None, None, prepared.findings)
     patterns = collapse(design.encode(prepared.frame), prepared.event, prepared.counts)
-    likelihood = BinomialLikelihood(patterns.X, patterns.events, trials=patterns.trials)
+    single = bool((patterns.trials == 1.0).all())
+    likelihood = BinomialLikelihood(patterns.X, patterns.events, trials=None if single else patterns.trials)
     fit = maximise(likelihood)
     if fit.status != "converged":
         return Fitted(fit.status, patterns, None, None, (*prepared.findings, _why_not(fit, design.columns, patterns)))

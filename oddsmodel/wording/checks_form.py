@@ -89,7 +89,7 @@ def _lines(of: list[Any]) -> str:
 
 def _not_straight(facts: Mapping[str, Any]) -> str:
     message = (
-        f"{facts['column']} does not act as a straight line (p {_p(facts['p'])}): over the middle nine tenths of the "
+        f"{facts['column']} does not act as a straight line (p {_p(facts['p'])}): over the middle 90% of the "
         f"records the odds by a curve and by the line differ by up to {_factor(facts['departure'])}."
     )
     if facts["of_exposure"]:
@@ -107,10 +107,10 @@ def _linearity_explanation(facts: Mapping[str, Any]) -> str:
     text = (
         "Each number that enters as a straight line, in itself or as its log, is given a restricted cubic spline "
         "(four knots at the 5th, 35th, 65th and 95th centile, three where the values are few or pile up) in place of "
-        "the line, and the two are compared by a likelihood-ratio test (Durrleman & Simon 1989; Harrell 2015). "
+        "the line, and the two are compared by a likelihood-ratio test (Durrleman & Simon 1989; Harrell 2001). "
         "With many records the smallest bend is found, so the size of the bend and what it does to the exposure's "
         "odds ratio say whether it matters, not the p-value. The size is the largest ratio between the odds by the "
-        "curve and by the line over the middle nine tenths of the records, both set to one at the median."
+        "curve and by the line over the middle 90% of the records, both set to one at the median."
     )
     if facts["tests"] > 1:
         text += (
@@ -118,7 +118,7 @@ def _linearity_explanation(facts: Mapping[str, Any]) -> str:
             "so a bend is called seen only when its p times the number of curves is below 0.05."
         )
     for label, reason in facts["withheld"]:
-        text += f" {label}: {reason}"
+        text += f" {label} {reason}"
     return text
 
 
@@ -136,7 +136,7 @@ def _sparse_line(facts: Mapping[str, Any]) -> str:
             f"Few events, or few records without one, stand behind {_named(adjustment)} among the adjustment columns; "
             "the levels of the exposure have enough."
         )
-    return f"Every level of every category column has at least {few} events and {few} records without one."
+    return f"Every level of every category column has at least {few} events and at least {few} records without one."
 
 
 def _events_line(ending: str) -> Sentence:
@@ -213,8 +213,8 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "linearity-explanation": _linearity_explanation,
     "linearity-few-values": "has fewer than five distinct values, too few for a curve; it could enter as levels.",
     "linearity-values-pile-up": "has its values piled up so that no three knots can be told apart.",
-    "linearity-tied": "a curve for it is already a combination of the other columns.",
-    "linearity-no-fit": "with a curve in its place the model has no finite maximum.",
+    "linearity-tied": "has no curve of its own: one is already a combination of the other columns.",
+    "linearity-no-fit": "has no curve: with one in place of the line the model has no finite maximum.",
     "linearity-no-departure": "The curve leaves the line further than can be put in a number.",
     "linearity-no-exposure": "The exposure has no single odds ratio that stands beside a curve of another column.",
     "linearity-figure-title": "{column}: a curve beside the straight line",

@@ -62,6 +62,7 @@ SENTENCES: dict[str, Sentence] = {
     # run, check, draft, demo
     "report-is-in": "The report is in {file}",
     "read-this-first": "Read this first:",
+    "what-was-found": "What was found:",
     "more-findings": "… and {number} more, in the report.",
     "model-not-estimated": lambda facts: (
         f"The model {quoted(facts['name'])} could not be estimated; the report says why."

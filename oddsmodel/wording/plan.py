@@ -123,7 +123,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Until then, prepare the column in the file of records.",
     ),
     "later-outcomes": (
-        "This version takes one outcome a plan yet.",
+        "This version takes only one outcome a plan, as yet.",
         "Until then, write a plan for each outcome, with [outcome] in single brackets.",
     ),
     "later-missing": (

@@ -116,7 +116,9 @@ FINDINGS: dict[str, Sentence] = {
     "blank-lines": "The file has blank lines; they were passed over and are not counted in row numbers.",
     "sheet-used": _sheet,
     "spaces-removed": lambda facts: _repaired("Spaces before or after a text were removed", facts),
-    "characters-removed": lambda facts: _repaired("Line breaks and characters that cannot be shown were replaced by a space", facts),
+    "characters-removed": lambda facts: _repaired(
+        "Line breaks and characters that cannot be shown were replaced by a space", facts
+    ),
     "columns-left-out": _left_out_columns,
     "column-empty": lambda facts: f"{quoted(facts['column'])} has no recorded value.",
     "few-whole-numbers": _few_whole_numbers,

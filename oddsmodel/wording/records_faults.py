@@ -235,6 +235,7 @@ COLUMN_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         _with_rows("A count of records must be a whole number from 0 up, and is not in", "."),
         "Correct the file.",
     ),
+    "count-not-number": ("The column of counts does not hold numbers.", "Check that count names the right column."),
     "count-of-none": ("All counts are 0: there are no records.", "Check that count names the right column."),
     "count-too-large": (
         "The counts add up to more than can be counted exactly.",
@@ -282,11 +283,14 @@ CONDITION_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "condition-unexpected": (
         "{met} stands where {expected} is needed.",
-        "A column whose name has spaces or signs in it goes between backticks: `birth weight`.",
+        "Use == != < <= > >=, and, or, not, in [..] and is recorded; there is no arithmetic.",
     ),
     "condition-unknown-column": (
         "The records have no column {column}.",
-        lambda facts: f"{_meant(facts)}A text goes in quotation marks.",
+        lambda facts: (
+            f"{_meant(facts)}A text goes in quotation marks; a column whose name has spaces or signs in it "
+            f"goes between backticks: `birth weight`."
+        ),
     ),
     "condition-not-a-column": ("{text} is not a column.", "Write the name of a column first."),
     "condition-bare-column": (

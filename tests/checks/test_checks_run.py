@@ -12,7 +12,18 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from oddsmodel.checks import FAMILIES, counting, run_checks, summary_lines
+from oddsmodel.checks import (
+    FAMILIES,
+    brier,
+    calibration,
+    counting,
+    hosmer_lemeshow,
+    influence,
+    residual_tests,
+    roc,
+    run_checks,
+    summary_lines,
+)
 from oddsmodel.results.study import CheckResult, Exclusion, Flow
 
 sys.path.insert(0, str(Path(__file__).parent))
@@ -108,3 +119,18 @@ def test_few_patterns_one_event_and_whole_frames() -> None:
     checks = run_checks(fitted("x + z", frame, event, ["x"]))
     assert all(check.line or check.verdict in ("fine", "not applicable") for check in checks)
     assert counting.check(grouped_model([[1.0]], [1], [40], exposed=())).line
+
+
+def test_rows_that_stand_for_no_record_change_nothing() -> None:
+    X = np.array([[1, a, b] for a in (0, 1) for b in (0, 1, 2, 3)], dtype=float)
+    events, trials = [12, 25, 33, 0, 28, 35, 61, 40], [100, 100, 100, 0, 100, 100, 100, 100]
+    held = np.array(trials) > 0
+    padded = grouped_model(X, events, trials)
+    bare = grouped_model(X[held], np.array(events)[held], np.array(trials)[held])
+    for check in (hosmer_lemeshow, residual_tests, calibration, roc, brier, influence):
+        one, other = check.check(padded), check.check(bare)
+        assert one.line == other.line
+        assert one.statistics.keys() == other.statistics.keys()
+        for name, value in one.statistics.items():
+            assert value == (None if other.statistics[name] is None else pytest.approx(other.statistics[name]))
+        assert [len(table.rows) for table in one.tables] == [len(table.rows) for table in other.tables]

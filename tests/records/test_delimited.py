@@ -114,11 +114,9 @@ def test_bytes_that_are_no_text(tmp_path: Path, content: bytes, row: str, word: 
     assert word in fault.what
 
 
-def test_invalid_byte_is_found_across_the_chunks_of_the_check(
-    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
+def test_invalid_byte_is_found_across_the_chunks_of_the_check(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("oddsmodel.records.encoding.CHUNK", 7)
-    (fault,) = refused(tmp_path, "ville,n\n".encode() + "Liège,1\n".encode() * 40 + b"\xff,2\n")
+    (fault,) = refused(tmp_path, b"ville,n\n" + "Liège,1\n".encode() * 40 + b"\xff,2\n")
     assert fault.where.endswith("row 42")
     assert texts(read(tmp_path, "ville,n\n" + "Liège,1\n" * 40), "ville") == ["Liège"] * 40
 
@@ -226,6 +224,15 @@ def test_leading_zeros_large_numbers_and_words_for_no_number_stay_texts(tmp_path
     assert texts(table, "huge") == ["99999999999999999999", "1"]
     assert texts(table, "odd") == ["nan", "inf"]
     assert table.types["plain"] == table.types["dose"] == "number"
+
+
+@pytest.mark.parametrize("cell", ["01", '"01"', " 01", "-01", " 01 ", "00.5"])
+def test_a_leading_zero_is_found_wherever_it_stands(tmp_path: Path, cell: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("oddsmodel.records.delimited.WINDOW", 5)
+    for before in range(6):
+        table = read(tmp_path, f"{'a' * (before + 1)},b,c\n1,2,3\n4,{cell},10\n")
+        assert table.types["b"] == "text"
+        assert table.types["c"] == "number"
 
 
 def test_not_recorded_texts_do_not_keep_numbers_from_being_numbers(tmp_path: Path) -> None:

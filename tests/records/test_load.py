@@ -61,7 +61,13 @@ def test_a_number_keeps_what_the_plan_says_of_it(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "number", "per": 10, "units": "years", "label": "Age", "why": "older"}})
     records = load(tmp_path, {"died": DIED, "x": "40,,42,43,44.5,45"}, study)
     column = records.columns["x"]
-    assert (column.kind, column.per, column.units, column.label, column.why) == ("number", 10.0, "years", "Age", "older")
+    assert (column.kind, column.per, column.units, column.label, column.why) == (
+        "number",
+        10.0,
+        "years",
+        "Age",
+        "older",
+    )
     assert cells(records, "x") == [40, None, 42, 43, 44.5, 45]
     assert records.frame["x"].dtype == np.float64
     assert (records.read, records.source) == (6, "people.csv")
@@ -270,8 +276,9 @@ def test_counts_multiply_and_rows_of_none_are_dropped(tmp_path: Path) -> None:
 
 @pytest.mark.parametrize(
     ("counts", "word"),
-    [("1,2,3,4,5,", "row 7"), ("1,2,-3,4,5,6", "row 4"), ("1,2.5,3,x,5,6", "row 5"), ("0,0,0,0,0,0", "All counts are 0"),
-     ("1,2.5,3,4,5,6", "row 3"), ("1,9007199254740991,3,4,5,6", "counted exactly")],
+    [("1,2,3,4,5,", "row 7"), ("1,2,-3,4,5,6", "row 4"), ("1,2.5,3,x,5,6", "row 5"),
+     ("0,0,0,0,0,0", "All counts are 0"), ("1,2.5,3,4,5,6", "row 3"),
+     ("1,9007199254740991,3,4,5,6", "counted exactly")],
 )  # fmt: skip
 def test_faulty_counts(tmp_path: Path, counts: str, word: str) -> None:
     (fault,) = faults(
@@ -280,6 +287,12 @@ def test_faulty_counts(tmp_path: Path, counts: str, word: str) -> None:
         plan(records={"count": "n"}, columns={"n": {"kind": "number"}}),
     )
     assert word in fault.what
+
+
+def test_counts_that_are_no_numbers(tmp_path: Path) -> None:
+    columns = {"died": DIED, "x": "1.5,2,3,4,5,6", "n": "a,b,c,d,e,f"}
+    (fault,) = faults(tmp_path, columns, plan(records={"count": "n"}))
+    assert "does not hold numbers" in fault.what
 
 
 def test_all_faults_are_reported_together_each_with_the_nearest_name(tmp_path: Path) -> None:
@@ -379,9 +392,7 @@ def test_a_data_frame_keeps_the_order_of_its_categories() -> None:
 
 def test_rows_of_a_data_frame_are_counted_from_one() -> None:
     with pytest.raises(InputFault, match='row 2 has "x"'):
-        records_from_frame(
-            pd.DataFrame({"died": [0, 1], "x": [1, "x"]}), plan(columns={"x": {"kind": "number"}})
-        )
+        records_from_frame(pd.DataFrame({"died": [0, 1], "x": [1, "x"]}), plan(columns={"x": {"kind": "number"}}))
 
 
 @settings(deadline=None, derandomize=True, max_examples=60)

@@ -269,7 +269,9 @@ def test_a_spreadsheet_that_unpacks_to_gigabytes_is_refused(tmp_path: Path, monk
 
 
 def test_a_data_frame_of_many_dtypes() -> None:
-    arrow = {name: pd.Series(pd.arrays.ArrowExtensionArray(pa.chunked_array([array]))) for name, array in MANY_TYPES.items()}
+    arrow = {
+        name: pd.Series(pd.arrays.ArrowExtensionArray(pa.chunked_array([array]))) for name, array in MANY_TYPES.items()
+    }
     frame = pd.DataFrame(arrow)
     frame.index = pd.Index([5, 5, 9])
     table = table_from_frame(frame)

@@ -43,7 +43,16 @@ def draw(figure: CurveFigure) -> Sheet:
     axes.fill_between(figure.x, figure.lower, figure.upper, color=FIRST, alpha=0.16, linewidth=0)
     axes.plot(figure.x, figure.straight, color=SECOND, linewidth=1.8, linestyle=(0, (5, 3)))
     axes.plot(figure.x, figure.curve, color=FIRST, linewidth=2.4)
-    axes.plot([figure.reference], [1.0], marker="o", markersize=7, markerfacecolor=PAPER, markeredgecolor=INK, zorder=5)
+    axes.plot(
+        [figure.reference],
+        [1.0],
+        color=INK,
+        marker="o",
+        markersize=7,
+        markerfacecolor=PAPER,
+        markeredgecolor=INK,
+        zorder=5,
+    )
 
     ticks = plain_ticks(min(figure.x), max(figure.x))
     labelled = _density(sheet, figure, top + _HEIGHT) if figure.density else axes

@@ -29,6 +29,8 @@ _NUMBERS_WIDTH = 138.0
 _NAMES_WIDTH = 84.0
 _GAP = 8.0
 _TOP = 6.0
+_BOLD = 1.1
+"""How much wider bold letters are."""
 CRUDE = "crude"
 """The series that is drawn in the background colour, wherever it stands."""
 
@@ -42,7 +44,11 @@ class _Row:
 
     @property
     def height(self) -> float:
-        return 24.0 + LINE * (max(len(self.name), len(self.numbers), 1) - 1) + 15.0 * len(self.note)
+        return 24.0 + LINE * (max(len(self.name), len(self.numbers), 1) - 1) + self.note_height
+
+    @property
+    def note_height(self) -> float:
+        return 16.0 * len(self.note) + (4.0 if self.note else 0.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -65,7 +71,7 @@ def draw(figure: EstimatesFigure) -> Sheet:
     left = min(widest, _NAMES_WIDTH) + 12.0 if several else 6.0
     axis = _axis(figure.marks, left, WIDTH - _NUMBERS_WIDTH - 6.0)
     blocks = [
-        (fold(label, TEXT, WIDTH), [_row(mark, several) for mark in marks])
+        (fold(label, TEXT, WIDTH / _BOLD), [_row(mark, several) for mark in marks])
         for label, marks in groupby(figure.marks, key=lambda mark: mark.label)
     ]
     height = _TOP + sum(LINE * len(label) + sum(row.height for row in rows) + _GAP for label, rows in blocks)
@@ -77,8 +83,8 @@ def draw(figure: EstimatesFigure) -> Sheet:
         for line in label:
             sheet.text(0, top + 12, line, weight="bold")
             top += LINE
-        _grid(sheet, axis, ticks, top, top + sum(row.height for row in rows))
         for row in rows:
+            _grid(sheet, axis, ticks, top, top + row.height - row.note_height)
             _estimate(sheet, row, axis, top, drawn_as[row.mark.series])
             top += row.height
         top += _GAP
@@ -117,7 +123,7 @@ def _axis(marks: tuple[EstimateMark, ...], left: float, right: float) -> _Axis:
 
 
 def _grid(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], top: float, bottom: float) -> None:
-    """Quiet rules behind the rows of one label, the line at 1 stronger."""
+    """Quiet rules behind one row, the line at 1 stronger."""
     for tick in ticks:
         sheet.line([axis.at(tick)] * 2, [top, bottom], RULE, linewidth=0.8, zorder=0)
     sheet.line([axis.at(1.0)] * 2, [top - 1, bottom + 1], MUTED, linewidth=1.4, zorder=1)
@@ -160,9 +166,9 @@ def _estimate(sheet: Sheet, row: _Row, axis: _Axis, top: float, series: int) -> 
             linestyle="",
             zorder=4,
         )
-    bottom = top + row.height - 15.0 * len(row.note)
+    bottom = top + row.height - row.note_height
     for number, words in enumerate(row.note):
-        sheet.text(axis.left, bottom + 8 + 15.0 * number, words, size=SMALL, colour=MUTED)
+        sheet.text(0, bottom + 12 + 16.0 * number, words, size=SMALL, colour=MUTED)
 
 
 def _interval(sheet: Sheet, mark: EstimateMark, axis: _Axis, middle: float, colour: str) -> None:

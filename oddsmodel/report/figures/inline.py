@@ -11,6 +11,7 @@ from oddsmodel.wording.plain import plain
 _NUMBER = re.compile(r"-?\d+\.\d{2,}(?:e-?\d+)?")
 _FONT = re.compile(r"font: (?:(bold|\d{3}) )?(?:italic )?([\d.]+)px [^;]*")
 _REFERENCE = re.compile(r"url\(#([^)]+)\)")
+_DOT = re.compile(r"M (\S+ \S+) L \1(?: |$)")
 _GEOMETRY = ("d", "transform", "x", "y", "width", "height", "viewBox", "points", "cx", "cy", "r")
 
 
@@ -80,7 +81,9 @@ def _rename(root: ElementTree.Element, prefix: str) -> None:
 def _shorten(element: ElementTree.Element) -> None:
     for name in _GEOMETRY:
         if name in element.attrib:
-            element.set(name, _NUMBER.sub(_rounded, element.attrib[name]).replace("\n", " ").strip())
+            element.set(name, " ".join(_NUMBER.sub(_rounded, element.attrib[name]).split()))
+    if element.tag == "path":
+        element.set("d", _DOT.sub(r"M\1h0", element.get("d", "")))
     if element.get("transform", "").startswith(("rotate(-0 ", "rotate(0 ")):
         del element.attrib["transform"]
     style = element.get("style")

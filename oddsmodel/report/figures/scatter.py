@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -10,9 +12,13 @@ from oddsmodel.report.figures.lettering import fold
 from oddsmodel.report.figures.scales import plain_labels, plain_ticks
 from oddsmodel.results.figures import ScatterFigure
 
+if TYPE_CHECKING:
+    from matplotlib.axes import Axes
+
 _LEFT, _TOP, _WIDTH, _HEIGHT = 48.0, 30.0, 322.0, 250.0
 _SIZES = (3.0, 5.0, 7.5, 10.5, 14.0)
-_GRID = 1.5
+_SPOT = 2.0
+_MOST_DOTS = 4000
 
 Array = NDArray[np.float64]
 
@@ -24,20 +30,11 @@ def draw(figure: ScatterFigure) -> Sheet:
     x, y, size = (np.asarray(values, dtype=float) for values in (figure.x, figure.y, figure.size))
     x_low, x_high = _range(x, ())
     y_low, y_high = _range(y, figure.lines)
-    step = np.array([(x_high - x_low) / _WIDTH, (y_high - y_low) / _HEIGHT]) * _GRID
+    unit = np.array([(x_high - x_low) / _WIDTH, (y_high - y_low) / _HEIGHT])
     grade = _grades(size)
-    for number, marker in enumerate(_SIZES):
-        kept = _thinned(x[grade == number], y[grade == number], step)
-        axes.plot(
-            kept[:, 0],
-            kept[:, 1],
-            linestyle="",
-            marker="o",
-            markersize=marker,
-            markerfacecolor=FIRST,
-            markeredgewidth=0,
-            alpha=0.4,
-        )
+    for number, diameter in enumerate(_SIZES):
+        chosen = grade == number
+        _dots(axes, _thinned(x[chosen], y[chosen], unit * max(_SPOT, diameter / 3)), diameter)
     for level in figure.lines:
         axes.axhline(level, color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
     axes.set_xlim(x_low, x_high)
@@ -54,6 +51,22 @@ def draw(figure: ScatterFigure) -> Sheet:
     return sheet
 
 
+def _dots(axes: Axes, points: Array, diameter: float) -> None:
+    """All dots of one size as one path of strokes without length and with round ends: few bytes a dot."""
+    from matplotlib.patches import PathPatch
+    from matplotlib.path import Path
+
+    if not len(points):
+        return
+    strokes = Path(np.repeat(points, 2, axis=0), np.tile([Path.MOVETO, Path.LINETO], len(points)))
+    strokes.should_simplify = False
+    axes.add_patch(
+        PathPatch(
+            strokes, edgecolor=FIRST, facecolor="none", linewidth=diameter, capstyle="round", alpha=0.45, zorder=2
+        )
+    )
+
+
 def _range(values: Array, also: tuple[float, ...]) -> tuple[float, float]:
     every = np.concatenate([values, np.asarray(also, dtype=float)])
     low, high = (float(every.min()), float(every.max())) if every.size else (0.0, 1.0)
@@ -68,10 +81,10 @@ def _grades(size: Array) -> NDArray[np.intp]:
     return np.minimum((share * len(_SIZES)).astype(np.intp), len(_SIZES) - 1)
 
 
-def _thinned(x: Array, y: Array, step: Array) -> Array:
+def _thinned(x: Array, y: Array, spot: Array) -> Array:
     """One point (k, 2) for all that fall on the same spot of the drawing: what is hidden beneath is left out."""
     points = np.column_stack([x, y])
     if not len(points):
         return points
-    _, first = np.unique(np.floor(points / step).astype(np.int64), axis=0, return_index=True)
-    return points[np.sort(first)]
+    _, first = np.unique(np.floor(points / spot).astype(np.int64), axis=0, return_index=True)
+    return points[np.sort(first)] if len(first) <= _MOST_DOTS else _thinned(x, y, 1.5 * spot)
