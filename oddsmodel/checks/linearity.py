@@ -210,9 +210,11 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
     if whole and upper - lower <= LONGEST_WHOLE_GRID:
         lower, upper = math.floor(lower), math.ceil(upper)
         grid = np.arange(lower, upper + 1.0)
-    order = np.argsort(x, kind="stable")
-    entered_grid = np.interp(grid, x[order], entered[order])
-    entered_reference = float(np.interp(reference, x[order], entered[order]))
+    entered_grid, entered_reference = grid, reference
+    if x is not entered:
+        order = np.argsort(x, kind="stable")
+        entered_grid = np.interp(grid, x[order], entered[order])
+        entered_reference = float(np.interp(reference, x[order], entered[order]))
     log_odds, error = curve.log_odds(entered_grid, entered_reference)
     half = float(ndtri(0.5 + model.level / 2.0)) * error
     straight = model.fit.coefficients[line.position] * (entered_grid - entered_reference)
@@ -243,6 +245,8 @@ def _in_own_units(model: FittedModel, line: Line, entered: Array) -> tuple[Array
     Otherwise (a column such as (x - 3)**2) the values as they entered the model.
     """
     own = model.frame[line.source].to_numpy(dtype=np.float64)[model.patterns.first_row]
+    if np.array_equal(own, entered):
+        return entered, line.axis
     steps = np.diff(entered[np.argsort(own, kind="stable")])
     return (own, line.axis) if (steps >= 0).all() or (steps <= 0).all() else (entered, line.label)
 

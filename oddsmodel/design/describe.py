@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import itertools
+import math
 from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 
@@ -106,7 +107,8 @@ class Describer:
                 levels[self.factors[place].columns[0]] = part.level
         name = " × ".join(part.name for part in parts)
         label = " × ".join(part.label for part in parts)
-        return DesignColumn(name, term, sources, "interaction", role, label, levels=levels, shown=False)
+        per = math.prod(part.per for part in parts)
+        return DesignColumn(name, term, sources, "interaction", role, label, levels=levels, per=per, shown=False)
 
     def parts(self, place: int, contrast: Array | None) -> list[_Part]:
         """The columns of one factor; contrast: the matrix of its levels, None for a number."""

@@ -33,7 +33,7 @@ ROWS_AT_ONCE = 16_384
 NOT_FOR_MODELS = ("identifier", "date")
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Block:
     """Columns [start, stop) of the matrix: products of a column of each factor.
 
@@ -63,7 +63,7 @@ class Block:
                 out[...] = part
 
 
-@dataclass(frozen=True)
+@dataclass(frozen=True, eq=False)
 class Design:
     """columns, terms: what the model matrix holds, in its order. findings: what the training records gave cause to say.
 

@@ -114,22 +114,23 @@ def level_piece(
 ) -> tuple[LevelPiece, tuple[Finding, ...]]:
     """The piece of a factor, and a note for each level that no training record has.
 
-    column: the record column it is made of. Levels and reference are those of the column unless C(...) says otherwise;
-    of numbers and bands the lowest is the reference. InputFault where the reference or all but one level are without
-    records, and for levels that do not exist.
+    column: the record column it is made of. Levels and reference are those of the column unless C(...) says otherwise:
+    its list of levels begins with the reference. Of numbers and bands the lowest is the reference. InputFault where the
+    reference or all but one level are without records, and for levels that do not exist.
     """
     asked = factor if isinstance(factor, Levels) else Levels(factor)
     declared = _declared(asked.source, column, reader, counts)
     number = np.bincount(declared.source.codes(reader, declared.levels), minlength=len(declared.levels))
     records = dict(zip(declared.levels, number.tolist(), strict=True))
 
-    order = declared.levels
+    order, reference = declared.levels, declared.reference
     if asked.levels is not None:
         order = tuple(_known(level, declared.levels, reader, column) for level in asked.levels)
         for level in declared.levels:
             if level not in order and records[level]:
                 facts = {"level": piece(level), "left_out_records": records[level]}
                 raise reader.fault("design-levels-left-out", column.name, **facts)
+        reference = order[0]
     levels = tuple(level for level in order if records[level])
     if len(levels) < 2:
         raise reader.fault("design-one-level", column.name, level=piece("".join(levels)))
@@ -138,7 +139,6 @@ def level_piece(
         facts = {"term": piece(factor.text), "number": len(levels), "most": MOST_POLYNOMIAL}
         raise InputFault(fault("design-poly-too-many-levels", reader.where, **facts))
 
-    reference = declared.reference if declared.reference in order else None
     if asked.reference is not None:
         reference = _known(asked.reference, order, reader, column)
     if coding == "treatment" and reference is not None and not records[reference]:

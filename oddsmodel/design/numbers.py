@@ -73,17 +73,28 @@ def number_piece(factor: NumberFactor, reader: Reader, counts: Array | None) -> 
     x = evaluate(expression, reader)
     if isinstance(factor, Computed):
         return NumberPiece(expression)
-    if x.min() == x.max():
+    different = np.unique(x)
+    if different.size == 1:
         raise _fault("design-no-range", factor, reader)
+    basis = _basis(factor, x, reader, counts)
+    constant = isinstance(factor, CubicSpline) and not factor.centred
+    if different.size < basis.width + (not constant):
+        raise _fault("design-few-values", factor, reader, values=int(different.size), columns=basis.width)
+    return NumberPiece(expression, basis)
+
+
+def _basis(
+    factor: BasisSpline | CubicSpline | RestrictedCubicSpline, x: Array, reader: Reader, counts: Array | None
+) -> Basis:
     if isinstance(factor, RestrictedCubicSpline):
-        return NumberPiece(expression, _restricted_cubic(factor, x, reader, counts))
+        return _restricted_cubic(factor, x, reader, counts)
     lowest, highest = float(x.min()), float(x.max())
     if factor.knots is not None and not lowest < factor.knots[0] <= factor.knots[-1] < highest:
         raise _fault("design-knots-outside", factor, reader, lowest=f"{lowest:.6g}", highest=f"{highest:.6g}")
     made = basis_spline(factor, x, counts) if isinstance(factor, BasisSpline) else cubic_spline(factor, x, counts)
     if made is None:
         raise _fault("design-knots-tied", factor, reader)
-    return NumberPiece(expression, made)
+    return made
 
 
 def _restricted_cubic(

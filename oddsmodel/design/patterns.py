@@ -47,7 +47,7 @@ def collapse(X: Array, event: NDArray[np.bool_], counts: Array | None = None) ->
     index, first_row = _grouped(X)
     m = first_row.size
     weights = np.asarray(event, dtype=np.float64) if counts is None else counts * event
-    events = np.bincount(index, weights=weights, minlength=m)
+    events = np.asarray(np.bincount(index, weights=weights, minlength=m), dtype=np.float64)
     trials = np.asarray(np.bincount(index, weights=counts, minlength=m), dtype=np.float64)
     rows = X if m == len(X) else X[first_row]
     return Patterns(rows, events, trials, index, first_row)

@@ -39,7 +39,7 @@ class Reader:
         """
         series = self._series(column)
         categorical = series.array if isinstance(series.dtype, pd.CategoricalDtype) else pd.Categorical(series)
-        codes = np.asarray(categorical.codes)
+        codes: NDArray[np.integer] = np.asarray(categorical.codes)
         names = [str(name) for name in categorical.categories]
         if codes.size and codes.min() < 0:
             self._none_missing(column, codes < 0)
@@ -47,7 +47,7 @@ class Reader:
             return codes
         place = {level: number for number, level in enumerate(levels)}
         lookup = np.array([place.get(name, -1) for name in names] or [-1], dtype=np.int32)
-        found = lookup[codes]
+        found: NDArray[np.integer] = np.asarray(lookup[codes])
         if found.size and found.min() < 0:
             self.unseen(column, found < 0, names[codes[int(np.argmax(found < 0))]])
         return found

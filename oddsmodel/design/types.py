@@ -21,7 +21,8 @@ class DesignColumn:
         numbers, "interaction" a product of several.
     level, reference: for kind "level".
     levels: for an interaction, each source column with its level (None for a number).
-    per: one coefficient times `per` is the log odds ratio that is reported (1.0 but for a number, centred or not).
+    per: one coefficient times `per` is the log odds ratio that is reported (that of a
+        number column, alone or in a product; 1.0 for all else).
     label: the wording of the coefficient ("Smoking: current against never", "Age, per 10 years").
     shown: whether its own odds ratio has a meaning: a "level" column with a reference, a "number" column or the one
         column of a function of numbers, whose sources enter no interaction, spline or further term.

@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-import math
-from collections.abc import Callable, Collection, Iterator, Mapping
+from collections.abc import Callable, Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 
 Bounds = tuple[int, int]
@@ -27,26 +26,36 @@ class _Narrowed:
 
 
 def feasible_bounds(
-    equations: list[Equation], bounds: Callable[[int], Bounds], wanted: Collection[int]
+    equations: list[Equation],
+    bounds: Callable[[int], Bounds],
+    wanted: Collection[int],
+    truth: Sequence[int],
+    enough: Callable[[int, Bounds], bool],
 ) -> dict[int, Bounds]:
-    """The integer bounds of the unknowns `wanted` under linear equations between non-negative whole counts.
+    """What values the unknowns `wanted` can have under linear equations between non-negative whole counts.
 
-    `bounds` gives what is known of one unknown by itself. Equations of one or two unknowns are resolved by hand, one
-    equation that is left has its bounds in closed form, and more are given to integer linear programming, one
-    smallest and one largest value for each unknown wanted.
+    `bounds` gives what is known of one unknown by itself. `truth` are the true counts, which satisfy all equations.
+    Equations of one or two unknowns are resolved by hand, one equation that is left has its bounds in closed form, and
+    more are given to integer linear programming. That search ends for an unknown once the values found for it are
+    `enough`; where they never are, its bounds are exact.
     """
     unknowns = {number for equation in equations for number in equation.terms} | set(wanted)
     narrowed = _narrow(equations, {number: bounds(number) for number in unknowns})
-    left = {number for equation in narrowed.equations for number in equation.terms}
-    # An unknown that follows from another needs that one's bounds first.
-    needed = set(wanted)
+    # An unknown that follows from another needs that one's bounds first, and these to be exact.
+    sources: set[int] = set()
     for dependent, source, _ in narrowed.follows:
-        if dependent in needed:
-            needed.add(source)
+        if dependent in wanted or dependent in sources:
+            sources.add(source)
+    left = {number for equation in narrowed.equations for number in equation.terms}
     if len(narrowed.equations) == 1:
         narrowed.bounds |= _closed_form(narrowed.equations[0], narrowed.bounds)
-    elif left & needed:
-        narrowed.bounds |= _integer_programs(narrowed.equations, narrowed.bounds, sorted(left & needed))
+    elif needed := left & (set(wanted) | sources):
+        search = _Search(narrowed.equations, narrowed.bounds, truth)
+
+        def ends(number: int, found: Bounds) -> bool:
+            return number not in sources and enough(number, found)
+
+        narrowed.bounds |= search.run(sorted(needed), ends)
     for dependent, source, equation in reversed(narrowed.follows):
         narrowed.bounds[dependent] = _other(equation, source, dependent, narrowed.bounds)
     return {number: narrowed.bounds[number] for number in wanted}
@@ -151,37 +160,54 @@ def _closed_form(equation: Equation, bounds: Mapping[int, Bounds]) -> dict[int, 
     return found
 
 
-def _integer_programs(equations: list[Equation], bounds: Mapping[int, Bounds], wanted: list[int]) -> dict[int, Bounds]:
-    import numpy as np
-    from scipy.optimize import Bounds as Box
-    from scipy.optimize import LinearConstraint, milp
-    from scipy.sparse import csr_array
+class _Search:
+    """Integer points that satisfy several equations, found by pushing one unknown at a time to its ends.
 
-    unknowns = sorted({number for equation in equations for number in equation.terms})
-    position = {number: k for k, number in enumerate(unknowns)}
-    entries = [
-        (row, position[number], float(coefficient))
-        for row, equation in enumerate(equations)
-        for number, coefficient in equation.terms.items()
-    ]
-    rows, columns, data = (np.array(values) for values in zip(*entries, strict=True))
-    matrix = csr_array((data, (rows, columns)), shape=(len(equations), len(unknowns)))
-    constants = np.array([float(equation.constant) for equation in equations])
-    box = Box(*(np.array([float(bounds[number][side]) for number in unknowns]) for side in (0, 1)))
-    found = {}
-    for number in wanted:
-        ends = []
-        for sign in (1.0, -1.0):
-            objective = np.zeros(len(unknowns))
-            objective[position[number]] = sign
-            answer = milp(
-                objective,
-                constraints=LinearConstraint(matrix, constants, constants),
-                bounds=box,
-                integrality=np.ones(len(unknowns), dtype=np.uint8),
-            )
-            # The true counts satisfy every equation, so a program without an answer is a failure of the solver:
-            # the count is then taken as worked out, and more is hidden.
-            ends.append(sign * answer.fun if answer.x is not None else math.nan)
-        found[number] = (0, 0) if any(map(math.isnan, ends)) else (round(ends[0]), round(ends[1]))
-    return found
+    Each point found is a possible value of every unknown, so that few unknowns need programs of their own.
+    """
+
+    def __init__(self, equations: list[Equation], bounds: Mapping[int, Bounds], truth: Sequence[int]) -> None:
+        import numpy as np
+        from scipy.optimize import Bounds as Box
+        from scipy.optimize import LinearConstraint
+        from scipy.sparse import csr_array
+
+        self.unknowns = sorted({number for equation in equations for number in equation.terms})
+        position = {number: k for k, number in enumerate(self.unknowns)}
+        entries = [
+            (row, position[number], float(coefficient))
+            for row, equation in enumerate(equations)
+            for number, coefficient in equation.terms.items()
+        ]
+        rows, columns, data = (np.array(values) for values in zip(*entries, strict=True))
+        matrix = csr_array((data, (rows, columns)), shape=(len(equations), len(self.unknowns)))
+        constants = np.array([float(equation.constant) for equation in equations])
+        self.constraint = LinearConstraint(matrix, constants, constants)
+        self.box = Box(*(np.array([float(bounds[number][side]) for number in self.unknowns]) for side in (0, 1)))
+        self.found = {number: (truth[number], truth[number]) for number in self.unknowns}
+
+    def run(self, wanted: Sequence[int], ends: Callable[[int, Bounds], bool]) -> dict[int, Bounds]:
+        for number in wanted:
+            for sign in (-1.0, 1.0):
+                if not ends(number, self.found[number]):
+                    self._push(number, sign)
+        return {number: self.found[number] for number in wanted}
+
+    def _push(self, number: int, sign: float) -> None:
+        """Towards the largest value of an unknown (sign −1) or its smallest (sign 1).
+
+        The true counts are a solution, so a program that finds none has failed: what is known by then stands, and the
+        unknown is the more protected.
+        """
+        import numpy as np
+        from scipy.optimize import milp
+
+        objective = np.zeros(len(self.unknowns))
+        objective[self.unknowns.index(number)] = sign
+        whole = np.ones(len(self.unknowns), dtype=np.uint8)
+        answer = milp(objective, constraints=self.constraint, bounds=self.box, integrality=whole)
+        if answer.x is None:
+            return
+        for other, value in zip(self.unknowns, np.rint(answer.x).astype(int).tolist(), strict=True):
+            lower, upper = self.found[other]
+            self.found[other] = (min(lower, value), max(upper, value))

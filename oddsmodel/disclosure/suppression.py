@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 
 from oddsmodel.disclosure.feasible import Bounds, Equation, components, feasible_bounds
@@ -60,10 +60,10 @@ class Suppression:
             for number in relation.terms:
                 self._touching.setdefault(number, []).append(relation)
         self._hide(number for number in range(len(values)) if shown[number] and self._small(number))
-        while (failing := min(self._failing(), key=self._by_size, default=None)) is not None:
+        while failing := sorted(self._failing(), key=self._by_size):
             helper = self._helper(failing)
             if helper is None:
-                self.unprotected.add(failing)
+                self.unprotected |= set(failing)
             else:
                 self._hide([helper])
         self._show_again()
@@ -137,24 +137,36 @@ class Suppression:
         lower, upper = bounds
         return upper > lower and (reader.hinted or not self._small(number) or upper >= self.threshold)
 
-    def _component_bounds(self, which: int, members: frozenset[int], equations: list[Equation]) -> dict[int, Bounds]:
+    def _component_bounds(
+        self, which: int, members: frozenset[int], equations: list[Equation], only: int | None = None
+    ) -> dict[int, Bounds]:
+        """Bounds of the protected counts among unknowns that have to do with one another, or of `only` one of them."""
         key = (which, members)
-        if key not in self._bounds:
+        found = self._bounds.setdefault(key, {})
+        wanted = [n for n in members if self._protected(n)] if only is None else [only]
+        missing = [number for number in wanted if number not in found]
+        if missing:
             reader = self._readers[which]
-            wanted = [number for number in members if self._protected(number)]
-            self._bounds[key] = feasible_bounds(equations, lambda number: self._own_bounds(number, reader), wanted)
-        return self._bounds[key]
+            found |= feasible_bounds(
+                equations,
+                lambda number: self._own_bounds(number, reader),
+                missing,
+                self.counts.values,
+                lambda number, bounds: self._passes(number, bounds, reader),
+            )
+        return found
 
     def _failing(self) -> set[int]:
         """The counts that a reader could work out, without those that nothing can protect."""
         failing: set[int] = set()
         for which, reader in enumerate(self._readers):
-            found = [self._equation(relation, reader) for relation in reader.relations]
-            for members, equations in components([one for one in found if one is not None]):
-                for number, bounds in self._component_bounds(which, members, equations).items():
-                    if number not in self.unprotected and not self._passes(number, bounds, reader):
+            all_equations = (self._equation(relation, reader) for relation in reader.relations)
+            for members, equations in components([one for one in all_equations if one is not None]):
+                found = self._component_bounds(which, members, equations)
+                for number in members:
+                    if self._protected(number) and not self._passes(number, found[number], reader):
                         failing.add(number)
-        return failing
+        return failing - self.unprotected
 
     def _around(self, number: int, reader: _Reader) -> tuple[frozenset[int], list[Equation], set[int]]:
         """The unknowns that have to do with a count, their equations, and the shown counts in these."""
@@ -178,34 +190,54 @@ class Suppression:
         passed = width = 0
         for which, reader in enumerate(self._readers):
             members, equations, _ = self._around(number, reader)
-            bounds = self._component_bounds(which, members, equations)[number]
+            bounds = self._component_bounds(which, members, equations, number)[number]
             passed += self._passes(number, bounds, reader)
             width += bounds[1] - bounds[0]
         return passed, width
 
-    def _helper(self, failing: int) -> int | None:
-        """The count to hide next: one that protects the failing one, else one that helps, else the first beside it.
+    def _helper(self, failing: list[int]) -> int | None:
+        """The count to hide next.
 
-        The last may help only together with another, for which it will ask itself, since it is not protected either.
+        The first that protects a failing count of which it is a part, a whole or a sister; else the one that helps one
+        most; else the first beside one: it may help together with another, for which it will ask itself, since it is
+        not protected either. Counts further off come last.
         """
-        touching = {number for relation in self._touching.get(failing, ()) for number in relation.terms}
-        near = {number for reader in self._readers for number in self._around(failing, reader)[2]}
-        present = self._standing(failing)
-        for numbers in (touching, near - touching):
-            choices = sorted(filter(self._can_hide, numbers), key=lambda n: (self.counts.ranks[n], self._by_size(n)))
-            best, found = present, choices[0] if choices else None
-            for choice in choices:
+        beside = {number: self._choices(self._touching_counts(number)) for number in failing}
+        found = self._best(beside)
+        if found is not None:
+            return found
+        for choices in beside.values():
+            if choices:
+                return choices[0]
+        near = {
+            number: self._choices(other for reader in self._readers for other in self._around(number, reader)[2])
+            for number in failing
+        }
+        return self._best(near)
+
+    def _touching_counts(self, number: int) -> set[int]:
+        return {other for relation in self._touching.get(number, ()) for other in relation.terms}
+
+    def _choices(self, numbers: Iterable[int]) -> list[int]:
+        hideable = {number for number in numbers if self._can_hide(number)}
+        return sorted(hideable, key=lambda n: (self.counts.ranks[n], self._by_size(n)))
+
+    def _best(self, choices: Mapping[int, list[int]]) -> int | None:
+        """Of the choices for each failing count, the first that protects it, or else the one that helps most."""
+        best, found = 0, None
+        for failing, offered in choices.items():
+            passed, width = self._standing(failing)
+            for choice in offered:
                 before = set(self.hidden)
                 self._hide([choice])
                 standing = self._standing(failing)
                 self.hidden = before
                 if standing[0] == len(self._readers):
                     return choice
-                if standing > best:
-                    best, found = standing, choice
-            if found is not None:
-                return found
-        return None
+                gain = (standing[0] - passed) * 10**6 + min(standing[1] - width, 10**5)
+                if gain > best:
+                    best, found = gain, choice
+        return found
 
     def _can_hide(self, number: int) -> bool:
         return self.counts.shown[number] and number not in self.hidden and number not in self.counts.locked

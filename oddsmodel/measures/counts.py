@@ -9,6 +9,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from oddsmodel.design.words import number_text
 from oddsmodel.model.fitted import FittedModel
 
 Array = NDArray[np.float64]
@@ -41,11 +42,15 @@ def level_counts(
 
 
 def level_codes(values: pd.Series, levels: Sequence[str]) -> NDArray[np.int64]:
-    """The position of each value among the levels (n,), -1 where it is none of them."""
+    """The position of each value among the levels (n,), -1 where it is none of them.
+
+    The values of a number column taken as levels have the text that the design gives them.
+    """
     categorical = pd.Categorical(values)
+    number = pd.api.types.is_float_dtype(categorical.categories.dtype)
+    names = [number_text(float(one)) if number else str(one) for one in categorical.categories]
     place = {level: position for position, level in enumerate(levels)}
-    names = [place.get(str(category), -1) for category in categorical.categories]
-    lookup = np.array([*names, -1], dtype=np.int64)
+    lookup = np.array([*(place.get(name, -1) for name in names), -1], dtype=np.int64)
     return lookup[np.asarray(categorical.codes)]
 
 
@@ -54,11 +59,38 @@ def whole(values: NDArray[np.float64] | NDArray[np.int64]) -> NDArray[np.int64]:
     return np.rint(values).astype(np.int64)
 
 
+def exposure_counts(model: FittedModel, name: str) -> LevelCounts | None:
+    """Records analysed and events at the levels of an exposure; None for a number that the model takes as a number.
+
+    The levels are those of the records in their order; of a number taken as levels or cut into bands, the model's.
+    """
+    levels = model_levels(model, name)
+    if not levels:
+        return None
+    if model.columns[name].levels:
+        return level_counts(model.frame[name], model.event, model.counts, levels)
+    own = level_columns(model, name)
+    at = model.patterns.X[:, own] == 1.0
+    at = np.column_stack([~at.any(axis=1), at])
+    return LevelCounts(levels, whole(model.patterns.trials @ at), whole(model.patterns.events @ at))
+
+
 def model_levels(model: FittedModel, name: str) -> tuple[str, ...]:
-    """The levels of a column in order: those of the records, or for a number taken as levels those of the model."""
-    levels = model.columns[name].levels
-    if levels:
-        return levels
-    own = [column for column in model.design.columns if column.sources == (name,) and column.kind == "level"]
+    """The levels of a column in order: those of the records, or for a number taken as levels the model's."""
+    return model.columns[name].levels or design_levels(model, name)
+
+
+def design_levels(model: FittedModel, name: str) -> tuple[str, ...]:
+    """The levels of a column that the model has indicators for, their reference first; empty where it has none."""
+    own = [model.design.columns[position] for position in level_columns(model, name)]
     found = dict.fromkeys(str(column.reference) for column in own)
     return tuple(found | dict.fromkeys(str(column.level) for column in own))
+
+
+def level_columns(model: FittedModel, name: str) -> list[int]:
+    """The positions of the indicators of the column's levels in the model matrix."""
+    return [
+        position
+        for position, column in enumerate(model.design.columns)
+        if column.sources == (name,) and column.kind == "level"
+    ]

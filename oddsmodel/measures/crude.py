@@ -10,10 +10,11 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from oddsmodel.design.types import DesignColumn
+from oddsmodel.errors import InputFault
 from oddsmodel.inference.maximise import maximise
 from oddsmodel.inference.profile import profile
 from oddsmodel.likelihood.binomial import BinomialLikelihood
-from oddsmodel.measures.counts import level_counts, model_levels, whole
+from oddsmodel.measures.counts import design_levels, level_codes, level_columns
 from oddsmodel.measures.scale import exponential, limits_on_ratio_scale
 from oddsmodel.measures.wald import wald
 from oddsmodel.model.fitted import FittedModel
@@ -53,9 +54,9 @@ def crude(model: FittedModel, kept: KeptRecords | None = None) -> dict[int, Crud
     A crude estimate comes from a logistic model of the one exposure and an intercept. With an exposure in levels
     that model is saturated: the likelihood of one level against the reference is free of the other levels, so
     estimate and profile limits come from the 2×2 table of the two, whatever happens at the other levels. With a
-    number, equal values are taken together. An exposure that enters as a spline, another function, or with an
-    interaction has no crude odds ratio of a single coefficient, and none is given; nor where the model has no
-    intercept.
+    number or a function of one, equal values are taken together. An exposure that takes several columns other than
+    levels, or enters with an interaction, has no crude odds ratio of a single coefficient, and none is given; nor
+    where the model has no intercept.
 
     kept: all kept records with the outcome. The second estimate is given only where the number of records differs.
     """
@@ -70,43 +71,55 @@ def crude(model: FittedModel, kept: KeptRecords | None = None) -> dict[int, Crud
         elif column.sources[0] not in plain or not column.shown:
             answers[position] = Crude(None, reasons={"crude": say("crude-of-several-columns", term=column.term)})
         else:
-            answers[position] = _both(model, column, own, kept)
+            answers[position] = _both(model, position, own, kept)
     return answers
 
 
 def plain_exposures(model: FittedModel) -> tuple[str, ...]:
-    """The exposures that enter the model only as levels against a reference or as a single number."""
+    """The exposures that enter the model only as levels against a reference or as one column of numbers."""
     plain = []
     for name in model.exposures:
         columns = [column for column in model.design.columns if name in column.sources]
-        if columns and all(column.shown and column.kind in ("level", "number") for column in columns):
+        if columns and all(column.shown and column.sources == (name,) for column in columns):
             plain.append(name)
     return tuple(plain)
 
 
-def _both(model: FittedModel, column: DesignColumn, own: KeptRecords, kept: KeptRecords | None) -> Crude:
+def _both(model: FittedModel, position: int, own: KeptRecords, kept: KeptRecords | None) -> Crude:
+    column = model.design.columns[position]
     reasons: dict[str, str] = {}
-    same = _estimate(model, column, own, "crude", reasons)
+    same = _estimate(model, position, _values(model, column, own), "crude", reasons)
     if kept is None:
         return Crude(same, None, reasons)
-    recorded = kept.frame[column.sources[0]].notna().to_numpy()
-    number = int(recorded.sum()) if kept.counts is None else round(float(kept.counts[recorded].sum()))
-    if number == same.records:
+    everyone = _values(model, column, kept)
+    if everyone.records == same.records:
         reasons["crude_all_records"] = say("crude-same-records")
         return Crude(same, None, reasons)
-    return Crude(same, _estimate(model, column, kept, "crude_all_records", reasons), reasons)
+    return Crude(same, _estimate(model, position, everyone, "crude_all_records", reasons), reasons)
 
 
-def _estimate(
-    model: FittedModel, column: DesignColumn, records: KeptRecords, key: str, reasons: dict[str, str]
-) -> CrudeEstimate:
+@dataclass(frozen=True, slots=True)
+class _Values:
+    """The distinct values (m) of an exposure as a column of its own kind, with their events (m,) and trials (m,)."""
+
+    distinct: pd.Series
+    events: Array
+    trials: Array
+
+    @property
+    def records(self) -> int:
+        return round(float(self.trials.sum()))
+
+
+def _estimate(model: FittedModel, position: int, values: _Values, key: str, reasons: dict[str, str]) -> CrudeEstimate:
     """The crude estimate on some records; where there is none, the reason goes under `key`."""
-    if column.kind == "level":
-        X, events, trials, number = _level_table(column, model_levels(model, column.sources[0]), records)
-    else:
-        X, events, trials = _number_table(column, records)
-        number = int(whole(np.array([trials.sum()]))[0])
-    withheld = CrudeEstimate(records=number, odds_ratio=None)
+    column = model.design.columns[position]
+    withheld = CrudeEstimate(records=values.records, odds_ratio=None)
+    try:
+        X, events, trials = _table(model, position, values)
+    except InputFault:
+        reasons[key] = say("crude-beyond-the-model", term=column.term)
+        return withheld
 
     # A group of nobody, or a single value: the exposure's column is constant.
     if np.unique(X[trials > 0, 1]).size < 2:
@@ -125,33 +138,48 @@ def _estimate(
         reasons[key] = say("odds-ratio-out-of-range")
         return withheld
     ends = wald(estimate, standard_error, model.level)
-    limits = profile(fit, np.array([[0.0, column.per]]), model.level)
-    interval = limits_on_ratio_scale(limits, 0)
+    interval = limits_on_ratio_scale(profile(fit, np.array([[0.0, column.per]]), model.level), 0)
     return CrudeEstimate(
-        records=number,
+        records=values.records,
         odds_ratio=odds_ratio,
         wald=WaldResult(exponential(ends.lower), exponential(ends.upper), ends.p),
         profile=ProfileResult(interval.lower, interval.upper),
     )
 
 
-def _level_table(
-    column: DesignColumn, levels: tuple[str, ...], records: KeptRecords
-) -> tuple[Array, Array, Array, int]:
-    """Matrix (2, 2), events (2,), trials (2,) of the reference and the level; and the records at any level."""
-    counted = level_counts(records.frame[column.sources[0]], records.event, records.counts, levels)
-    pair = [counted.levels.index(str(column.reference)), counted.levels.index(str(column.level))]
-    X = np.array([[1.0, 0.0], [1.0, 1.0]])
-    return X, counted.events[pair].astype(float), counted.records[pair].astype(float), int(counted.records.sum())
+def _values(model: FittedModel, column: DesignColumn, records: KeptRecords) -> _Values:
+    """Equal values of the exposure taken together; where the model has it in levels, only those that it knows."""
+    name = column.sources[0]
+    codes, distinct = pd.factorize(records.frame[name])
+    series = pd.Series(distinct, name=name)
+    known = codes >= 0
+    if column.kind == "level":
+        seen = level_codes(series, design_levels(model, name)) >= 0
+        # None is seen where the levels are bands of a number, which hold values that were not.
+        known &= seen[codes] | (not seen.any())
+    weight = np.ones(int(known.sum())) if records.counts is None else records.counts[known]
+    trials = np.bincount(codes[known], weights=weight, minlength=len(series)).astype(np.float64)
+    events = np.bincount(codes[known], weights=weight * records.event[known], minlength=len(series)).astype(np.float64)
+    there = trials > 0
+    return _Values(series[there].reset_index(drop=True), events[there], trials[there])
 
 
-def _number_table(column: DesignColumn, records: KeptRecords) -> tuple[Array, Array, Array]:
-    """Matrix (m, 2), events (m,), trials (m,) with equal values of the number taken together."""
-    values = records.frame[column.sources[0]].to_numpy(dtype=np.float64)
-    recorded = np.isfinite(values)
-    weight = np.ones(int(recorded.sum())) if records.counts is None else records.counts[recorded]
-    distinct, place = np.unique(values[recorded], return_inverse=True)
-    trials = np.bincount(place, weights=weight).astype(np.float64)
-    events = np.bincount(place, weights=weight * records.event[recorded]).astype(np.float64)
-    X = np.column_stack([np.ones(distinct.size), distinct])
-    return X, events, trials
+def _table(model: FittedModel, position: int, values: _Values) -> tuple[Array, Array, Array]:
+    """Matrix (m, 2), events (m,), trials (m,) of an intercept and the exposure's column.
+
+    For a level m = 2: the reference and the level. InputFault where the model's function has no value.
+    """
+    column = model.design.columns[position]
+    name = column.sources[0]
+    if column.kind == "number":
+        x = values.distinct.to_numpy(dtype=np.float64)
+        return np.column_stack([np.ones(x.size), x]), values.events, values.trials
+    # Only the exposure's own columns are read: the others hold any values that the model knows.
+    frame = model.frame.iloc[np.zeros(len(values.distinct), dtype=int)].reset_index(drop=True)
+    frame[name] = values.distinct
+    X = model.design.encode(frame)
+    if column.kind == "transform":
+        return np.column_stack([np.ones(len(frame)), X[:, position]]), values.events, values.trials
+    own = level_columns(model, name)
+    groups = np.array([~X[:, own].any(axis=1), X[:, position] == 1.0], dtype=np.float64)
+    return np.array([[1.0, 0.0], [1.0, 1.0]]), groups @ values.events, groups @ values.trials

@@ -6,7 +6,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from oddsmodel.findings import Finding
-from oddsmodel.measures.counts import level_counts, model_levels
+from oddsmodel.measures.counts import exposure_counts
 from oddsmodel.measures.crude import plain_exposures
 from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.measures.intervals import lead_interval
@@ -100,13 +100,12 @@ def exposure_rows(model: FittedModel, name: str, coefficients: Sequence[Coeffici
         for design, result in zip(model.design.columns, coefficients, strict=True)
         if plain and design.sources == (name,)
     }
-    names = model_levels(model, name)
-    if not names:
+    counted = exposure_counts(model, name)
+    if counted is None:
         coefficient = own.get(None)
         label = coefficient.label if coefficient else say("exposure-in-several-columns", label=column.label)
         return [ExposureRow(label, model.records, model.events, coefficient)]
     references = {result.reference for result in own.values()}
-    counted = level_counts(model.frame[name], model.event, model.counts, names)
     return [
         ExposureRow(f"{column.label}: {level}", int(records), int(events), own.get(level), level in references)
         for level, records, events in zip(counted.levels, counted.records, counted.events, strict=True)

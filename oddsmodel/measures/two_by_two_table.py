@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from oddsmodel.measures.counts import LevelCounts, level_counts, model_levels
+from oddsmodel.measures.counts import LevelCounts, exposure_counts
 from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.measures.two_by_two import TwoByTwo, two_by_two
 from oddsmodel.model.fitted import FittedModel
@@ -14,19 +14,19 @@ def two_by_two_tables(model: FittedModel) -> tuple[Table, ...]:
     """One table for each exposure of two levels, on the records analysed; none for other exposures."""
     tables: list[Table] = []
     for name in model.exposures:
-        levels = model_levels(model, name)
-        if len(levels) == 2:
-            column = model.columns[name]
-            reference = column.reference or levels[0]
-            exposed = next(level for level in levels if level != reference)
-            counted = level_counts(model.frame[name], model.event, model.counts, (exposed, reference))
-            id_ = "two_by_two" if not tables else f"two_by_two_{len(tables) + 1}"
-            tables.append(_table(id_, column.label, counted, model.level, model.study_design))
+        counted = exposure_counts(model, name)
+        if counted is None or len(counted.levels) != 2:
+            continue
+        column = model.columns[name]
+        if (column.reference or counted.levels[0]) == counted.levels[0]:
+            counted = LevelCounts(counted.levels[::-1], counted.records[::-1], counted.events[::-1])
+        id_ = "two_by_two" if not tables else f"two_by_two_{len(tables) + 1}"
+        tables.append(_table(id_, column.label, counted, model.level, model.study_design))
     return tuple(tables)
 
 
 def _table(id_: str, label: str, counted: LevelCounts, level: float, design: str) -> Table:
-    """Both groups' counts, then the three odds ratios of the table with their limits and p-values."""
+    """The counts of both groups, the exposed first, then three odds ratios with their limits and p-values."""
     events, others = counted.events, counted.records - counted.events
     answer = two_by_two(int(events[0]), int(others[0]), int(events[1]), int(others[1]), level)
     case_control = design in CASE_CONTROL

@@ -18,7 +18,7 @@ from oddsmodel.records.delimiter import detect_delimiter
 from oddsmodel.records.encoding import to_utf8
 from oddsmodel.records.faults import fault, in_column
 from oddsmodel.records.header import header_end, header_names
-from oddsmodel.records.unreadable import LONGEST_FIELD, why_unreadable
+from oddsmodel.records.unreadable import LONGEST_FIELD, first_odd_line, why_unreadable
 from oddsmodel.wording import finding
 
 TEXT = pa.dictionary(pa.int32(), pa.string())
@@ -88,6 +88,7 @@ def read_delimited(
         comma_notes = (finding("note", "decimal-comma"),)
     if table.num_rows == 0:
         raise InputFault(fault("no-rows", source))
+    _refuse_open_quote(table, content, source)
     table = _with_numbers_as_written(table, text)
     _refuse_long_fields(table, source)
     return table, notes + delimiter_notes + comma_notes + _blank_lines(content)
@@ -173,6 +174,18 @@ def _starts_with_zero(column: pa.ChunkedArray) -> bool:
         if pc.any(pc.match_substring_regex(chunk.dictionary, r"^\s*[+-]?0[0-9]")).as_py():
             return True
     return False
+
+
+def _refuse_open_quote(table: pa.Table, content: bytes, source: str) -> None:
+    """Refuse a quotation mark that is not closed and has taken further rows into its field."""
+    if content.count(b'"') % 2 == 0:
+        return
+    for name in table.column_names:
+        if not pa.types.is_dictionary(table[name].type):
+            continue
+        for chunk in table[name].chunks:
+            if pc.any(pc.match_substring_regex(chunk.dictionary, r"[\r\n]")).as_py():
+                raise InputFault(fault("quote-not-closed", f"{source}, row {first_odd_line(content)}"))
 
 
 def _refuse_long_fields(table: pa.Table, source: str) -> None:

@@ -197,7 +197,7 @@ def _records(
         read = int(counts.sum())
         met = counts.to_numpy(np.float64) > 0
         if not met.all():
-            findings.append(finding("note", "rows-of-no-record", rows=int((~met).sum())))
+            findings.append(finding("note", "rows-of-no-record", zeros=int((~met).sum())))
             frame = frame.loc[met].reset_index(drop=True)
             counts = counts.loc[met].reset_index(drop=True)
             outside = {name: mask.loc[met].reset_index(drop=True) for name, mask in outside.items()}

@@ -45,7 +45,7 @@ def why_unreadable(content: bytes, delimiter: str, names: Sequence[str], source:
         widths = [width for _, width in uneven]
         found.append(fault("rows-uneven", source, expected=len(names), rows=rows, widths=widths, total=total))
     if content.count(b'"') % 2 == 1:
-        found.append(fault("quote-not-closed", f"{source}, row {_first_odd_line(content)}"))
+        found.append(fault("quote-not-closed", f"{source}, row {first_odd_line(content)}"))
     return found or [fault("rows-not-readable", source)]
 
 
@@ -67,7 +67,7 @@ def _long_line(content: bytes, source: str) -> list[Fault]:
     return [fault("field-too-long", f"{source}, row {row}", bytes=int(lengths[row - 1]))]
 
 
-def _first_odd_line(content: bytes) -> int:
+def first_odd_line(content: bytes) -> int:
     """Number of the first line with an odd number of quotation marks."""
     quotes = np.flatnonzero(np.frombuffer(content, dtype=np.uint8) == 34)
     within = np.diff(np.searchsorted(quotes, _line_ends(content)))

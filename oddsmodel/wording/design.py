@@ -381,6 +381,10 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
             else "Ask for fewer knots, list knots of your own, or let the column stand as a number."
         ),
     ),
+    "design-few-values": (
+        "“{term}” cannot be made: {columns} columns are wanted of it, and the records have {values} different values.",
+        "Ask for less, or take the column as levels with C(...).",
+    ),
     "design-knots-outside": (
         "“{term}” cannot be made: a knot lies outside the values of the records analysed, from {lowest} to {highest}.",
         "Put all knots between the two.",

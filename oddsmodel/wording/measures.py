@@ -79,6 +79,7 @@ SENTENCES: dict[str, Sentence] = {
     "crude-no-finite-maximum": (
         "The crude odds ratio is not finite: in one of the groups nobody had the event, or everybody had."
     ),
+    "crude-beyond-the-model": "Some of these records have a value for which {term} is not defined.",
     "crude-not-estimated": "The crude model could not be estimated.",
     "no-crude-estimate": "There is no crude estimate.",
     # Coefficients

@@ -23,7 +23,7 @@ def _quoted_list(values: Sequence[str], last: str = "and") -> str:
 
 
 def _repaired(what: str, facts: Facts) -> str:
-    cells = plural(int(facts["records"]), "cell")
+    cells = plural(facts["records"], "cell")
     return f"{what} in {cells} of {_columns(facts['columns'])}."
 
 
@@ -46,7 +46,7 @@ def _few_whole_numbers(facts: Facts) -> str:
 
 def _suspected(facts: Facts) -> str:
     parts = [
-        f"{quoted(value)} ({plural(int(records), 'record')})"
+        f"{quoted(value)} ({plural(records, 'record')})"
         for value, records in zip(facts["values"], facts["with_records"], strict=True)
     ]
     many = len(parts) > 1
@@ -90,10 +90,10 @@ def _by_case(facts: Facts) -> str:
 
 def _identifier_repeats(facts: Facts) -> str:
     return (
-        f"{quoted(facts['column'])} is an identifier, but {plural(int(facts['records']), 'record')} have only "
-        f"{count(int(facts['different']))} different values of it: some persons or units stand in several records. "
-        f"Records of one person are not independent, and standard errors that take them so are too small. "
-        f"Keep one record of each."
+        f"{quoted(facts['column'])} is an identifier, but {plural(facts['records'], 'record')} have only "
+        f"{count(facts['different'])} different values of it: some persons or units stand in several records. "
+        f"Such records are not independent, and standard errors that take them so are too small. "
+        f"Keep a single record of each."
     )
 
 
@@ -124,14 +124,14 @@ FINDINGS: dict[str, Sentence] = {
     "few-whole-numbers": _few_whole_numbers,
     "suspected-codes": _suspected,
     "many-levels": lambda facts: (
-        f"{quoted(facts['column'])} has {count(int(facts['levels']))} levels. Is it a category, "
+        f"{quoted(facts['column'])} has {count(facts['levels'])} levels. Is it a category, "
         f"or a number, a date or an identifier? The plan can say it with kind."
     ),
     "level-absent": _levels_absent,
     "levels-differ-by-case": _by_case,
     "references-taken": _references,
     "identifier-repeats": _identifier_repeats,
-    "rows-of-no-record": lambda facts: f"{plural(int(facts['rows']), 'row')} with a count of 0 stand for no record.",
+    "rows-of-no-record": lambda facts: f"{plural(facts['zeros'], 'row')} with a count of 0 stand for no record.",
     "left-out-not-kept": _not_kept,
     "left-out-keep-undecided": _left_out(
         "Cannot be decided whether they are kept: not recorded in {columns}", "Cannot be decided whether they are kept"
@@ -151,7 +151,7 @@ FINDINGS: dict[str, Sentence] = {
     "survey-identifier": "A different text in each record: is it an identifier?",
     "survey-date": "Dates are kept but cannot stand in a formula yet; a number of days or years can.",
     "survey-spelled-alike": lambda facts: f"Are {_quoted_list(facts['levels'])} the same? Then write them alike.",
-    "survey-many-levels": lambda facts: f"{count(int(facts['levels']))} levels: is it a category?",
+    "survey-many-levels": lambda facts: f"{count(facts['levels'])} levels: is it a category?",
     "survey-empty": "No value is recorded: leave the column out.",
 }
 

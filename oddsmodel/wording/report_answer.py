@@ -20,15 +20,18 @@ def outcome_words(label: str, event: str) -> str:
 
 
 def _as_change(value: float) -> str:
-    """An odds ratio as a change of the odds: "13% lower", "52% higher", "2.40 times as high"."""
+    """An odds ratio between a half and two as a change of the odds: "13% lower", "52% higher"."""
     percent = round(100 * (value - 1.0))
-    if value >= 2.0:
-        return f"{ratio(value)} times as high"
     if percent == 0:
         return "about the same"
-    if value < 0.005:
-        return f"lower by a factor of {count(round(1 / value))}" if value > 1e-6 else "almost nothing"
     return f"{abs(percent)}% {'higher' if percent > 0 else 'lower'}"
+
+
+def _span(lower: float, upper: float) -> str:
+    """Both limits told alike: as changes where both are between a half and two, else as times."""
+    if lower > 0.5 and upper < 2.0:
+        return f"from {_as_change(lower)} to {_as_change(upper)}"
+    return f"from {ratio(lower)} to {ratio(upper)} times as high"
 
 
 def _direction(value: float) -> str:
@@ -81,7 +84,7 @@ def _compatible(facts: Mapping[str, Any]) -> str:
         return f"The records are compatible with odds ratios from {ratio(lower)} upwards; they set no upper limit."
     if lower is None:
         return f"The records are compatible with odds ratios up to {ratio(upper)}; they set no lower limit."
-    span = f"from {_as_change(lower)} to {_as_change(upper)}"
+    span = _span(lower, upper)
     if lower <= 1.0 <= upper:
         if upper / lower <= NARROW:
             return f"The odds that the records are compatible with lie close together, {span}; the direction is open."

@@ -159,7 +159,7 @@ SENTENCES: dict[str, Sentence] = {
     "way-events_per_parameter": "the number of events per parameter (Peduzzi et al., 1996)",
     "way-sparse_cells": "the smallest counts of exposure by outcome",
     "way-overlap": "the overlap of the exposure groups across the adjustment columns",
-    "way-goodness_of_fit": "the Pearson and deviance statistics on covariate patterns",
+    "way-residual_tests": "the Pearson and deviance statistics on covariate patterns",
 }
 
 WAYS: dict[str, tuple[str, tuple[str, ...]]] = {
@@ -173,6 +173,6 @@ WAYS: dict[str, tuple[str, tuple[str, ...]]] = {
     "events_per_parameter": ("way-events_per_parameter", ("peduzzi-1996",)),
     "sparse_cells": ("way-sparse_cells", ()),
     "overlap": ("way-overlap", ()),
-    "goodness_of_fit": ("way-goodness_of_fit", ()),
+    "residual_tests": ("way-residual_tests", ()),
 }
 """By the name of a check: the code of its words in the methods paragraph, and the references it rests on."""

@@ -152,3 +152,41 @@ def test_no_crude_estimate_where_none_stands_alone(
         if one.role == "exposure":
             assert one.crude is None
             assert words in one.reasons["crude"]
+
+
+def test_functions_bands_and_numbers_as_levels(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
+    # statsmodels on columns made by numpy and pandas.
+    low, lwt = birthwt["low"], birthwt["lwt"]
+    (logged,) = [one for one in fitting(birthwt[RECORDS], low, "log(lwt) + age", ["lwt"])[1] if one.role == "exposure"]
+    assert logged.crude.odds_ratio == pytest.approx(np.exp(reference(low, np.log(lwt)).params[1]), rel=1e-8)
+
+    bands = [one for one in fitting(birthwt[RECORDS], low, "cut(lwt, [110, 140]) + age", ["lwt"])[1] if one.level]
+    middle, high = (lwt >= 110) & (lwt < 140), lwt >= 140
+    wanted = np.exp(reference(low, middle, high).params[1:])
+    assert [one.crude.odds_ratio for one in bands] == pytest.approx(wanted, rel=1e-8)
+
+    frame = birthwt[["lwt"]].assign(code=(birthwt["race"].cat.codes * 0.5).astype(float))
+    levels = [one for one in fitting(frame, low, "C(code) + lwt", ["code"])[1] if one.role == "exposure"]
+    wanted = np.exp(reference(low, frame["code"] == 0.5, frame["code"] == 1.0).params[1:])
+    assert [one.crude.odds_ratio for one in levels] == pytest.approx(wanted, rel=1e-8)
+
+
+def test_a_function_without_a_value_on_all_records(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
+    everyone = pd.concat([birthwt, birthwt.head(2).assign(lwt=[0.0, -1.0])], ignore_index=True)
+    kept = KeptRecords(everyone[RECORDS], everyone["low"].to_numpy(dtype=bool))
+    _, found = fitting(birthwt[RECORDS], birthwt["low"], "log(lwt) + age", ["lwt"], kept=kept)
+    one = next(one for one in found if one.role == "exposure")
+    assert (one.crude_all_records.records, one.crude_all_records.odds_ratio) == (191, None)
+    assert "log(lwt) is not defined" in one.reasons["crude_all_records"]
+
+
+def test_levels_that_no_analysed_record_has_are_left_out(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
+    everyone = pd.concat([birthwt, birthwt.head(5)], ignore_index=True)
+    kept = KeptRecords(everyone[RECORDS], everyone["low"].to_numpy(dtype=bool))
+    used = birthwt[birthwt["race"] != "other"].reset_index(drop=True)
+    _, found = fitting(used[RECORDS], used["low"], "race + age", ["race"], kept=kept)
+    one = next(one for one in found if one.level == "black")
+    pair = everyone[everyone["race"] != "other"]
+    assert (one.crude.records, one.crude_all_records.records) == (len(used), len(pair))
+    fit = reference(pair["low"], pair["race"] == "black")
+    assert one.crude_all_records.odds_ratio == pytest.approx(np.exp(fit.params[1]), rel=1e-9)

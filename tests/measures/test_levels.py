@@ -81,3 +81,16 @@ def test_a_number_exposure_has_one_row(birthwt: pd.DataFrame, fitting: Callable[
 def test_an_interaction_leaves_its_odds_ratios_empty(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
     model, found = fitting(birthwt[RECORDS], birthwt["low"], "smoke * age", ["smoke"])
     assert [row[4:] for row in levels(model, found).rows] == [(None, None, None, None)] * 2
+
+
+def test_bands_and_numbers_as_levels(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
+    model, found = fitting(birthwt[RECORDS], birthwt["low"], "cut(age, [20, 30]) + lwt", ["age"])
+    rows = levels(model, found).rows
+    wanted = birthwt["low"].groupby(pd.cut(birthwt["age"], [0, 20, 30, 99], right=False), observed=False)  # pandas
+    assert [row[1] for row in rows] == wanted.size().tolist()
+    assert [row[2] for row in rows] == wanted.sum().tolist()
+    assert rows[0][4] == "1 (reference)"
+
+    frame = birthwt[["lwt"]].assign(smoke=(birthwt["smoke"] == "yes").astype(float))
+    model, found = fitting(frame, birthwt["low"], "C(smoke) + lwt", ["smoke"])
+    assert [row[:3] for row in levels(model, found).rows] == [("smoke: 0", 115, 29), ("smoke: 1", 74, 30)]

@@ -141,6 +141,17 @@ def test_quotation_mark_not_closed(tmp_path: Path) -> None:
     assert any("row 3" in fault.where and "not closed" in fault.what for fault in faults)
 
 
+@pytest.mark.parametrize("content", ['a,b\n1,2\n1,"x\n2,3\n4,5\n', 'a,b\n1,2\n1,"x\n2,3\n'])
+def test_rows_swallowed_by_a_quotation_mark_are_not_lost_in_silence(tmp_path: Path, content: str) -> None:
+    (fault,) = refused(tmp_path, content)
+    assert fault.where.endswith("row 3")
+    assert "not closed" in fault.what
+
+
+def test_a_quotation_mark_within_a_text_is_only_a_text(tmp_path: Path) -> None:
+    assert texts(read(tmp_path, 'a,b\n1,5" pipe\n2,x\n'), "b") == ['5" pipe', "x"]
+
+
 @pytest.mark.parametrize("size", [1_000_001, 10_000_000])
 def test_a_field_of_megabytes_is_refused(tmp_path: Path, size: int) -> None:
     (fault,) = refused(tmp_path, b"a,b\n1,x\n2," + b"y" * size + b"\n3,z\n")

@@ -28,6 +28,7 @@ from oddsmodel.wording import numbers, say
 _NUMBERS_WIDTH = 138.0
 _NAMES_WIDTH = 84.0
 _GAP = 8.0
+_UNDER_LABEL = 3.0
 _TOP = 6.0
 _BOLD = 1.1
 """How much wider bold letters are."""
@@ -74,7 +75,9 @@ def draw(figure: EstimatesFigure) -> Sheet:
         (fold(label, TEXT, WIDTH / _BOLD), [_row(mark, several) for mark in marks])
         for label, marks in groupby(figure.marks, key=lambda mark: mark.label)
     ]
-    height = _TOP + sum(LINE * len(label) + sum(row.height for row in rows) + _GAP for label, rows in blocks)
+    height = _TOP + sum(
+        LINE * len(label) + _UNDER_LABEL + sum(row.height for row in rows) + _GAP for label, rows in blocks
+    )
 
     sheet = Sheet(height + 58.0)
     ticks = ratio_ticks(axis.low, axis.high, axis.right - axis.left)
@@ -83,6 +86,7 @@ def draw(figure: EstimatesFigure) -> Sheet:
         for line in label:
             sheet.text(0, top + 12, line, weight="bold")
             top += LINE
+        top += _UNDER_LABEL
         for row in rows:
             _grid(sheet, axis, ticks, top, top + row.height - row.note_height)
             _estimate(sheet, row, axis, top, drawn_as[row.mark.series])
