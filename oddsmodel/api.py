@@ -168,7 +168,7 @@ def fit(
             "columns": {name: dict(section) for name, section in (columns or {}).items()},
             "outcome": {
                 "column": outcome.strip(),
-                **({} if event is None else {"event": str(event)}),
+                **({} if event is None else {"event": event}),
             },
             "models": [{"name": "main", "formula": formula, "exposures": list(exposures), "level": level}],
             "report": {"hide_counts_below": hide_counts_below},

@@ -45,7 +45,9 @@ def test_reports_are_in_step(name: str, tmp_path: Path) -> None:
     outcome = run_plan(ROOT / "examples" / name / "plan.toml", into=tmp_path / "report")
     kept = ROOT / "reports" / name
     fresh = {str(path.relative_to(outcome.folder)) for path in outcome.folder.rglob("*") if path.is_file()}
-    assert fresh == {str(path.relative_to(kept)) for path in kept.rglob("*") if path.suffix != ".png" and path.is_file()}
+    assert fresh == {
+        str(path.relative_to(kept)) for path in kept.rglob("*") if path.suffix != ".png" and path.is_file()
+    }
     results = [json.loads((folder / "results.json").read_text(encoding="utf-8")) for folder in (outcome.folder, kept)]
     assert_alike(*results)
     documents = [(folder / "report.html").read_text(encoding="utf-8") for folder in (outcome.folder, kept)]

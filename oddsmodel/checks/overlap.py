@@ -67,7 +67,7 @@ def check(model: FittedModel) -> CheckResult:
     told_by = {
         "outside_records": "overlap-no-category",
         "exposure_variance_explained": "overlap-no-number",
-        "exposure_odds_ratio_within_overlap": "overlap-not-refitted",
+        "exposure_odds_ratio_within_overlap": "overlap-not-refitted" if gathered.outside else "overlap-none-outside",
     }
     line = say(code, **facts)
     return CheckResult(

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.flow import disclosed_exclusions
-from oddsmodel.disclosure.gather import analysed_and_events, gather
+from oddsmodel.disclosure.gather import analysed_and_events, closed_models, gather
 from oddsmodel.disclosure.hiding import Hiding
 from oddsmodel.disclosure.model import (
     crude_numbers,
@@ -18,6 +18,7 @@ from oddsmodel.disclosure.model import (
 )
 from oddsmodel.disclosure.suppression import Suppression
 from oddsmodel.disclosure.system import Place
+from oddsmodel.disclosure.table_counts import count_cells
 from oddsmodel.disclosure.tables import disclosed_table, hidden_estimates
 from oddsmodel.results.figures import EstimatesFigure
 from oddsmodel.results.study import DisclosedResults, ModelResult, RecordsResult, StudyResults
@@ -63,7 +64,12 @@ def settle(study: StudyResults, threshold: int) -> Hiding:
         return Hiding(threshold)
     counts = gather(study, threshold)
     hidden = Suppression(counts, threshold).run()
-    hiding = Hiding(threshold, frozenset(place for place, number in counts.places.items() if number in hidden))
+    places = {place for place, number in counts.places.items() if number in hidden}
+    closed = closed_models(study, threshold)
+    for owner, table in _tables(study):
+        if owner[0] in ("model", "check") and owner[1] in closed:
+            places |= {("cell", owner, r, k) for r, k in count_cells(table)}
+    hiding = Hiding(threshold, frozenset(places))
     large = frozenset(counts.values[number] for number in hidden if counts.values[number] >= threshold)
     hiding.withheld = Withheld(threshold, large, frozenset(_estimates(study, hiding)))
     return hiding

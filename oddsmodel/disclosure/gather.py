@@ -8,10 +8,12 @@ from itertools import combinations
 
 from oddsmodel.disclosure.calibration import merge_groups
 from oddsmodel.disclosure.system import EVENTS, READ, RECORDS, SIDE, Counts, CountSystem, Place
-from oddsmodel.disclosure.table_counts import Sightings, TableCounts, row_text
+from oddsmodel.disclosure.table_counts import Sightings, TableCounts, row_text, whole_number
 from oddsmodel.results.figures import CalibrationFigure
 from oddsmodel.results.study import ModelResult, StudyResults
 from oddsmodel.results.tables import Table
+
+Key = tuple[str, str, str]
 
 
 @dataclass(slots=True)
@@ -28,7 +30,8 @@ class _Gathered:
     system: CountSystem
     threshold: int
     sightings: Sightings = field(default_factory=Sightings)
-    keyed: list[dict[tuple[str, str, int, str], int]] = field(default_factory=list)
+    totals: list[tuple[int, list[int]]] = field(default_factory=list)
+    """Each model's records, events and records without the event."""
     ordered: list[_Ordered] = field(default_factory=list)
 
 
@@ -36,12 +39,13 @@ def gather(study: StudyResults, threshold: int) -> Counts:
     """The counts of a study under a threshold of at least 2.
 
     Equal counts that stand in several places are recognised by the words of their row or by what they are a part of;
-    where that is not certain they are tied, to be hidden together. Two models whose records differ by a small count
-    give that count away, so the differences of models of which one's records hold the other's are counts too.
+    where that is not certain they are tied, to be hidden together. Two models of which one's records hold the other's
+    give away what lies between: with a small difference by level, `closed_models` leaves the later one's tables out.
     """
     found = _Gathered(CountSystem(), threshold)
     read = _enter_flows(found, study)
-    scalars = [_enter_model(found, study, m, read) for m in range(len(study.models))]
+    closed = closed_models(study, threshold)
+    scalars = [_enter_model(found, study, m, read, closed) for m in range(len(study.models))]
     main: Mapping[int, int] = scalars[0] if scalars else {}
     if study.characteristics is not None:
         _enter_table(found, study.characteristics, ("characteristics",), main, 0)
@@ -52,7 +56,7 @@ def gather(study: StudyResults, threshold: int) -> Counts:
             same = everywhere.get(found.system.value(number))
             if same is not None:
                 found.system.merge(number, same)
-    _enter_nested(found, study)
+    _enter_nested(found)
     _enter_ordered(found)
     _recognise(found)
     return found.system.freeze()
@@ -84,36 +88,64 @@ def _enter_flows(found: _Gathered, study: StudyResults) -> dict[int, int]:
     return read
 
 
-def _enter_model(found: _Gathered, study: StudyResults, m: int, read: Mapping[int, int]) -> dict[int, int]:
+def closed_models(study: StudyResults, threshold: int) -> frozenset[int]:
+    """Models of whose counts, but for their totals, nothing may be shown.
+
+    These are the later ones of two models whose records seem to hold one another (no count of one is smaller, or none
+    is larger, than the same count of the other) and that differ in some level by a small count.
+    """
+    keyed = [_keyed(model) for model in study.models]
+    closed: set[int] = set()
+    for (i, first), (j, second) in combinations(enumerate(keyed), 2):
+        differences = [first[key] - second[key] for key in first.keys() & second.keys()]
+        nested = min(differences, default=0) >= 0 or max(differences, default=0) <= 0
+        if i not in closed and nested and any(0 < abs(difference) < threshold for difference in differences):
+            closed.add(j)
+    return frozenset(closed)
+
+
+def _keyed(model: ModelResult) -> dict[Key, int]:
+    """The counts of a model's tables under what tells the same count of another model."""
+    found: dict[Key, int] = {}
+    for table in model.tables:
+        for row in table.rows:
+            words = row_text(table, row)
+            for column, cell in zip(table.columns, row, strict=True):
+                value = whole_number(cell) if column.kind == "count" else None
+                if value is not None:
+                    found.setdefault((table.id, words, column.key), value)
+    return found
+
+
+def _enter_model(
+    found: _Gathered, study: StudyResults, m: int, read: Mapping[int, int], closed: frozenset[int]
+) -> dict[int, int]:
     """A model's totals, flow, tables and checks; returns its totals by size."""
     system, model = found.system, study.models[m]
-    keyed: dict[tuple[str, str, int, str], int] = {}
-    found.keyed.append(keyed)
     scalars: dict[int, int] = {}
     analysed, happened = analysed_and_events(model)
     if analysed is not None:
         records = system.add(analysed, ("records", m), rank=RECORDS, model=m)
-        keyed["", "", 0, "records"] = records
+        totals = [records]
         _enter_flow_sum(found, model, m, read, records)
         if happened is not None:
             events = system.add(happened, ("events", m), rank=EVENTS, model=m)
             others = system.add(analysed - happened, rank=EVENTS, model=m)
             system.relate([events, others], records)
-            keyed["", "", 0, "events"] = events
             scalars = {analysed - happened: others, happened: events}
+            totals += [events, others]
         scalars[analysed] = records
+        found.totals.append((m, totals))
         for c, coefficient in enumerate(model.coefficients):
             everyone = coefficient.crude_all_records
             if everyone is not None and everyone.records is not None:
                 number = system.add(everyone.records, ("crude all", m, c), rank=SIDE, model=m)
                 _enter_difference(found, number, records, m)
+    if m in closed:
+        return scalars
     for t, table in enumerate(model.tables):
         cells = _enter_table(found, table, ("model", m, t), scalars, m)
-        seen: dict[tuple[str, str, str], int] = {}
-        for (r, k), number in cells.cells.items():
-            words, key = row_text(table, table.rows[r]), table.columns[k].key
-            times = seen[table.id, words, key] = seen.get((table.id, words, key), -1) + 1
-            keyed[f"{table.id} {words}", key, times, "cell"] = number
+        for (_, k), number in cells.cells.items():
             if analysed is not None and table.columns[k].part_of is None:
                 _enter_difference(found, number, scalars[analysed], m)
     for c, check in enumerate(model.checks):
@@ -155,22 +187,18 @@ def _enter_table(found: _Gathered, table: Table, owner: Place, scalars: Mapping[
     return cells
 
 
-def _enter_nested(found: _Gathered, study: StudyResults) -> None:
-    """Differences between two models, where the records of one seem to hold those of the other."""
-    for (i, first), (j, second) in combinations(enumerate(found.keyed), 2):
-        shared = first.keys() & second.keys()
-        differences = {key: found.system.value(first[key]) - found.system.value(second[key]) for key in shared}
-        signs = {difference > 0 for difference in differences.values() if difference}
-        if len(signs) > 1 or ("", "", 0, "records") not in shared:
+def _enter_nested(found: _Gathered) -> None:
+    """Differences between the totals of two models, where the records of one seem to hold those of the other."""
+    for (_, first), (j, second) in combinations(found.totals, 2):
+        pairs = list(zip(first, second, strict=False))
+        differences = [found.system.value(one) - found.system.value(other) for one, other in pairs]
+        if min(differences) < 0 < max(differences):
             continue
-        for key in sorted(shared):
-            one, other = first[key], second[key]
-            if differences[key] == 0:
+        for (one, other), difference in zip(pairs, differences, strict=True):
+            if difference == 0:
                 found.system.merge(one, other)
-            elif differences[key] > 0:
-                _enter_difference(found, one, other, j)
             else:
-                _enter_difference(found, other, one, max(i, j))
+                _enter_difference(found, *((one, other) if difference > 0 else (other, one)), j)
 
 
 def _see_ordered(found: _Gathered, table: Table, cells: TableCounts, model: int) -> None:

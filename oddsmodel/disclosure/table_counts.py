@@ -47,6 +47,15 @@ def row_blocks(table: Table) -> tuple[int, ...]:
     return table.blocks or (0,) * len(table.rows)
 
 
+def count_cells(table: Table) -> Iterator[tuple[int, int]]:
+    """Row and column of each cell that holds a count."""
+    columns = [k for k, column in enumerate(table.columns) if column.kind == "count"]
+    for r, row in enumerate(table.rows):
+        for k in columns:
+            if whole_number(row[k]) is not None:
+                yield r, k
+
+
 class TableCounts:
     """Enters the counts of a table into the system.
 
@@ -67,11 +76,8 @@ class TableCounts:
         self.scalars, self.model = scalars, model
         self.positions = {column.key: k for k, column in enumerate(table.columns) if column.kind == "count"}
         self.cells: dict[tuple[int, int], int] = {}
-        for r, row in enumerate(table.rows):
-            for k in self.positions.values():
-                value = whole_number(row[k])
-                if value is not None and value >= 0:
-                    self.cells[r, k] = system.add(value, ("cell", owner, r, k), model=model)
+        for r, k in count_cells(table):
+            self.cells[r, k] = system.add(whole_number(table.rows[r][k]) or 0, ("cell", owner, r, k), model=model)
 
     def enter(self) -> None:
         """All sums of the table, and the signatures of its counts."""

@@ -92,7 +92,7 @@ def _estimates(model: ModelResult) -> Iterable[Row]:
             one.profile.lower,
             one.profile.upper,
         )
-        if not one.shown:
+        if not one.shown and one.role != "intercept":
             numbers = (None, None, None, one.wald.p, one.wald.df, None, None)
         yield (
             model.name,

@@ -144,7 +144,7 @@ def _complete(reasons: Mapping[str, str], missing: list[str]) -> dict[str, str]:
 
 
 def _coefficient(one: CoefficientResult) -> dict[str, Any]:
-    shown = one.shown
+    shown = one.shown or one.role == "intercept"
     reasons = dict(one.reasons)
     if not shown:
         own = say("no-odds-ratio-of-its-own")

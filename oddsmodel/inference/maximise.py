@@ -135,7 +135,7 @@ class _Run:
         elif near is not None:
             pull = near.working_information @ (near.working - self.origin)
             reduced = near.working_information if self.basis is None else self._both(near.working_information)
-            self.h = np.linalg.lstsq(reduced, self._reduced(pull), rcond=None)[0]
+            self.h = np.asarray(np.linalg.lstsq(reduced, self._reduced(pull), rcond=None)[0], dtype=np.float64)
         self.step: Array = np.zeros(r)
         self.value = -np.inf
         self.decrement = np.inf

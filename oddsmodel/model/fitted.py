@@ -9,6 +9,7 @@ from functools import cached_property
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
+from scipy.special import expit
 
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.patterns import Patterns
@@ -51,24 +52,16 @@ class FittedModel:
     @cached_property
     def fitted(self) -> Array:
         """Fitted probabilities of the patterns (m,)."""
-        linear = self.patterns.X @ self.fit.coefficients
-        return np.asarray(1.0 / (1.0 + np.exp(-linear)))
-
-    @cached_property
-    def leverage(self) -> Array:
-        """Diagonal of the hat matrix by pattern (m,): trials·p(1−p)·x'V x (Pregibon 1981, section 3)."""
-        weight = self.patterns.trials * self.fitted * (1.0 - self.fitted)
-        x = self.patterns.X
-        return np.asarray(weight * np.einsum("ij,ij->i", x @ self.fit.covariance, x))
+        return np.asarray(expit(self.patterns.X @ self.fit.coefficients))
 
     @property
     def records(self) -> int:
         """Number of records analysed (the sum of counts where there are any)."""
-        return int(round(float(self.patterns.trials.sum())))
+        return round(float(self.patterns.trials.sum()))
 
     @property
     def events(self) -> int:
-        return int(round(float(self.patterns.events.sum())))
+        return round(float(self.patterns.events.sum()))
 
     @property
     def exposure_indices(self) -> tuple[int, ...]:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 CODES = (7, 8, 9, 77, 88, 96, 97, 98, 99, 777, 888, 997, 998, 999, 7777, 8888, 9998, 9999, 88888, 99999, 999999)
 BELOW = (-1, -2)
 LIKE_NOT_RECORDED = {
-    "na", "n/a", "n.a.", "nan", "nd", "n.d.", "null", "none", "nil", "-", "--", ".", "..", "?", "??", "missing",
+    "na", "n/a", "n.a.", "nan", "nd", "n.d.", "null", "-", "--", ".", "..", "?", "??", "missing",
     "unknown", "unk", "not known", "not recorded", "not stated", "not available", "not applicable", "no data", "#n/a",
     "#null!", "<na>", "inf",
 }  # fmt: skip

@@ -42,7 +42,11 @@ def estimate(
     tests = term_tests(model)
     progress.stage("checking")
     checks = run_checks(model, progress, flow=prepared.accounting.flow)
-    findings = (*fitted.findings, *common_outcome(model), *adjustment_findings(plan.study.design, bool(model.adjustment)))
+    findings = (
+        *fitted.findings,
+        *common_outcome(model),
+        *adjustment_findings(plan.study.design, bool(model.adjustment)),
+    )
     tables = (levels(model, found), crude_to_adjusted_table(model, found), *two_by_two_tables(model))
     figures = (flow_figure(prepared), estimates_figure(model, found, prepared.id))
     result = _result(prepared, fitted, plan, records, found, findings, tables, figures)

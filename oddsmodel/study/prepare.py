@@ -96,7 +96,7 @@ def on_records_of(prepared: Prepared, other: Prepared, records: Records) -> Prep
     frame, event = prepared.frame[rows].reset_index(drop=True), prepared.event[rows]
     counts = None if prepared.counts is None else prepared.counts[rows]
     try:
-        design = build_design(prepared.formula, frame, records.columns, prepared.exposures)
+        design = build_design(prepared.formula, frame, records.columns, prepared.exposures, counts)
     except InputFault:
         return None
     return Prepared(
@@ -164,7 +164,7 @@ def _prepare(
         which = "always happened" if present.all() else "never happened"
         findings = (finding("stop", "one-outcome-only", which=which),)
     else:
-        design = build_design(formula, frame, records.columns, exposures)
+        design = build_design(formula, frame, records.columns, exposures, counts)
         findings = tuple(design.findings)
     return Prepared(
         section=section,

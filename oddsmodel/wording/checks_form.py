@@ -270,9 +270,8 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "overlap-not-fitted": "No model of the exposure on the adjustment columns could be fitted.",
     "overlap-no-category": "No exposure is a category.",
     "overlap-no-number": "No exposure is a number.",
-    "overlap-not-refitted": (
-        "No record lies outside the overlap, or the exposure has no single odds ratio without those that do."
-    ),
+    "overlap-none-outside": "No record is known to lie outside the overlap, so none was left out.",
+    "overlap-not-refitted": "Without the records outside the overlap the exposure has no single odds ratio.",
     "overlap-figure-title": "{group} and {other} across the adjustment columns",
     "overlap-figure-axis": "Probability of “{group}” from the adjustment columns, were both groups equally large",
     "overlap-figure-alt": (

@@ -57,12 +57,12 @@ def decimal(value: float, digits: int = 2) -> str:
 
 
 def plural(number: int, one: str, many: str | None = None) -> str:
-    """ "1 record", "2 records". """
+    """ "1 record", "2 records"."""
     return f"{count(number)} {one if number == 1 else (many or one + 's')}"
 
 
 def listed(words: list[str] | tuple[str, ...], last: str = "and") -> str:
-    """ "a", "a and b", "a, b and c". """
+    """ "a", "a and b", "a, b and c"."""
     if len(words) <= 1:
         return "".join(words)
     return f"{', '.join(words[:-1])} {last} {words[-1]}"

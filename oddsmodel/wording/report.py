@@ -145,6 +145,7 @@ SENTENCES: dict[str, Sentence] = {
     "added-by-program": "Added by the program, not asked for in the plan.",
     # Checks
     "checks-lead": "What was looked at, each in one line. The detail is folded beneath its line.",
+    "not-given": "Left out: {reason}",
     "checks-none": "No check of this model could be done.",
     "fold-certificate": "How exact the numbers are",
     "fold-notes": "Notes",

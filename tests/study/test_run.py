@@ -158,7 +158,7 @@ def test_aliased_columns_are_named_with_their_relation(tmp_path: Path) -> None:
 
 
 def test_one_outcome_only(tmp_path: Path) -> None:
-    outcome, results = run(tmp_path, invented(), more='keep = "died == \'yes\'"')
+    outcome, results = run(tmp_path, invented(), more="keep = \"died == 'yes'\"")
     assert outcome.not_estimated
     assert results["models"][0]["findings"][0]["code"] == "one-outcome-only"
 

@@ -71,7 +71,7 @@ def plain_labels(ticks: Sequence[float]) -> list[str]:
 def percent_labels(ticks: Sequence[float]) -> list[str]:
     """Shares as whole percentages where they are whole."""
     whole = all(abs(100 * tick - round(100 * tick)) < 1e-6 for tick in ticks)
-    return [f"{round(100 * tick)}%" if whole else numbers.percent(tick) for tick in ticks]
+    return [f"{numbers.decimal(100 * tick, 0)}%" if whole else numbers.percent(tick) for tick in ticks]
 
 
 def _whole(value: int) -> str:

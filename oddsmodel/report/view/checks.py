@@ -59,5 +59,7 @@ def _check(check: CheckResult, sheets: Sheets) -> CheckView:
         figures=sheets.figures(check.figures),
         tables=sheets.tables(check.tables),
         findings=check.findings,
-        reasons=tuple(dict.fromkeys(check.reasons.values())),
+        reasons=tuple(
+            say("not-given", reason=reason) for reason in dict.fromkeys(check.reasons.values()) if reason != check.line
+        ),
     )

@@ -119,11 +119,12 @@ def _is_ratio(cells: Sequence[Cell]) -> bool:
 
 
 def _digits(cells: Sequence[Cell]) -> int:
-    """Decimals that leave the largest number of a column three figures, and none where all are whole."""
+    """Decimals that leave the largest number of a column three figures, at least one; none where all are whole."""
     values = [abs(value) for value in _values(cells) if value != 0]
     if all(value == int(value) for value in values):
         return 0
-    return min(max(2 - math.floor(math.log10(max(values))), 0), MOST_DIGITS)
+    largest = max(values)
+    return 0 if largest >= 1000 else min(max(2 - math.floor(math.log10(largest)), 1), MOST_DIGITS)
 
 
 def _stems(table: Table, blocks: Sequence[int]) -> list[str]:
