@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import re
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import combinations
 
 from oddsmodel.disclosure.calibration import merge_groups
 from oddsmodel.disclosure.system import EVENTS, READ, RECORDS, SIDE, Counts, CountSystem, Place
-from oddsmodel.disclosure.table_counts import Sightings, TableCounts, row_text, whole_number
+from oddsmodel.disclosure.table_counts import Sighting, Sightings, TableCounts, row_text, whole_number
 from oddsmodel.results.figures import CalibrationFigure
 from oddsmodel.results.study import ModelResult, StudyResults
 from oddsmodel.results.tables import Table
@@ -78,7 +79,7 @@ def _enter_flows(found: _Gathered, study: StudyResults) -> dict[int, int]:
         number = system.add(records, place, model=model)
         same = left_out.setdefault((code, reason, records), number)
         system.merge(same, number)
-        found.sightings.wholes.setdefault(records, []).append((("flow",), number))
+        found.sightings.wholes.setdefault(records, []).append(Sighting(("flow",), number, reason))
 
     for m, model in enumerate(study.models):
         for i, one in enumerate(model.flow.left_out):
@@ -275,8 +276,22 @@ def _recognise(found: _Gathered) -> None:
                 system.merge(tables[0][0], number)
         elif signature[0] != "row" and isinstance(signature[1], int) and signature[1] >= found.threshold:
             system.tie(number for numbers in tables for number in numbers)
-    for owner, number in sightings.totals:
-        value = system.value(number)
-        for other, cell in sightings.wholes.get(value, ()) if value >= found.threshold else ():
-            if other != owner and system.root(cell) != system.root(number):
-                system.link(number, cell)
+    for total in sightings.totals:
+        value = system.value(total.number)
+        for cell in _likely(system, total, sightings.wholes.get(value, ())) if value >= found.threshold else ():
+            system.link(total.number, cell)
+
+
+def _likely(system: CountSystem, total: Sighting, wholes: Sequence[Sighting]) -> list[int]:
+    """The counts elsewhere that a sum may be: of several of its size those whose words are most like its own."""
+    likeness: dict[int, int] = {}
+    for one in wholes:
+        cell = system.root(one.number)
+        if one.owner != total.owner and cell != system.root(total.number):
+            likeness[cell] = max(likeness.get(cell, 0), len(_words(total.words) & _words(one.words)))
+    most = max(likeness.values(), default=0)
+    return [cell for cell, shared in likeness.items() if shared == most]
+
+
+def _words(text: str) -> set[str]:
+    return set(re.findall(r"\w+", text.lower()))

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, field
 
 from oddsmodel.disclosure.feasible import Bounds, Equation, components, feasible_bounds
@@ -78,8 +78,10 @@ class Suppression:
         for number in order:
             together = self._tied(number)
             if number in self.hidden and not any(map(self._small, together)):
+                before = [self._standing(one) for one in self.unprotected]
                 self.hidden -= together
-                if self._failing():
+                after = [self._standing(one) for one in self.unprotected]
+                if self._failing() or any(new < old for new, old in zip(after, before, strict=True)):
                     self.hidden |= together
 
     def _tied(self, number: int) -> set[int]:
@@ -122,13 +124,20 @@ class Suppression:
                 terms[number] = sign
         return Equation(terms, constant) if terms else None
 
-    def _own_bounds(self, number: int, reader: _Reader) -> Bounds:
-        value, most = self.counts.values[number], 10 * max(self.counts.values) + 10 * self.threshold
-        if not reader.hinted:
-            return 0, most
-        if value >= self.threshold:
-            return self.threshold, most
-        return min(value, 1), self.threshold - 1
+    def _own_bounds(self, members: frozenset[int], reader: _Reader) -> Callable[[int], Bounds]:
+        """What a reader knows of a count by itself; that a small one is not 0 where no 0 is hidden beside it."""
+        values = self.counts.values
+        most = 10 * max(values) + 10 * self.threshold
+        least = 0 if any(values[number] == 0 and number in self.hidden for number in members) else 1
+
+        def bounds(number: int) -> Bounds:
+            if not reader.hinted:
+                return 0, most
+            if values[number] >= self.threshold:
+                return self.threshold, most
+            return min(values[number], least), self.threshold - 1
+
+        return bounds
 
     def _protected(self, number: int) -> bool:
         return self._small(number) or number in self.hidden
@@ -149,7 +158,7 @@ class Suppression:
             reader = self._readers[which]
             found |= feasible_bounds(
                 equations,
-                lambda number: self._own_bounds(number, reader),
+                self._own_bounds(members, reader),
                 missing,
                 self.counts.values,
                 lambda number, bounds: self._passes(number, bounds, reader),
@@ -199,21 +208,30 @@ class Suppression:
         """The count to hide next.
 
         The first that protects a failing count of which it is a part, a whole or a sister; else the one that helps one
-        most; else the first beside one: it may help together with another, for which it will ask itself, since it is
-        not protected either. Counts further off come last.
+        most; else one from a sum that gives a failing count away by itself: it helps together with others, for which
+        it will ask itself, since it is not protected either. Counts further off come last.
         """
         beside = {number: self._choices(self._touching_counts(number)) for number in failing}
         found = self._best(beside)
         if found is not None:
             return found
-        for choices in beside.values():
-            if choices:
-                return choices[0]
+        for number in failing:
+            for relation in self._touching.get(number, ()):
+                if not any(self._is_open(other) for other in relation.terms if other != number):
+                    choices = self._choices(relation.terms)
+                    if choices:
+                        return choices[0]
         near = {
             number: self._choices(other for reader in self._readers for other in self._around(number, reader)[2])
             for number in failing
         }
-        return self._best(near)
+        found = self._best(near)
+        further = (choices[0] for choices in (*beside.values(), *near.values()) if choices)
+        return found if found is not None else next(further, None)
+
+    def _is_open(self, number: int) -> bool:
+        """Whether a reader has to work a count out at all."""
+        return number in self.hidden or not (self.counts.shown[number] or number in self.counts.totals)
 
     def _touching_counts(self, number: int) -> set[int]:
         return {other for relation in self._touching.get(number, ()) for other in relation.terms}

@@ -12,13 +12,26 @@ from oddsmodel.results.tables import Cell, Table, TableColumn
 Signature = tuple[object, ...]
 
 
+@dataclass(frozen=True, slots=True)
+class Sighting:
+    """A count, the table or flow it stands in, and the words that tell what it counts."""
+
+    owner: Place
+    number: int
+    words: str
+
+
 @dataclass(slots=True)
 class Sightings:
-    """Where the same count may stand twice: by signature and table the counts seen, and by size the whole counts."""
+    """Where the same count may stand twice.
+
+    by_signature: the counts seen under a signature, by table. wholes: counts that are not a part of another in their
+    row, by size. totals: sums of a table. Both with the words that tell what they count.
+    """
 
     by_signature: dict[Signature, dict[Place, list[int]]] = field(default_factory=dict)
-    wholes: dict[int, list[tuple[Place, int]]] = field(default_factory=dict)
-    totals: list[tuple[Place, int]] = field(default_factory=list)
+    wholes: dict[int, list[Sighting]] = field(default_factory=dict)
+    totals: list[Sighting] = field(default_factory=list)
 
     def see(self, signature: Signature, owner: Place, number: int) -> None:
         self.by_signature.setdefault(signature, {}).setdefault(owner, []).append(number)
@@ -113,10 +126,10 @@ class TableCounts:
         value = sum(self.system.value(number) for number in found)
         known = self.scalars.get(value)
         if known is None and (known := self._alone(k, value)) is not None:
-            self.sightings.totals.append((self.owner, known))
-        if known is None and len(found) > 1:
-            known = self.system.add(value, total=self._sum_is_told(column), model=self.model)
-            self.sightings.totals.append((self.owner, known))
+            self.sightings.totals.append(Sighting(self.owner, known, column.heading))
+        if known is None and len(found) > 1 and self._sum_is_told(column):
+            known = self.system.add(value, total=True, model=self.model)
+            self.sightings.totals.append(Sighting(self.owner, known, column.heading))
         if known is not None and found != [known]:
             self.system.relate(found, known)
         return known
@@ -183,7 +196,7 @@ class TableCounts:
         known = self.scalars.get(value)
         if known is None:
             known = self.system.add(value, model=self.model)
-            self.sightings.totals.append((self.owner, known))
+            self.sightings.totals.append(Sighting(self.owner, known, row_text(self.table, self.table.rows[row])))
             self._sign(known, row, None, None)
         self.system.relate(numbers, known)
 
@@ -196,7 +209,8 @@ class TableCounts:
             number, total = self.cells[row, k], totals.get((k, block))
             whole = self.cells.get((row, whole_of[k])) if k in whole_of else None
             if whole is None:
-                self.sightings.wholes.setdefault(value(number), []).append((self.owner, number))
+                words = row_text(self.table, self.table.rows[row])
+                self.sightings.wholes.setdefault(value(number), []).append(Sighting(self.owner, number, words))
             in_row = value(whole) if whole is not None else None
             self._sign(number, row, in_row, value(total) if total is not None and total != number else None)
 
@@ -208,7 +222,5 @@ class TableCounts:
             self.sightings.see(("row", words, value, in_row), self.owner, number)
             self.sightings.see(("row", words, value), self.owner, number)
         around = [total for total in (in_row, in_column) if total]
-        for total in around:
-            self.sightings.see(("part", value, total), self.owner, number)
         if len(around) == 2:
             self.sightings.see(("part of both", value, *sorted(around)), self.owner, number)

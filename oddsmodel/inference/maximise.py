@@ -103,13 +103,14 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
     if space.aliased:
         return [_aliased(likelihood, space) for _ in problems]
     runs = [_Run(space, problem, near) for problem in problems]
-    if near is None and likelihood.rows >= THIN_FROM:
+    starting = [run for run in runs if near is None and run.problem.start is None]
+    if starting and likelihood.rows >= THIN_FROM:
         thin = space.working.thinned(THIN_LEAVES)
-        trial = [_Run(space, problem, None) for problem in problems]
+        trial = [_Run(space, run.problem, None, trial=True) for run in starting]
         _newton(thin, trial)
-        for run, tried in zip(runs, trial, strict=True):
-            if tried.problem.start is None and tried.done and tried.flat is None:
-                run.place(tried.h)
+        for run, tried in zip(starting, trial, strict=True):
+            if tried.done and tried.flat is None:
+                run.place(tried.h, tried.first_value * likelihood.rows / thin.rows)
     _newton(space.working, runs)
     return [run.fit(likelihood) for run in runs]
 
@@ -117,8 +118,9 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
 class _Run:
     """One maximisation in progress, in the coordinates of its own space."""
 
-    def __init__(self, space: Coordinates, problem: Problem, near: Fit | None) -> None:
+    def __init__(self, space: Coordinates, problem: Problem, near: Fit | None, *, trial: bool = False) -> None:
         p = space.gram.shape[0]
+        self.trial = trial
         self.space, self.problem = space, problem
         self.origin = space.gamma(np.zeros(p) if problem.origin is None else np.asarray(problem.origin, float))
         if problem.basis is None:
@@ -137,7 +139,7 @@ class _Run:
             reduced = near.working_information if self.basis is None else self._both(near.working_information)
             self.h = np.asarray(np.linalg.lstsq(reduced, self._reduced(pull), rcond=None)[0], dtype=np.float64)
         self.step: Array = np.zeros(r)
-        self.value = -np.inf
+        self.value = self.first_value = self.worth = -np.inf
         self.decrement = np.inf
         self.information = np.zeros((p, p))
         self.steps = 0
@@ -152,8 +154,9 @@ class _Run:
     def _both(self, matrix: Array) -> Array:
         return matrix if self.basis is None else self.basis.T @ matrix @ self.basis
 
-    def place(self, h: Array) -> None:
-        self.h = h.copy()
+    def place(self, h: Array, worth: float) -> None:
+        """Start from h, unless its log-likelihood turns out below `worth`, about that of starting from zero."""
+        self.h, self.worth = h.copy(), worth
 
     def gamma(self, h: Array) -> Array:
         return self.origin + (h if self.basis is None else self.basis @ h)
@@ -164,6 +167,12 @@ class _Run:
 
     def take(self, value: float, score: Array, information: Array) -> None:
         """Accept or halve the step that led to the candidate; then decide the next one."""
+        if not np.isfinite(self.first_value):
+            self.first_value = value
+            if value < self.worth:
+                # rows in an order that the evenly spaced part does not represent
+                self.h, self.worth, self.first_value = np.zeros_like(self.h), -np.inf, -np.inf
+                return
         slack = 1e-12 * max(1.0, abs(self.value)) if np.isfinite(self.value) else 0.0
         if not value >= self.value - slack:
             self.step = self.step / 2.0
@@ -187,8 +196,8 @@ class _Run:
 
     def _separated_along(self, flat: Array | None) -> Array | None:
         """A direction of separation within this space, sought only where a flat direction is the symptom."""
-        if flat is None:
-            return None
+        if flat is None or self.trial:
+            return flat
         X, events, trials = self.space.working.rows_apart()
         verdict = separation(X if self.basis is None else X @ self.basis, events, trials)
         return verdict.direction if verdict.separated else None

@@ -41,7 +41,6 @@ def run_plan(
     study, _ = answer(checked, progress)
     plan = checked.file.plan
     disclosed = disclose(study, audience=plan.report.audience, hide_counts_below=plan.report.hide_counts_below)
-    progress.stage("drawing")
     files = {
         "report.html": render_report(disclosed, progress),
         **{f"tables/{name}": text for name, text in csv_files(disclosed).items()},

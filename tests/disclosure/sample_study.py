@@ -1,8 +1,9 @@
 """An invented study of smoking and readmission, made by hand from a small joint table, with a key to every count.
 
-The joint table holds numbers of records by smoking, sex, age band (each also "not recorded") and outcome. Every count
-in the study is the sum over some of its cells; `Sample.shown_counts` says which, so that an attacker in the tests can
-write each shown number as an equation about the joint table without knowing how the package thinks of it.
+The joint table holds numbers of records by smoking, sex, age band (each also "not recorded") and outcome, and apart
+from that the complete records by band of fitted risk and outcome. Every count in the study is the sum over some of
+these cells; `Sample.counts` says which, so that an attacker in the tests can write each shown number as an equation
+about them without knowing how the package thinks of it.
 """
 
 from __future__ import annotations
@@ -53,6 +54,9 @@ AGE = ("under 40", "40 to 64", "65 and over")
 SHAPE = (4, 3, 4, 2)
 """Smoking, sex, age band: the last place of each is "not recorded"; outcome: no, yes."""
 
+BANDS = 18
+CELLS = 96 + 2 * BANDS
+
 
 @dataclass
 class Sample:
@@ -67,7 +71,7 @@ class Sample:
 
 
 def joint_table(seed: int, scale: float = 40.0) -> NDArray[np.int64]:
-    """Invented numbers of records: some cells crowded, some nearly empty."""
+    """Invented numbers of records (132,): the joint table, then the bands; some cells crowded, some nearly empty."""
     random = np.random.default_rng(seed)
     share = np.einsum(
         "i,j,k->ijk",
@@ -78,13 +82,25 @@ def joint_table(seed: int, scale: float = 40.0) -> NDArray[np.int64]:
     risk = np.array([0.08, 0.12, 0.2, 0.1])[:, None, None] * np.array([0.5, 1.0, 1.8, 1.0])[None, None, :]
     risk = np.broadcast_to(risk, share.shape)
     mean = scale * 20 * np.stack([share * (1 - risk), share * risk], axis=-1)
-    return random.poisson(mean)
+    joint = random.poisson(mean)
+    rising = np.linspace(0.3, 1.7, BANDS)
+    complete = joint[:3, :2, :3].sum(axis=(0, 1, 2))
+    shares = [np.full(BANDS, 1 / BANDS), rising / rising.sum()]
+    bands = [random.multinomial(number, share) for number, share in zip(complete, shares, strict=True)]
+    return np.concatenate([joint.ravel(), np.stack(bands, axis=1).ravel()])
 
 
 def _index(axis: int, place: int | slice) -> Mask:
     mask = np.zeros(SHAPE, dtype=bool)
     mask[(slice(None),) * axis + (place,)] = True
-    return mask
+    return np.concatenate([mask.ravel(), np.zeros(2 * BANDS, dtype=bool)])
+
+
+def bands(start: int, stop: int, outcome: slice = slice(None)) -> Mask:
+    """Complete records in bands of fitted risk, with either outcome or one."""
+    mask = np.zeros((BANDS, 2), dtype=bool)
+    mask[start:stop, outcome] = True
+    return np.concatenate([np.zeros(96, dtype=bool), mask.ravel()])
 
 
 def smoking(place: int) -> Mask:
@@ -100,6 +116,7 @@ def age(place: int) -> Mask:
 
 
 EVENT = _index(3, 1)
+EVERYONE = _index(3, slice(None))
 HAS_SMOKING = _index(0, slice(0, 3))
 COMPLETE = HAS_SMOKING & _index(1, slice(0, 2)) & _index(2, slice(0, 3))
 
@@ -127,7 +144,7 @@ def sample_study(joint: NDArray[np.int64], *, other_records: bool = True) -> Sam
         event_share=making.true(COMPLETE & EVENT) / making.true(COMPLETE),
         not_measured=("frailty",),
         columns=(AdjustmentColumn("sex", "Sex", "before exposure", "differs by ward"),),
-        records=RecordsResult("records.csv", "0" * 64, making.true(np.ones(SHAPE, bool)), models[0].flow.left_out),
+        records=RecordsResult("records.csv", "0" * 64, making.true(EVERYONE), models[0].flow.left_out),
         models=models,
         characteristics=making.characteristics(),
         findings=(
@@ -137,7 +154,7 @@ def sample_study(joint: NDArray[np.int64], *, other_records: bool = True) -> Sam
         comparison=making.comparison(models),
         comparison_figure=EstimatesFigure("models", "Odds ratios under each model", "", _marks(models[0])),
     )
-    making.count("records read", lambda s: s.records.read, np.ones(SHAPE, bool))
+    making.count("records read", lambda s: s.records.read, EVERYONE)
     return Sample(joint, study, making.counts)
 
 
@@ -227,18 +244,16 @@ class _Making:
         return found
 
     def crude(self, analysed: Mask, place: int) -> CrudeEstimate | None:
-        numbers = [
-            self.true(analysed & smoking(k) & outcome) for k in (place, 0) for outcome in (EVENT, ~EVENT)
-        ]
+        numbers = [self.true(analysed & smoking(k) & outcome) for k in (place, 0) for outcome in (EVENT, ~EVENT)]
         found = crude_odds_ratio(*numbers)
         return found and CrudeEstimate(self.true(analysed), found.odds_ratio, found.wald, found.profile)
 
     def flow(self, m: int, analysed: Mask) -> Flow:
-        reasons = {"smoking not recorded": ~HAS_SMOKING}
+        reasons = {"smoking not recorded": EVERYONE & ~HAS_SMOKING}
         if (analysed == COMPLETE).all():
             reasons["sex not recorded"] = HAS_SMOKING & sex(2)
             reasons["age not recorded"] = HAS_SMOKING & ~sex(2) & age(3)
-        everyone = np.ones(SHAPE, bool)
+        everyone = EVERYONE
         self.count(f"flow {m} read", lambda s: s.models[m].flow.read, everyone)
         self.count(f"flow {m} analysed", lambda s: s.models[m].flow.analysed, analysed)
 
@@ -249,9 +264,7 @@ class _Making:
             self.count(f"flow {m} {reason}", left_out(reason), mask)
         return Flow(
             self.true(everyone),
-            tuple(
-                Exclusion(reason.replace(" ", "-"), reason, self.true(mask)) for reason, mask in reasons.items()
-            ),
+            tuple(Exclusion(reason.replace(" ", "-"), reason, self.true(mask)) for reason, mask in reasons.items()),
             self.true(analysed),
             self.true(analysed & EVENT),
         )
@@ -340,10 +353,6 @@ class _Making:
 
     def groups(self, m: int, analysed: Mask) -> tuple[CheckResult, ...]:
         """Two ways to cut the order of fitted risk: a table of nine groups and a calibration figure of six."""
-        cells = [
-            analysed & smoking(i) & sex(j) & age(k)
-            for _, i, j, k in sorted((i + 1.5 * k + 0.2 * j, i, j, k) for i in range(3) for j in range(2) for k in range(3))
-        ]
         columns = (
             TableColumn("group", "Group"),
             TableColumn("records", "Records", "count", sums_known=True),
@@ -355,27 +364,55 @@ class _Making:
             return s.models[m].checks[1].tables[0]
 
         rows: list[tuple[Cell, ...]] = []
-        for mask in _cut(cells, 9, self):
-            parts = (mask, mask & EVENT)
+        for cut in _cuts(self, 9):
+            parts = (bands(*cut), bands(*cut, slice(1, 2)))
             counts = [self.cell("groups", table, len(rows), k + 1, part) for k, part in enumerate(parts)]
             rows.append((str(len(rows) + 1), *counts, counts[1] + 0.4))
-        figure_cells = _cut(cells, 6, self)
+        cuts = _cuts(self, 6)
         marks = []
-        for number, mask in enumerate(figure_cells):
-            records, events = self.true(mask), self.true(mask & EVENT)
+        for number, cut in enumerate(cuts):
+            records, events = self.true(bands(*cut)), self.true(bands(*cut, slice(1, 2)))
             marks.append(CalibrationGroup((number + 1) / 20, events / records, 0.0, 1.0, records, events))
-        self.calibration_groups(m, figure_cells)
+        self.calibration_groups(m, cuts)
         n = self.true(analysed)
         figures = (
-            CalibrationFigure("calibration", "Calibration", "Groups.", tuple(marks), ((0.001, 0.0), (0.1, 0.1), (0.9, 1.0))),
-            StepFigure("roc", "Curve", "The curve.", _steps(self.true(analysed & EVENT), self.true(analysed & ~EVENT)), 0.7),
-            HistogramFigure("overlap", "Overlap", "", "Risk", (0.0, 0.2, 0.4, 0.6, 0.8, 1.0),
-                            (("current", (40, 20, 9, 3, 0)), ("never", (200, 100, 7, 2, 1)))),
-            CurveFigure("linearity-1", "Age", "", "Age (years)", tuple(map(float, range(18, 102))),
-                        *((tuple(1.0 + k / 100 for k in range(84)),) * 4), 50.0,
-                        tuple((18.0 + 7 * k, 25.0 + 7 * k, c) for k, c in enumerate((3, 40, 60, 70, 2, 60, 50, 30, 9, 4, 2, 1)))),
-            ScatterFigure("influence", "Influence", "Every pattern a point.", "Risk", "Fall", tuple(k / 40 for k in range(40)),
-                          tuple(float((k * 7) % 13) for k in range(40)), (1.0,) * 40, (*(1,) * 30, *(6,) * 10)),
+            CalibrationFigure(
+                "calibration", "Calibration", "Groups.", tuple(marks), ((0.001, 0.0), (0.1, 0.1), (0.9, 1.0))
+            ),
+            StepFigure(
+                "roc", "Curve", "The curve.", _steps(self.true(analysed & EVENT), self.true(analysed & ~EVENT)), 0.7
+            ),
+            HistogramFigure(
+                "overlap",
+                "Overlap",
+                "",
+                "Risk",
+                (0.0, 0.2, 0.4, 0.6, 0.8, 1.0),
+                (("current", (40, 20, 9, 3, 0)), ("never", (200, 100, 7, 2, 1))),
+            ),
+            CurveFigure(
+                "linearity-1",
+                "Age",
+                "",
+                "Age (years)",
+                tuple(map(float, range(18, 102))),
+                *((tuple(1.0 + k / 100 for k in range(84)),) * 4),
+                50.0,
+                tuple(
+                    (18.0 + 7 * k, 25.0 + 7 * k, c) for k, c in enumerate((3, 40, 60, 70, 2, 60, 50, 30, 9, 4, 2, 1))
+                ),
+            ),
+            ScatterFigure(
+                "influence",
+                "Influence",
+                "Every pattern a point.",
+                "Risk",
+                "Fall",
+                tuple(k / 40 for k in range(40)),
+                tuple(float((k * 7) % 13) for k in range(40)),
+                (1.0,) * 40,
+                (*(1,) * 30, *(6,) * 10),
+            ),
         )
         influence = Table(
             "influential_patterns",
@@ -389,15 +426,22 @@ class _Making:
         )
         return (
             CheckResult(
-                "hosmer_lemeshow", "fit", "Groups", "fine", "Fits.", statistics={"groups": len(rows), "statistic": 7.1, "df": 7, "p": 0.42},
+                "hosmer_lemeshow",
+                "fit",
+                "Groups",
+                "fine",
+                "Fits.",
+                statistics={"groups": len(rows), "statistic": 7.1, "df": 7, "p": 0.42},
                 tables=(Table("groups_of_fitted_probability", "Observed and expected", columns, tuple(rows)),),
             ),
-            CheckResult("calibration", "fit", "Calibration", "fine", f"On {n} records.", figures=figures, tables=(influence,)),
+            CheckResult(
+                "calibration", "fit", "Calibration", "fine", f"On {n} records.", figures=figures, tables=(influence,)
+            ),
         )
 
-    def calibration_groups(self, m: int, cells: list[Mask]) -> None:
+    def calibration_groups(self, m: int, cuts: list[tuple[int, int]]) -> None:
         """Each group drawn is some of the original ones in a row: known by the records up to its end."""
-        ends = np.cumsum([self.true(mask) for mask in cells]).tolist()
+        ends = np.cumsum([self.true(bands(*cut)) for cut in cuts]).tolist()
 
         def drawn(s: StudyResults, end: int, events: bool) -> object:
             groups = next(f for f in s.models[m].checks[2].figures if isinstance(f, CalibrationFigure)).groups
@@ -407,14 +451,16 @@ class _Making:
             return sum(g.events if events else g.records for g in groups[: before.index(end) + 1])
 
         for k, end in enumerate(ends):
-            below = np.logical_or.reduce(cells[: k + 1])
-            self.count(f"calibration {k}", lambda s, end=end: drawn(s, end, False), below)
-            self.count(f"calibration {k} events", lambda s, end=end: drawn(s, end, True), below & EVENT)
+            below = (0, cuts[k][1])
+            self.count(f"calibration {k}", lambda s, end=end: drawn(s, end, False), bands(*below))
+            self.count(f"calibration {k} events", lambda s, end=end: drawn(s, end, True), bands(*below, slice(1, 2)))
 
     def characteristics(self) -> Table:
         columns: list[TableColumn] = [TableColumn("label", "Characteristic")]
         for k, level in enumerate(SMOKING):
-            columns.append(TableColumn(f"group_{k + 1}_records", f"Smoking: {level}, records", "count", sums_known=True))
+            columns.append(
+                TableColumn(f"group_{k + 1}_records", f"Smoking: {level}, records", "count", sums_known=True)
+            )
             columns.append(TableColumn(f"group_{k + 1}", f"{level}, summary", hidden_with=(f"group_{k + 1}_records",)))
         columns.append(TableColumn("difference", "Standardised difference", "number", hidden_with_block=True))
         rows: list[tuple[Cell, ...]] = []
@@ -437,7 +483,7 @@ class _Making:
         for block, (label, axis, levels) in enumerate((("Sex", 1, SEX), ("Age", 2, AGE))):
             for place, level in enumerate(levels):
                 line(f"{label}: {level}", COMPLETE & _index(axis, place), 2 * block + 1, COMPLETE)
-            line(f"{label}: not recorded", _index(axis, len(levels)), 2 * block + 2, np.ones(SHAPE, bool))
+            line(f"{label}: not recorded", _index(axis, len(levels)), 2 * block + 2, EVERYONE)
         return Table("characteristics", "Who they were", tuple(columns), tuple(rows), "", tuple(blocks))
 
     def comparison(self, models: tuple[ModelResult, ...]) -> Table:
@@ -466,11 +512,11 @@ class _Making:
         return Table("models", "The models side by side", columns, tuple(rows), "", (0, 0, 1, 1))
 
 
-def _cut(cells: list[Mask], number: int, making: _Making) -> list[Mask]:
-    """Groups of cells in a row, none of them empty."""
-    size = len(cells) // number
-    groups = [np.logical_or.reduce(cells[k : k + size]) for k in range(0, len(cells), size)]
-    return [mask for mask in groups if making.true(mask)]
+def _cuts(making: _Making, number: int) -> list[tuple[int, int]]:
+    """Groups of bands in a row, none of them empty."""
+    size = BANDS // number
+    cuts = [(k, k + size) for k in range(0, BANDS, size)]
+    return [cut for cut in cuts if making.true(bands(*cut))]
 
 
 def _steps(events: int, others: int) -> tuple[tuple[float, float], ...]:

@@ -156,3 +156,15 @@ def test_tails_of_the_outcome_do_not_overshoot() -> None:
     truth, _, _ = exact_fit(X, y, np.ones(12), fit.coefficients)
     assert fit.status == "converged"
     assert fit.coefficients == pytest.approx([float(b) for b in truth], abs=1e-12)
+
+
+def test_sorted_large_data_do_not_start_astray() -> None:
+    # the evenly spaced leaves of sorted rows may hold one outcome each, and then point nowhere
+    rng = np.random.default_rng(9)
+    x = np.sort(rng.normal(size=200_000))
+    y = (rng.random(200_000) < 1 / (1 + np.exp(-8 * x))).astype(float)
+    X = np.column_stack([np.ones(200_000), x, rng.random(200_000) < 0.5]).astype(float)
+    fit = maximise(BinomialLikelihood(X, y))
+    reference = sm.Logit(y, X).fit(disp=0, tol=1e-12)
+    assert fit.status == "converged"
+    assert fit.coefficients == pytest.approx(reference.params, abs=1e-8)
