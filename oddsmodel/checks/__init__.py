@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from importlib import import_module
-from typing import TYPE_CHECKING, NamedTuple, get_args
+from typing import TYPE_CHECKING, get_args
 
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.results.study import CheckResult, Family, Flow, Verdict
@@ -12,7 +12,7 @@ from oddsmodel.results.study import CheckResult, Family, Flow, Verdict
 if TYPE_CHECKING:
     from oddsmodel.model.fitted import FittedModel
 
-__all__ = ["SummaryLine", "run_checks", "summary_lines"]
+__all__ = ["run_checks", "speaking"]
 
 FAMILIES: tuple[Family, ...] = get_args(Family)
 """The seven families, in the order in which they are read."""
@@ -37,14 +37,6 @@ WORST: tuple[Verdict, ...] = ("caution", "look", "fine", "not applicable")
 SILENT = Silent()
 
 
-class SummaryLine(NamedTuple):
-    """The one sentence of a family."""
-
-    family: Family
-    verdict: Verdict
-    line: str
-
-
 def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | None = None) -> tuple[CheckResult, ...]:
     """All checks of a fit, by family. flow: the model's accounting, for the share of records left out."""
     from oddsmodel.checks import counting
@@ -58,15 +50,11 @@ def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | Non
     return tuple(sorted(results, key=lambda result: FAMILIES.index(result.family)))
 
 
-def summary_lines(checks: Iterable[CheckResult]) -> tuple[SummaryLine, ...]:
-    """At most seven lines, one a family: that of the worst verdict, the first of equals. A check may have none."""
+def speaking(checks: Iterable[CheckResult]) -> tuple[CheckResult, ...]:
+    """The checks whose lines stand in the report: one a family, the worst verdict, the first of equals."""
     spoken: dict[Family, CheckResult] = {}
     for check in checks:
-        if not check.line:
-            continue
         before = spoken.get(check.family)
-        if before is None or WORST.index(check.verdict) < WORST.index(before.verdict):
+        if check.line and (before is None or WORST.index(check.verdict) < WORST.index(before.verdict)):
             spoken[check.family] = check
-    return tuple(
-        SummaryLine(family, spoken[family].verdict, spoken[family].line) for family in FAMILIES if family in spoken
-    )
+    return tuple(spoken[family] for family in FAMILIES if family in spoken)

@@ -5,11 +5,11 @@ from __future__ import annotations
 import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from itertools import combinations
+from itertools import accumulate, combinations, pairwise
 
 from oddsmodel.disclosure.calibration import merge_groups
 from oddsmodel.disclosure.system import EVENTS, READ, RECORDS, SIDE, Counts, CountSystem, Place
-from oddsmodel.disclosure.table_counts import Sighting, Sightings, TableCounts, row_text, whole_number
+from oddsmodel.disclosure.table_counts import Sighting, Sightings, TableCounts, count_cells, row_text, whole_number
 from oddsmodel.results.figures import CalibrationFigure
 from oddsmodel.results.study import ModelResult, StudyResults
 from oddsmodel.results.tables import Table
@@ -93,14 +93,20 @@ def closed_models(study: StudyResults, threshold: int) -> frozenset[int]:
     """Models of whose counts, but for their totals, nothing may be shown.
 
     These are the later ones of two models whose records seem to hold one another (no count of one is smaller, or none
-    is larger, than the same count of the other) and that differ in some level by a small count.
+    is larger, than the same count of the other). What lies between them are records left out by one of them, so that
+    this holds only where a difference, a number of records left out or a characteristic is a small count.
     """
     keyed = [_keyed(model) for model in study.models]
+    described = study.characteristics
+    parts = [described.rows[r][k] for r, k in count_cells(described)] if described is not None else []
+    parts += [one.records for model in study.models for one in model.flow.left_out]
+    any_small = any(isinstance(part, int) and 0 < part < threshold for part in parts)
     closed: set[int] = set()
     for (i, first), (j, second) in combinations(enumerate(keyed), 2):
         differences = [first[key] - second[key] for key in first.keys() & second.keys()]
         nested = min(differences, default=0) >= 0 or max(differences, default=0) <= 0
-        if i not in closed and nested and any(0 < abs(difference) < threshold for difference in differences):
+        small = any(0 < abs(difference) < threshold for difference in differences)
+        if i not in closed and nested and (small or (any_small and any(differences))):
             closed.add(j)
     return frozenset(closed)
 
@@ -229,39 +235,35 @@ def _enter_calibration(found: _Gathered, figure: CalibrationFigure, model: int) 
 
 
 def _enter_ordered(found: _Gathered) -> None:
-    """Two ways to cut the same order: between cuts that both have, both sums are the same."""
+    """Several ways to cut the same order: what lies between two neighbouring cuts of any is a part of a group of each.
+
+    Cuts of the same order rise together in records and events; others have nothing to do with one another.
+    """
     system = found.system
-    for one, other in combinations(found.ordered, 2):
-        if one.model != other.model:
+    for model in {groups.model for groups in found.ordered}:
+        own = [groups for groups in found.ordered if groups.model == model]
+        cuts = [_cuts(system, groups) for groups in own]
+        every = sorted({cut for one in cuts for cut in one})
+        rising = all(before[1] <= after[1] and before[0] < after[0] for before, after in pairwise(every))
+        if len(own) < 2 or not rising or len({one[-1] for one in cuts}) > 1:
             continue
-        cuts = [_cuts(system, groups) for groups in (one, other)]
-        common = sorted(cuts[0].keys() & cuts[1].keys())
-        if not common or common[-1] != max(cuts[0]) or common[-1] != max(cuts[1]):
-            continue
-        starts = [0, 0]
-        for cut in common:
-            ends = [cuts[0][cut], cuts[1][cut]]
-            for kind in _PAIR:
-                parts = [
-                    getattr(groups, kind)[start:end]
-                    for groups, start, end in zip((one, other), starts, ends, strict=True)
-                ]
-                sums = {sum(map(system.value, part)) for part in parts}
-                if len(sums) == 1:
-                    together = system.add(sums.pop())
-                    for part in parts:
-                        system.relate(part, together)
-            starts = ends
+        between: list[tuple[int, ...]] = []
+        for before, after in pairwise([(0, 0), *every]):
+            records, events = after[0] - before[0], after[1] - before[1]
+            parts = tuple(system.add(number) for number in (records, events, records - events))
+            system.relate(parts[1:], parts[0])
+            between.append(parts)
+        for groups, ends in zip(own, cuts, strict=True):
+            places = [0, *(every.index(cut) + 1 for cut in ends)]
+            for (start, stop), records, events in zip(pairwise(places), groups.records, groups.events, strict=True):
+                system.relate([parts[0] for parts in between[start:stop]], records)
+                system.relate([parts[1] for parts in between[start:stop]], events)
 
 
-def _cuts(system: CountSystem, groups: _Ordered) -> dict[tuple[int, int], int]:
-    """Records and events up to each cut, with the number of groups before it."""
-    records = events = 0
-    found = {}
-    for k, (one, other) in enumerate(zip(groups.records, groups.events, strict=True)):
-        records, events = records + system.value(one), events + system.value(other)
-        found[records, events] = k + 1
-    return found
+def _cuts(system: CountSystem, groups: _Ordered) -> list[tuple[int, int]]:
+    """Records and events up to each cut."""
+    records = accumulate(map(system.value, groups.records))
+    return list(zip(records, accumulate(map(system.value, groups.events)), strict=True))
 
 
 def _recognise(found: _Gathered) -> None:

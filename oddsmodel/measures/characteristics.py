@@ -148,7 +148,9 @@ def _number_line(
     summaries: list[str | None] = [None] * size
     for k in filled:
         if skewed:
-            low, middle, high = (decimal(float(q), digits) for q in quartiles(x[g == k], w[g == k]))
+            three = quartiles(x[g == k], w[g == k])
+            shown = 0 if (three == np.rint(three)).all() else digits
+            low, middle, high = (decimal(float(q), shown) for q in three)
             summaries[k] = f"{middle} ({low} to {high})"
         else:
             spread = f" ({decimal(math.sqrt(variance[k]), digits)})" if number[k] > 1 else ""

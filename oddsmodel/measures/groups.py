@@ -46,9 +46,8 @@ def groups_of_study(
         return Groups(("Cases", "Controls"), np.where(event, 0, 1).astype(np.int64), say("groups-case-status"))
     values = frame[exposure.name]
     if exposure.levels:
-        labels = tuple(f"{exposure.label}: {level}" for level in exposure.levels)
         described = say("groups-levels", label=exposure.label)
-        return Groups(labels, level_codes(values, exposure.levels), described, exposure.name)
+        return Groups(exposure.levels, level_codes(values, exposure.levels), described, exposure.name)
     return _thirds(exposure, values.to_numpy(dtype=np.float64), counts)
 
 
@@ -76,7 +75,7 @@ def _thirds(column: Column, values: Array, counts: Array | None) -> Groups:
     edges = [plain_number(float(cut)) for cut in cuts]
     between = [f"above {low}, up to {high}" for low, high in pairwise(edges)]
     spans = [f"up to {edges[0]}", *between, f"above {edges[-1]}"]
-    labels = tuple(f"{column.label}: {span}{unit}" for span in spans)
+    labels = tuple(f"{span}{unit}" for span in spans)
     return Groups(labels, codes, say("groups-thirds", label=column.label, groups=len(labels)), column.name)
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -78,6 +79,10 @@ def _coded(table: RawTable, plan: StudyPlan) -> Records:
     for name in names:
         section = plan.columns.get(name)
         coded[name] = code_column(_raw_values(table, name, section, plan), section, _use(name, used, plan))
+    outcome = coded.get(plan.outcome.column)
+    if outcome is not None and plan.outcome.label is not None:
+        labelled = replace(outcome.column, label=plan.outcome.label)
+        coded[plan.outcome.column] = replace(outcome, column=labelled)
     for column in coded.values():
         faults.extend(column.faults)
     counts, count_faults = _counts(table, plan, coded)

@@ -22,7 +22,7 @@ from oddsmodel.checks import (
     residual_tests,
     roc,
     run_checks,
-    summary_lines,
+    speaking,
 )
 from oddsmodel.results.study import CheckResult, Exclusion, Flow
 
@@ -60,7 +60,7 @@ def test_every_check_of_a_real_model() -> None:
     names = [check.name for check in checks]
     assert len(set(names)) == len(names) == heard.steps == heard.stages[0][1]
     assert {"hosmer_lemeshow", "auc", "counting"} <= set(names)
-    lines = summary_lines(checks)
+    lines = speaking(checks)
     assert len(lines) <= 7
     assert len({one.family for one in lines}) == len(lines)
     for check in checks:
@@ -75,7 +75,7 @@ def test_every_check_of_a_real_model() -> None:
 
 
 def test_the_worst_verdict_speaks_for_its_family() -> None:
-    lines = summary_lines(
+    lines = speaking(
         [
             line("fit", "not applicable", "first"),
             line("fit", "fine", ""),
@@ -89,7 +89,7 @@ def test_the_worst_verdict_speaks_for_its_family() -> None:
         ("counting", "fine", "fifth"),
         ("fit", "look", "third"),
     ]
-    assert summary_lines([]) == ()
+    assert speaking([]) == ()
 
 
 @pytest.mark.parametrize(

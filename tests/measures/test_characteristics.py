@@ -128,7 +128,7 @@ def test_thirds_of_a_number() -> None:
     values = np.arange(1.0, 10.0)
     column = Column("dose", "number", "Dose", units="mg")
     groups = groups_of_study("cohort", column, pd.DataFrame({"dose": values}), np.zeros(9, dtype=bool))
-    assert groups.labels == ("Dose: up to 3 mg", "Dose: above 3, up to 6 mg", "Dose: above 6 mg")
+    assert groups.labels == ("up to 3 mg", "above 3, up to 6 mg", "above 6 mg")
     assert groups.codes.tolist() == [0, 0, 0, 1, 1, 1, 2, 2, 2]
     # With true frequencies, half of the records at the least value: two groups.
     counts = np.array([9.0, *[1.0] * 8])

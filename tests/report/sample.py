@@ -300,10 +300,20 @@ CHARACTERISTICS = Table(
 )
 
 
+FAMILIES = {
+    "events_per_parameter": "counting",
+    "sparse_cells": "sparsity",
+    "overlap": "sparsity",
+    "linearity": "functional form",
+    "influence": "influence",
+    "collinearity": "collinearity",
+}
+
+
 def check(name: str, verdict: str, line: str, *figures: Figure, title: str = "", **more: object) -> CheckResult:
     return CheckResult(
         name=name,
-        family="fit",
+        family=FAMILIES.get(name, "fit"),  # type: ignore[arg-type]
         title=title or name.replace("_", " ").capitalize(),
         verdict=verdict,  # type: ignore[arg-type]
         line=line,

@@ -55,12 +55,13 @@ def test_rows_of_a_block_share_a_receding_stem(sample: ModuleType) -> None:
     assert [row.starts_block for row in view.rows] == [False, True, True, False, True, False, True, True]
 
 
-def test_the_gravest_checks_keep_their_lines(sample: ModuleType) -> None:
-    many = tuple(sample.check(f"fine {k}", "fine", "All is well.") for k in range(9))
+def test_the_gravest_check_of_a_family_speaks_for_it(sample: ModuleType) -> None:
+    many = tuple(sample.check(f"fine {k}", "fine", "All is well.") for k in range(3))
     late = sample.check("late", "caution", "Something is wrong.")
-    view = checks(replace(sample.model(), checks=(*many, late)), sheets())
-    assert [one.title for one in view.lines] == [f"Fine {k}" for k in range(6)] + ["Late"]
-    assert [one.title for one in view.further] == ["Fine 6", "Fine 7", "Fine 8"]
+    other = sample.check("influence", "fine", "Nobody stands out.")
+    view = checks(replace(sample.model(), checks=(*many, late, other)), sheets())
+    assert [one.title for one in view.lines] == ["Late", "Influence"]
+    assert [one.title for one in view.further] == ["Fine 0", "Fine 1", "Fine 2"]
 
 
 def test_the_certificate_is_one_sentence() -> None:

@@ -4,14 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from oddsmodel.checks import speaking
 from oddsmodel.findings import Finding
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.study import CheckResult, ModelResult
 from oddsmodel.wording import say
-
-MOST_LINES = 7
-_GRAVEST_FIRST = ("caution", "look", "fine", "not applicable")
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,14 +35,12 @@ class ChecksView:
 
 
 def checks(model: ModelResult, sheets: Sheets) -> ChecksView:
-    """The checks of one model, in their order; where more than seven have a line, the gravest seven keep theirs."""
-    spoken = [place for place, check in enumerate(model.checks) if check.line and check.verdict != "not applicable"]
-    gravest = sorted(spoken, key=lambda place: _GRAVEST_FIRST.index(model.checks[place].verdict))
-    kept = set(gravest[:MOST_LINES])
+    """The checks of one model, in their order; one of each of the seven families speaks for it."""
+    kept = [check.name for check in speaking(model.checks)]
     certificate = model.certificate
     return ChecksView(
-        lines=tuple(_check(check, sheets) for place, check in enumerate(model.checks) if place in kept),
-        further=tuple(_check(check, sheets) for place, check in enumerate(model.checks) if place not in kept),
+        lines=tuple(_check(check, sheets) for check in model.checks if check.name in kept),
+        further=tuple(_check(check, sheets) for check in model.checks if check.name not in kept),
         certificate=say("certificate", digits=certificate.digits, condition=certificate.condition_number),
     )
 
