@@ -79,7 +79,7 @@ def check(model: FittedModel) -> CheckResult:
         verdict="look" if looks else "fine",
         line=say("calibration-line", looks=looks, level=model.level, **facts),
         statistics=facts,
-        findings=(finding("caution", "calibration-departs", level=model.level, **facts),) if looks else (),
+        findings=(finding("note", "calibration-departs", level=model.level, **facts),) if looks else (),
         figures=(_figure(ordered, groups, lower, upper, title),),
         explanation=explanation,
     )

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from oddsmodel.checks.severity import severity
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Flow, Verdict
 from oddsmodel.wording import finding, say
@@ -30,7 +31,7 @@ def check(model: FittedModel, flow: Flow | None = None) -> CheckResult:
         line=say("counting-line", analysed_records=model.records, share=share),
         statistics={"share_left_out": share},
         reasons={"share_left_out": reason} if share is None else {},
-        findings=() if verdict == "fine" else (finding("caution", "counting-many-left-out", share=share),),
+        findings=() if verdict == "fine" else (finding(severity(verdict), "counting-many-left-out", share=share),),
         explanation=say("counting-explanation"),
     )
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from oddsmodel.checks.severity import severity
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.wording import finding, say
@@ -31,7 +32,7 @@ def check(model: FittedModel) -> CheckResult:
         line=line,
         statistics={"events_per_parameter": ratio, "parameters": parameters},
         reasons={} if parameters else {"events_per_parameter": line},
-        findings=(finding("caution", code, **facts),) if verdict in ("look", "caution") else (),
+        findings=(finding(severity(verdict), code, **facts),) if verdict in ("look", "caution") else (),
         explanation=say("events-per-parameter-explanation"),
     )
 

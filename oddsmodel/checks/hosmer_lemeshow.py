@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from oddsmodel.checks.probability_groups import Array, OrderedRecords, group_table, grouped, ordered_records
+from oddsmodel.checks.severity import severity
 from oddsmodel.inference.tests import chi_square_p
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
@@ -71,7 +72,7 @@ def check(model: FittedModel) -> CheckResult:
         verdict=verdict,
         line=say("hosmer-lemeshow-line", **facts),
         statistics={"groups": formed, "statistic": statistic, "df": df, "p": p},
-        findings=() if verdict == "fine" else (finding("caution", "hosmer-lemeshow-misfit", **facts),),
+        findings=() if verdict == "fine" else (finding(severity(verdict), "hosmer-lemeshow-misfit", **facts),),
         tables=(table,),
         explanation=explanation,
     )

@@ -11,6 +11,7 @@ from oddsmodel.checks.deletion import Deletion, without
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
 from oddsmodel.checks.influence_views import deletions_table, patterns_table, scatter
 from oddsmodel.checks.one_step import one_step, ranked
+from oddsmodel.checks.severity import severity
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.wording import finding, say
@@ -83,7 +84,7 @@ def check(model: FittedModel) -> CheckResult:
         line=say(code, **facts),
         statistics=statistics,
         reasons={name: missing for name, value in statistics.items() if value is None},
-        findings=() if spoken.verdict == "fine" else (finding("caution", code, **facts),),
+        findings=() if spoken.verdict == "fine" else (finding(severity(spoken.verdict), code, **facts),),
         tables=(
             deletions_table(model, [one.deletion for one in judged]),
             patterns_table(model, steps, top, targets),

@@ -7,6 +7,7 @@ from typing import NamedTuple
 import numpy as np
 
 from oddsmodel.checks.residuals import PatternResiduals, pattern_residuals
+from oddsmodel.checks.severity import severity
 from oddsmodel.inference.tests import chi_square_p
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
@@ -82,7 +83,7 @@ def check(model: FittedModel) -> CheckResult:
         verdict=verdict,
         line=say("residual-tests-line", **facts),
         statistics={**statistics, "pearson_p": pearson_p, "deviance_p": deviance_p},
-        findings=() if verdict == "fine" else (finding("caution", "residual-tests-misfit", **facts),),
+        findings=() if verdict == "fine" else (finding(severity(verdict), "residual-tests-misfit", **facts),),
         tables=(_table(tests, pearson_p, deviance_p),),
         explanation=explanation,
     )

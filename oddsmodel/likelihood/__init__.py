@@ -2,5 +2,6 @@
 
 from oddsmodel.likelihood.base import Evaluation, Likelihood
 from oddsmodel.likelihood.binomial import BinomialLikelihood
+from oddsmodel.likelihood.penalised import JeffreysPenalisedLikelihood
 
-__all__ = ["BinomialLikelihood", "Evaluation", "Likelihood"]
+__all__ = ["BinomialLikelihood", "Evaluation", "JeffreysPenalisedLikelihood", "Likelihood"]

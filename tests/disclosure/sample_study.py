@@ -179,7 +179,13 @@ class _Making:
         self.counts.append((name, shown, mask))
 
     def cell(self, name: str, table: Callable[[StudyResults], Table], row: int, column: int, mask: Mask) -> int:
-        self.count(f"{name}, row {row}, column {column}", lambda s: table(s).rows[row][column], mask)
+        def shown(s: StudyResults) -> object:
+            try:
+                return table(s).rows[row][column]
+            except IndexError:  # the whole check is withheld
+                return None
+
+        self.count(f"{name}, row {row}, column {column}", shown, mask)
         return self.true(mask)
 
     def model(self, m: int, name: str, analysed: Mask, *, adjusted: bool) -> ModelResult:
@@ -444,7 +450,8 @@ class _Making:
         ends = np.cumsum([self.true(bands(*cut)) for cut in cuts]).tolist()
 
         def drawn(s: StudyResults, end: int, events: bool) -> object:
-            groups = next(f for f in s.models[m].checks[2].figures if isinstance(f, CalibrationFigure)).groups
+            figures = [f for check in s.models[m].checks for f in check.figures if isinstance(f, CalibrationFigure)]
+            groups = figures[0].groups if figures else ()
             before = np.cumsum([group.records for group in groups]).tolist()
             if end not in before:
                 return None

@@ -133,7 +133,7 @@ def test_thirds_of_a_number() -> None:
     # With true frequencies, half of the records at the least value: two groups.
     counts = np.array([9.0, *[1.0] * 8])
     groups = groups_of_study("cohort", column, pd.DataFrame({"dose": values}), np.zeros(9, dtype=bool), counts)
-    assert groups.labels == ("Dose: up to 1 mg", "Dose: above 1, up to 4 mg", "Dose: above 4 mg")
+    assert groups.labels == ("up to 1 mg", "above 1, up to 4 mg", "above 4 mg")
     constant = groups_of_study("cohort", column, pd.DataFrame({"dose": np.ones(4)}), np.zeros(4, dtype=bool))
     assert constant.labels == ("Dose",)
     missing = groups_of_study("cohort", column, pd.DataFrame({"dose": [np.nan, 1.0, 2.0]}), np.zeros(3, dtype=bool))
