@@ -23,6 +23,14 @@ def _workers() -> ThreadPoolExecutor | None:
     return ThreadPoolExecutor(cores, thread_name_prefix="oddsmodel-pass") if cores > 1 else None
 
 
+@cache
+def _products() -> Any:
+    """The libraries of matrix products, looked for once: the search takes longer than a small pass."""
+    from threadpoolctl import ThreadpoolController
+
+    return ThreadpoolController()
+
+
 class MemoryPasses:
     """Named arrays that share their first axis; views of them go to the kernels, never copies.
 
@@ -37,8 +45,6 @@ class MemoryPasses:
         self.rows = lengths.pop()
 
     def reduce(self, kernels: Sequence[Kernel], state: Any) -> list[Answer]:
-        from threadpoolctl import threadpool_limits
-
         leaves = max(1, -(-self.rows // LEAF_ROWS))
         task_leaves = 1 << TASK_HEIGHT
         tasks = range(0, leaves, task_leaves)
@@ -50,7 +56,7 @@ class MemoryPasses:
                 tree.add([kernel.leaf(rows, state) for kernel in kernels])
             return tree.total()
 
-        with threadpool_limits(limits=1, user_api="blas"):
+        with _products().limit(limits=1, user_api="blas"):
             workers = _workers() if len(tasks) > 1 else None
             tree = Tree()
             for answers in map(task, tasks) if workers is None else workers.map(task, tasks):
