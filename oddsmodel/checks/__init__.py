@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
+from dataclasses import replace
 from importlib import import_module
 from typing import TYPE_CHECKING, get_args
 
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.results.study import CheckResult, Family, Flow, Verdict
+from oddsmodel.wording import say
 
 if TYPE_CHECKING:
     from oddsmodel.model.fitted import FittedModel
@@ -32,6 +34,9 @@ CHECKS = (
     "independence",
 )
 
+AS_IF_INDEPENDENT = ("calibration", "influence")
+"""Checks that describe, whose intervals and standard errors take records as independent even where they are not."""
+
 WORST: tuple[Verdict, ...] = ("caution", "look", "fine", "not applicable")
 
 SILENT = Silent()
@@ -45,7 +50,10 @@ def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | Non
     results = [counting.check(model, flow)]
     progress.advance()
     for name in CHECKS:
-        results.append(import_module(f"oddsmodel.checks.{name}").check(model))
+        result = import_module(f"oddsmodel.checks.{name}").check(model)
+        if model.grouping is not None and name in AS_IF_INDEPENDENT and result.verdict != "not applicable":
+            result = replace(result, explanation=f"{result.explanation}\n{say('check-as-if-independent')}")
+        results.append(result)
         progress.advance()
     return tuple(sorted(results, key=lambda result: FAMILIES.index(result.family)))
 

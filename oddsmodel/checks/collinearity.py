@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from oddsmodel.design.constant import indicators_of_all_levels
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.results.tables import Table, TableColumn
@@ -24,18 +25,20 @@ LEAST_SHARE = 1e-13
 class Part:
     """Terms that share record columns, taken together; `positions` are their columns among the coefficients.
 
+    contrasts: how many there are beside the constant: one fewer where the part's indicators of all levels hold it.
     inflation: the generalised variance inflation factor; None where the part is all but a combination of the rest.
     """
 
     label: str
     positions: tuple[int, ...]
     exposure: bool
+    contrasts: int
     inflation: float | None
 
     @property
     def widening(self) -> float:
         """Factor by which the standard errors are wider, on average over the part's columns; infinite for None."""
-        return float("inf") if self.inflation is None else float(self.inflation ** (0.5 / len(self.positions)))
+        return float("inf") if self.inflation is None else float(self.inflation ** (0.5 / self.contrasts))
 
 
 def check(model: FittedModel) -> CheckResult:
@@ -90,26 +93,34 @@ def inflation_by_part(model: FittedModel) -> tuple[Part, ...]:
     rho being the canonical correlations of the part with the rest, centred and weighted as at the maximum. They are
     found from a square root of the information in well-conditioned coordinates, so that raw powers of a
     calendar year do no harm. A term and those that share a record column with it (powers, splines, interactions)
-    are one part: their overlap with each other says nothing about the overlap with other columns.
+    are one part: their overlap with each other says nothing about the overlap with other columns. Where the formula
+    has no intercept but an indicator for every level of a column, their sum is the constant, and is taken off.
     """
     space = model.fit.space
     root = np.asarray(np.linalg.cholesky(model.fit.working_information).T, dtype=np.float64)
     if space.from_beta is not None:
         root = root @ space.from_beta
     columns = model.design.columns
-    constant = [i for i, column in enumerate(columns) if column.kind == "intercept"]
-    root = root - _projected(root[:, constant], root)
+    ones = indicators_of_all_levels(model.design)
+    constant = list(ones) or [i for i, column in enumerate(columns) if column.kind == "intercept"]
+    if constant:
+        root = root - _projected(root[:, constant].sum(axis=1, keepdims=True), root)
+    spare = set(ones[:1])
     parts: list[Part] = []
     members = _parts(model)
     everything = [i for positions in members.values() for i in positions]
     for sources, positions in members.items():
-        rest = [i for i in everything if i not in positions]
+        rest = [i for i in everything if i not in positions and i not in spare]
+        own = [i for i in positions if i not in spare]
+        if not own:
+            continue
         parts.append(
             Part(
                 label=listed([model.columns[name].label if name in model.columns else name for name in sources]),
                 positions=positions,
                 exposure=any(columns[i].role == "exposure" for i in positions),
-                inflation=_inflation(root[:, positions], root[:, rest]),
+                contrasts=len(own),
+                inflation=_inflation(root[:, own], root[:, rest]),
             )
         )
     return tuple(parts)

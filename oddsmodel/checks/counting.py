@@ -4,13 +4,12 @@ from __future__ import annotations
 
 from oddsmodel.checks.severity import severity
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.records.accounting import NOT_OF_THE_STUDY
 from oddsmodel.results.study import CheckResult, Flow, Verdict
 from oddsmodel.wording import finding, say
 
 WORTH_A_LOOK = 0.05
 MANY = 0.20
-NOT_KEPT = "not-kept"
-"""Code of the exclusions that the plan itself asks for; those records do not belong and are not missed."""
 
 
 def check(model: FittedModel, flow: Flow | None = None) -> CheckResult:
@@ -41,6 +40,6 @@ def _share_left_out(flow: Flow) -> float | None:
     counts = [exclusion.records for exclusion in flow.left_out]
     if flow.read is None or any(count is None for count in counts):
         return None
-    not_kept = sum(exclusion.records or 0 for exclusion in flow.left_out if exclusion.code == NOT_KEPT)
-    belong = flow.read - not_kept
-    return (sum(count or 0 for count in counts) - not_kept) / belong if belong > 0 else None
+    others = sum(exclusion.records or 0 for exclusion in flow.left_out if exclusion.code in NOT_OF_THE_STUDY)
+    belong = flow.read - others
+    return (sum(count or 0 for count in counts) - others) / belong if belong > 0 else None

@@ -84,7 +84,7 @@ def _binomial_variance(groups: OrderedRecords) -> Array:
 
 
 def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecords) -> str | None:
-    """Why there is no test, or None.
+    """Why there is no test, or None. There is none either where records belong to groups and are not independent.
 
     1. More than 25,000 records: misfit too small to matter is found (Paul et al. 2013).
     2. Fewer than 6 groups formed: hardly any misfit is found (Hosmer & Lemeshow 2000, section 5.2.2, from
@@ -98,6 +98,8 @@ def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecord
     """
     formed, distinct = int(groups.records.size), int(ordered.records.size)
     surplus = abs(float(ordered.events.sum() - ordered.expected.sum()))
+    if model.grouping is not None:
+        return say("no-check-of-grouped-records")
     if model.records > MOST_RECORDS:
         return say("hosmer-lemeshow-too-many-records", most=MOST_RECORDS)
     if formed < FEWEST_GROUPS:

@@ -18,7 +18,9 @@ def check(model: FittedModel) -> CheckResult:
     ]
     matched = model.study_design == "matched case-control"
     distinct = model.counts is None and any(model.frame[name].is_unique for name in identifiers)
-    if matched:
+    if model.grouping is not None:
+        line = say("independence-within-groups", column=model.grouping.label, groups=model.grouping.number)
+    elif matched:
         line = say("independence-matched")
     elif model.counts is not None:
         line = say("independence-grouped")
@@ -30,7 +32,7 @@ def check(model: FittedModel) -> CheckResult:
         name="independence",
         family="independence",
         title=say("independence-title"),
-        verdict="caution" if matched else "fine" if distinct else "look",
+        verdict="caution" if matched else "fine" if distinct or model.grouping is not None else "look",
         line=line,
         findings=(finding("caution", "independence-matched"),) if matched else (),
         explanation=say("independence-explanation"),

@@ -135,7 +135,7 @@ def scatter(model: FittedModel, steps: OneStep) -> ScatterFigure:
         alt=say(
             "influence-alt", patterns=int((model.patterns.trials > 0.0).sum()), drawn=int(usable.size), sampled=sampled
         ),
-        x_label="Fitted probability",
+        x_label=say("influence-axis" if model.study_design in QUANTITY else "influence-axis-cases"),
         y_label="Fall in deviance without the pattern",
         x=tuple(steps.probability[usable].tolist()),
         y=tuple(steps.delta_deviance[usable].tolist()),

@@ -60,6 +60,8 @@ def check(model: FittedModel) -> CheckResult:
     Strategies, section 2.4). With many records the smallest bend is seen, so its size and what it does to the
     exposure's odds ratio decide whether it matters, not p.
     """
+    if model.grouping is not None:
+        return _withheld(say("no-check-of-grouped-records"))
     lines = straight_lines(model)
     curves = fit_curves(model, lines)
     judged = [_judge(model, curve, len(curves.fitted)) for curve in curves.fitted]
@@ -99,6 +101,21 @@ def check(model: FittedModel) -> CheckResult:
             tests=len(judged),
             withheld=[[line.label, say(code)] for line, code in curves.withheld],
         ),
+    )
+
+
+def _withheld(reason: str) -> CheckResult:
+    statistics, _ = _statistics([], None)
+    nothing = dict.fromkeys(statistics)
+    return CheckResult(
+        name="linearity",
+        family="functional form",
+        title=say("linearity-title"),
+        verdict="not applicable",
+        line=reason,
+        statistics=nothing,
+        reasons=dict.fromkeys(nothing, reason),
+        explanation=say("linearity-explanation", tests=0, withheld=[]),
     )
 
 

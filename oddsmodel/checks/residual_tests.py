@@ -90,6 +90,8 @@ def check(model: FittedModel) -> CheckResult:
 
 
 def _withheld(model: FittedModel, residuals: PatternResiduals, tests: ResidualTests, patterns: int) -> str | None:
+    if model.grouping is not None:
+        return say("no-check-of-grouped-records")
     if tests.df < 1:
         return say("residual-tests-saturated", patterns=patterns)
     least = model.patterns.trials * np.minimum(residuals.probability, residuals.complement)

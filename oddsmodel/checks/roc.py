@@ -75,7 +75,11 @@ def check(model: FittedModel) -> CheckResult:
             explanation=explanation,
         )
     answer = area_under_curve(events, others)
-    lower, upper, reason = _interval(answer, model.level)
+    if model.grouping is not None:
+        answer = Area(answer.area, None)
+        lower, upper, reason = None, None, say("no-check-of-grouped-records")
+    else:
+        lower, upper, reason = _interval(answer, model.level)
     statistics = {"estimate": answer.area, "standard_error": answer.standard_error, "lower": lower, "upper": upper}
     points = _points(events, others)
     return CheckResult(

@@ -19,7 +19,8 @@ app = typer.Typer(
 
     New here? `oddsmodel demo` runs an invented study, so that you can see a plan and its report. For your own
     records, `oddsmodel draft` writes a starter plan, `oddsmodel check` reads it against the records, and
-    `oddsmodel run` writes the report.
+    `oddsmodel run` writes the report. With later records, `oddsmodel changes` sets the results side by side; where
+    reports gather, `oddsmodel shelf` writes their index.
 
     Exit status: 0 done; 1 the program or the machine failed; 2 the plan, the records or the formula is at fault;
     3 a model could not be estimated, the others are reported; 130 interrupted.""",
@@ -158,3 +159,52 @@ def demo(
     from oddsmodel.cli.demo import demo_command
 
     raise typer.Exit(ended(lambda: demo_command(folder)))
+
+
+@app.command(short_help="What changed between results of the same study.")
+def changes(
+    results: Annotated[
+        list[Path],
+        typer.Argument(
+            metavar="RESULTS RESULTS [...]", help="Two or more results.json, the earliest first.", show_default=False
+        ),
+    ],
+    into: Annotated[
+        Path | None,
+        typer.Option(
+            "--into", metavar="FILE.html", help="Write a page with the series drawn, too.", show_default=False
+        ),
+    ] = None,
+) -> None:
+    """What changed between results of the same study, in the order given.
+
+    Run a plan again on later records with `oddsmodel run PLAN --records FILE --into DIR`, then name both results.json
+    here. Changes of the plan are told apart from changes of the records, the odds ratios of the exposure stand as a
+    series, and a word is said on records that may be in several extracts. Counts that differ too little to be shown
+    are withheld, unless one of the results is internal.
+    """
+    from oddsmodel.cli.changes import changes_command
+
+    raise typer.Exit(ended(lambda: changes_command(results, into)))
+
+
+@app.command(short_help="Write an index page of the reports in a folder.")
+def shelf(
+    folder: Annotated[
+        Path, typer.Argument(metavar="DIR", help="The folder that holds the reports.", show_default=False)
+    ],
+    into: Annotated[
+        Path | None,
+        typer.Option(
+            "--into", metavar="FILE", help="The page to write; without it, index.html in DIR.", show_default=False
+        ),
+    ] = None,
+) -> None:
+    """Write an index page of the reports in a folder and in those within it, by title.
+
+    Each stands with its question, its answer, its records and its findings, and a link that holds as long as page and
+    reports keep their places. Internal reports are marked. A file that is not an earlier index is never overwritten.
+    """
+    from oddsmodel.cli.shelf import shelf_command
+
+    raise typer.Exit(ended(lambda: shelf_command(folder, into)))

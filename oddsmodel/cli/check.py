@@ -24,7 +24,7 @@ def check_command(plan: Path, records: Path | None) -> int:
     write(
         say(
             "outcome-is",
-            column=checked.file.plan.outcome.column,
+            column=checked.file.plan.outcome.column_name,
             event=outcome.event_label,
             other=outcome.other_label,
         )

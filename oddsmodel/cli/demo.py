@@ -27,8 +27,13 @@ def demo_command(folder: Path) -> int:
         folder.mkdir(parents=True, exist_ok=True)
     except FileExistsError:
         raise InputFault(fault("demo-not-a-folder", plain(str(folder)))) from None
-    for name, content in contents.items():
-        (folder / name).write_bytes(content)
+    try:
+        for name, content in contents.items():
+            (folder / name).write_bytes(content)
+    except BaseException:
+        for name in contents:
+            (folder / name).unlink(missing_ok=True)
+        raise
 
     plan = folder / COPIED[0]
     write(say("demo-copied", plan=str(plan)))

@@ -3,10 +3,15 @@
 from __future__ import annotations
 
 import os
+import signal
 import sys
+import threading
 import traceback
 import warnings
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from types import FrameType
+from typing import Any
 
 from oddsmodel.cli import INTERRUPTED
 from oddsmodel.cli.terminal import tell
@@ -31,9 +36,12 @@ def ended(work: Callable[[], int]) -> int:
     with warnings.catch_warnings():
         if not _wants_traceback():
             warnings.simplefilter("ignore")
+        interruptions: list[int] = []
         try:
-            status = work()
-            sys.stdout.flush()
+            with _noted(interruptions):
+                status = work()
+            if sys.stdout is not None:
+                sys.stdout.flush()
         except InputFault as fault:
             _tell_faults(fault)
             return INPUT_AT_FAULT
@@ -45,9 +53,34 @@ def ended(work: Callable[[], int]) -> int:
             os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
             return DONE
         except Exception as error:
+            # An interruption while a compiled library is being loaded comes out as that library's failure.
+            if interruptions:
+                tell(say("interrupted"))
+                return INTERRUPTED
             _tell_failure(error)
             return PROGRAM_AT_FAULT
         return status
+
+
+@contextmanager
+def _noted(interruptions: list[int]) -> Iterator[None]:
+    """While work goes on, note the signals that interrupt it: Ctrl-C, and a polite request to end."""
+
+    def interrupt(number: int, frame: FrameType | None) -> None:
+        interruptions.append(number)
+        signal.default_int_handler(number, frame)
+
+    earlier: dict[int, Any] = {}
+    if threading.current_thread() is threading.main_thread():
+        usual = {signal.SIGINT: signal.default_int_handler, signal.SIGTERM: signal.SIG_DFL}
+        earlier = {number: way for number, way in usual.items() if signal.getsignal(number) == way}
+    for number in earlier:
+        signal.signal(number, interrupt)
+    try:
+        yield
+    finally:
+        for number, way in earlier.items():
+            signal.signal(number, way)
 
 
 def _tell_faults(found: InputFault) -> None:

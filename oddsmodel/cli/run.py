@@ -30,9 +30,9 @@ def run_command(plan: Path, into: Path | None, records: Path | None) -> int:
 
 def write_answer(study: StudyResults) -> None:
     """The answer in the report's own words, then what must be read before it is used."""
-    from oddsmodel.report.view.lead import is_estimated, lead_model
     from oddsmodel.report.view.opening import opening
     from oddsmodel.report.view.sheet import Sheets
+    from oddsmodel.results.lead import is_estimated, lead_model
 
     lead = lead_model(study)
     undrawn = None if lead is None else replace(lead, figures=())
@@ -43,6 +43,8 @@ def write_answer(study: StudyResults) -> None:
         write(view.question)
     for answer in view.answers:
         write()
+        if answer.label:
+            write(answer.label)
         write(answer.sentence)
         if answer.compatible:
             write(answer.compatible)

@@ -29,7 +29,9 @@ def write_as_is(text: str) -> None:
     sys.stdout.flush()
 
 
-def _write(stream: TextIO, text: str, indent: int) -> None:
+def _write(stream: TextIO | None, text: str, indent: int) -> None:
+    if stream is None:  # closed by whoever started the program
+        return
     line = plain(text)
     spaces = " " * indent
     lines = [spaces + line]

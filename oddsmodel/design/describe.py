@@ -176,7 +176,7 @@ class Describer:
     def of_number(self, name: str, source: str, kind: ColumnKind) -> _Part:
         column = self.columns[source]
         if isinstance(column.per, str):
-            deviation = self.deviation(source, lost=1)
+            deviation = column.deviation or self.deviation(source, lost=1)
             return _Part(name, self.deviation_label(source, deviation), kind, per=deviation, shown=True)
         per = float(column.per)
         label = say("label-number", label=column.label, per=per, units=column.units)

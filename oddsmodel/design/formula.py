@@ -56,11 +56,22 @@ def vet_formula(text: str, *, columns: Collection[str], outcome: str, where: str
     return VettedFormula(text, tuple(met[number] for number in used), terms, not expansion.removed, where)
 
 
-def _left_side(node: Node, outcome: str, where: str) -> None:
-    name = node.name if isinstance(node, Name) else None
+def outcome_named(text: str, columns: Collection[str], where: str) -> str | None:
+    """The column that stands left of the ~ of a formula; None where none does. InputFault as of `vet_formula`."""
+    left = parse(text, where, columns).left
+    return None if left is None else _column_name(left)
+
+
+def _column_name(node: Node) -> str | None:
+    """The name of a column, bare or in Q("..."); None for anything else."""
     if isinstance(node, Call) and node.function == "Q" and len(node.arguments) == 1 and not node.keywords:
         quoted = node.arguments[0]
-        name = quoted.value if isinstance(quoted, Text) else None
+        return quoted.value if isinstance(quoted, Text) else None
+    return node.name if isinstance(node, Name) else None
+
+
+def _left_side(node: Node, outcome: str, where: str) -> None:
+    name = _column_name(node)
     if name is None or not same_text(name, outcome):
         written = piece(name) if name is not None else ""
         raise formula_fault("formula-left-side", where, node.at, written=written, outcome=piece(outcome))

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import replace
 
+from oddsmodel.disclosure.derived import disclosed_derived
 from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.flow import disclosed_exclusions
 from oddsmodel.disclosure.gather import analysed_and_events, closed_models, gather
@@ -13,7 +14,9 @@ from oddsmodel.disclosure.model import (
     crude_numbers,
     disclosed_estimates_figure,
     disclosed_model,
+    estimate_numbers,
     gives_all_away,
+    hidden_averages,
     hidden_crude,
 )
 from oddsmodel.disclosure.suppression import Suppression
@@ -53,6 +56,7 @@ def disclose(study: StudyResults, *, audience: str, hide_counts_below: int) -> D
         comparison=_table(study.comparison, ("comparison",), hiding),
         comparison_figure=disclosed_estimates_figure(figure, hiding) if isinstance(figure, EstimatesFigure) else None,
         notes=tuple(text(note) for note in study.notes),
+        derived=tuple(disclosed_derived(one, hiding) for one in study.derived),
     )
     return DisclosedResults(shown, hide_counts_below, "shareable", hiding.taken)
 
@@ -89,6 +93,13 @@ def _estimates(study: StudyResults, hiding: Hiding) -> Iterator[float]:
                 yield from crude_numbers(coefficient.crude_all_records)
             if closed and coefficient.odds_ratio is not None:
                 yield coefficient.odds_ratio
+        for c, one in enumerate(model.averages):
+            if c in hidden_averages(model, m, hiding) or closed:
+                yield from crude_numbers(one.crude)
+        if closed:
+            steps = [one.step for one in model.trends if one.step is not None]
+            for one in (*model.averages, *steps):
+                yield from estimate_numbers(one)
         records, events = analysed_and_events(model)
         if hiding.hides("events", m) and records and events:
             yield from (events / records, round(events / records, 6))

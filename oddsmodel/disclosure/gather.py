@@ -159,9 +159,9 @@ def _enter_model(
         for t, table in enumerate(check.tables):
             cells = _enter_table(found, table, ("check", m, c, t), scalars, m)
             _see_ordered(found, table, cells, m)
-        for figure in check.figures:
+        for f, figure in enumerate(check.figures):
             if isinstance(figure, CalibrationFigure):
-                _enter_calibration(found, figure, m)
+                _enter_calibration(found, figure, ("figure", m, c, f), m)
     return scalars
 
 
@@ -222,16 +222,16 @@ def _see_ordered(found: _Gathered, table: Table, cells: TableCounts, model: int)
 _PAIR = ("records", "events")
 
 
-def _enter_calibration(found: _Gathered, figure: CalibrationFigure, model: int) -> None:
-    """The groups as they will be drawn: their counts can be read off the figure and stay."""
+def _enter_calibration(found: _Gathered, figure: CalibrationFigure, place: Place, model: int) -> None:
+    """The groups as they will be drawn: their counts can be read off the figure, which is shown whole or not at all."""
     groups = merge_groups(figure.groups, found.threshold)
-    found.ordered.append(
-        _Ordered(
-            model,
-            [found.system.add(group.records, locked=True) for group in groups],
-            [found.system.add(group.events, locked=True) for group in groups],
-        )
+    counts = [[group.records for group in groups], [group.events for group in groups]]
+    records, events = (
+        [found.system.add(count, (*place, kind, k), rank=SIDE, model=model) for k, count in enumerate(values)]
+        for kind, values in zip(_PAIR, counts, strict=True)
     )
+    found.system.tie([*records, *events])
+    found.ordered.append(_Ordered(model, records, events))
 
 
 def _enter_ordered(found: _Gathered) -> None:

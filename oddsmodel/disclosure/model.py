@@ -34,11 +34,13 @@ from oddsmodel.results.study import (
     ModelResult,
     ProfileResult,
     TermTest,
+    TrendResult,
     WaldResult,
 )
 from oddsmodel.wording import say
 
 CELLS = (*COUNTS, "cell", "cells", "count", "counts")
+TREND_TABLE = "trend_"
 NUMBERS = ("log_odds_ratio", "standard_error", "odds_ratio", "wald", "profile")
 
 
@@ -71,11 +73,22 @@ def hidden_crude(model: ModelResult, m: int, hiding: Hiding) -> frozenset[int]:
     return frozenset(found)
 
 
+def hidden_averages(model: ModelResult, m: int, hiding: Hiding) -> frozenset[int]:
+    """As `hidden_crude`, of the levels compared with their average."""
+    return hidden_crude(replace(model, coefficients=model.averages), m, hiding)
+
+
 def crude_numbers(crude: CrudeEstimate | None) -> Iterator[float]:
     """The numbers of a crude estimate."""
     if crude is not None:
         limits = [limit for one in (crude.wald, crude.profile) if one is not None for limit in (one.lower, one.upper)]
         yield from (value for value in (crude.odds_ratio, *limits) if value is not None and value not in (0.0, 1.0))
+
+
+def estimate_numbers(one: CoefficientResult) -> Iterator[float]:
+    """The numbers of an estimate on the odds-ratio scale."""
+    limits = (one.wald.lower, one.wald.upper, one.profile.lower, one.profile.upper)
+    yield from (value for value in (one.odds_ratio, *limits) if value is not None and value not in (0.0, 1.0))
 
 
 def disclosed_model(model: ModelResult, m: int, hiding: Hiding) -> ModelResult:
@@ -107,9 +120,33 @@ def disclosed_model(model: ModelResult, m: int, hiding: Hiding) -> ModelResult:
         terms=tuple(_term(one, hiding, closed) for one in model.terms),
         checks=() if closed else tuple(_check(model, one, m, c, hiding, flow) for c, one in enumerate(model.checks)),
         findings=tuple(disclosed_finding(one, hiding.withheld) for one in model.findings),
-        tables=tuple(disclosed_table(table, ("model", m, t), hiding) for t, table in enumerate(model.tables)),
+        tables=tuple(
+            disclosed_table(table, ("model", m, t), hiding)
+            for t, table in enumerate(model.tables)
+            if not (closed and table.id.startswith(TREND_TABLE))
+        ),
         figures=_figures(model, model.figures, hiding, flow),
         reasons={key: text(reason) for key, reason in reasons.items()},
+        trends=tuple(_trend(one, hiding, closed) for one in model.trends),
+        averages=tuple(
+            _coefficient(one, m, c, hiding, closed, c in hidden_averages(model, m, hiding))
+            for c, one in enumerate(model.averages)
+        ),
+    )
+
+
+def _trend(one: TrendResult, hiding: Hiding, closed: bool) -> TrendResult:
+    """A trend of a model whose answers are its counts in another form is told no more than these are."""
+    if not closed:
+        return one
+    hiding.taken += 1
+    reason = say("why-estimate-hidden")
+    return replace(
+        one,
+        step=None,
+        trend=_term(one.trend, hiding, closed),
+        departure=_term(one.departure, hiding, closed),
+        reason=reason,
     )
 
 
@@ -160,10 +197,10 @@ def _coefficient(
 
 
 def _term(term: TermTest, hiding: Hiding, closed: bool) -> TermTest:
-    if not closed or (term.likelihood_ratio is None and term.p is None):
+    if not closed or (term.likelihood_ratio is None and term.p is None and term.wald is None):
         return term
     hiding.taken += 1
-    return replace(term, likelihood_ratio=None, p=None, reason=say("why-estimate-hidden"))
+    return replace(term, likelihood_ratio=None, p=None, wald=None, reason=say("why-estimate-hidden"))
 
 
 def _check(model: ModelResult, check: CheckResult, m: int, c: int, hiding: Hiding, flow: Flow) -> CheckResult:
@@ -186,9 +223,18 @@ def _check(model: ModelResult, check: CheckResult, m: int, c: int, hiding: Hidin
         reasons=reasons,
         findings=tuple(disclosed_finding(one, hiding.withheld) for one in check.findings),
         tables=tuple(disclosed_table(table, ("check", m, c, t), hiding) for t, table in enumerate(check.tables)),
-        figures=_figures(model, check.figures, hiding, flow),
-        explanation=text(check.explanation),
+        figures=_figures(
+            model,
+            tuple(figure for f, figure in enumerate(check.figures) if not _gives_away(m, c, f, hiding)),
+            hiding,
+            flow,
+        ),
+        explanation=check.explanation,
     )
+
+
+def _gives_away(m: int, c: int, f: int, hiding: Hiding) -> bool:
+    return any(place[:4] == ("figure", m, c, f) for place in hiding.places)
 
 
 def _figures(model: ModelResult, figures: tuple[Figure, ...], hiding: Hiding, flow: Flow) -> tuple[Figure, ...]:

@@ -7,6 +7,7 @@ from collections.abc import Iterable, Sequence
 from itertools import chain
 
 from oddsmodel.findings import Finding
+from oddsmodel.results.derived import DerivedColumn
 from oddsmodel.results.study import CoefficientResult, CrudeEstimate, DisclosedResults, ModelResult
 from oddsmodel.results.tables import Cell, Hidden, Interval, Table
 
@@ -27,7 +28,7 @@ def csv_files(disclosed: DisclosedResults) -> dict[str, str]:
     study = disclosed.study
     found = {
         "estimates.csv": _csv(_ESTIMATES, chain.from_iterable(map(_estimates, study.models))),
-        "terms.csv": _csv(("model", "term", "df", "likelihood_ratio", "p", "reason"), _terms(study.models)),
+        "terms.csv": _csv(_TERMS, _terms(study.models)),
         "flow.csv": _csv(("model", "step", "reason", "records", "note"), chain.from_iterable(map(_flow, study.models))),
         "checks.csv": _csv(
             ("model", "check", "verdict", "statistic", "value", "reason", "finding"),
@@ -35,13 +36,19 @@ def csv_files(disclosed: DisclosedResults) -> dict[str, str]:
         ),
         "findings.csv": _csv(("model", "severity", "code", "message"), _findings(disclosed)),
     }
-    levels = [(model.name, table) for model in study.models for table in model.tables if table.id == "levels"]
-    if levels:
-        found["levels.csv"] = _tables(levels, with_model=True)
+    for name in ("levels", "lost"):
+        tables = [(model.name, table) for model in study.models for table in model.tables if table.id == name]
+        if tables:
+            found[f"{name}.csv"] = _tables(tables, with_model=True)
     if study.characteristics is not None:
         found["characteristics.csv"] = _tables([("", study.characteristics)], with_model=False)
     if study.comparison is not None:
         found["comparison.csv"] = _tables([("", study.comparison)], with_model=False)
+    if study.derived:
+        found["derived.csv"] = _csv(
+            ("column", "value", "source", "source_value", "records", "smallest", "largest", "rounded_to", "note"),
+            chain.from_iterable(map(_derived, study.derived)),
+        )
     return found
 
 
@@ -81,7 +88,7 @@ _ESTIMATES = (
 
 
 def _estimates(model: ModelResult) -> Iterable[Row]:
-    for one in model.coefficients:
+    for one in (*model.coefficients, *model.averages, *_steps(model)):
         everyone = one.crude_all_records
         numbers: Row = (
             one.odds_ratio,
@@ -111,6 +118,10 @@ def _estimates(model: ModelResult) -> Iterable[Row]:
         )
 
 
+def _steps(model: ModelResult) -> Iterable[CoefficientResult]:
+    return (one.step for one in model.trends if one.step is not None)
+
+
 def _crude(crude: CrudeEstimate | None) -> Row:
     if crude is None:
         return (None,) * len(_CRUDE)
@@ -125,10 +136,17 @@ def _reasons(one: CoefficientResult) -> str | None:
     return " ".join(f"{', '.join(names)}: {reason}" for reason, names in told.items()) or None
 
 
+_TERMS = (
+    *("model", "term", "df", "likelihood_ratio", "p"),
+    *("wald_f", "wald_df_denominator", "wald_p", "reason"),
+)
+
+
 def _terms(models: Iterable[ModelResult]) -> Iterable[Row]:
     for model in models:
         for one in model.terms:
-            yield model.name, one.term, one.df, one.likelihood_ratio, one.p, one.reason
+            wald = (None, None, None) if one.wald is None else (one.wald.f, one.wald.df_denominator, one.wald.p)
+            yield model.name, one.term, one.df, one.likelihood_ratio, one.p, *wald, one.reason
 
 
 def _flow(model: ModelResult) -> Iterable[Row]:
@@ -138,6 +156,13 @@ def _flow(model: ModelResult) -> Iterable[Row]:
     steps += [("analysed", None, flow.analysed), ("events", None, flow.events)]
     for step, reason, records in steps:
         yield model.name, step, reason, records, HIDDEN if records is None else None
+
+
+def _derived(column: DerivedColumn) -> Iterable[Row]:
+    for one in column.counts:
+        ends = one.records, one.smallest, one.largest
+        note = HIDDEN if one.records is None else None
+        yield column.name, one.value, one.source, one.source_value, *ends, column.rounded_to, note
 
 
 def _checks(model: ModelResult) -> Iterable[Row]:

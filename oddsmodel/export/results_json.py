@@ -4,10 +4,14 @@ from __future__ import annotations
 
 import json
 from collections.abc import Iterator, Mapping
+from dataclasses import asdict
 from importlib.resources import files
 from typing import Any
 
+from oddsmodel.export.answer import answers
 from oddsmodel.findings import Finding
+from oddsmodel.results.derived import DerivedColumn
+from oddsmodel.results.lead import lead_model
 from oddsmodel.results.study import (
     CheckResult,
     CoefficientResult,
@@ -15,10 +19,12 @@ from oddsmodel.results.study import (
     DisclosedResults,
     Exclusion,
     ModelResult,
+    TermTest,
+    TrendResult,
 )
 from oddsmodel.wording import say
 
-SCHEMA_VERSION = "1.0"
+SCHEMA_VERSION = "1.1"
 ESTIMATES = ("log_odds_ratio", "standard_error", "odds_ratio")
 
 
@@ -53,6 +59,8 @@ def results_document(disclosed: DisclosedResults) -> dict[str, Any]:
             "aim": study.aim,
             "outcome": study.outcome,
             "event": study.event,
+            "rules": list(study.rules),
+            "answer": [{"label": one.label, "sentence": one.sentence} for one in answers(study, lead_model(study))],
         },
         "disclosure": {
             "audience": disclosed.audience,
@@ -72,12 +80,55 @@ def results_document(disclosed: DisclosedResults) -> dict[str, Any]:
             "versions": dict(study.provenance.versions),
             "seed": study.provenance.seed,
         },
+        "plan": _plain(study.provenance.plan_facts),
+        "columns": [
+            {
+                "name": column.name,
+                "label": column.label,
+                "kind": column.kind,
+                "units": column.units,
+                "per": _plain(column.per),
+                "levels": list(column.levels),
+                "reference": column.reference,
+            }
+            for column in study.columns
+        ],
+        "standard_deviations": [
+            {"column": one.column, "label": one.label, "units": one.units, "value": _plain(one.value)}
+            for one in study.standard_deviations
+        ],
+        "derived": [_derived(one, disclosed) for one in study.derived],
         "reasons": reasons,
     }
 
 
 def _exclusions(excluded: tuple[Exclusion, ...]) -> list[dict[str, Any]]:
     return [{"code": one.code, "reason": one.reason, "records": _plain(one.records)} for one in excluded]
+
+
+def _derived(column: DerivedColumn, disclosed: DisclosedResults) -> dict[str, Any]:
+    hidden = any(one.records is None for one in column.counts)
+    return {
+        "name": column.name,
+        "label": column.label,
+        "kind": column.kind,
+        "rule": column.rule,
+        "sources": list(column.sources),
+        "cut_points": [_plain(cut) for cut in column.cut_points],
+        "counts_rounded_to": column.rounded_to,
+        "counts": [
+            {
+                "value": one.value,
+                "source": one.source,
+                "source_value": one.source_value,
+                "records": _plain(one.records),
+                "smallest": _plain(one.smallest),
+                "largest": _plain(one.largest),
+            }
+            for one in column.counts
+        ],
+        "reasons": {"counts.records": say("why-count-hidden", threshold=disclosed.hide_counts_below)} if hidden else {},
+    }
 
 
 def _model(model: ModelResult, disclosed: DisclosedResults) -> dict[str, Any]:
@@ -102,30 +153,49 @@ def _model(model: ModelResult, disclosed: DisclosedResults) -> dict[str, Any]:
         "log_likelihood": _plain(model.log_likelihood),
         "null_log_likelihood": _plain(model.null_log_likelihood),
         "coefficients": [_coefficient(one) for one in model.coefficients],
-        "terms": [
-            {
-                "term": one.term,
-                "df": _plain(one.df),
-                "likelihood_ratio": _plain(one.likelihood_ratio),
-                "p": _plain(one.p),
-                "reasons": {"likelihood_ratio": one.reason or say("number-not-available")}
-                if one.likelihood_ratio is None
-                else {},
-            }
-            for one in model.terms
-        ],
+        "terms": [_test(one) for one in model.terms],
         "checks": {check.name: _check(check) for check in model.checks},
         "certificate": {
             "digits": _plain(model.certificate.digits),
             "condition_number": _plain(model.certificate.condition_number),
         },
         "findings": [_finding(finding) for finding in _all_findings(model)],
+        "based_on": model.based_on,
+        "differs": model.differs,
+        "planned": model.planned,
+        "trends": [_trend(one) for one in model.trends],
+        "averages": [_coefficient(one) for one in model.averages],
+        **({} if model.groups is None else {"groups": model.groups, "grouped_by": model.grouped_by}),
     }
     numbers = ("records", "events", "patterns", "log_likelihood", "null_log_likelihood")
     missing = [name for name in numbers if document[name] is None]
     missing += [f"certificate.{name}" for name, value in document["certificate"].items() if value is None]
     document["reasons"] = _complete(model.reasons, missing)
     return document
+
+
+def _test(one: TermTest) -> dict[str, Any]:
+    missing = one.likelihood_ratio is None
+    return {
+        "term": one.term,
+        "df": _plain(one.df),
+        "likelihood_ratio": _plain(one.likelihood_ratio),
+        "p": _plain(one.p),
+        **({} if one.wald is None else {"wald": asdict(one.wald)}),
+        "reasons": {"likelihood_ratio": one.reason or say("number-not-available")} if missing else {},
+    }
+
+
+def _trend(one: TrendResult) -> dict[str, Any]:
+    return {
+        "column": one.column,
+        "term": one.term,
+        "scores": [{"level": level, "score": _plain(score)} for level, score in one.scores],
+        "step": None if one.step is None else _coefficient(one.step),
+        "trend": _test(one.trend),
+        "departure": _test(one.departure),
+        "reasons": {"step": one.reason or say("number-not-available")} if one.step is None else {},
+    }
 
 
 def _all_findings(model: ModelResult) -> Iterator[Finding]:

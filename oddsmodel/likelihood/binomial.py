@@ -116,7 +116,10 @@ class BinomialLikelihood:
     def triangle(self) -> Array:
         if not isinstance(self.passes, MemoryPasses):
             raise TypeError("rows that are not in memory cannot be factorised")
-        X = self.passes.arrays["X"]
+        X, trials = self.passes.arrays["X"], self.passes.arrays.get("trials")
+        if trials is not None and not (trials > 0.0).all():
+            # a row of no trials bears on nothing: a column that only such rows fill is aliased
+            X = X[trials > 0.0]
         size = max(4096, 4 * X.shape[1])
         triangle = np.zeros((0, X.shape[1]))
         for start in range(0, X.shape[0], size):

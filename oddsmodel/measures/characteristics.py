@@ -114,7 +114,7 @@ def _level_lines(
     k = len(column.levels)
     cells = np.bincount(group[used] * k + codes[used], weights=weight[used], minlength=size * k).reshape(size, k)
     totals = cells.sum(axis=1, keepdims=True)
-    shares = np.divide(cells, totals, out=np.zeros_like(cells), where=totals > 0)
+    shares = np.divide(cells, totals, out=np.zeros(cells.shape), where=totals > 0)
     filled = [g for g in range(size) if totals[g, 0] > 0]
     pairs = [standardised_difference_of_shares(shares[g], shares[h]) for g, h in combinations(filled, 2)]
     return [

@@ -4,23 +4,27 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 
+import numpy as np
+
 from oddsmodel.design.types import DesignColumn
 from oddsmodel.inference.profile import ProfileLimits
 from oddsmodel.measures.crude import Crude
 from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.measures.scale import exponential, limits_on_ratio_scale
 from oddsmodel.measures.wald import wald
-from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import CoefficientResult, ProfileResult, WaldResult
 from oddsmodel.wording import say
 
 
 def coefficients(
-    model: FittedModel, limits: ProfileLimits, crude: Mapping[int, Crude] | None = None
+    model: FittedModel, limits: ProfileLimits | None, crude: Mapping[int, Crude] | None = None
 ) -> tuple[CoefficientResult, ...]:
     """The coefficients of the model in the order of its matrix, all per the plan's unit (`per`).
 
-    limits: profile limits of every coefficient for one unit of its column, at the model's level, on the log-odds scale.
+    limits: profile limits of every coefficient for one unit of its column, at the model's level, on the log-odds scale;
+    None where the records are grouped, so that there is no likelihood: the Wald limits then rest on the cluster-robust
+    standard error and on Student's distribution with one degree of freedom fewer than groups.
     crude: crude estimates by position.
 
     log_odds_ratio and standard_error are multiplied by `per` as well, so that the odds ratio is always the exponential
@@ -35,21 +39,28 @@ def coefficients(
 
 
 def _coefficient(
-    model: FittedModel, position: int, column: DesignColumn, limits: ProfileLimits, crude: Crude | None
+    model: FittedModel, position: int, column: DesignColumn, limits: ProfileLimits | None, crude: Crude | None
 ) -> CoefficientResult:
     estimate = float(model.fit.coefficients[position]) * column.per
-    standard_error = float(model.fit.standard_errors[position]) * abs(column.per)
+    contrast = np.zeros(model.fit.coefficients.size)
+    contrast[position] = column.per
+    standard_error, df = standard_error_of(model, contrast)
     reasons = dict(crude.reasons) if crude else {}
     odds_ratio = None
-    wald_result, profile_result = WaldResult(None, None, None), ProfileResult(None, None)
+    wald_limits, profile_limits = WaldResult(None, None, None), ProfileResult(None, None)
 
     withheld = _no_odds_ratio(model, column, estimate)
     if withheld is not None:
         reasons |= dict.fromkeys(("odds_ratio", "wald", "profile"), withheld)
     else:
         odds_ratio = exponential(estimate)
-        wald_result = _wald(estimate, standard_error, model.level, reasons)
-        profile_result = _profile(limits, position, column.per, reasons)
+        wald_limits = wald_result(estimate, standard_error, model.level, reasons, df)
+        if limits is None:
+            reasons["profile"] = say("no-likelihood-of-grouped-records")
+        else:
+            profile_limits = profile_result(limits, position, column.per, reasons)
+    if standard_error is None:
+        reasons["standard_error"] = say("no-standard-error-of-one-group")
     return CoefficientResult(
         term=column.term,
         level=column.level,
@@ -60,8 +71,8 @@ def _coefficient(
         log_odds_ratio=estimate,
         standard_error=standard_error,
         odds_ratio=odds_ratio,
-        wald=wald_result,
-        profile=profile_result,
+        wald=wald_limits,
+        profile=profile_limits,
         shown=column.shown,
         crude=crude.same if crude else None,
         crude_all_records=crude.all_records if crude else None,
@@ -78,20 +89,37 @@ def _no_odds_ratio(model: FittedModel, column: DesignColumn, estimate: float) ->
     return say("odds-ratio-out-of-range") if exponential(estimate) is None else None
 
 
-def _wald(estimate: float, standard_error: float, level: float, reasons: dict[str, str]) -> WaldResult:
+def standard_error_of(model: FittedModel, contrast: Array) -> tuple[float | None, int | None]:
+    """The standard error of contrast'β, contrast (p,), and the degrees of freedom of its t; None for both where normal.
+
+    Where records are grouped it allows for that, and is None where one group alone tells of the contrast.
+    """
+    if model.grouping is not None:
+        return model.grouping.standard_error(contrast), model.grouping.df
+    return float(np.sqrt(max(0.0, float(contrast @ model.fit.covariance @ contrast)))), None
+
+
+def wald_result(
+    estimate: float, standard_error: float | None, level: float, reasons: dict[str, str], df: int | None = None
+) -> WaldResult:
+    """Wald limits on the odds-ratio scale of an estimate on the log-odds scale; what is missing gets a reason."""
+    if standard_error is None:
+        reasons["wald"] = say("no-wald-of-one-group")
+        return WaldResult(None, None, None, df)
     # No curvature in this direction: the quadratic approximation says nothing.
     if standard_error <= 0.0:
         reasons["wald"] = say("no-standard-error")
         return WaldResult(None, None, None)
-    ends = wald(estimate, standard_error, level)
+    ends = wald(estimate, standard_error, level, df)
     lower, upper = exponential(ends.lower), exponential(ends.upper)
     for name, limit in (("lower", lower), ("upper", upper)):
         if limit is None:
             reasons[f"wald.{name}"] = say("limit-out-of-range")
-    return WaldResult(lower, upper, ends.p)
+    return WaldResult(lower, upper, ends.p, df)
 
 
-def _profile(limits: ProfileLimits, position: int, per: float, reasons: dict[str, str]) -> ProfileResult:
+def profile_result(limits: ProfileLimits, position: int, per: float, reasons: dict[str, str]) -> ProfileResult:
+    """The profile limits number `position` for `per` units, as odds ratios; what is missing gets a reason."""
     scaled = _per(limits, position, per)
     interval = limits_on_ratio_scale(scaled, 0)
     for name, limit, status in (

@@ -6,6 +6,7 @@ from collections.abc import Sequence
 
 from oddsmodel.measures.intervals import lead_interval
 from oddsmodel.results.figures import EstimateMark, EstimatesFigure
+from oddsmodel.results.lead import exposures_shown
 from oddsmodel.results.study import CoefficientResult, ModelResult
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 from oddsmodel.wording import say
@@ -16,14 +17,19 @@ Key = tuple[str, str | None, str | None, str]
 def compare_models(models: Sequence[ModelResult]) -> Table | None:
     """A row for each exposure coefficient and model, coefficients in blocks; None with fewer than two models.
 
+    Where the plan says of a model what it builds upon, its role or whether it was planned, these stand there too, with
+    what differs in words.
+
     A model that was not estimated, or that has no such coefficient, has a row with its records and an empty estimate;
     the note says why.
     """
     if len(models) < 2:
         return None
+    described = any(map(_is_described, models))
     columns = (
         TableColumn("exposure", "Exposure"),
         TableColumn("model", "Model"),
+        *((TableColumn("role", "Role"), TableColumn("differs", "What differs")) if described else ()),
         TableColumn("records", "Records", "count"),
         TableColumn("events", "Events", "count", part_of="records"),
         TableColumn("odds_ratio", "Odds ratio", "odds_ratio", hidden_with=("records", "events")),
@@ -35,13 +41,18 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
     for block, (key, label) in enumerate(_exposures(models).items()):
         for model in models:
             coefficient = _keyed(model).get(key)
+            start: tuple[Cell, ...] = (label, model.name, *(_description(model) if described else ()))
             if coefficient is None or coefficient.odds_ratio is None:
-                rows.append((label, model.name, model.records, model.events, None, None))
+                rows.append((*start, model.records, model.events, None, None))
                 notes[_why_missing(model, label, coefficient)] = None
             else:
                 limits = lead_interval(coefficient.profile, coefficient.wald)
-                rows.append((label, model.name, model.records, model.events, coefficient.odds_ratio, limits))
+                rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
             blocks.append(block)
+    if any(model.role == "subgroup" for model in models):
+        notes[say("compare-models-subgroups")] = None
+    if any(model.planned is False for model in models):
+        notes[say("compare-models-not-planned")] = None
     levels = sorted({round(100 * model.level, 1) for model in models})
     text = " and ".join(f"{level:g}%" for level in levels)
     if len({model.records for model in models}) > 1:
@@ -69,13 +80,28 @@ def models_figure(models: Sequence[ModelResult]) -> EstimatesFigure | None:
     return EstimatesFigure("models", title, say("compare-models-alt", models=[m.name for m in models]), tuple(marks))
 
 
+def _is_described(model: ModelResult) -> bool:
+    """Whether the plan says more of a model than its formula: a base, a role, whether it was planned."""
+    stated = model.role in ("sensitivity", "subgroup")
+    return stated or model.based_on is not None or model.planned is not None
+
+
+def _description(model: ModelResult) -> tuple[str, str]:
+    """The model's role and whether it was planned, and what sets it apart from the others."""
+    differs = "; ".join(
+        part
+        for part in (
+            say("model-adjusted-for", adjustment=list(model.adjustment_labels)) if model.based_on is None else "",
+            model.differs,
+        )
+        if part
+    )
+    return say("model-role", role=model.role, planned=model.planned), differs
+
+
 def _keyed(model: ModelResult) -> dict[Key, CoefficientResult]:
     """The exposure coefficients that are shown, by what tells them apart."""
-    return {
-        (one.term, one.level, one.reference, one.label): one
-        for one in model.coefficients
-        if one.role == "exposure" and one.shown
-    }
+    return {(one.term, one.level, one.reference, one.label): one for one in exposures_shown(model)}
 
 
 def _exposures(models: Sequence[ModelResult]) -> dict[Key, str]:

@@ -11,13 +11,15 @@ from numpy.typing import NDArray
 
 from oddsmodel.design.types import DesignColumn
 from oddsmodel.errors import InputFault
-from oddsmodel.inference.maximise import maximise
+from oddsmodel.inference.clustered import clustered_covariance, small_sample_factor, within_one_group
+from oddsmodel.inference.maximise import Fit, maximise
 from oddsmodel.inference.profile import profile
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.measures.counts import design_levels, level_codes, level_columns
 from oddsmodel.measures.scale import exponential, limits_on_ratio_scale
 from oddsmodel.measures.wald import wald
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.grouped import group_codes
 from oddsmodel.results.study import CrudeEstimate, ProfileResult, WaldResult
 from oddsmodel.wording import say
 
@@ -100,11 +102,16 @@ def _both(model: FittedModel, position: int, own: KeptRecords, kept: KeptRecords
 
 @dataclass(frozen=True, slots=True)
 class _Values:
-    """The distinct values (m) of an exposure as a column of its own kind, with their events (m,) and trials (m,)."""
+    """The distinct values (m) of an exposure as a column of its own kind, with their events (m,) and trials (m,).
+
+    index (n,): the value of each record, −1 where it has none of them. source: the n records.
+    """
 
     distinct: pd.Series
     events: Array
     trials: Array
+    index: NDArray[np.intp]
+    source: KeptRecords
 
     @property
     def records(self) -> int:
@@ -116,7 +123,7 @@ def _estimate(model: FittedModel, position: int, values: _Values, key: str, reas
     column = model.design.columns[position]
     withheld = CrudeEstimate(records=values.records, odds_ratio=None)
     try:
-        X, events, trials = _table(model, position, values)
+        X, events, trials, place = _table(model, position, values)
     except InputFault:
         reasons[key] = say("crude-beyond-the-model", term=column.term)
         return withheld
@@ -132,11 +139,13 @@ def _estimate(model: FittedModel, position: int, values: _Values, key: str, reas
         return withheld
 
     estimate = float(fit.coefficients[1]) * column.per
-    standard_error = float(fit.standard_errors[1]) * abs(column.per)
     odds_ratio = exponential(estimate)
     if odds_ratio is None:
         reasons[key] = say("odds-ratio-out-of-range")
         return withheld
+    if model.grouping is not None:
+        return _of_groups(model, position, values, fit, place, key, reasons)
+    standard_error = float(fit.standard_errors[1]) * abs(column.per)
     ends = wald(estimate, standard_error, model.level)
     interval = limits_on_ratio_scale(profile(fit, np.array([[0.0, column.per]]), model.level), 0)
     return CrudeEstimate(
@@ -152,7 +161,7 @@ def _values(model: FittedModel, column: DesignColumn, records: KeptRecords) -> _
     name = column.sources[0]
     codes, distinct = pd.factorize(records.frame[name])
     series = pd.Series(distinct, name=name)
-    known = codes >= 0
+    known: NDArray[np.bool_] = codes >= 0
     if column.kind == "level":
         seen = level_codes(series, design_levels(model, name)) >= 0
         # None is seen where the levels are bands of a number, which hold values that were not.
@@ -161,25 +170,66 @@ def _values(model: FittedModel, column: DesignColumn, records: KeptRecords) -> _
     trials = np.bincount(codes[known], weights=weight, minlength=len(series)).astype(np.float64)
     events = np.bincount(codes[known], weights=weight * records.event[known], minlength=len(series)).astype(np.float64)
     there = trials > 0
-    return _Values(series[there].reset_index(drop=True), events[there], trials[there])
+    index = np.where(known, (np.cumsum(there) - 1)[codes], -1)
+    return _Values(series[there].reset_index(drop=True), events[there], trials[there], index, records)
 
 
-def _table(model: FittedModel, position: int, values: _Values) -> tuple[Array, Array, Array]:
-    """Matrix (m, 2), events (m,), trials (m,) of an intercept and the exposure's column.
+def _of_groups(
+    model: FittedModel,
+    position: int,
+    values: _Values,
+    fit: Fit,
+    place: NDArray[np.intp],
+    key: str,
+    reasons: dict[str, str],
+) -> CrudeEstimate:
+    """The crude estimate with Wald limits that allow for groups, those of the model of all levels of the exposure."""
+    column, grouping = model.design.columns[position], model.grouping
+    assert grouping is not None
+    source, known = values.source, values.index >= 0
+    codes, _ = group_codes(source.frame[grouping.column])
+    number = np.unique(codes[known]).size
+    own = len(level_columns(model, column.sources[0])) if column.kind == "level" else 1
+    factor = small_sample_factor(number, values.records, own + 1)
 
-    For a level m = 2: the reference and the level. InputFault where the model's function has no value.
+    row = np.where(known, place[values.index], -1)
+    there = row >= 0
+    estimate = float(fit.coefficients[1]) * column.per
+    alone = column.kind == "level" and within_one_group(row[there] == 1, codes[there])
+    # Of the estimate on all records neither interval is told.
+    if key == "crude":
+        reasons["crude.profile"] = say("no-likelihood-of-grouped-records")
+    if factor is None or alone:
+        if key == "crude":
+            reasons["crude.wald"] = say("no-wald-of-one-group")
+        return CrudeEstimate(values.records, exponential(estimate))
+    counts = None if source.counts is None else source.counts[there]
+    covariance = clustered_covariance(fit, row[there], source.event[there], codes[there], factor, counts)
+    standard_error = float(np.sqrt(covariance[1, 1])) * abs(column.per)
+    ends = wald(estimate, standard_error, model.level, number - 1)
+    limits = WaldResult(exponential(ends.lower), exponential(ends.upper), ends.p, number - 1)
+    return CrudeEstimate(values.records, exponential(estimate), limits)
+
+
+def _table(model: FittedModel, position: int, values: _Values) -> tuple[Array, Array, Array, NDArray[np.intp]]:
+    """Matrix (m, 2), events (m,), trials (m,) of an intercept and the exposure's column, and the row of each value.
+
+    For a level m = 2: the reference and the level, and other levels have the row −1. InputFault where the model's
+    function has no value.
     """
     column = model.design.columns[position]
     name = column.sources[0]
     if column.kind == "number":
         x = values.distinct.to_numpy(dtype=np.float64)
-        return np.column_stack([np.ones(x.size), x]), values.events, values.trials
+        return np.column_stack([np.ones(x.size), x]), values.events, values.trials, np.arange(x.size)
     # Only the exposure's own columns are read: the others hold any values that the model knows.
     frame = model.frame.iloc[np.zeros(len(values.distinct), dtype=int)].reset_index(drop=True)
     frame[name] = values.distinct
     X = model.design.encode(frame)
     if column.kind == "transform":
-        return np.column_stack([np.ones(len(frame)), X[:, position]]), values.events, values.trials
+        matrix = np.column_stack([np.ones(len(frame)), X[:, position]])
+        return matrix, values.events, values.trials, np.arange(len(frame))
     own = level_columns(model, name)
     groups = np.array([~X[:, own].any(axis=1), X[:, position] == 1.0], dtype=np.float64)
-    return np.array([[1.0, 0.0], [1.0, 1.0]]), groups @ values.events, groups @ values.trials
+    place = np.where(groups[0] > 0, 0, np.where(groups[1] > 0, 1, -1))
+    return np.array([[1.0, 0.0], [1.0, 1.0]]), groups @ values.events, groups @ values.trials, place

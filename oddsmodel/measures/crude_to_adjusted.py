@@ -52,7 +52,7 @@ def crude_to_adjusted(coefficient: CoefficientResult, level: float, design: str)
     limits = crude.wald
     if limits is None or limits.lower is None or limits.upper is None:
         reason = say("crude-without-standard-error")
-    elif abs(log_crude) < standard_error_from_ratios(limits.lower, limits.upper, level):
+    elif abs(log_crude) < standard_error_from_ratios(limits.lower, limits.upper, level, limits.df):
         reason = say("percent-change-of-almost-nothing")
     else:
         change = 100.0 * (math.exp(log_adjusted - log_crude) - 1.0)
@@ -72,8 +72,10 @@ def adjustment_findings(design: str, adjusted: bool) -> tuple[Finding, ...]:
     return (finding("note", code),)
 
 
-def crude_to_adjusted_table(model: FittedModel, coefficients: Sequence[CoefficientResult]) -> Table:
-    """The same rows, with what adjustment changes and the crude estimate on all records that have the column."""
+def crude_to_adjusted_table(
+    model: FittedModel, coefficients: Sequence[CoefficientResult], averages: Sequence[CoefficientResult] = ()
+) -> Table:
+    """The same rows as of `levels`, with what adjustment changes and the crude estimate on all records that have the column."""
     columns = [
         TableColumn("label", "Exposure"),
         TableColumn("records", "Records", "count", sums_known=True),
@@ -95,7 +97,7 @@ def crude_to_adjusted_table(model: FittedModel, coefficients: Sequence[Coefficie
     blocks: list[int] = []
     remarks: list[str] = []
     for block, name in enumerate(model.exposures):
-        for row in exposure_rows(model, name, coefficients):
+        for row in exposure_rows(model, name, coefficients, averages):
             change: tuple[Cell, ...] = (None, None, None, None)
             remark = ""
             if row.coefficient is not None:

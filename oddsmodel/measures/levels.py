@@ -55,17 +55,23 @@ class ExposureRow:
         return lead_interval(self.coefficient.profile, self.coefficient.wald) if self.coefficient else None
 
 
-def levels(model: FittedModel, coefficients: Sequence[CoefficientResult]) -> Table:
+def levels(
+    model: FittedModel, coefficients: Sequence[CoefficientResult], averages: Sequence[CoefficientResult] = ()
+) -> Table:
     """A row for each level of each exposure, the reference included; a number exposure has one row.
+
+    averages: of exposures that are compared with the average of their levels, the comparison of each level.
 
     The share of events stands only where the design knows it (cohort, trial, cross-sectional). Events of a
     case-control study are called cases. The odds ratios of an exposure that enters as a spline or with an
-    interaction are left empty. Where the model adjusts for nothing, its odds ratios are hidden as crude ones are.
+    interaction are left empty. Where the model adjusts for no other column, its odds ratios are hidden as crude ones
+    are; with one exposure only they are the crude ones, and have no columns of their own.
     """
     share = QUANTITY.get(model.study_design)
     events_heading = "Cases" if model.study_design in CASE_CONTROL else "Events"
     percent = round(100 * model.level, 1)
     alone = not model.adjustment
+    adjusted = not alone or len(model.exposures) > 1
     columns = [
         TableColumn("label", "Exposure"),
         TableColumn("records", "Records", "count", sums_known=True),
@@ -77,22 +83,33 @@ def levels(model: FittedModel, coefficients: Sequence[CoefficientResult]) -> Tab
     columns += [
         TableColumn("crude", "Crude odds ratio", "odds_ratio", hidden_with_block=True),
         TableColumn("crude_interval", f"Crude {percent:g}% interval", "interval", hidden_with_block=True),
-        TableColumn("adjusted", "Adjusted odds ratio", "odds_ratio", hidden_with_block=alone),
-        TableColumn("adjusted_interval", f"Adjusted {percent:g}% interval", "interval", hidden_with_block=alone),
     ]
+    if adjusted:
+        columns += [
+            TableColumn("adjusted", "Adjusted odds ratio", "odds_ratio", hidden_with_block=alone),
+            TableColumn("adjusted_interval", f"Adjusted {percent:g}% interval", "interval", hidden_with_block=alone),
+        ]
     rows: list[tuple[Cell, ...]] = []
     blocks: list[int] = []
     for block, name in enumerate(model.exposures):
-        for row in exposure_rows(model, name, coefficients):
+        for row in exposure_rows(model, name, coefficients, averages):
             per_100 = (100.0 * row.events / row.records if row.records else None,) if share is not None else ()
-            estimates = (row.crude, row.crude_interval, row.adjusted, row.adjusted_interval)
-            rows.append((row.label, row.records, row.events, *per_100, *estimates))
+            own = (row.adjusted, row.adjusted_interval) if adjusted else ()
+            rows.append((row.label, row.records, row.events, *per_100, row.crude, row.crude_interval, *own))
             blocks.append(block)
-    return Table("levels", "By exposure", tuple(columns), tuple(rows), say("levels-note"), tuple(blocks))
+    note = say("levels-note" if adjusted else "levels-note-unadjusted")
+    for term in dict.fromkeys(one.term for one in averages):
+        note += " " + say("average-note", levels=sum(one.term == term for one in averages))
+    return Table("levels", "By exposure", tuple(columns), tuple(rows), note, tuple(blocks))
 
 
-def exposure_rows(model: FittedModel, name: str, coefficients: Sequence[CoefficientResult]) -> list[ExposureRow]:
-    """The rows of one exposure: its levels in order, or one row for a number."""
+def exposure_rows(
+    model: FittedModel,
+    name: str,
+    coefficients: Sequence[CoefficientResult],
+    averages: Sequence[CoefficientResult] = (),
+) -> list[ExposureRow]:
+    """The rows of one exposure: its levels in order, or one row for a number. averages: as of `levels`."""
     column = model.columns[name]
     plain = name in plain_exposures(model)
     own = {
@@ -106,6 +123,10 @@ def exposure_rows(model: FittedModel, name: str, coefficients: Sequence[Coeffici
         label = coefficient.label if coefficient else say("exposure-in-several-columns", label=column.label)
         return [ExposureRow(label, model.records, model.events, coefficient)]
     references = {result.reference for result in own.values()}
+    terms = {result.term for result in own.values()}
+    against = {one.level: one for one in averages if one.term in terms}
+    if against:
+        own, references = against, set()
     return [
         ExposureRow(f"{column.label}: {level}", int(records), int(events), own.get(level), level in references)
         for level, records, events in zip(counted.levels, counted.records, counted.events, strict=True)

@@ -76,6 +76,8 @@ def risks(a: int, b: int, c: int, d: int, level: float = 0.95, design: str = "co
     ratio_interval = NONE
     if ratio is None or a == 0:
         reasons["ratio_interval"] = say("risk-ratio-interval-no-events", quantity=quantity)
+    elif b == d == 0:
+        reasons["ratio_interval"] = say("risk-ratio-interval-all-events", quantity=quantity)
     else:
         reach = z * math.sqrt(b / (a * (a + b)) + d / (c * (c + d)))
         ratio_interval = Interval(ratio * math.exp(-reach), ratio * math.exp(reach))

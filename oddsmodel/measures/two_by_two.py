@@ -16,7 +16,8 @@ from oddsmodel.results.tables import Interval
 from oddsmodel.wording import say
 
 LARGEST_SUPPORT = 200_000
-"""Above so many tables with the same margins the exact limits are left out: Woolf's are the same to all purposes."""
+"""Above so many tables with the same margins the exact limits are left out: unless a cell is small, Woolf's are the
+same to all purposes."""
 
 NONE = Interval(None, None)
 

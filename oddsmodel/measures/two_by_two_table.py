@@ -18,7 +18,9 @@ def two_by_two_tables(model: FittedModel) -> tuple[Table, ...]:
         if counted is None or len(counted.levels) != 2:
             continue
         column = model.columns[name]
-        if (column.reference or counted.levels[0]) == counted.levels[0]:
+        # The formula may name another reference than the plan, and its odds ratio must not be the inverse of this one.
+        named = (one.reference for one in model.design.columns if one.sources == (name,) and one.reference)
+        if next(named, column.reference or counted.levels[0]) == counted.levels[0]:
             counted = LevelCounts(counted.levels[::-1], counted.records[::-1], counted.events[::-1])
         id_ = "two_by_two" if not tables else f"two_by_two_{len(tables) + 1}"
         tables.append(_table(id_, column.label, counted, model.level, model.study_design))

@@ -15,6 +15,7 @@ from oddsmodel.design.encoder import Design
 from oddsmodel.design.patterns import Patterns
 from oddsmodel.inference.maximise import Fit, maximise
 from oddsmodel.likelihood.binomial import BinomialLikelihood
+from oddsmodel.model.grouped import Grouping
 from oddsmodel.records.types import Column
 
 Array = NDArray[np.float64]
@@ -30,6 +31,8 @@ class FittedModel:
         index (n,) from row to pattern, first_row (m,) from pattern to a row of the frame.
     study_design, aim: as the plan says them ("cohort", "case-control", ...; "association", "prediction").
     exposures, adjustment: the record columns in either role. also: the checks the plan asks for.
+    grouping: the groups that the records belong to, where they are not independent; there is then no likelihood of the
+        records, and no test, limit or criterion that rests on one.
     """
 
     name: str
@@ -48,6 +51,7 @@ class FittedModel:
     adjustment: tuple[str, ...]
     also: tuple[str, ...] = ()
     seed: int = 20260101
+    grouping: Grouping | None = None
 
     @cached_property
     def fitted(self) -> Array:

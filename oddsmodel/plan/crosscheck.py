@@ -8,9 +8,21 @@ from dataclasses import dataclass
 from typing import Any
 
 from oddsmodel.errors import Fault
+from oddsmodel.plan.database import faults_of_database
+from oddsmodel.plan.derived_checks import check_derived, check_renamed
 from oddsmodel.plan.faults import fault, key_path
 from oddsmodel.plan.later import LATER_CHECKS, LATER_DESIGN
-from oddsmodel.plan.schema import ChecksSection, ColumnSection, ModelSection, Outcome, RecordsSection, Study
+from oddsmodel.plan.model_checks import check_column, check_models
+from oddsmodel.plan.outcome_checks import check_outcome, check_repeats
+from oddsmodel.plan.schema import (
+    ChecksSection,
+    ColumnSection,
+    DerivedSection,
+    ModelSection,
+    Outcome,
+    RecordsSection,
+    Study,
+)
 from oddsmodel.plan.translate import offer
 from oddsmodel.wording.plain import quoted
 
@@ -18,8 +30,8 @@ LONGEST_MODEL_NAME = 120
 WITH_LEVELS = ("category", "ordered", "yes-no")
 SAME_VALUES = {"1.0": ("true", "yes", "y"), "0.0": ("false", "no", "n")}
 KEYS_FOR_LEVELS = ("levels", "reference", "other_levels")
-KEYS_FOR_NUMBERS = ("per", "units")
-KEYS_FOR_COVARIATES = ("reference", "per", "units", "timing", "why", "other_levels")
+KEYS_FOR_NUMBERS = ("per", "units", "plausible")
+KEYS_FOR_COVARIATES = ("reference", "per", "units", "plausible", "timing", "why", "other_levels")
 
 
 @dataclass(frozen=True)
@@ -32,6 +44,7 @@ class Parts:
     study: Study | None
     records: RecordsSection | None
     columns: Mapping[str, ColumnSection]
+    derived: Mapping[str, DerivedSection]
     outcome: Outcome | None
     models: Mapping[int, ModelSection]
     checks: ChecksSection | None
@@ -48,6 +61,11 @@ def cross_check(parts: Parts) -> Iterator[Fault]:
     yield from _records(parts)
     for name, column in parts.columns.items():
         yield from _column(parts, name, column)
+        yield from check_column(name, column, parts.models, parts.at)
+    yield from check_renamed(parts.columns, parts.at)
+    count = parts.records.count if parts.records else None
+    outcome = parts.outcome.column if parts.outcome else None
+    yield from check_derived(parts.derived, parts.columns, count, outcome, parts.at)
     yield from _outcome(parts)
     yield from _models(parts)
     yield from _checks(parts)
@@ -61,11 +79,28 @@ def _study(parts: Parts) -> Iterator[Fault]:
 def _records(parts: Parts) -> Iterator[Fault]:
     if parts.records is None:
         return
-    if "://" in parts.records.source:
-        yield fault("later-database", parts.at("records", "source"))
+    yield from faults_of_database(
+        parts.records.source,
+        parts.records.query,
+        parts.records.table,
+        parts.at("records", "source"),
+        parts.at("records", "table" if parts.records.query is None else "query"),
+    )
+    yield from _groups(parts, parts.records)
     count = parts.records.count
     if count is not None and parts.outcome and parts.outcome.column == count:
         yield fault("outcome-is-the-count", parts.at("records", "count"), column=quoted(count))
+    yield from check_repeats(parts.records, parts.outcome, parts.columns, parts.at)
+
+
+def _groups(parts: Parts, records: RecordsSection) -> Iterator[Fault]:
+    if records.grouped_by is None:
+        return
+    where = parts.at("records", "grouped_by")
+    if parts.outcome and parts.outcome.column == records.grouped_by:
+        yield fault("grouped-by-outcome", where)
+    if records.count == records.grouped_by:
+        yield fault("grouped-by-count", where)
 
 
 def _column(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fault]:
@@ -179,7 +214,10 @@ def _count_column(parts: Parts, name: str, column: ColumnSection) -> Iterator[Fa
 
 def _outcome(parts: Parts) -> Iterator[Fault]:
     outcome = parts.outcome
-    if outcome and outcome.event is not None and outcome.event in _not_recorded(parts, outcome.column):
+    if outcome is None:
+        return
+    yield from check_outcome(outcome, parts.data.get("outcome"), parts.columns, parts.at)
+    if outcome.column and outcome.event is not None and outcome.event in _not_recorded(parts, outcome.column):
         yield fault("event-not-recorded", parts.at("outcome", "event"), event=quoted(outcome.event))
 
 
@@ -195,16 +233,23 @@ def _models(parts: Parts) -> Iterator[Fault]:
     if parts.data.get("models") == []:
         yield fault("no-models", parts.name)
     yield from _model_names(parts)
+    written = parts.data.get("models")
+    yield from check_models(parts.models, written if isinstance(written, list | tuple) else (), parts.at)
     for position, model in parts.models.items():
         where = parts.at("models", position, "exposures")
-        if not model.exposures:
+        if _is_empty_list(parts, position, "exposures"):
             yield fault("no-exposures", where)
         yield from _repeated(model.exposures, where, "exposure-repeated", "exposure")
         for exposure in dict.fromkeys(model.exposures):
-            if parts.outcome and exposure == parts.outcome.column:
+            if parts.outcome and exposure == parts.outcome.column_name:
                 yield fault("exposure-is-the-outcome", where, exposure=quoted(exposure))
             elif parts.records and exposure == parts.records.count:
                 yield fault("exposure-is-the-count", where, exposure=quoted(exposure))
+
+
+def _is_empty_list(parts: Parts, position: int, key: str) -> bool:
+    written = parts.data["models"][position]
+    return isinstance(written, dict) and written.get(key) in ([], ())
 
 
 def _model_names(parts: Parts) -> Iterator[Fault]:

@@ -11,6 +11,8 @@ from oddsmodel.errors import Fault
 from oddsmodel.wording.plain import quoted
 from oddsmodel.wording.say import say
 
+NAMED_SECTIONS = ("columns", "derived")
+"""Sections that have a section of its own for each column."""
 BARE_KEY = re.compile(r"[A-Za-z0-9_-]+")
 
 
@@ -38,7 +40,7 @@ def key_path(location: Sequence[str | int], data: Any) -> str:
     section, rest = str(location[0]), list(location[1:])
 
     opening = heading(section) if section in _SECTION_NAMES else shown_key(section)
-    if section == "columns" and rest:
+    if section in NAMED_SECTIONS and rest:
         opening = heading(section, str(rest.pop(0)))
     elif section == "models" and rest and isinstance(rest[0], int):
         number = rest.pop(0)
@@ -72,7 +74,7 @@ def shown_number(value: int | float) -> str:
     return f"the number {value}"
 
 
-_SECTION_NAMES = ("study", "records", "columns", "outcome", "models", "report", "checks", "run")
+_SECTION_NAMES = ("study", "records", "columns", "derived", "outcome", "models", "report", "checks", "run")
 
 
 def _model_name(data: Any, number: int) -> str:

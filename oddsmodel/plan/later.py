@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 LATER_SECTIONS: dict[str, str] = {
-    "derived": "later-derived",
     "outcomes": "later-outcomes",
     "missing": "later-missing",
 }
@@ -19,36 +18,12 @@ LATER_KEYS: dict[str, dict[str, str]] = {
         "smallest_important": "later-smallest-important",
     },
     "records": {
-        "query": "later-database",
-        "table": "later-database",
-        "repeats": "later-one-row",
-        "grouped_by": "later-one-row",
         "matched_set": "later-matched",
         "weight": "later-weight",
         "strata": "later-survey",
         "primary_unit": "later-survey",
     },
-    "columns": {
-        "from": "later-from",
-        "plausible": "later-plausible",
-        "compare_with": "later-compare-with",
-    },
-    "outcome": {
-        "start": "later-dates",
-        "event_date": "later-dates",
-        "followed_to": "later-dates",
-        "within_days": "later-dates",
-        "extracted": "later-dates",
-        "event_when": "later-dates",
-    },
     "models": {
-        "based_on": "later-based-on",
-        "add": "later-based-on",
-        "leave_out": "later-based-on",
-        "role": "later-model-notes",
-        "why": "later-model-notes",
-        "planned": "later-model-notes",
-        "trend": "later-trend",
         "modifiers": "later-modifiers",
         "method": "later-method",
         "prior": "later-method",
@@ -74,6 +49,6 @@ def later(location: Sequence[str | int]) -> str | None:
     section, *rest = location
     if not rest:
         return LATER_SECTIONS.get(str(section))
-    if section in ("columns", "models"):
+    if section in ("columns", "derived", "models"):
         rest = rest[1:]
     return LATER_KEYS.get(str(section), {}).get(str(rest[0])) if len(rest) == 1 else None

@@ -18,6 +18,7 @@ from oddsmodel.plan.faults import fault
 from oddsmodel.plan.schema import (
     ChecksSection,
     ColumnSection,
+    DerivedSection,
     ModelSection,
     Outcome,
     RecordsSection,
@@ -106,6 +107,11 @@ def _parts(data: Mapping[str, Any], errors: list[Error], name: str) -> Parts:
         column: _valid(ColumnSection, section)
         for column, section in (columns.items() if isinstance(columns, dict) else ())
     }
+    derived = sound.get("derived")
+    valid_derived = {
+        column: _valid(DerivedSection, section)
+        for column, section in (derived.items() if isinstance(derived, dict) else ())
+    }
     valid_models = {
         position: _valid(ModelSection, section)
         for position, section in enumerate(models if isinstance(models, list) else ())
@@ -114,6 +120,7 @@ def _parts(data: Mapping[str, Any], errors: list[Error], name: str) -> Parts:
         study=_valid(Study, sound.get("study")),
         records=_valid(RecordsSection, sound.get("records")),
         columns={column: section for column, section in valid_columns.items() if section is not None},
+        derived={column: section for column, section in valid_derived.items() if section is not None},
         outcome=_valid(Outcome, sound.get("outcome")),
         models={position: model for position, model in valid_models.items() if model is not None},
         checks=_valid(ChecksSection, sound.get("checks")),
@@ -138,7 +145,7 @@ def _without(data: Mapping[str, Any], errors: list[Error]) -> dict[str, Any]:
         if error.kind == "missing":
             continue
         holder: Any = sound
-        *way, last = error.location[: 3 if error.section in ("columns", "models") else 2]
+        *way, last = error.location[: 3 if error.section in ("columns", "derived", "models") else 2]
         for part in way:
             holder = holder[int(part)] if isinstance(holder, list) else holder.get(part, {})
         if isinstance(holder, list):

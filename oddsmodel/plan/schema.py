@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import math
+from datetime import date, datetime
 from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
+from pydantic.fields import FieldInfo
 from pydantic_core import PydanticCustomError
 
 Design = Literal["cohort", "cross-sectional", "case-control", "matched case-control", "trial"]
@@ -13,6 +15,8 @@ Kind = Literal["number", "category", "ordered", "yes-no", "identifier", "date"]
 Timing = Literal["before exposure", "after exposure", "unknown"]
 
 LARGEST_SEED = 2**63 - 1
+LONGEST_WINDOW = 73_000
+"""Days: some two hundred years."""
 
 
 def _list_as_tuple(value: Any) -> Any:
@@ -48,11 +52,38 @@ def _unit_of_odds_ratio(value: Any) -> Any:
     return number
 
 
+def _day(value: Any) -> Any:
+    """A TOML date, or its ISO text."""
+    if isinstance(value, str):
+        try:
+            return date.fromisoformat(value)
+        except ValueError:
+            raise PydanticCustomError("not_a_day", "a text that is no date") from None
+    if isinstance(value, datetime) or not isinstance(value, date):
+        raise PydanticCustomError("not_a_day", "no date")
+    return value
+
+
+def _named_groups(value: Any) -> Any:
+    """A whole number of groups, or the levels of each group by its name."""
+    if isinstance(value, int) and not isinstance(value, bool):
+        return value
+    if not isinstance(value, dict) or not all(isinstance(levels, list | tuple) for levels in value.values()):
+        raise PydanticCustomError("groups_type", "neither a number of groups nor the levels of each")
+    named = {name: tuple(_cell_text(level) for level in levels) for name, levels in value.items()}
+    if not all(isinstance(level, str) for levels in named.values() for level in levels):
+        raise PydanticCustomError("groups_type", "a level that is not a text")
+    return named
+
+
 Words = Annotated[str, Field(pattern=r"\S")]
 Name = Annotated[str, Field(min_length=1)]
 Names = Annotated[tuple[Name, ...], BeforeValidator(_list_as_tuple)]
 CellText = Annotated[str, BeforeValidator(_cell_text)]
 CellTexts = Annotated[tuple[CellText, ...], BeforeValidator(_list_as_tuple)]
+Numbers = Annotated[tuple[float, ...], BeforeValidator(_list_as_tuple)]
+Day = Annotated[date, BeforeValidator(_day)]
+Groups = Annotated[int | dict[str, tuple[str, ...]], BeforeValidator(_named_groups)]
 Per = Annotated[float | Literal["SD"], BeforeValidator(_unit_of_odds_ratio)]
 
 
@@ -72,13 +103,25 @@ class Study(Section):
     not_measured: Names = ()
 
 
+class Repeats(Section):
+    """Which record of each person is used: of the column that tells persons apart, the first or last by another."""
+
+    of: Name
+    use: Literal["first", "last"]
+    ordered_by: Name
+
+
 class RecordsSection(Section):
     """Where the records are, who belongs, and what one row stands for."""
 
     source: Words
+    query: Words | None = None
+    table: Words | None = None
     not_recorded: CellTexts = ("",)
     keep: Words | None = None
     count: Name | None = None
+    repeats: Repeats | None = None
+    grouped_by: Name | None = None
 
 
 class ColumnSection(Section):
@@ -94,25 +137,90 @@ class ColumnSection(Section):
     units: Words | None = None
     per: Per | None = None
     not_recorded: CellTexts | None = None
+    scores: Numbers | None = None
+    compare_with: Literal["reference", "network average"] = "reference"
+    from_name: Name | None = Field(default=None, alias="from")
+    plausible: Numbers | None = None
+
+
+class DerivedSection(Section):
+    """A column made from others: the one rule that makes it with the keys of that rule, and what is said of it."""
+
+    bands_of: Name | None = None
+    edges: Numbers | None = None
+    years_between: Names | None = None
+    points: dict[str, float] | None = None
+    if_part_missing: Literal["not recorded", "zero"] = "not recorded"
+    groups_of: Name | None = None
+    quantile_groups_of: Name | None = None
+    groups: Groups | None = None
+    other_levels: Literal["stop", "exclude and count"] = "stop"
+    plausible: Numbers | None = None
+    label: Words | None = None
+    units: Words | None = None
+    per: Per | None = None
+    reference: CellText | None = None
+    timing: Timing = "unknown"
+    why: str = ""
+
+    @property
+    def sources(self) -> tuple[str, ...]:
+        """The columns that it is made from, in the order of the plan."""
+        alone = [one for one in (self.bands_of, self.groups_of, self.quantile_groups_of) if one is not None]
+        return (*alone, *(self.years_between or ()), *(self.points or {}))
 
 
 class Outcome(Section):
-    """The column of the outcome and the value that is the event."""
+    """The outcome: a column and the value that is the event, a condition, or dates and a window of days.
 
-    column: Name
+    `event_when` and the dates make a new column, which formulas call by `name`.
+    """
+
+    column: Name | None = None
     event: CellText | None = None
     label: Words | None = None
+    name: Name | None = None
+    event_when: Words | None = None
+    start: Name | None = None
+    event_date: Name | None = None
+    followed_to: Name | None = None
+    within_days: Annotated[int, Field(ge=1, le=LONGEST_WINDOW)] | None = None
+    from_day: Annotated[int, Field(ge=0, le=LONGEST_WINDOW)] = 0
+    extracted: Day | None = None
+
+    @property
+    def column_name(self) -> str:
+        """What formulas and results call the outcome: its column in the records, or the one made by the plan."""
+        return self.column or self.name or "outcome"
+
+    @property
+    def dates(self) -> tuple[str, ...]:
+        """The columns of dates that the outcome is made from."""
+        return tuple(name for name in (self.start, self.event_date, self.followed_to) if name is not None)
 
 
 class ModelSection(Section):
-    """One model: its formula, and which of its columns the question is about."""
+    """One model: its formula, and which of its columns the question is about.
+
+    A model that is `based_on` an earlier one has that one's formula, exposures, level and `keep`, but for what it says
+    itself: `add` and `leave_out` change the formula, its own `keep` must hold beside the base's. `same_records` is true
+    unless said otherwise, except for sensitivity and subgroup models and those whose `keep` narrows their base: these
+    rest on their own complete records, so that they leave the records of the other models alone.
+    """
 
     name: Words
-    formula: Words
-    exposures: Names
+    formula: Words = ""
+    exposures: Names = ()
     level: Annotated[float, Field(ge=0.5, le=0.999, allow_inf_nan=False)] = 0.95
     keep: Words | None = None
     same_records: bool = True
+    based_on: Words | None = None
+    add: Names = ()
+    leave_out: Names = ()
+    role: Literal["sensitivity", "subgroup", "secondary"] | None = None
+    why: str = ""
+    planned: bool | None = None
+    trend: Names = ()
 
 
 class ReportSection(Section):
@@ -135,6 +243,7 @@ class RunSection(Section):
 
 
 Columns = dict[str, ColumnSection]
+DerivedColumns = dict[str, DerivedSection]
 Models = Annotated[tuple[ModelSection, ...], BeforeValidator(_list_as_tuple)]
 
 
@@ -144,6 +253,7 @@ class StudyPlan(Section):
     study: Study
     records: RecordsSection
     columns: Columns = {}
+    derived: DerivedColumns = {}
     outcome: Outcome
     models: Models
     report: ReportSection = ReportSection()
@@ -155,10 +265,16 @@ SECTIONS: dict[str, type[Section]] = {
     "study": Study,
     "records": RecordsSection,
     "columns": ColumnSection,
+    "derived": DerivedSection,
     "outcome": Outcome,
     "models": ModelSection,
     "report": ReportSection,
     "checks": ChecksSection,
     "run": RunSection,
 }
-"""The type of each section; of `columns` and `models` the type of one of their entries."""
+"""The type of each section; of `columns`, `derived` and `models` the type of one of their entries."""
+
+
+def keys_of(section: type[Section]) -> dict[str, FieldInfo]:
+    """The keys of a section as the plan writes them."""
+    return {field.alias or name: field for name, field in section.model_fields.items()}

@@ -6,6 +6,7 @@ import keyword
 import re
 import unicodedata
 from collections.abc import Iterable, Mapping
+from datetime import date
 from typing import Any
 
 _BARE_KEY = re.compile(r"[A-Za-z0-9_-]+")
@@ -98,4 +99,8 @@ def _value(value: Any) -> str:
         return repr(value)
     if isinstance(value, str):
         return text_value(value)
+    if isinstance(value, date):
+        return value.isoformat()
+    if isinstance(value, Mapping):
+        return f"{{{', '.join(f'{key(name)} = {_value(item)}' for name, item in value.items())}}}"
     return f"[{', '.join(_value(item) for item in value)}]"

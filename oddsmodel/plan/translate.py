@@ -8,13 +8,15 @@ from typing import Any, Literal, get_args, get_origin
 
 from oddsmodel.errors import Fault
 from oddsmodel.plan.examples import example
-from oddsmodel.plan.faults import described, fault, heading, key_path, shown_key
+from oddsmodel.plan.faults import NAMED_SECTIONS, described, fault, heading, key_path, shown_key
 from oddsmodel.plan.later import later
 from oddsmodel.plan.nearest import nearest
-from oddsmodel.plan.schema import LARGEST_SEED, SECTIONS
+from oddsmodel.plan.schema import LARGEST_SEED, LONGEST_WINDOW, SECTIONS, Repeats, keys_of
 from oddsmodel.wording.plain import plain, quoted
 
 Location = tuple[str | int, ...]
+REPEATS = ("records", "repeats")
+ALL_OF_REPEATS = tuple(Repeats.model_fields)
 
 _WANTED = {
     "string_type": "a text in quotes",
@@ -27,6 +29,8 @@ _RANGES: dict[str, tuple[str, str]] = {
     "level": ("0.5", "0.999"),
     "hide_counts_below": ("0", "1000"),
     "seed": ("0", str(LARGEST_SEED)),
+    "within_days": ("1", str(LONGEST_WINDOW)),
+    "from_day": ("0", str(LONGEST_WINDOW)),
 }
 
 
@@ -90,14 +94,7 @@ def _missing(error: Error) -> Fault | None:
 
 def _follows_from_later(error: Error) -> bool:
     """Whether what is missing would not be asked for if the plan's "not yet" keys were known."""
-    if error.location == ("outcome",):
-        return "outcomes" in error.data
-    holder: Any = error.data
-    for part in error.location[:-1]:
-        holder = holder[part]
-    if error.section == "models":
-        return "based_on" in holder
-    return error.section == "outcome" and not {"start", "event_date", "event_when"}.isdisjoint(holder)
+    return error.location == ("outcome",) and "outcomes" in error.data
 
 
 def _unknown_key(error: Error) -> Fault:
@@ -109,16 +106,21 @@ def _unknown_key(error: Error) -> Fault:
     if len(error.location) == 1:
         return fault("unknown-section", error.where, key=shown, **_offer_keys(key, SECTIONS, "The sections are"))
 
-    column = str(error.location[1]) if section == "columns" else None
+    column = str(error.location[1]) if section in NAMED_SECTIONS else None
     if column is not None and isinstance(error.value, Mapping):
-        in_full = f"[columns.{quoted(f'{column}.{key}')}]"
+        in_full = f"[{section}.{quoted(f'{column}.{key}')}]"
         return fault("dotted-column-name", error.where, key=shown, column=shown_key(column), example=in_full)
 
-    known = SECTIONS[section].model_fields
+    if error.location[:2] == REPEATS:
+        return fault(
+            "unknown-key", error.where, heading="repeats", key=shown, **_offer_keys(key, ALL_OF_REPEATS, "Its keys are")
+        )
+
+    known = keys_of(SECTIONS[section])
     opening = heading(section, column)
-    home = next((other for other, kind in SECTIONS.items() if key in kind.model_fields), None)
+    home = next((other for other, kind in SECTIONS.items() if key in keys_of(kind)), None)
     if home is not None:
-        other = "a column's own heading, such as [columns.age]" if home == "columns" else heading(home)
+        other = f"a column's own heading, such as [{home}.age]" if home in NAMED_SECTIONS else heading(home)
         return fault("key-of-another-section", error.where, heading=opening, key=shown, other=other)
     return fault("unknown-key", error.where, heading=opening, key=shown, **_offer_keys(key, known, "Its keys are"))
 
@@ -142,9 +144,15 @@ def _wrong_kind(error: Error) -> Fault:
 
 def _not_a_section(error: Error) -> Fault:
     found = described(error.value)
-    if error.location == ("columns",):
-        return fault("not-a-section-per-column", error.where, found=found)
-    opening = heading(error.section, str(error.location[1]) if error.section == "columns" else None)
+    if error.location in (("columns",), ("derived",)):
+        return fault("not-a-section-per-column", error.where, found=found, section=error.section)
+    if error.location == REPEATS:
+        line = example(error.location)
+        return fault("wrong-kind-of-value", error.where, found=found, wanted="a person and an order", example=line)
+    if error.kind == "dict_type":
+        line = f"{error.key} = {{diabetes = 1, cancer = 2}}"
+        return fault("wrong-kind-of-value", error.where, found=found, wanted="a number for each column", example=line)
+    opening = heading(error.section, str(error.location[1]) if error.section in NAMED_SECTIONS else None)
     return fault("not-a-section", error.where, found=found, heading=opening)
 
 
@@ -154,7 +162,8 @@ def _not_one_of(error: Error) -> Fault:
 
 
 def _valid_values(error: Error) -> tuple[str, ...]:
-    field = SECTIONS[error.section].model_fields[error.key]
+    section = Repeats if error.location[:2] == REPEATS else SECTIONS[error.section]
+    field = keys_of(section)[error.key]
     return _literals(field.annotation)
 
 
@@ -178,6 +187,16 @@ def _empty_text(error: Error) -> Fault:
 
 def _per(error: Error) -> Fault:
     return fault("per-not-positive", error.where, found=_found(error.value))
+
+
+def _groups(error: Error) -> Fault:
+    found, line = described(error.value), example(error.location)
+    wanted = "the levels of each group, or a number of groups,"
+    return fault("wrong-kind-of-value", error.where, found=found, wanted=wanted, example=line)
+
+
+def _not_a_day(error: Error) -> Fault:
+    return fault("not-a-day", error.where, found=_found(error.value))
 
 
 def _found(value: Any) -> str:
@@ -209,4 +228,6 @@ _TRANSLATORS: dict[str, Callable[[Error], Fault | None]] = {
     "per_text": _per,
     "per_type": _per,
     "per_range": _per,
+    "groups_type": _groups,
+    "not_a_day": _not_a_day,
 }

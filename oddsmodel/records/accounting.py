@@ -16,6 +16,28 @@ from oddsmodel.wording import say
 
 Mask = NDArray[np.bool_]
 
+REASONS = (
+    "not-kept",
+    "keep-undecided",
+    "person-not-recorded",
+    "repeat-undecided",
+    "repeat",
+    "start-not-recorded",
+    "event-before-start",
+    "window-not-finished",
+    "event-before-window",
+    "not-observed-to-window",
+    "group-not-recorded",
+    "outcome-not-recorded",
+    "exposure-not-recorded",
+    "adjustment-not-recorded",
+    "level-not-in-plan",
+)
+"""Every reason for which a record is left out, in the order in which they are asked."""
+
+NOT_OF_THE_STUDY = ("not-kept", "repeat", "event-before-start", "window-not-finished", "event-before-window")
+"""Reasons that the plan itself sets; such records do not belong to the study and are not missed."""
+
 
 @dataclass(frozen=True, slots=True)
 class Accounting:
@@ -35,9 +57,9 @@ def account(
 ) -> Accounting:
     """The accounting of one model.
 
-    keep: conditions that must all hold. A record that is left out is counted once, under the first of: not kept;
-    undecided whether it is kept; outcome, exposure, adjustment column not recorded; level not in the plan.
-    Each row counts as many records as `records.counts` says. Reasons that no record has are not listed.
+    keep: conditions that must all hold. A record that is left out is counted once, under the first of `REASONS` that
+    holds; those between the conditions and the outcome come from `records.left_out`. Each row counts as many records
+    as `records.counts` says. Reasons that no record has are not listed.
 
     Raises: InputFault for a condition that does not fit the columns.
     """
@@ -51,24 +73,28 @@ def account(
     asked = tuple(dict.fromkeys(name for condition in conditions for name in condition.columns))
     others = tuple(name for name in dict.fromkeys(adjustment) if name not in exposures)
     in_model = (outcome.column, *exposures, *others)
-    reasons: list[tuple[str, tuple[str, ...], Mask]] = [
-        ("not-kept", (), fails),
-        ("keep-undecided", asked, ~(holds | fails)),
-        ("outcome-not-recorded", (outcome.column,), ~outcome.recorded & ~_outside(records, (outcome.column,))),
-        ("exposure-not-recorded", tuple(exposures), _not_recorded(records, exposures)),
-        ("adjustment-not-recorded", others, _not_recorded(records, others)),
-        ("level-not-in-plan", in_model, _outside(records, in_model)),
-    ]
+    reasons: dict[str, tuple[tuple[str, ...], Mask]] = {
+        "not-kept": ((), fails),
+        "keep-undecided": (asked, ~(holds | fails)),
+        **{code: ((), one.rows) for code, one in records.left_out.items()},
+        "outcome-not-recorded": ((outcome.column,), ~outcome.recorded & ~_outside(records, (outcome.column,))),
+        "exposure-not-recorded": (tuple(exposures), _not_recorded(records, exposures)),
+        "adjustment-not-recorded": (others, _not_recorded(records, others)),
+        "level-not-in-plan": (in_model, _outside(records, in_model)),
+    }
     included = np.ones(n, dtype=np.bool_)
     left_out: list[Exclusion] = []
-    for code, columns, mask in reasons:
+    for code in sorted(reasons, key=REASONS.index):
+        columns, mask = reasons[code]
         here = included & mask
         included &= ~mask
         number = _records(records, here)
         if number:
             concerned = _concerned(records, code, columns, here)
             labels = [records.columns[name].label for name in concerned]
-            left_out.append(Exclusion(code, say(f"left-out-{code}", labels=labels, conditions=list(keep)), number))
+            facts = records.left_out[code].facts if code in records.left_out else {}
+            words = say(f"left-out-{code}", **{"labels": labels, "conditions": list(keep), **facts})
+            left_out.append(Exclusion(code, words, number))
     flow = Flow(
         read=records.read,
         left_out=tuple(left_out),

@@ -19,6 +19,7 @@ from oddsmodel.records.faults import fault, in_column, in_plan
 from oddsmodel.records.kinds import kind_of
 from oddsmodel.records.levels import CodedLevels, code_levels, spelled_alike
 from oddsmodel.records.numbers import code_number
+from oddsmodel.records.plausible import within_plausible
 from oddsmodel.records.raw import RawType
 from oddsmodel.records.same_value import absent_mask, matching, same_value_key
 from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
@@ -38,7 +39,8 @@ LEVELS_NAMED = 10
 class CodedColumn:
     """A coded column (see `Records.frame`), with what is to be said of it.
 
-    outside: the mask (n,) of rows whose level is not in the plan, where any is.
+    outside: the mask (n,) of rows whose level is not in the plan, where any is. implausible: the mask (n,) of rows
+    whose number was set aside as outside the plausible range, where any is.
     """
 
     values: pd.Series
@@ -46,11 +48,16 @@ class CodedColumn:
     outside: NDArray[np.bool_] | None = None
     findings: tuple[Finding, ...] = ()
     faults: tuple[Fault, ...] = ()
+    implausible: NDArray[np.bool_] | None = None
 
 
 @dataclass(frozen=True)
 class RawValues:
-    """A raw column with its name and place. not_recorded: the plan's texts for this column; first_row: see RawTable."""
+    """A raw column with its name and place.
+
+    not_recorded: the plan's texts for this column; first_row: see RawTable; file_name: its name in the file, where the
+    plan calls it otherwise.
+    """
 
     name: str
     values: pd.Series
@@ -58,10 +65,11 @@ class RawValues:
     source: str
     first_row: int
     not_recorded: Collection[str]
+    file_name: str | None = None
 
     @property
     def where(self) -> str:
-        return in_column(self.source, self.name)
+        return in_column(self.source, self.file_name or self.name)
 
     @cached_property
     def keys(self) -> frozenset[str]:
@@ -122,10 +130,12 @@ def _unused(raw: RawValues, column: Column) -> CodedColumn:
 def _number(raw: RawValues, column: Column, section: ColumnSection | None, use: Use) -> CodedColumn:
     numbers, faults = code_number(raw.values, raw.keys, where=raw.where, first_row=raw.first_row)
     findings: list[Finding] = []
+    plausible = section.plausible if section is not None else None
+    numbers, implausible = within_plausible(numbers, plausible)
     if use == "model" and not faults:
-        declared = section is not None and (section.kind, section.per, section.units) != (None, None, None)
-        findings = _questions_of_numbers(raw.name, numbers, declared)
-    return CodedColumn(pd.Series(numbers), column, None, tuple(findings), tuple(faults))
+        said = (section.kind, section.per, section.units, plausible) if section is not None else ()
+        findings = _questions_of_numbers(raw.name, numbers, any(one is not None for one in said))
+    return CodedColumn(pd.Series(numbers), column, None, tuple(findings), tuple(faults), implausible)
 
 
 def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: bool) -> list[Finding]:

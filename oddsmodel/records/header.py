@@ -16,7 +16,7 @@ from oddsmodel.wording.plain import quoted
 
 MOST_COLUMNS = 10_000
 LONGEST_NAME = 500
-CONTROL = re.compile(r"[\x00-\x1f\x7f-\x9f\u202a-\u202e\u2066-\u2069]")
+CONTROL = re.compile(r"[\x00-\x1f\x7f-\x9f\u00ad\u061c\u200b\u200e\u200f\u202a-\u202e\u2060-\u2064\u2066-\u2069\ufeff]")
 
 
 def header_end(content: bytes) -> int:
@@ -58,7 +58,8 @@ def vetted_names(cells: Sequence[str], source: str) -> list[str]:
             positions = [position + 1 for position, other in enumerate(names) if other == name]
             faults.append(fault("name-twice", where, name=quoted(name), positions=positions[:10]))
         if CONTROL.search(name) or len(name) > LONGEST_NAME:
-            faults.append(fault("name-not-usable", where, name=quoted(name), longest=LONGEST_NAME))
+            place = f"{where}, column {names.index(name) + 1}"
+            faults.append(fault("name-not-usable", place, name=quoted(name), longest=LONGEST_NAME))
     if names and all(PLAIN_NUMBER.fullmatch(name) for name in names):
         faults.append(fault("no-row-of-names", where, names=[quoted(name) for name in names[:5]]))
     if faults:

@@ -38,7 +38,7 @@ def kind_of(values: pd.Series, raw_type: RawType, section: ColumnSection | None)
         return section.kind
     if section is not None and (section.levels is not None or section.reference is not None):
         return "ordered" if raw_type == "ordered" else "category"
-    if section is not None and (section.per is not None or section.units is not None):
+    if section is not None and not (section.per is None and section.units is None and section.plausible is None):
         return "number"
     return kind_of_texts(values) if raw_type == "text" else SPELLED_TYPES[raw_type]
 

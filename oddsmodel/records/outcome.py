@@ -39,15 +39,16 @@ def code_outcome(records: Records, outcome: Outcome) -> CodedOutcome:
     Raises: InputFault when the column is not in the records, does not have exactly two values among recorded
         ones (the values and their counts are listed), or the event is none of them or left open.
     """
-    if outcome.column not in records.frame.columns:
-        near = nearest(outcome.column, records.frame.columns)
-        facts = {"column": quoted(outcome.column), "nearest": "" if near is None else quoted(near)}
+    column = outcome.column_name
+    if column not in records.frame.columns:
+        near = nearest(column, records.frame.columns)
+        facts = {"column": quoted(column), "nearest": "" if near is None else quoted(near)}
         raise InputFault(fault("column-not-in-file", "the plan, [outcome] column", **facts))
-    codes, values = _values(records.frame[outcome.column])
+    codes, values = _values(records.frame[column])
     weights = None if records.counts is None else records.counts.to_numpy(dtype=np.float64)
     met = np.bincount(codes[codes >= 0], None if weights is None else weights[codes >= 0], minlength=len(values))
     found = [(values[at], int(met[at])) for at in range(len(values)) if met[at] > 0]
-    where = in_column(records.source, outcome.column)
+    where = in_column(records.source, column)
     if len(found) != 2:
         found.sort(key=lambda value: -value[1])
         first = found[:VALUES_NAMED]
@@ -63,7 +64,7 @@ def code_outcome(records: Records, outcome: Outcome) -> CodedOutcome:
     pair = (found[0][0], found[1][0])
     event = _event(pair, outcome)
     other = pair[1] if event == pair[0] else pair[0]
-    return CodedOutcome(codes == values.index(event), codes >= 0, event, other, outcome.column)
+    return CodedOutcome(codes == values.index(event), codes >= 0, event, other, column)
 
 
 def _values(series: pd.Series) -> tuple[NDArray[np.intp], list[str]]:

@@ -50,7 +50,7 @@ def read_table(path: Path, *, text_columns: Collection[str] = (), not_recorded: 
     if data.startswith(ZIP):
         columns, notes = read_spreadsheet(data, path.name)
         found = ((name, values_column(values)) for name, values in columns.items())
-        return _assembled(found, path.name, sha256, notes)
+        return assembled(found, path.name, sha256, notes)
     if data.startswith((OLD_SPREADSHEET, GZIP)):
         code = "packed-file" if data.startswith(GZIP) else "old-spreadsheet"
         raise InputFault(fault(code, path.name))
@@ -73,7 +73,7 @@ def table_from_frame(frame: pd.DataFrame) -> RawTable:
         digest.update(name.encode("utf-8") + b"\0")
         if isinstance(column, RawColumn):
             digest.update(pd.util.hash_pandas_object(column.values, index=False).to_numpy().tobytes())
-    return _assembled(found, source, digest.hexdigest(), (), first_row=1)
+    return assembled(found, source, digest.hexdigest(), (), first_row=1)
 
 
 def _from_arrow(
@@ -81,16 +81,17 @@ def _from_arrow(
 ) -> RawTable:
     names = vetted_names(table.column_names, source)
     found = ((name, raw_column(table.column(position))) for position, name in enumerate(names))
-    return _assembled(found, source, sha256, notes, first_row=first_row)
+    return assembled(found, source, sha256, notes, first_row=first_row)
 
 
-def _assembled(
+def assembled(
     columns: Iterable[tuple[str, RawColumn | str]],
     source: str,
     sha256: str,
     notes: tuple[Finding, ...],
     first_row: int = 2,
 ) -> RawTable:
+    """Columns as a raw table, with notes on what was repaired in them; those that hold no plain values are left out."""
     found = dict(columns)
     raw = {name: column for name, column in found.items() if isinstance(column, RawColumn)}
     refused = {name: column for name, column in found.items() if isinstance(column, str)}

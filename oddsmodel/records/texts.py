@@ -27,7 +27,7 @@ def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) ->
 
     Spaces around a text go; runs of control and direction-changing characters become one space (they could make
     a text look like another one); composed and decomposed accents are one (Unicode NFC). A text of which nothing
-    remains is an empty cell.
+    remains is an empty cell; texts that come out alike, as of 1 and "1" in one column, are one.
     """
     texts = dictionary.cast(pa.string())
     trimmed = pc.utf8_trim_whitespace(texts)
@@ -36,7 +36,7 @@ def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) ->
     counts = np.bincount(codes + 1, minlength=len(texts) + 1)[1:]
     stripped = int(counts[pc.not_equal(texts, trimmed).to_numpy(zero_copy_only=False)].sum())
     cleaned = int(counts[pc.not_equal(trimmed, shown).to_numpy(zero_copy_only=False)].sum())
-    if not clean.equals(texts) or pc.any(pc.equal(clean, "")).as_py():
+    if not clean.equals(texts) or pc.any(pc.equal(clean, "")).as_py() or len(pc.unique(clean)) < len(clean):
         merged = clean.dictionary_encode()
         clean = merged.dictionary
         remaining = pc.not_equal(clean, "").to_numpy(zero_copy_only=False)

@@ -4,10 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Any
 
+import numpy as np
 import pandas as pd
+from numpy.typing import NDArray
 
 from oddsmodel.findings import Finding
+from oddsmodel.results.derived import DerivedColumn
 
 
 @dataclass(frozen=True, slots=True)
@@ -17,6 +21,7 @@ class Column:
     levels: for category, ordered and yes-no the levels in order; the reference is one of them.
     per: the odds ratio's unit for a number (1.0 unless the plan says otherwise; "SD" is resolved to the
         standard deviation on the main model's records when a model is built).
+    deviation: that standard deviation, once it is known; None leaves it to the records of each design.
     """
 
     name: str
@@ -29,6 +34,15 @@ class Column:
     timing: str = "unknown"
     why: str = ""
     other_levels: str = "stop"
+    deviation: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class LeftOut:
+    """Rows (n,) that no model of the plan uses, under one reason; facts: what the reason's sentence needs."""
+
+    rows: NDArray[np.bool_]
+    facts: Mapping[str, Any] = field(default_factory=dict)
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,6 +55,8 @@ class Records:
     outside_levels: per column the mask (n,) of rows whose level is not in the plan, where any is.
     counts: (n,) float64 true frequencies, or None.
     read: records read (the sum of counts where there are any).
+    left_out: what the plan leaves out of every model, by the code of its reason (`accounting.REASONS` orders them).
+    derived: how the derived columns were made, each with its cross-counts over all records read.
     """
 
     frame: pd.DataFrame
@@ -51,3 +67,5 @@ class Records:
     findings: tuple[Finding, ...] = ()
     counts: pd.Series | None = None
     outside_levels: Mapping[str, pd.Series] = field(default_factory=dict)
+    left_out: Mapping[str, LeftOut] = field(default_factory=dict)
+    derived: tuple[DerivedColumn, ...] = ()

@@ -9,11 +9,11 @@ from oddsmodel.report.environment import environment
 from oddsmodel.report.view.cause import cause, closing_cautions
 from oddsmodel.report.view.checks import checks
 from oddsmodel.report.view.counted import characteristics, counted
-from oddsmodel.report.view.lead import is_estimated, lead_model
 from oddsmodel.report.view.methods import methods
 from oddsmodel.report.view.models import comparison, crude, estimates, not_estimated, other_models
 from oddsmodel.report.view.opening import opening
 from oddsmodel.report.view.sheet import Sheets
+from oddsmodel.results.lead import is_estimated, lead_model
 from oddsmodel.results.study import DisclosedResults, StudyResults
 
 

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from oddsmodel.export.answer import answers
 from oddsmodel.progress import Silent
 from oddsmodel.report.environment import environment
-from oddsmodel.report.view.lead import is_estimated, lead_model
 from oddsmodel.report.view.models import exposures_table
-from oddsmodel.report.view.opening import answers, serious
+from oddsmodel.report.view.opening import serious
 from oddsmodel.report.view.sheet import Sheets
+from oddsmodel.results.lead import is_estimated, lead_model
 from oddsmodel.results.study import DisclosedResults
 
 

@@ -8,9 +8,10 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import Any, Literal
 
 from oddsmodel.findings import Finding
+from oddsmodel.results.derived import DerivedColumn
 from oddsmodel.results.figures import Figure
 from oddsmodel.results.tables import Table
 
@@ -66,10 +67,21 @@ class CoefficientResult:
 
 
 @dataclass(frozen=True, slots=True)
+class WaldTest:
+    """Wald's F with its two degrees of freedom, where the records have no likelihood."""
+
+    f: float
+    df: int
+    df_denominator: int
+    p: float
+
+
+@dataclass(frozen=True, slots=True)
 class TermTest:
     """Likelihood-ratio test of a term; terms that contain it are left out of both models.
 
     `term` is "all exposure columns" for the joint test of the exposure and "whole model" for the overall one.
+    wald: stands in its place where records are grouped; `likelihood_ratio` and `p` are then None.
     """
 
     term: str
@@ -77,6 +89,7 @@ class TermTest:
     likelihood_ratio: float | None
     p: float | None
     reason: str | None = None
+    wald: WaldTest | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,6 +144,25 @@ class CertificateResult:
 
 
 @dataclass(frozen=True, slots=True)
+class TrendResult:
+    """A trend over the levels of an ordered column: its scores in place of the levels, all else as in the model.
+
+    term: the term of its levels. scores: the levels in order with their scores. step: the log odds ratio per unit of score as a coefficient, None
+    where it could not be estimated. trend, departure: likelihood-ratio tests of the score against nothing, and of the
+    levels against the score.
+    """
+
+    column: str
+    label: str
+    term: str
+    scores: tuple[tuple[str, float], ...]
+    step: CoefficientResult | None
+    trend: TermTest
+    departure: TermTest
+    reason: str | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class ModelResult:
     """Everything about one fitted (or not fitted) model."""
 
@@ -165,6 +197,27 @@ class ModelResult:
     "two_by_two" where the exposure has two levels, ..."""
     figures: tuple[Figure, ...] = ()
     reasons: Mapping[str, str] = field(default_factory=dict)
+    based_on: str | None = None
+    differs: str = ""
+    """What sets the model apart from the one it builds upon, in words."""
+    planned: bool | None = None
+    trends: tuple[TrendResult, ...] = ()
+    averages: tuple[CoefficientResult, ...] = ()
+    """Each level of a column against the average of its levels, in place of the reference: `compare_with`."""
+    groups: int | None = None
+    """How many groups the records analysed belong to, where the plan groups them."""
+    grouped_by: str | None = None
+    """The label of the column that names the groups."""
+
+
+@dataclass(frozen=True, slots=True)
+class StandardDeviation:
+    """What "per SD" stands for: the deviation of a column among the records of the main model."""
+
+    column: str
+    label: str
+    units: str | None
+    value: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -184,16 +237,23 @@ class Provenance:
     plan_sha256: str
     versions: Mapping[str, str]
     seed: int
+    plan_facts: Mapping[str, Any] = field(default_factory=dict)
+    """What the plan states, by section and key, as plain values without prose."""
 
 
 @dataclass(frozen=True, slots=True)
 class AdjustmentColumn:
-    """What the plan says of a column, for the questions of cause."""
+    """A column of a model: what the plan says of it for the questions of cause, and how its values were taken."""
 
     name: str
     label: str
     timing: str
     why: str
+    kind: str = ""
+    units: str | None = None
+    per: float | str = 1.0
+    levels: tuple[str, ...] = ()
+    reference: str | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -220,6 +280,10 @@ class StudyResults:
     """The models side by side, where the plan has several."""
     comparison_figure: Figure | None = None
     notes: tuple[str, ...] = ()
+    rules: tuple[str, ...] = ()
+    """How the plan makes the outcome and which record of a person it uses, in words; no counts."""
+    standard_deviations: tuple[StandardDeviation, ...] = ()
+    derived: tuple[DerivedColumn, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

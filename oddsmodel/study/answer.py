@@ -12,10 +12,13 @@ from oddsmodel.measures.crude import KeptRecords
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.records.accounting import account
+from oddsmodel.records.types import Column
 from oddsmodel.results.study import AdjustmentColumn, ModelResult, RecordsResult, StudyResults
 from oddsmodel.results.tables import Table
 from oddsmodel.study.check import CheckedPlan
+from oddsmodel.study.deviations import standard_deviations
 from oddsmodel.study.estimate import estimate
+from oddsmodel.study.follow_up import rules, with_losses
 from oddsmodel.study.fitting import Fitted, fit_model
 from oddsmodel.study.prepare import Prepared, conditions, on_records_of
 from oddsmodel.study.provenance import provenance
@@ -30,16 +33,17 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
     progress.stage("fitting", len(models))
     fitted = []
     for prepared in models:
-        fitted.append(fit_model(prepared, plan, records))
+        fitted.append(fit_model(prepared, plan))
         progress.advance()
     results = []
     for prepared, fit in zip(models, fitted, strict=True):
         kept = _kept(checked, _rows_kept(checked, prepared, ()))
-        results.append(estimate(prepared, fit, plan, records, kept, progress))
+        result = estimate(prepared, fit, plan, records, kept, progress)
+        results.append(with_losses(result, prepared, plan, records, checked.outcome))
     differing = _records_differ(checked, tuple(fitted), tuple(results))
     main = results[0]
     used = dict.fromkeys(column for prepared in models for column in (*prepared.exposures, *prepared.adjustment))
-    outcome = records.columns[plan.outcome.column]
+    outcome = records.columns[plan.outcome.column_name]
     comparable = plan.study.design not in ("case-control", "matched case-control")
     share = main.events / main.records if comparable and main.records and main.events is not None else None
     study = StudyResults(
@@ -48,15 +52,12 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         design=plan.study.design,
         aim=plan.study.aim,
         audience=plan.report.audience,
-        outcome=plan.outcome.column,
+        outcome=plan.outcome.column_name,
         outcome_label=outcome.label,
         event=checked.outcome.event_label,
         event_share=share,
         not_measured=plan.study.not_measured,
-        columns=tuple(
-            AdjustmentColumn(name, records.columns[name].label, records.columns[name].timing, records.columns[name].why)
-            for name in used
-        ),
+        columns=tuple(_column(records.columns[name]) for name in used),
         records=RecordsResult(
             source=records.source, sha256=records.sha256, read=records.read, excluded=main.flow.left_out
         ),
@@ -64,10 +65,27 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         characteristics=_characteristics(checked, models[0]),
         findings=(*checked.records.findings, *differing),
         provenance=provenance(checked.file),
+        rules=rules(plan, records),
         comparison=compare_models(results),
         comparison_figure=models_figure(results),
+        standard_deviations=standard_deviations(models[0].columns),
+        derived=records.derived,
     )
     return study, tuple(fitted)
+
+
+def _column(column: Column) -> AdjustmentColumn:
+    return AdjustmentColumn(
+        column.name,
+        column.label,
+        column.timing,
+        column.why,
+        kind=column.kind,
+        units=column.units,
+        per=column.per,
+        levels=column.levels,
+        reference=column.reference,
+    )
 
 
 def _rows_kept(checked: CheckedPlan, prepared: Prepared, exposures: tuple[str, ...]) -> NDArray[np.bool_]:
@@ -104,7 +122,7 @@ def _records_differ(
         if prepared.section.same_records or not sharing or fit.model is None:
             continue
         again = on_records_of(prepared, sharing[0], checked.records)
-        other = fit_model(again, checked.file.plan, checked.records).model if again is not None else None
+        other = fit_model(again, checked.file.plan).model if again is not None else None
         if other is None or other.records == fit.model.records:
             continue
         found.extend(_difference(result, fit.model, other))

@@ -6,9 +6,10 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from oddsmodel.findings import Finding
+from oddsmodel.plan.database import is_database
 from oddsmodel.plan.read import PlanFile, read_plan
 from oddsmodel.progress import Progress, Silent
-from oddsmodel.records.load import load_records
+from oddsmodel.records.load import load_from_database, load_records
 from oddsmodel.records.outcome import CodedOutcome, code_outcome
 from oddsmodel.records.types import Records
 from oddsmodel.study.prepare import Prepared, prepare
@@ -37,7 +38,10 @@ def check_plan(plan_path: Path, progress: Progress | None = None, *, records: Pa
     progress = progress or Silent()
     file = read_plan(plan_path)
     progress.stage("reading")
-    source = records if records is not None else plan_path.parent / file.plan.records.source
-    loaded = load_records(source, file.plan, progress)
+    source = file.plan.records.source
+    if records is None and is_database(source):
+        loaded = load_from_database(plan_path.parent, file.plan, progress)
+    else:
+        loaded = load_records(records or plan_path.parent / source, file.plan, progress)
     outcome = code_outcome(loaded, file.plan.outcome)
     return CheckedPlan(file, loaded, outcome, prepare(file.plan, loaded, outcome))

@@ -13,19 +13,25 @@ from oddsmodel.measures.coefficients import coefficients
 from oddsmodel.measures.crude import KeptRecords, crude
 from oddsmodel.measures.crude_to_adjusted import adjustment_findings, crude_to_adjusted_table
 from oddsmodel.measures.levels import common_outcome, levels
+from oddsmodel.measures.network_average import network_average
+from oddsmodel.measures.trend import trend_table, trends
 from oddsmodel.measures.two_by_two_table import two_by_two_tables
+from oddsmodel.model.fitted import FittedModel
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.progress import Progress
 from oddsmodel.records.types import Records
 from oddsmodel.results.figures import Figure
+from oddsmodel.results.lead import in_answer
 from oddsmodel.results.study import CertificateResult, CoefficientResult, ModelResult
 from oddsmodel.results.tables import Table
 from oddsmodel.study.fitting import Fitted
 from oddsmodel.study.pictures import estimates_figure, flow_figure
 from oddsmodel.study.prepare import Prepared
 from oddsmodel.study.term_tests import term_tests
+from oddsmodel.wording import finding, say
 
 COMPLETE = "complete records"
+LIKELIHOODS = ("log_likelihood", "null_log_likelihood")
 
 
 def estimate(
@@ -37,27 +43,58 @@ def estimate(
         return _result(prepared, fitted, plan, records)
     p = model.fit.coefficients.size
     progress.stage("profiling", 2 * p)
-    limits = profile(model.fit, np.eye(p), model.level, told=progress.advance)
+    independent = model.grouping is None
+    limits = profile(model.fit, np.eye(p), model.level, told=progress.advance) if independent else None
     found = coefficients(model, limits, crude(model, kept))
     tests = term_tests(model)
     progress.stage("checking")
     checks = run_checks(model, progress, flow=prepared.accounting.flow)
+    adjusted = bool(model.adjustment) or len(model.exposures) > 1
     findings = (
         *fitted.findings,
         *common_outcome(model),
-        *adjustment_findings(plan.study.design, bool(model.adjustment)),
+        *adjustment_findings(plan.study.design, adjusted),
     )
-    tables = (levels(model, found), crude_to_adjusted_table(model, found), *two_by_two_tables(model))
-    figures = (flow_figure(prepared), estimates_figure(model, found, prepared.id))
+    averages, not_averaged = _averages(model, plan)
+    findings = (*findings, *not_averaged)
+    scores = {name: column.scores for name, column in plan.columns.items() if column.scores is not None}
+    over_levels = trends(model, prepared.section.trend, scores)
+    changed = (crude_to_adjusted_table(model, found, averages),) if adjusted else ()
+    tables = (
+        levels(model, found, averages),
+        *changed,
+        *(two_by_two_tables(model) if independent else ()),
+        *(trend_table(model, one, found) for one in over_levels),
+    )
+    figures = (flow_figure(prepared), estimates_figure(model, in_answer(found, averages), prepared.id))
     result = _result(prepared, fitted, plan, records, found, findings, tables, figures)
     return replace(
         result,
-        log_likelihood=model.fit.log_likelihood,
+        log_likelihood=model.fit.log_likelihood if independent else None,
         null_log_likelihood=tests.null_log_likelihood,
+        reasons={} if independent else dict.fromkeys(LIKELIHOODS, say("no-log-likelihood-of-grouped-records")),
+        groups=None if model.grouping is None else model.grouping.number,
+        grouped_by=None if model.grouping is None else model.grouping.label,
         terms=tests.tests,
         checks=checks,
         certificate=CertificateResult(float(certificate.digits.min()), certificate.condition_number),
+        trends=over_levels,
+        averages=averages,
     )
+
+
+def _averages(model: FittedModel, plan: StudyPlan) -> tuple[tuple[CoefficientResult, ...], tuple[Finding, ...]]:
+    """The levels of exposures that the plan compares with their average, and a word where that cannot be done."""
+    found: list[CoefficientResult] = []
+    told: list[Finding] = []
+    for name in model.exposures:
+        column = plan.columns.get(name)
+        if column is not None and column.compare_with == "network average":
+            against = network_average(model, name)
+            found.extend(against)
+            if not against:
+                told.append(finding("caution", "average-not-plain-levels", label=model.columns[name].label))
+    return tuple(found), tuple(told)
 
 
 def _result(
@@ -71,6 +108,7 @@ def _result(
     figures: tuple[Figure, ...] | None = None,
 ) -> ModelResult:
     section, flow = prepared.section, prepared.accounting.flow
+    covariance = "model" if plan.records.grouped_by is None else "cluster-robust"
     label = {name: records.columns[name].label for name in (*prepared.exposures, *prepared.adjustment)}
     return ModelResult(
         id=prepared.id,
@@ -78,9 +116,9 @@ def _result(
         formula=prepared.formula.text,
         method="maximum likelihood",
         added_by_program=False,
-        variant={"outcome": plan.outcome.column, "missing": COMPLETE, "covariance": "model"},
-        role="main" if prepared.id == "model-1" else "secondary",
-        why="",
+        variant={"outcome": plan.outcome.column_name, "missing": COMPLETE, "covariance": covariance},
+        role=section.role or ("main" if prepared.id == "model-1" else "secondary"),
+        why=section.why,
         level=section.level,
         status=fitted.status,
         exposures=prepared.exposures,
@@ -101,4 +139,7 @@ def _result(
         findings=fitted.findings if findings is None else findings,
         tables=tables,
         figures=(flow_figure(prepared),) if figures is None else figures,
+        based_on=section.based_on,
+        differs=prepared.differs,
+        planned=section.planned,
     )

@@ -12,8 +12,9 @@ from oddsmodel.findings import Finding
 from oddsmodel.inference import Certificate, Fit, certify, maximise, separation
 from oddsmodel.likelihood import BinomialLikelihood
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.grouped import grouping
 from oddsmodel.plan.schema import StudyPlan
-from oddsmodel.records.types import Records
+from oddsmodel.study.groups import findings_of_groups
 from oddsmodel.study.prepare import Prepared
 from oddsmodel.wording import finding
 
@@ -31,7 +32,7 @@ class Fitted:
     findings: tuple[Finding, ...]
 
 
-def fit_model(prepared: Prepared, plan: StudyPlan, records: Records) -> Fitted:
+def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
     """Collapse, maximise, certify. A model without a finite, unique maximum comes back with its reason."""
     design = prepared.design
     if design is None:
@@ -47,6 +48,19 @@ def fit_model(prepared: Prepared, plan: StudyPlan, records: Records) -> Fitted:
     digits = float(certificate.digits.min())
     if digits < FEW_DIGITS:
         findings = (*findings, finding("caution", "few-digits", digits=int(digits)))
+    grouped = None
+    if plan.records.grouped_by is not None:
+        grouped = grouping(
+            plan.records.grouped_by,
+            prepared.columns[plan.records.grouped_by].label,
+            prepared.frame[plan.records.grouped_by],
+            prepared.event,
+            prepared.counts,
+            design,
+            patterns,
+            certificate.fit,
+        )
+        findings = (*findings, *findings_of_groups(grouped, prepared.accounting.flow))
     model = FittedModel(
         name=prepared.section.name,
         study_design=plan.study.design,
@@ -54,7 +68,7 @@ def fit_model(prepared: Prepared, plan: StudyPlan, records: Records) -> Fitted:
         level=prepared.section.level,
         design=design,
         frame=prepared.frame,
-        columns=records.columns,
+        columns=prepared.columns,
         event=prepared.event,
         counts=prepared.counts,
         patterns=patterns,
@@ -64,6 +78,7 @@ def fit_model(prepared: Prepared, plan: StudyPlan, records: Records) -> Fitted:
         adjustment=prepared.adjustment,
         also=plan.checks.also,
         seed=plan.run.seed,
+        grouping=grouped,
     )
     return Fitted("converged", patterns, model, certificate, findings)
 

@@ -30,14 +30,15 @@ def flow_figure(prepared: Prepared) -> FlowFigure:
 
 def estimates_figure(model: FittedModel, found: Sequence[CoefficientResult], identity: str) -> EstimatesFigure:
     """Crude (on the same records) and adjusted odds ratios of every exposure coefficient that has its own."""
+    adjusted = bool(model.adjustment) or len(model.exposures) > 1
     marks: list[EstimateMark] = []
     for one in found:
         if one.role != "exposure" or not one.shown:
             continue
-        if model.adjustment and one.crude is not None:
+        if adjusted and one.crude is not None:
             limits = lead_interval(one.crude.profile, one.crude.wald)
             marks.append(_mark(one.label, "crude", one.crude.odds_ratio, limits))
-        series = "adjusted" if model.adjustment else "crude"
+        series = "adjusted" if adjusted else "crude"
         marks.append(_mark(one.label, series, one.odds_ratio, lead_interval(one.profile, one.wald)))
     told = [(mark.label, mark.series, mark.estimate, mark.lower, mark.upper) for mark in marks]
     return EstimatesFigure(

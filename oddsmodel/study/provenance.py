@@ -5,8 +5,10 @@ from __future__ import annotations
 import platform
 from importlib.metadata import version
 
+from oddsmodel.plan.database import without_address
 from oddsmodel.plan.read import PlanFile
 from oddsmodel.results.study import Provenance
+from oddsmodel.study.plan_facts import plan_facts
 
 PACKAGES = ("oddsmodel", "numpy", "scipy", "pandas", "pyarrow", "patsy", "statsmodels", "matplotlib")
 
@@ -16,8 +18,9 @@ def provenance(plan: PlanFile) -> Provenance:
     versions = {name: version(name) for name in PACKAGES}
     return Provenance(
         plan_name=plan.path.name,
-        plan_text=plan.text,
+        plan_text=without_address(plan.text, plan.plan.records.source),
         plan_sha256=plan.sha256,
         versions={"Python": platform.python_version(), **versions},
         seed=plan.plan.run.seed,
+        plan_facts=plan_facts(plan.plan),
     )

@@ -38,7 +38,7 @@ def _counting_line(facts: Facts) -> str:
         return f"{line}; none that belongs to the study had to be left out."
     line = f"{line}; {left_out} of those that belong to the study had to be left out"
     if share < 0.05:
-        return f"{line}, too few to change much."
+        return f"{line}, a small part."
     return f"{line}: if what is not recorded goes with the outcome, the odds ratios are off by an unknown amount."
 
 
@@ -238,8 +238,8 @@ FIT_SENTENCES: dict[str, Sentence] = {
     ),
     "calibration-explanation": (
         "Groups are tenths of the fitted probability (equal probabilities stay together), each with its observed "
-        "share and Wilson's interval. The curve is a local straight line over the nearest three quarters of the "
-        "records (Cleveland 1979), drawn between the first and the last hundredth of the records. This describes the "
+        "share and Wilson's interval. The curve is a local straight line over the nearest 75% of the records "
+        "(Cleveland 1979), drawn between the first and the last hundredth of the records. This describes the "
         "records that the model was fitted to, whose overall level and slope agree by construction; it does not say "
         "how well the model would do elsewhere. It is called worth a look where at least three intervals leave out "
         "the fitted share and the mean gap is above a tenth of the share of the rarer outcome."
@@ -254,8 +254,8 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "roc-no-overlap": _roc_no_overlap,
     "roc-no-spread": "No interval: all records that count have the same place among the fitted probabilities.",
     "roc-explanation": (
-        "The area is the share of pairs, one record with the event and one without, in which the one with the event "
-        "has the higher fitted probability; ties count one half. The standard error is that of DeLong, DeLong & "
+        "The area is the share of pairs, a record with the event beside a record without it, in which the former has "
+        "the higher fitted probability; ties count one half. The standard error is that of DeLong, DeLong & "
         "Clarke-Pearson (1988), the interval on the logit scale. Measured on the records that the model was fitted "
         "to, the area flatters. It does not say whether the model fits, nor whether an odds ratio is right: for a "
         "question of association it is a description only."
@@ -294,16 +294,18 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "influence-patterns-title": "Covariate patterns that move the exposure's coefficients most",
     "influence-one-step-heading": "Odds ratio without it, to one step: {label}",
     "influence-alone": "A pattern whose leverage is 1 fixes a coefficient by itself; the rest of its row is empty.",
+    "influence-axis": "Fitted probability",
+    "influence-axis-cases": "Fitted probability of being a case among these records",
     "influence-alt": _influence_alt,
     "influence-explanation": (
         "Records with equal values of all columns form a covariate pattern. Leverage, the falls in Pearson chi-square "
         "and deviance, and the shift of the coefficients without a pattern are taken to one step of the fit "
         "(Pregibon 1981); patterns are put in order by how far the exposure's coefficients shift. The odds ratios "
         "without the 1, 5 and 10 patterns of most influence are exact: the model is fitted again. Leaving out the "
-        "records of most influence always moves an estimate: ten of a thousand ordinary records by about one and a "
-        "half standard errors. It is a caution where one pattern (at most 5% of the records) moves a coefficient by "
-        "a standard error, or k patterns (at most 2%) by the square root of k standard errors, and the odds ratio by "
-        "10%; worth a look from three quarters of that on. Odd records are to be checked for mistakes, not left out "
-        "because they are odd."
+        "records of most influence always moves an estimate: ten of a thousand ordinary records by half a standard "
+        "error to two, the more the fewer events the exposed have. It is a caution where one pattern (at most 5% of "
+        "the records) moves a coefficient by a standard error, or k patterns (at most 2%) by the square root of k "
+        "standard errors, and the odds ratio by 10%; worth a look from three quarters of that on. Odd records are to "
+        "be checked for mistakes, not left out because they are odd."
     ),
 }

@@ -54,7 +54,7 @@ def _collinearity_line(facts: Mapping[str, Any]) -> str:
     if factor >= 2.0:
         return (
             f"{exposure} goes closely with the adjustment columns: its standard error is about {decimal(factor, 1)} "
-            "times what it would be if they were unrelated, which is why its interval is wide."
+            "times what it would be if they were unrelated, and its interval wider to match."
         )
     line = f"Overlap with the other columns widens the standard error of {exposure} only {decimal(factor, 2)} times."
     if not tied:
@@ -89,8 +89,8 @@ def _lines(of: list[Any]) -> str:
 
 def _not_straight(facts: Mapping[str, Any]) -> str:
     message = (
-        f"{facts['column']} does not act as a straight line (p {_p(facts['p'])}): over the middle 90% of the "
-        f"records the odds by a curve and by the line differ by up to {_factor(facts['departure'])}."
+        f"A curve fits better than the straight line of {facts['column']} (p {_p(facts['p'])}): over the middle 90% "
+        f"of the records the odds by the curve and by the line differ by up to {_factor(facts['departure'])}."
     )
     if facts["of_exposure"]:
         return f"{message} Its one odds ratio is an average over its range; see the curve, and consider a spline."
@@ -268,8 +268,8 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "overlap-nothing-adjusted": "Nothing is adjusted for beside the exposure, so there is nothing to overlap across.",
     "overlap-no-exposure": "The model names no exposure.",
     "overlap-not-fitted": "No model of the exposure on the adjustment columns could be fitted.",
-    "overlap-no-category": "No exposure is a category.",
-    "overlap-no-number": "No exposure is a number.",
+    "overlap-no-category": "The share of records outside the overlap is for an exposure in groups.",
+    "overlap-no-number": "The share of variance that the adjustment columns explain is for a number exposure.",
     "overlap-none-outside": "No record is known to lie outside the overlap, so none was left out.",
     "overlap-not-refitted": "Without the records outside the overlap the exposure has no single odds ratio.",
     "overlap-figure-title": "{group} and {other} across the adjustment columns",
@@ -293,7 +293,8 @@ FORM_SENTENCES: dict[str, Sentence] = {
     ),
     "independence-title": "Does each record stand for itself?",
     "independence-identifier": (
-        "No identifier repeats, so nobody is counted twice; the records are taken to be independent in other ways too."
+        "No identifier repeats, so no record stands twice; the records are taken to be independent of one another, "
+        "which an identifier of records, rather than of people, cannot show."
     ),
     "independence-unchecked": (
         "The records are taken to be independent; no identifier was declared by which repeated people could be found."

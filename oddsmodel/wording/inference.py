@@ -9,6 +9,8 @@ from typing import Any
 from oddsmodel.wording.numbers import listed
 from oddsmodel.wording.say import Sentence
 
+MOST_NAMED = 8
+
 
 def _weight(weight: float) -> str:
     fraction = Fraction(weight).limit_denominator(12)
@@ -39,14 +41,21 @@ def _aliased(facts: Mapping[str, Any]) -> str:
     )
 
 
+def _named(labels: list[str]) -> str:
+    """The labels in a list; of very many the first, with the number of the others."""
+    if len(labels) <= MOST_NAMED + 1:
+        return listed(labels)
+    return listed([*labels[:MOST_NAMED], f"{len(labels) - MOST_NAMED} more"])
+
+
 def _separated(facts: Mapping[str, Any]) -> str:
     told = []
     if facts["rising"]:
-        told.append(f"the odds ratio of {listed(facts['rising'])} rises without end")
+        told.append(f"the odds ratio of {_named(facts['rising'])} rises without end")
     if facts["falling"]:
-        told.append(f"the odds ratio of {listed(facts['falling'])} falls to zero")
+        told.append(f"the odds ratio of {_named(facts['falling'])} falls to zero")
     if facts["undetermined"]:
-        told.append(f"{listed(facts['undetermined'])} cannot be told apart from the rest")
+        told.append(f"the records do not settle which way {_named(facts['undetermined'])} would go")
     kind = "Every record is" if facts["complete"] else "Some records are"
     return (
         f"No finite estimate exists. {kind} predicted perfectly by the columns of this model (separation), so that "
@@ -63,7 +72,7 @@ SENTENCES: dict[str, Sentence] = {
         "Columns of very different size or a nearly empty level are the usual cause."
     ),
     "more-parameters-than-records": (
-        "The model has {parameters} coefficients and only {patterns} different kinds of record, so it cannot be "
-        "estimated. Leave terms out of the formula."
+        "The model has {parameters} coefficients, more than there are different kinds of record ({patterns}), so it "
+        "cannot be estimated. Leave terms out of the formula."
     ),
 }

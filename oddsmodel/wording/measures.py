@@ -6,13 +6,14 @@ from collections.abc import Mapping
 from typing import Any
 
 from oddsmodel.wording.numbers import count, decimal, listed, percent, ratio
+from oddsmodel.wording.measures_lost import LOST
 from oddsmodel.wording.say import Sentence
 
 
 def _too_large(facts: Mapping[str, Any]) -> str:
     return (
         f"{count(facts['tables'])} tables share these margins, more than the {count(facts['most'])} up to which exact "
-        "limits are computed; in a table of this size Woolf's interval is as good."
+        "limits are computed; where no cell is small, Woolf's interval is as good in a table of this size."
     )
 
 
@@ -33,8 +34,8 @@ def _moved_with_change(facts: Mapping[str, Any]) -> str:
 
 def _overstates(facts: Mapping[str, Any]) -> str:
     return (
-        f"The event happened to {percent(facts['share'])} of the records. Above 10% an odds ratio lies further from 1 "
-        f"than the {facts['quantity']} ratio: read as a {facts['quantity']} ratio it would overstate it."
+        f"The event happened to {percent(facts['share'])} of the records. Above 10% an odds ratio lies noticeably "
+        f"further from 1 than the {facts['quantity']} ratio: read as a {facts['quantity']} ratio it would overstate it."
     )
 
 
@@ -69,6 +70,9 @@ SENTENCES: dict[str, Sentence] = {
     "group-of-nobody": "There is nobody in one of the groups.",
     "risk-ratio-no-events-unexposed": "Nobody unexposed had the event, so there is no {quantity} to divide by.",
     "risk-ratio-interval-no-events": "The interval of the {quantity} ratio needs events in both groups.",
+    "risk-ratio-interval-all-events": (
+        "Everybody had the event, so the standard error of the {quantity} ratio is 0 whatever the number of records."
+    ),
     # Crude estimates
     "crude-without-intercept": "The model has no intercept, so there is no crude odds ratio to set beside it.",
     "crude-of-several-columns": (
@@ -98,6 +102,10 @@ SENTENCES: dict[str, Sentence] = {
     "levels-note": (
         "Intervals are profile-likelihood limits, or Wald limits where there are none. "
         "Crude: the exposure alone, on the same records as the adjusted estimate."
+    ),
+    "levels-note-unadjusted": (
+        "Intervals are profile-likelihood limits, or Wald limits where there are none. The model adjusts for nothing, "
+        "so its odds ratios are the crude ones."
     ),
     "crude-beside-adjusted-note": (
         "Crude and adjusted rest on the same records. The difference of logs is the adjusted log odds ratio less the "
@@ -137,7 +145,7 @@ SENTENCES: dict[str, Sentence] = {
     # Who they were
     "groups-case-status": "Shown by case status.",
     "groups-levels": "Shown by {label}.",
-    "groups-thirds": "Shown by {groups} groups of {label}, cut where a third and two thirds of records are reached.",
+    "groups-thirds": "Shown by {groups} groups of {label}, cut at the thirds of the records.",
     "groups-one": "Shown together: {label} has too few distinct values to make groups.",
     "row-records": "Records analysed",
     "characteristics-note": (
@@ -148,4 +156,5 @@ SENTENCES: dict[str, Sentence] = {
     ),
     "largest-standardised-difference": "With more than two groups it is the largest between any two of them.",
     "no-standardised-difference": _no_difference,
+    **LOST,
 }

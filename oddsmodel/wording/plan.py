@@ -6,6 +6,9 @@ from collections.abc import Mapping
 from typing import Any
 
 from oddsmodel.wording.numbers import listed
+from oddsmodel.wording.plan_derived import SENTENCES as DERIVED
+from oddsmodel.wording.plan_models import SENTENCES as MODELS
+from oddsmodel.wording.plan_outcome import OUTCOME_FAULTS
 from oddsmodel.wording.say import Sentence
 
 LONGEST_LIST = 12
@@ -100,7 +103,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "not-a-section-per-column": (
         "This is {found} where a section for each column is wanted.",
-        'Write a heading such as [columns.age] and below it keys such as kind = "number".',
+        "Write a heading such as [{section}.age] and below it the keys of that column.",
     ),
     "not-a-list-of-models": (
         "This is {found} where models are wanted.",
@@ -118,10 +121,6 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     "not-readable-as": ("The value cannot be used here ({problem}).", "Write it as {example}."),
     "more-faults": (_others, "Put these right first and check the plan again."),
     # What a later version brings.
-    "later-derived": (
-        "This version makes no columns from others yet.",
-        "Until then, prepare the column in the file of records.",
-    ),
     "later-outcomes": (
         "This version takes only one outcome a plan, as yet.",
         "Until then, write a plan for each outcome, with [outcome] in single brackets.",
@@ -143,12 +142,8 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Until then, take the line out and judge the interval against it by eye.",
     ),
     "later-compare-with": (
-        "This version compares each level with the reference level only, as yet.",
-        "Until then, take the line out and choose the reference in the column's section.",
-    ),
-    "later-database": (
-        "This version reads no database or web address yet.",
-        "Until then, save the rows as a CSV or Parquet file and name that as source.",
+        "This version compares levels in this way for a whole column only, as yet.",
+        "Until then, take the line out and write compare_with in the section of the exposure's column.",
     ),
     "later-one-row": (
         "This version has no way yet to deal with several rows that belong together.",
@@ -163,30 +158,6 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Until then, take the line out; true counts of equal records go under count.",
     ),
     "later-survey": ("This version makes no allowance for a survey's design yet.", "Until then, take the line out."),
-    "later-from": (
-        "This version renames no columns yet.",
-        "Until then, head the section with the column's name as the records have it, and say the nicer name as label.",
-    ),
-    "later-plausible": (
-        "This version does not set implausible values aside yet.",
-        "Until then, leave them empty in the records or list them in the column's not_recorded.",
-    ),
-    "later-dates": (
-        "This version makes no outcome from dates or conditions yet.",
-        "Until then, prepare a column that holds whether the event happened and name it as column.",
-    ),
-    "later-based-on": (
-        "This version builds no model upon another yet.",
-        "Until then, write the model out in full, with its own formula and exposures.",
-    ),
-    "later-model-notes": (
-        "This version keeps no notes on single models yet.",
-        "Until then, say it in the model's name or in a # comment.",
-    ),
-    "later-trend": (
-        "This version has no test for a trend over ordered levels yet.",
-        "Until then, add a second model with the levels' scores as a number column.",
-    ),
     "later-modifiers": (
         "This version gives no odds ratios by stratum yet.",
         "Until then, take the line out; a product such as smoker:sex may stand in the formula.",
@@ -335,7 +306,9 @@ DRAFT: dict[str, Sentence] = {
 }
 
 SENTENCES: dict[str, Sentence] = (
-    {code: what for code, (what, _) in FAULTS.items()}
-    | {f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()}
+    {code: what for code, (what, _) in (FAULTS | OUTCOME_FAULTS).items()}
+    | {f"{code}-remedy": remedy for code, (_, remedy) in (FAULTS | OUTCOME_FAULTS).items()}
     | DRAFT
+    | MODELS
+    | DERIVED
 )

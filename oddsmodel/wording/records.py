@@ -7,7 +7,10 @@ from typing import Any
 
 from oddsmodel.wording.numbers import count, listed, plural
 from oddsmodel.wording.plain import plain, quoted
+from oddsmodel.wording.records_database import DATABASE_FAULTS, DATABASE_FINDINGS
+from oddsmodel.wording.records_derived import DATE_FAULTS, DERIVED_FAULTS, DERIVED_WORDS
 from oddsmodel.wording.records_faults import FAULTS
+from oddsmodel.wording.records_follow_up import FOLLOW_UP, FOLLOW_UP_FAULTS
 from oddsmodel.wording.say import Sentence
 
 Facts = Mapping[str, Any]
@@ -155,8 +158,13 @@ FINDINGS: dict[str, Sentence] = {
     "survey-empty": "No value is recorded: leave the column out.",
 }
 
+ALL_FAULTS = FAULTS | FOLLOW_UP_FAULTS | DATE_FAULTS | DERIVED_FAULTS | DATABASE_FAULTS
+
 SENTENCES: dict[str, Sentence] = (
     FINDINGS
-    | {code: what for code, (what, _) in FAULTS.items()}
-    | {f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()}
+    | FOLLOW_UP
+    | DATABASE_FINDINGS
+    | DERIVED_WORDS
+    | {code: what for code, (what, _) in ALL_FAULTS.items()}
+    | {f"{code}-remedy": remedy for code, (_, remedy) in ALL_FAULTS.items()}
 )

@@ -105,7 +105,10 @@ def _outcome_values_remedy(facts: Facts) -> str:
 
 
 WHOLE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
-    "file-missing": ("There is no such file or folder.", "Check the name; it is relative to the plan."),
+    "file-missing": (
+        "There is no such file or folder.",
+        "Check the name and the folder; the source that a plan names is looked for beside the plan.",
+    ),
     "file-not-regular": ("This is not an ordinary file.", "Save the records as a file."),
     "file-not-readable": ("The file cannot be opened: {reason}.", "Check that you may read it."),
     "file-empty": (

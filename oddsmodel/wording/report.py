@@ -111,9 +111,12 @@ SENTENCES: dict[str, Sentence] = {
     "column-likelihood-ratio": "Likelihood-ratio statistic",
     "column-term-p": "p-value",
     "table-exposure": "Adjusted odds ratios of the exposures",
+    "table-exposure-unadjusted": "Odds ratios of the exposure, not adjusted",
     "table-adjustment": "Odds ratios of the adjustment columns",
     "terms-table": "Likelihood-ratio tests",
-    "terms-note": "Each line compares the model with one that leaves out the term and all terms that contain it.",
+    "terms-note": (
+        "Each line compares two models, one with the term and one without it; terms that contain it are in neither."
+    ),
     "all exposure columns": "All exposure columns together",
     "whole model": "The whole model",
     "fold-adjustment": "Odds ratios of the adjustment columns",
@@ -145,7 +148,7 @@ SENTENCES: dict[str, Sentence] = {
     "added-by-program": "Added by the program, not asked for in the plan.",
     # Checks
     "checks-lead": "What was looked at, each in one line. The detail is folded beneath its line.",
-    "not-given": "Left out: {reason}",
+    "not-given": "Not given: {reason}",
     "checks-none": "No check of this model could be done.",
     "fold-certificate": "How exact the numbers are",
     "fold-notes": "Notes",

@@ -10,6 +10,7 @@ from oddsmodel.wording.say import Sentence
 
 YES = frozenset({"yes", "y", "true", "1", "event", "case"})
 CASE_CONTROL = ("case-control", "matched case-control")
+AVERAGE = "the network average"
 WIDE = 3.0
 NARROW = 1.25
 
@@ -42,7 +43,8 @@ def _direction(value: float) -> str:
 
 def _who(facts: Mapping[str, Any]) -> str:
     """Whose odds, of what, compared with whom: the beginning of the sentence, by design."""
-    outcome, design, stepwise = facts["outcome"], facts["design"], facts["reference"] is None
+    outcome, design = facts["outcome"], facts["design"]
+    stepwise = facts["reference"] in (None, AVERAGE)
     if design in CASE_CONTROL and not stepwise:
         return f"the odds of “{facts['level']}” rather than “{facts['reference']}” among cases were"
     if design in CASE_CONTROL:
@@ -57,6 +59,8 @@ def _who(facts: Mapping[str, Any]) -> str:
 def _compared(facts: Mapping[str, Any]) -> str:
     if facts["reference"] is None:
         return "for each such step"
+    if facts["reference"] == AVERAGE:
+        return AVERAGE
     return "those among controls" if facts["design"] in CASE_CONTROL else f"those with “{facts['reference']}”"
 
 
@@ -97,7 +101,8 @@ def _compatible(facts: Mapping[str, Any]) -> str:
 
 
 def _basis(facts: Mapping[str, Any]) -> str:
-    words = f"Adjusted for {listed(facts['adjustment'])}" if facts["adjustment"] else "Not adjusted for anything"
+    nothing = "Adjusted for nothing else" if facts["mutually"] else "Not adjusted for anything"
+    words = f"Adjusted for {listed(facts['adjustment'])}" if facts["adjustment"] else nothing
     if facts["mutually"]:
         words += "; the exposures are mutually adjusted, each for the others"
     if facts["records"] is not None:
@@ -113,9 +118,11 @@ def _several_columns(facts: Mapping[str, Any]) -> str:
         f"{facts['labels']} enters the model through several columns that change together, so no single odds ratio "
         "stands for it"
     )
-    if not facts["p"]:
+    p = facts["p"]
+    if not p:
         return f"{words}."
-    return f"{words}. The likelihood-ratio test of all its columns together gives p = {facts['p']}."
+    p = p if p.startswith(("under", "over")) else f"= {p}"
+    return f"{words}. The likelihood-ratio test of all exposure columns together gives p {p}."
 
 
 SENTENCES: dict[str, Sentence] = {

@@ -75,6 +75,10 @@ SENTENCES: dict[str, Sentence] = {
     "cause-no-adjustment": (
         "Nothing was adjusted for, so any common cause of exposure and outcome is still in the answer."
     ),
+    "cause-no-adjustment-but-exposures": (
+        "The exposures are adjusted for each other and for nothing else, so any other common cause of exposure and "
+        "outcome is still in the answers."
+    ),
     "cause-table": "What was adjusted for, and why",
     "cause-column": "Column",
     "cause-timing": "Measured",

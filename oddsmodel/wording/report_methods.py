@@ -9,6 +9,9 @@ from oddsmodel.wording.numbers import count, listed, plural
 from oddsmodel.wording.say import Sentence
 
 REFERENCES: dict[str, str] = {
+    "armitage-1955": (
+        "Armitage P. Tests for linear trends in proportions and frequencies. Biometrics 1955; 11: 375–386."
+    ),
     "austin-2009": (
         "Austin PC. Balance diagnostics for comparing the distribution of baseline covariates between treatment groups "
         "in propensity-score matched samples. Statistics in Medicine 2009; 28: 3083–3107."
@@ -19,6 +22,13 @@ REFERENCES: dict[str, str] = {
     ),
     "brier-1950": (
         "Brier GW. Verification of forecasts expressed in terms of probability. Monthly Weather Review 1950; 78: 1–3."
+    ),
+    "cochran-1954": (
+        "Cochran WG. Some methods for strengthening the common χ² tests. Biometrics 1954; 10: 417–451."
+    ),
+    "cameron-miller-2015": (
+        "Cameron AC, Miller DL. A practitioner's guide to cluster-robust inference. Journal of Human Resources 2015; "
+        "50: 317–372."
     ),
     "cox-1958": (
         "Cox DR. The regression analysis of binary sequences. Journal of the Royal Statistical Society, Series B 1958; "
@@ -40,6 +50,9 @@ REFERENCES: dict[str, str] = {
     "hosmer-lemeshow-1980": (
         "Hosmer DW, Lemeshow S. Goodness of fit tests for the multiple logistic regression model. Communications in "
         "Statistics: Theory and Methods 1980; 9: 1043–1069."
+    ),
+    "liang-zeger-1986": (
+        "Liang KY, Zeger SL. Longitudinal data analysis using generalized linear models. Biometrika 1986; 73: 13–22."
     ),
     "paul-2013": (
         "Paul P, Pennell ML, Lemeshow S. Standardizing the power of the Hosmer–Lemeshow goodness of fit test in large "
@@ -120,8 +133,8 @@ SENTENCES: dict[str, Sentence] = {
     ),
     "methods-wald": "Intervals at {level} are Wald intervals (Wald, 1943).",
     "methods-terms": (
-        "Whole terms were tested by the likelihood ratio, against models that leave out the term and all terms that "
-        "contain it."
+        "Whole terms were tested by the likelihood ratio of two models, one with the term and one without it, neither "
+        "of them with terms that contain it."
     ),
     "methods-crude": (
         "Crude odds ratios come from models of the exposure alone, on the same records as the adjusted ones; the two "

@@ -14,7 +14,20 @@ from typing import Any
 from oddsmodel.findings import Finding, Severity
 
 Sentence = str | Callable[[Mapping[str, Any]], str]
-MODULES = ("plan", "records", "design", "inference", "measures", "checks", "disclosure", "study", "report", "cli")
+MODULES = (
+    "plan",
+    "records",
+    "design",
+    "inference",
+    "measures",
+    "checks",
+    "disclosure",
+    "study",
+    "grouped",
+    "report",
+    "cli",
+    "changes",
+)
 
 
 @cache

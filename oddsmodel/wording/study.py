@@ -7,6 +7,7 @@ from typing import Any
 
 from oddsmodel.wording.numbers import count, interval, ratio
 from oddsmodel.wording.say import Sentence
+from oddsmodel.wording.study_models import SENTENCES as MODELS
 
 
 def _flow(facts: Mapping[str, Any]) -> str:
@@ -24,6 +25,7 @@ def _estimates(facts: Mapping[str, Any]) -> str:
 
 
 SENTENCES: dict[str, Sentence] = {
+    **MODELS,
     "no-records-left": (
         "No record is left to analyse: every one was left out. The accounting shows the reasons; look at `keep`, "
         "`not_recorded` and the levels in the plan."
@@ -40,6 +42,30 @@ SENTENCES: dict[str, Sentence] = {
         "The numbers of this model are certain to about {digits} significant digits only, because its columns are "
         "nearly combinations of one another."
     ),
+    "exposure-not-in-formula": "The exposure {exposure} is not a column of the formula.",
+    "exposure-not-in-formula-remedy": lambda facts: (
+        (f"Did you mean {facts['nearest']}? " if facts["nearest"] else "")
+        + "An exposure is a column that the formula holds."
+    ),
+    "formula-not-text": "The formula is not a text.",
+    "formula-not-text-remedy": 'Write the outcome, a tilde and the terms: "died ~ smoker + age".',
+    "formula-names-no-outcome": "The formula names no outcome.",
+    "formula-names-no-outcome-remedy": (
+        'Write the outcome\'s column, a tilde and the terms: "died ~ smoker + age". A name with a space in it is '
+        'written Q("the name").'
+    ),
+    "frame-not-a-frame": "The records are not a pandas data frame.",
+    "frame-not-a-frame-remedy": "Give a data frame, such as pandas.DataFrame(records).",
+    "frame-names-nested": "The names of the columns have several levels.",
+    "frame-names-nested-remedy": "Give each column one name, as in frame.columns = [...].",
+    "not-a-list-of-names": "A list of names is wanted.",
+    "not-a-list-of-names-remedy": 'Write it in brackets, as in {key}=["{example}"].',
+    "columns-not-sections": "Each column's settings are wanted under its name.",
+    "columns-not-sections-remedy": 'Write them as in columns={{"age": {{"per": 10, "units": "years"}}}}.',
+    "audience-unknown": "There is no audience {audience}.",
+    "audience-unknown-remedy": 'Choose "shareable" or "internal".',
+    "internal-not-named": "An internal report shows small counts.",
+    "internal-not-named-remedy": "Put INTERNAL in the file name.",
     "flow-title": "Who was counted: {model}",
     "flow-alt": _flow,
     "estimates-title": "Odds ratios of the exposure: {model}",

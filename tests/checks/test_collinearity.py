@@ -120,3 +120,11 @@ def test_one_part_alone_has_nothing_to_overlap_with() -> None:
     assert result.verdict == "not applicable"
     assert result.statistics["largest_standard_error_factor"] is None
     assert result.reasons["largest_standard_error_factor"] == result.line
+
+
+def test_without_an_intercept_the_constant_counts_for_nothing() -> None:
+    # The same model with and without the intercept: indicators of all levels hold the constant.
+    frame = birth_weights()
+    with_it = collinearity.inflation_by_part(fitted("smoke + age + lwt", frame, frame["low"], ["smoke"]))
+    without = collinearity.inflation_by_part(fitted("0 + smoke + age + lwt", frame, frame["low"], ["smoke"]))
+    assert {one.label: one.widening for one in without} == pytest.approx({one.label: one.widening for one in with_it})

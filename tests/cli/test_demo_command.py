@@ -60,3 +60,16 @@ def test_every_package_is_listed_to_be_shipped() -> None:
     folders = {path.parent for path in (ROOT / "oddsmodel").rglob("*.py")}
     assert {".".join(folder.relative_to(ROOT).parts) for folder in folders} == packages, "a folder lacks __init__.py"
     assert listed == packages | {"oddsmodel.examples"}
+
+
+def test_a_copy_that_fails_leaves_nothing(command: Command, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    write_bytes = Path.write_bytes
+
+    def full(path: Path, data: bytes) -> int:
+        if path.suffix == ".csv":
+            raise OSError(28, "No space left on device")
+        return write_bytes(path, data)
+
+    monkeypatch.setattr(Path, "write_bytes", full)
+    assert command("demo", tmp_path).status == 1
+    assert list(tmp_path.iterdir()) == []

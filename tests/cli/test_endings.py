@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import signal
 import sys
 from collections.abc import Callable
 from typing import Any
@@ -9,6 +10,7 @@ from typing import Any
 import pytest
 
 from oddsmodel.cli.ending import ended
+from oddsmodel.cli.terminal import write
 from oddsmodel.errors import Fault, InputFault
 
 
@@ -50,6 +52,39 @@ def test_faults_are_told_with_place_and_remedy(capsys: pytest.CaptureFixture[str
 def test_an_interruption_ends_in_130(capsys: pytest.CaptureFixture[str]) -> None:
     assert ended(raising(KeyboardInterrupt())) == 130
     assert capsys.readouterr().err.startswith("Interrupted.")
+
+
+def test_an_interruption_that_a_library_turns_into_its_own_failure(capsys: pytest.CaptureFixture[str]) -> None:
+    def work() -> int:
+        try:
+            signal.raise_signal(signal.SIGINT)
+        except KeyboardInterrupt:
+            raise ImportError("initialization failed") from None
+        return 0
+
+    assert ended(work) == 130
+    assert capsys.readouterr().err.startswith("Interrupted.")
+
+
+def test_a_request_to_end_is_an_interruption() -> None:
+    def work() -> int:
+        signal.raise_signal(signal.SIGTERM)
+        return 0
+
+    assert ended(work) == 130
+    assert signal.getsignal(signal.SIGTERM) == signal.SIG_DFL
+
+
+@pytest.mark.parametrize("closed", ["stdout", "stderr"])
+def test_a_stream_that_is_closed(closed: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(sys, closed, None)
+
+    def work() -> int:
+        write("told")
+        return 0
+
+    assert ended(work) == 0
+    assert ended(raising(InputFault(Fault("A.", "a", "B.")))) == 2
 
 
 def test_a_failure_of_the_program_is_one_plain_line(

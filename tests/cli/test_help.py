@@ -14,10 +14,10 @@ from typing import Any
 import pytest
 
 Command = Callable[..., Any]
-COMMANDS = ("run", "check", "draft", "table", "demo")
+COMMANDS = ("run", "check", "draft", "table", "demo", "changes", "shelf")
 
 
-def test_there_are_five_commands_and_no_others(command: Command) -> None:
+def test_these_are_the_commands_and_no_others(command: Command) -> None:
     ended = command("--help")
     assert ended.status == 0
     listed = ended.out.split("Commands:")[1].split("\n")

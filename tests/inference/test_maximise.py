@@ -139,6 +139,13 @@ def test_aliased_columns_are_written_as_a_relation() -> None:
     assert (second.column, second.weights) == (4, ())
 
 
+def test_a_column_that_only_rows_of_no_trials_fill_is_aliased() -> None:
+    X = np.array([[1.0, 0, 0], [1, 1, 0], [1, 0, 1]])
+    fit = maximise(BinomialLikelihood(X, [3.0, 4, 0], trials=[10.0, 10, 0]))
+    assert fit.status == "aliased"
+    assert [(one.column, one.weights) for one in fit.aliased] == [(2, ())]
+
+
 def test_large_data_start_from_a_part_and_end_at_the_whole() -> None:
     rng = np.random.default_rng(8)
     X = np.column_stack([np.ones(80_000), rng.normal(size=(80_000, 3))])

@@ -7,6 +7,7 @@ import pytest
 from scipy.optimize import approx_fprime
 from scipy.stats import binom
 
+from oddsmodel.inference import maximise
 from oddsmodel.likelihood import BinomialLikelihood
 
 
@@ -46,6 +47,20 @@ def test_odds_of_even_risk_are_one() -> None:
     # p = 1/2: odds 1, log odds 0; risk = odds / (1 + odds) (published checks, row 15)
     likelihood = BinomialLikelihood(np.ones((1, 1)), [5.0], trials=[10.0])
     assert likelihood.evaluate(np.zeros(1)).score[0, 0] == 0.0
+    even = maximise(likelihood)
+    assert even.coefficients[0] == 0.0
+    odds = np.exp(maximise(BinomialLikelihood(np.ones((1, 1)), [3.0], trials=[12.0])).coefficients[0])
+    assert odds == pytest.approx(3 / 9, rel=1e-12)
+    assert odds / (1 + odds) == pytest.approx(3 / 12, rel=1e-12)
+
+
+def test_exposure_for_outcome_is_outcome_for_exposure() -> None:
+    # the odds ratio is the same whichever of the two is modelled (published checks, row 15; Cornfield 1951)
+    X = np.array([[1.0, 0], [1, 1]])
+    outcome = maximise(BinomialLikelihood(X, [104.0, 96], trials=[770.0, 205]))
+    exposure = maximise(BinomialLikelihood(X, [109.0, 96], trials=[775.0, 200]))
+    assert outcome.coefficients[1] == pytest.approx(exposure.coefficients[1], rel=1e-12)
+    assert np.exp(outcome.coefficients[1]) == pytest.approx(96 * 666 / (109 * 104), rel=1e-12)
 
 
 @pytest.mark.parametrize(

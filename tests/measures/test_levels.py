@@ -43,8 +43,15 @@ def test_what_disclosure_needs_to_know(birthwt: pd.DataFrame, fitting: Callable[
     assert columns["crude"].hidden_with_block
     assert columns["crude_interval"].hidden_with_block
     assert not columns["adjusted"].hidden_with_block
-    # Without adjustment the model's own odds ratio is the crude one.
+
+
+def test_nothing_is_called_adjusted_that_is_not(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
     model, found = fitting(birthwt[RECORDS], birthwt["low"], "smoke", ["smoke"])
+    table = levels(model, found)
+    assert not [column.key for column in table.columns if column.key.startswith("adjusted")]
+    assert "adjusts for nothing" in table.note
+    # Two exposures are adjusted for each other; their odds ratios are hidden as crude ones are.
+    model, found = fitting(birthwt[RECORDS], birthwt["low"], "smoke + race", ["smoke", "race"])
     assert {column.key: column for column in levels(model, found).columns}["adjusted"].hidden_with_block
 
 

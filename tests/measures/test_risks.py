@@ -67,3 +67,11 @@ def test_design_governs() -> None:
     for design in ("case-control", "matched case-control"):
         with pytest.raises(InputFault, match="odds ratio"):
             risks(3, 7, 2, 8, design=design)
+
+
+def test_everybody_had_the_event() -> None:
+    # By the formula the standard error is 0: an interval from 1 to 1 would claim what five records cannot know.
+    answer = risks(3, 0, 2, 0)
+    assert answer.ratio == 1.0
+    assert answer.ratio_interval.lower is None
+    assert "Everybody" in answer.reasons["ratio_interval"]

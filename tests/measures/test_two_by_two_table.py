@@ -46,3 +46,12 @@ def test_reasons_are_hidden_with_the_counts(fitting: Callable[..., Any]) -> None
     assert table.rows[3][4] is None
     assert table.rows[3][6] == pytest.approx(two_by_two(0, 10, 10, 20).exact_p)
     assert "0" not in table.note
+
+
+def test_the_reference_is_that_of_the_model(birthwt: pd.DataFrame, fitting: Callable[..., Any]) -> None:
+    # The formula may turn the plan's reference round: the crude table must then not show the inverse.
+    records = birthwt[["smoke", "age"]]
+    model, _ = fitting(records, birthwt["low"], 'C(smoke, Treatment("yes")) + age', ["smoke"])
+    (table,) = two_by_two_tables(model)
+    assert [row[0] for row in table.rows[:2]] == ["smoke: no", "smoke: yes"]
+    assert table.rows[2][4] == pytest.approx(29 * 44 / (86 * 30))

@@ -335,3 +335,19 @@ def test_data_frames_without_rows_or_with_names_twice() -> None:
         table_from_frame(pd.DataFrame({"x": []}))
     with pytest.raises(InputFault, match="is given to columns"):
         table_from_frame(pd.DataFrame([[1, 2]], columns=["x", "x"]))
+
+
+def test_one_value_as_a_number_and_as_a_text_is_one_level() -> None:
+    mixed = pd.Series([1, "1", None, 2.5, "f", 1.0], dtype=object)
+    ordered = pd.Series(pd.Categorical([1, "1", "f", "f", 1, "1"], categories=[1, "1", "f"]))
+    table = table_from_frame(pd.DataFrame({"mixed": mixed, "category": ordered}))
+    assert [None if pd.isna(value) else value for value in table.frame["mixed"]] == ["1", "1", None, "2.5", "f", "1"]
+    assert list(table.frame["category"]) == ["1", "1", "f", "f", "1", "1"]
+
+
+@pytest.mark.parametrize("mark", ["\u200f", "\u200b", "\u00ad", "\ufeff", "\u202e", "\x1b"])
+def test_a_name_with_characters_that_cannot_be_seen_is_refused_with_its_column(mark: str) -> None:
+    frame = pd.DataFrame({"died": [0, 1], f"smo{mark}ker": [0, 1]})
+    with pytest.raises(InputFault, match="column 2") as found:
+        table_from_frame(frame)
+    assert "cannot be shown" in str(found.value)

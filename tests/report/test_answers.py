@@ -9,7 +9,7 @@ from types import ModuleType
 
 import pytest
 
-from oddsmodel.report.view.opening import answers
+from oddsmodel.export.answer import answers
 from oddsmodel.results.study import ProfileResult
 from oddsmodel.wording import say
 from oddsmodel.wording.report_answer import outcome_words
@@ -120,5 +120,5 @@ def test_an_exposure_in_several_columns_shows_no_odds_ratio(sample: ModuleType) 
     assert only.odds_ratio == ""
     assert only.sentence == (
         "rcs(dose, 4) enters the model through several columns that change together, so no single odds ratio stands "
-        "for it. The likelihood-ratio test of all its columns together gives p = 0.005."
+        "for it. The likelihood-ratio test of all exposure columns together gives p = 0.005."
     )

@@ -13,7 +13,8 @@ from oddsmodel.report.view.checks import checks
 from oddsmodel.report.view.methods import methods
 from oddsmodel.report.view.sheet import Sheets
 from oddsmodel.report.view.tables import TableView, table_view
-from oddsmodel.results.study import DisclosedResults, ProfileResult, StudyResults
+from oddsmodel.results.lead import has_profile
+from oddsmodel.results.study import DisclosedResults, ProfileResult, StudyResults, WaldResult
 from oddsmodel.results.tables import Cell, CellKind, Hidden, Interval, Table, TableColumn
 from oddsmodel.wording import say
 from oddsmodel.wording.report_methods import REFERENCES, WAYS
@@ -124,3 +125,11 @@ def test_closing_cautions_are_always_there(sample: ModuleType) -> None:
     words = " ".join(closing_cautions(sample.study(not_measured=())))
     for told in ("not causation", "one person's care", "qualified analyst", "data-protection, ethics and reporting"):
         assert told in words
+
+
+def test_withheld_limits_do_not_make_another_way_of_fitting(sample: ModuleType) -> None:
+    nothing = {"odds_ratio": None, "wald": WaldResult(None, None, None), "profile": ProfileResult(None, None)}
+    model = sample.model()
+    withheld = replace(model, coefficients=tuple(replace(one, **nothing) for one in model.coefficients))
+    assert has_profile(model)
+    assert has_profile(withheld)

@@ -134,6 +134,54 @@ def test_interactions_are_tested_by_marginality(tmp_path: Path) -> None:
     assert all(one["odds_ratio"] is None for one in exposure)
 
 
+def test_without_an_intercept_levels_are_tested_for_differing(tmp_path: Path) -> None:
+    # Every level has an indicator, which hold the constant: taken away with them it would be tested too.
+    frame = invented()
+    _, results = run(tmp_path, frame, formula="died ~ 0 + smoker + age")
+    terms = {term["term"]: term for term in results["models"][0]["terms"]}
+    complete = frame[frame.age != "NA"]
+    age, ones = complete.age.astype(float), np.ones(len(complete))
+    y = (complete.died == "yes").to_numpy(float)
+    smoker = [(complete.smoker == level).astype(float) for level in ("never", "former", "current")]
+
+    def height(*columns: Any) -> float:
+        return float(sm.Logit(y, np.column_stack(columns).astype(float)).fit(disp=0, tol=1e-12).llf)
+
+    full = height(*smoker, age)
+    for name, df, smaller in (
+        ("smoker", 2, height(ones, age)),
+        ("all exposure columns", 2, height(ones, age)),
+        ("age", 1, height(*smoker)),
+        ("whole model", 3, height(ones)),
+    ):
+        assert terms[name]["df"] == df
+        assert terms[name]["likelihood_ratio"] == pytest.approx(2 * (full - smaller), abs=1e-7)
+    assert results["models"][0]["null_log_likelihood"] == pytest.approx(height(ones), abs=1e-8)
+
+
+def test_what_is_called_adjusted(tmp_path: Path) -> None:
+    outcome, _ = run(tmp_path, invented(), formula="died ~ smoker")
+    (model,) = outcome.results.models
+    assert "crude_to_adjusted" not in [table.id for table in model.tables]
+    assert {mark.series for figure in model.figures for mark in getattr(figure, "marks", ())} == {"crude"}
+    words = (outcome.folder / "report.html").read_text(encoding="utf-8")
+    assert "Adjusted odds ratio" not in words
+    assert "Odds ratios of the exposure, not adjusted" in words
+
+
+def test_exposures_are_adjusted_for_each_other(tmp_path: Path) -> None:
+    plan = PLAN.replace('exposures = ["smoker"]', 'exposures = ["smoker", "sex"]')
+    invented().to_csv(tmp_path / "records.csv", index=False)
+    (tmp_path / "plan.toml").write_text(plan.format(formula="died ~ smoker + sex", design="cohort", more=""), "utf-8")
+    (model,) = run_plan(tmp_path / "plan.toml").results.models
+    marks = [mark for figure in model.figures for mark in getattr(figure, "marks", ())]
+    assert [mark.series for mark in marks] == ["crude", "adjusted"] * 3
+    assert "noncollapsibility" in [one.code for one in model.findings]
+    assert "Adjusted for nothing else; the exposures are mutually adjusted" in (
+        (tmp_path / "plan-report" / "report.html").read_text(encoding="utf-8")
+    )
+
+
 def test_a_separated_model_has_no_number(tmp_path: Path) -> None:
     frame = invented()
     frame.loc[frame.smoker == "former", "died"] = "no"

@@ -31,7 +31,8 @@ def cause(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> Caus
 
     cautions, questions = [], []
     if not columns and study.design != "trial":
-        cautions.append(say("cause-no-adjustment"))
+        mutually = lead is not None and len(lead.exposures) > 1
+        cautions.append(say("cause-no-adjustment-but-exposures" if mutually else "cause-no-adjustment"))
     if after := [column.label for column in columns if column.timing == "after exposure"]:
         cautions.append(say("cause-after", labels=after))
     if study.not_measured:

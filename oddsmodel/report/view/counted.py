@@ -4,10 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from oddsmodel.export.derived_table import derived_table
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import FlowFigure
 from oddsmodel.results.study import ModelResult, StudyResults
+from oddsmodel.wording import say
 
 ABOUT_ADJUSTMENT = ("noncollapsibility", "adjustment-in-a-trial")
 """Codes of the notes that stand beside the crude and adjusted estimates."""
@@ -17,6 +19,8 @@ ABOUT_ADJUSTMENT = ("noncollapsibility", "adjustment-in-a-trial")
 class CountedView:
     flow: FigureView | None
     notes: tuple[str, ...]
+    derived: tuple[TableView, ...] = ()
+    derived_summary: str = ""
 
 
 def counted(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> CountedView:
@@ -28,6 +32,8 @@ def counted(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> Co
     return CountedView(
         flow=sheets.figure(flow) if flow is not None else None,
         notes=tuple(dict.fromkeys([*(one.message for one in found if one.severity == "note"), *study.notes])),
+        derived=sheets.tables(derived_table(one) for one in study.derived),
+        derived_summary=say("fold-derived", labels=[one.label for one in study.derived]) if study.derived else "",
     )
 
 

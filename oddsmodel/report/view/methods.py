@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from oddsmodel.report.view.lead import exposures_shown, has_profile, is_estimated
+from oddsmodel.results.lead import exposures_shown, has_profile, is_estimated
 from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
 from oddsmodel.wording import numbers, say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
@@ -39,6 +39,7 @@ def methods(disclosed: DisclosedResults, lead: ModelResult | None) -> MethodsVie
 def _records(study: StudyResults, lead: ModelResult | None) -> Iterator[Told]:
     analysed, events = (lead.flow.analysed, lead.events) if lead is not None else (None, None)
     yield say("methods-records", design=study.design, read=study.records.read, analysed=analysed, events=events), ()
+    yield from ((rule, ()) for rule in study.rules)
     yield say("methods-complete-records"), ()
 
 
@@ -53,10 +54,15 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
     if study.design in CASE_CONTROL:
         yield say("methods-case-control"), ("prentice-pyke-1979",)
     level = say("level", level=lead.level)
-    if has_profile(lead):
+    if lead.groups is not None:
+        facts = {"groups": lead.groups, "df": lead.groups - 1, "column": lead.grouped_by, "level": level}
+        yield say("methods-grouped", **facts), ("cameron-miller-2015", "liang-zeger-1986", "wald-1943")
+    elif has_profile(lead):
         yield say("methods-profile", level=level), ("venzon-moolgavkar-1988", "wald-1943")
     else:
         yield say("methods-wald", level=level), ("wald-1943",)
+    if any(term.wald is not None for term in lead.terms):
+        yield say("methods-grouped-terms"), ()
     if any(term.p is not None for term in lead.terms):
         yield say("methods-terms"), ()
     if any(one.crude is not None for one in exposures_shown(lead)):
@@ -65,6 +71,16 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
         yield say("methods-two-by-two"), ("woolf-1955", "breslow-day-1980")
     if lead.adjustment:
         yield say("methods-adjustment"), ("westreich-greenland-2013",)
+    if study.standard_deviations:
+        sizes = [
+            (one.label, say("deviation-size", value=one.value, units=one.units or ""))
+            for one in study.standard_deviations
+        ]
+        yield say("methods-standard-deviations", model=lead.name, deviations=sizes), ()
+    if any(model.trends for model in study.models):
+        yield say("methods-trends"), ("cochran-1954", "armitage-1955")
+    if lead.averages:
+        yield say("methods-averages"), ()
     others = [model.name for model in study.models if not model.added_by_program]
     if len(others) > 1:
         yield say("methods-several-models", number=len(others), names=others), ()

@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 from oddsmodel.findings import Finding
 from oddsmodel.report.view.checks import ChecksView, checks
 from oddsmodel.report.view.counted import ABOUT_ADJUSTMENT
-from oddsmodel.report.view.lead import exposures_shown, has_profile, is_estimated
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import EstimatesFigure, FlowFigure
+from oddsmodel.results.lead import exposures_shown, has_profile, is_estimated
 from oddsmodel.results.study import ModelResult, Role, StudyResults
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 from oddsmodel.wording import numbers, say
@@ -78,7 +79,7 @@ def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
     # In the order of the page, which gives figures and tables their numbers.
     return EstimatesView(
         exposures=sheets.table(exposures) if exposures is not None else None,
-        lead_interval=say("lead-profile" if has_profile(model) else "lead-wald"),
+        lead_interval=say(_lead(model)),
         figures=sheets.figures(figures),
         further=sheets.tables(table for table in model.tables if table.id not in CRUDE_TABLES),
         adjustment=sheets.table(adjustment) if adjustment is not None else None,
@@ -87,9 +88,15 @@ def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
             say("no-value-reason", label=one.label, reason=reason)
             for one in exposures_shown(model)
             for key, reason in one.reasons.items()
-            if not key.startswith("crude")
+            if not key.startswith("crude") and not (key == "profile" and model.groups is not None)
         ),
     )
+
+
+def _lead(model: ModelResult) -> str:
+    if model.groups is not None:
+        return "lead-grouped"
+    return "lead-profile" if has_profile(model) else "lead-wald"
 
 
 def exposures_table(model: ModelResult) -> Table | None:
@@ -99,6 +106,7 @@ def exposures_table(model: ModelResult) -> Table | None:
 
 def _coefficients(model: ModelResult, role: Role) -> Table | None:
     of_role = [one for one in model.coefficients if one.role == role]
+    shown = exposures_shown(model) if role == "exposure" else tuple(one for one in of_role if one.shown)
     if not any(one.shown for one in of_role):
         return None
     percent = say("level", level=model.level)
@@ -111,18 +119,21 @@ def _coefficients(model: ModelResult, role: Role) -> Table | None:
         TableColumn("p", say("column-p"), "p"),
     ]
     rows: list[tuple[Cell, ...]] = []
-    for one in of_role:
-        if one.shown:
-            intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
-            intervals.append(Interval(one.wald.lower, one.wald.upper))
-            intervals = [None] * len(intervals) if one.odds_ratio is None else intervals
-            rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
+    for one in shown:
+        intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
+        intervals.append(Interval(one.wald.lower, one.wald.upper))
+        intervals = [None] * len(intervals) if one.odds_ratio is None else intervals
+        rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
     together = list(dict.fromkeys(one.term for one in of_role if not one.shown))
     note = say("columns-not-shown", terms=numbers.listed(together)) if together else ""
-    return Table(role, say(f"table-{role}"), tuple(columns), tuple(rows), note)
+    adjusted = bool(model.adjustment) or len(model.exposures) > 1
+    title = f"table-{role}" if role == "adjustment" or adjusted else "table-exposure-unadjusted"
+    return Table(role, say(title), tuple(columns), tuple(rows), note)
 
 
 def _terms(model: ModelResult) -> Table:
+    if model.groups is not None:
+        return _terms_of_groups(model)
     columns = (
         TableColumn("term", say("column-term")),
         TableColumn("df", say("column-df"), "count"),
@@ -137,6 +148,26 @@ def _terms(model: ModelResult) -> Table:
         if term.reason:
             reasons[say("no-value-reason", label=name, reason=term.reason)] = None
     return Table("terms", say("terms-table"), columns, tuple(rows), " ".join([say("terms-note"), *reasons]))
+
+
+def _terms_of_groups(model: ModelResult) -> Table:
+    columns = (
+        TableColumn("term", say("column-term")),
+        TableColumn("df", say("column-df"), "count"),
+        TableColumn("f", say("column-wald-f"), "number"),
+        TableColumn("df_denominator", say("column-df-denominator"), "count"),
+        TableColumn("p", say("column-p"), "p"),
+    )
+    rows: list[tuple[Cell, ...]] = []
+    reasons: dict[str, None] = {}
+    for term in model.terms:
+        name = say(term.term) if term.term in ("all exposure columns", "whole model") else term.term
+        wald = term.wald
+        rows.append((name, term.df, *((wald.f, wald.df_denominator, wald.p) if wald else (None, None, None))))
+        if wald is None and term.reason:
+            reasons[say("no-value-reason", label=name, reason=term.reason)] = None
+    note = " ".join([say("terms-note-grouped"), *reasons])
+    return Table("terms", say("terms-table"), columns, tuple(rows), note)
 
 
 def other_models(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> tuple[OtherModelView, ...]:
@@ -159,9 +190,7 @@ def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
     return OtherModelView(
         id=f"model-{place + 1}",
         name=model.name,
-        differs=say(
-            "model-differs", adjustment=list(model.adjustment_labels), records=model.records, events=model.events
-        ),
+        differs=" ".join(_what_differs(model)),
         why=say("model-why", why=model.why) if model.why else "",
         added=say("added-by-program") if model.added_by_program else "",
         formula=model.formula,
@@ -171,6 +200,14 @@ def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
         findings=model.findings,
         status=say("not-estimated", status=model.status),
     )
+
+
+def _what_differs(model: ModelResult) -> Iterator[str]:
+    if model.role in ("sensitivity", "subgroup") or model.planned is not None:
+        yield say("model-role-said", role=model.role, planned=model.planned)
+    if model.differs:
+        yield f"{model.differs}."
+    yield say("model-differs", adjustment=list(model.adjustment_labels), records=model.records, events=model.events)
 
 
 def comparison(study: StudyResults, sheets: Sheets) -> ComparisonView | None:

@@ -1,0 +1,116 @@
+"""Sentences on records that belong to groups, by code; the study floor's module hands them on."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from oddsmodel.wording.numbers import count, plural
+from oddsmodel.wording.plain import quoted
+from oddsmodel.wording.say import Sentence
+
+Facts = Mapping[str, Any]
+
+
+def _of_groups(facts: Facts) -> str:
+    return (
+        f"{plural(facts['records'], 'record')} of {plural(facts['groups'], 'group')} by {quoted(facts['column'])} were "
+        f"analysed. Records of one group are not taken as independent: standard errors, intervals and p-values of the "
+        f"odds ratios allow for it."
+    )
+
+
+def _few(facts: Facts) -> str:
+    return (
+        f"There are only {count(facts['groups'])} groups by {quoted(facts['column'])}. With fewer than "
+        f"{facts['enough']}, intervals that allow for groups tend to be too narrow, though Student's distribution "
+        f"makes up for some of it."
+    )
+
+
+def _too_few(facts: Facts) -> str:
+    return (
+        f"{plural(facts['groups'], 'group').capitalize()} by {quoted(facts['column'])} are too few to learn from them "
+        f"how much groups differ, so the intervals cannot be relied on. Take grouped_by out of the plan, and put "
+        f"{quoted(facts['column'])} among the adjustment columns of the formula instead."
+    )
+
+
+def _independence(facts: Facts) -> str:
+    return (
+        f"The records belong to {plural(facts['groups'], 'group')} by {quoted(facts['column'])}. They are taken as "
+        f"independent between groups and not within them."
+    )
+
+
+FAULTS: dict[str, tuple[Sentence, Sentence]] = {
+    "grouped-by-outcome": (
+        "The outcome cannot name the groups that records belong to.",
+        'Name the column of the person or place that several records share, such as grouped_by = "patient".',
+    ),
+    "grouped-by-count": (
+        "A column cannot both count records and name their groups.",
+        "Name the column of the person or place that several records share.",
+    ),
+    "grouped-by-in-formula": (
+        "{column} names the groups of the records and stands in the formula as well: the odds ratios of its own "
+        "levels then have no standard error.",
+        "Take it out of the formula, or take grouped_by out of [records].",
+    ),
+    "group-column-empty": (
+        "No record has a group in {column}.",
+        "Check that grouped_by names the right column.",
+    ),
+}
+
+SENTENCES: dict[str, Sentence] = {
+    "records-of-groups": _of_groups,
+    "groups-few": _few,
+    "groups-too-few": _too_few,
+    "no-likelihood-of-grouped-records": (
+        "The records of a group are not independent, so there is no likelihood of them to take this from; the Wald "
+        "interval allows for the groups."
+    ),
+    "no-log-likelihood-of-grouped-records": (
+        "The records of a group are not independent, so there is no likelihood of them."
+    ),
+    "no-check-of-grouped-records": (
+        "Not given: it takes the records as independent, and those of a group are not."
+    ),
+    "no-standard-error-of-one-group": (
+        "Its records, or those it is compared with, all belong to a single group, so that nothing tells how much it "
+        "differs between groups: there is no standard error that allows for them."
+    ),
+    "no-wald-of-one-group": "There is no standard error that allows for the groups.",
+    "no-term-test-of-groups": (
+        "The records of a group are not independent, so there is no likelihood-ratio test; and the groups are too few "
+        "to test so many coefficients at once by Wald's F."
+    ),
+    "check-as-if-independent": (
+        "The records belong to groups; this description takes them as independent, which its marks of uncertainty do "
+        "not allow for."
+    ),
+    "methods-grouped": (
+        lambda facts: f"The {plural(facts['groups'], 'group')} by {facts['column']} were taken as independent, their "
+        f"records not: intervals at {facts['level']} are Wald intervals (Wald, 1943) from a cluster-robust covariance "
+        f"(Liang & Zeger, 1986) with the factor G/(G − 1) · (n − 1)/(n − p) for small samples and Student's "
+        f"distribution with {count(facts['df'])} degrees of freedom (Cameron & Miller, 2015). There is no likelihood "
+        f"of such records, and no test, limit or criterion that rests on one."
+    ),
+    "methods-grouped-terms": "Whole terms were tested by Wald's F with that covariance.",
+    "lead-grouped": (
+        "The intervals are Wald intervals that allow for records of one group being alike, with Student's "
+        "distribution."
+    ),
+    "column-wald-f": "Wald's F",
+    "column-df-denominator": "Degrees of freedom, denominator",
+    "terms-note-grouped": (
+        "Each term is tested by Wald's F with the cluster-robust covariance, in a model without the terms that "
+        "contain it."
+    ),
+    "independence-within-groups": _independence,
+    "row-groups": "Groups by {label}",
+    "left-out-group-not-recorded": "Group not recorded: {label}",
+    **{code: what for code, (what, _) in FAULTS.items()},
+    **{f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()},
+}
