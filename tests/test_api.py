@@ -118,6 +118,16 @@ def test_a_condition_that_leaves_nobody() -> None:
     assert model.report().startswith("<!doctype html>")
 
 
+def test_a_profile_so_flat_that_refits_from_their_neighbours_do_not_settle() -> None:
+    z = [54.9, 53, 46, 44, 71.1, 64, 36, 50.6, 47.6, 46.4, 44.0, 49, 71.0]
+    frame = pd.DataFrame({"died": list("1111010010000"), "x": list("abbbbbbbbbbaa"), "z": z})
+    model = oddsmodel.fit("died ~ x + bs(z, df=4)", frame, event="1", exposures=["x"])
+    assert model.result.status == "converged"
+    for one in model.result.coefficients:
+        for side, limit in (("lower", one.profile.lower), ("upper", one.profile.upper)):
+            assert limit is not None or {"profile", f"profile.{side}"} & set(one.reasons), (one.label, side)
+
+
 def test_an_audience_that_there_is_not(model: oddsmodel.Model) -> None:
     with pytest.raises(oddsmodel.InputFault, match="shareable"):
         model.report(audience="everyone")

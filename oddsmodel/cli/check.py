@@ -24,7 +24,7 @@ def check_command(plan: Path, records: Path | None) -> int:
     write(
         say(
             "outcome-is",
-            column=checked.file.plan.outcome.column_name,
+            column=outcome.column,
             event=outcome.event_label,
             other=outcome.other_label,
         )

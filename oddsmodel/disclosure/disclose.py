@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import replace
 
-from oddsmodel.disclosure.derived import disclosed_derived
 from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.flow import disclosed_exclusions
 from oddsmodel.disclosure.gather import analysed_and_events, closed_models, gather
@@ -56,7 +55,13 @@ def disclose(study: StudyResults, *, audience: str, hide_counts_below: int) -> D
         comparison=_table(study.comparison, ("comparison",), hiding),
         comparison_figure=disclosed_estimates_figure(figure, hiding) if isinstance(figure, EstimatesFigure) else None,
         notes=tuple(text(note) for note in study.notes),
-        derived=tuple(disclosed_derived(one, hiding) for one in study.derived),
+        derived=tuple(
+            replace(
+                one,
+                tables=tuple(disclosed_table(table, ("derived", d, t), hiding) for t, table in enumerate(one.tables)),
+            )
+            for d, one in enumerate(study.derived)
+        ),
     )
     return DisclosedResults(shown, hide_counts_below, "shareable", hiding.taken)
 
@@ -71,7 +76,7 @@ def settle(study: StudyResults, threshold: int) -> Hiding:
     places = {place for place, number in counts.places.items() if number in hidden}
     closed = closed_models(study, threshold)
     for owner, table in _tables(study):
-        if owner[0] in ("model", "check") and owner[1] in closed:
+        if (owner[0] in ("model", "check") and owner[1] in closed) or (owner[0] == "derived" and 0 in closed):
             places |= {("cell", owner, r, k) for r, k in count_cells(table)}
     hiding = Hiding(threshold, frozenset(places))
     large = frozenset(counts.values[number] for number in hidden if counts.values[number] >= threshold)
@@ -110,6 +115,9 @@ def _tables(study: StudyResults) -> Iterator[tuple[Place, Table]]:
         yield ("characteristics",), study.characteristics
     if study.comparison is not None:
         yield ("comparison",), study.comparison
+    for d, one in enumerate(study.derived):
+        for t, table in enumerate(one.tables):
+            yield ("derived", d, t), table
     for m, model in enumerate(study.models):
         for t, table in enumerate(model.tables):
             yield ("model", m, t), table

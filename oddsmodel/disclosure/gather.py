@@ -50,6 +50,9 @@ def gather(study: StudyResults, threshold: int) -> Counts:
     main: Mapping[int, int] = scalars[0] if scalars else {}
     if study.characteristics is not None:
         _enter_table(found, study.characteristics, ("characteristics",), main, 0)
+    for d, one in enumerate(study.derived):
+        for t, table in enumerate(one.tables):
+            _enter_table(found, table, ("derived", d, t), main, 0)
     if study.comparison is not None:
         everywhere = {value: number for known in reversed(scalars) for value, number in known.items()}
         cells = _enter_table(found, study.comparison, ("comparison",), {}, 0)
@@ -184,7 +187,7 @@ def _enter_difference(found: _Gathered, larger: int, smaller: int, model: int) -
     """Two counts of which one holds the other: what lies between them, where it is small, is a count to protect."""
     difference = found.system.value(larger) - found.system.value(smaller)
     if 0 < difference < found.threshold:
-        between = found.system.add(difference, model=model)
+        between = found.system.add(difference, model=model, unnamed=True)
         found.system.relate([smaller, between], larger)
 
 
@@ -225,6 +228,8 @@ _PAIR = ("records", "events")
 def _enter_calibration(found: _Gathered, figure: CalibrationFigure, place: Place, model: int) -> None:
     """The groups as they will be drawn: their counts can be read off the figure, which is shown whole or not at all."""
     groups = merge_groups(figure.groups, found.threshold)
+    if not groups:
+        return
     counts = [[group.records for group in groups], [group.events for group in groups]]
     records, events = (
         [found.system.add(count, (*place, kind, k), rank=SIDE, model=model) for k, count in enumerate(values)]
@@ -250,7 +255,7 @@ def _enter_ordered(found: _Gathered) -> None:
         between: list[tuple[int, ...]] = []
         for before, after in pairwise([(0, 0), *every]):
             records, events = after[0] - before[0], after[1] - before[1]
-            parts = tuple(system.add(number) for number in (records, events, records - events))
+            parts = tuple(system.add(number, unnamed=True) for number in (records, events, records - events))
             system.relate(parts[1:], parts[0])
             between.append(parts)
         for groups, ends in zip(own, cuts, strict=True):

@@ -60,6 +60,8 @@ def hidden_crude(model: ModelResult, m: int, hiding: Hiding) -> frozenset[int]:
     """The coefficients whose crude estimate, with the counts by level, would give a hidden count away."""
     found: set[int] = set()
     for t, table in enumerate(model.tables):
+        if table.aside:
+            continue
         blocks = row_blocks(table)
         hidden = {
             blocks[r]

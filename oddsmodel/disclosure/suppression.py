@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
+from contextlib import contextmanager
 from dataclasses import dataclass, field
 
 from oddsmodel.disclosure.feasible import Bounds, Equation, components, feasible_bounds
@@ -131,7 +132,7 @@ class Suppression:
         least = 0 if any(values[number] == 0 and number in self.hidden for number in members) else 1
 
         def bounds(number: int) -> Bounds:
-            if not reader.hinted:
+            if not reader.hinted or number in self.counts.unnamed:
                 return 0, most
             if values[number] >= self.threshold:
                 return self.threshold, most
@@ -194,15 +195,17 @@ class Suppression:
                 shown |= {other for other in relation.terms if self._known(other, reader)}
         return frozenset(members), equations, shown
 
-    def _standing(self, number: int) -> tuple[int, int]:
-        """How many readers fail to work a count out, and how many values they are left with in all."""
-        passed = width = 0
+    def _judged(self, number: int) -> Iterator[tuple[bool, int]]:
+        """For each reader whether they fail to work a count out, and how many values they are left with."""
         for which, reader in enumerate(self._readers):
             members, equations, _ = self._around(number, reader)
-            bounds = self._component_bounds(which, members, equations, number)[number]
-            passed += self._passes(number, bounds, reader)
-            width += bounds[1] - bounds[0]
-        return passed, width
+            lower, upper = self._component_bounds(which, members, equations, number)[number]
+            yield self._passes(number, (lower, upper), reader), upper - lower
+
+    def _standing(self, number: int) -> tuple[int, int]:
+        """How many readers fail to work a count out, and how many values they are left with in all."""
+        judged = list(self._judged(number))
+        return sum(passed for passed, _ in judged), sum(width for _, width in judged)
 
     def _helper(self, failing: list[int]) -> int | None:
         """The count to hide next.
@@ -242,20 +245,30 @@ class Suppression:
 
     def _best(self, choices: Mapping[int, list[int]]) -> int | None:
         """Of the choices for each failing count, the first that protects it, or else the one that helps most."""
+        for failing, offered in choices.items():
+            for choice in offered:
+                with self._with_hidden(choice):
+                    if all(passed for passed, _ in self._judged(failing)):
+                        return choice
         best, found = 0, None
         for failing, offered in choices.items():
             passed, width = self._standing(failing)
             for choice in offered:
-                before = set(self.hidden)
-                self._hide([choice])
-                standing = self._standing(failing)
-                self.hidden = before
-                if standing[0] == len(self._readers):
-                    return choice
+                with self._with_hidden(choice):
+                    standing = self._standing(failing)
                 gain = (standing[0] - passed) * 10**6 + min(standing[1] - width, 10**5)
                 if gain > best:
                     best, found = gain, choice
         return found
+
+    @contextmanager
+    def _with_hidden(self, number: int) -> Iterator[None]:
+        before = set(self.hidden)
+        self._hide([number])
+        try:
+            yield
+        finally:
+            self.hidden = before
 
     def _can_hide(self, number: int) -> bool:
         return self.counts.shown[number] and number not in self.hidden and number not in self.counts.locked

@@ -8,8 +8,9 @@ from dataclasses import dataclass
 Place = tuple[Hashable, ...]
 Rank = tuple[int, int]
 
-CELL, ZERO, SIDE, READ, EVENTS, RECORDS = range(6)
-"""How readily a count is hidden to protect another: first cells of tables, last a model's number of records."""
+ASIDE, CELL, ZERO, SIDE, READ, EVENTS, RECORDS = range(7)
+"""How readily a count is hidden to protect another: first cells of tables that stand aside, then of other tables, last
+a model's number of records."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -27,6 +28,7 @@ class Counts:
     values: (v,) the true counts. shown: (v,) whether a count has a place in the output at all; the others follow
         from shown ones only (the complement of events, the difference of two models).
     locked: counts that stay, whatever happens. ranks: (v,) how readily each is hidden.
+    unnamed: counts that nothing in the output names: no reader is told whether they are small.
     totals: sums that are printed somewhere outside the system. Two readers are guarded against: one who knows these
         sums and has nothing to do with the links, and one who knows only the counts shown but sees the links.
     ties: counts that must be hidden together, since they may be one and the same.
@@ -36,6 +38,7 @@ class Counts:
     values: tuple[int, ...]
     shown: tuple[bool, ...]
     locked: frozenset[int]
+    unnamed: frozenset[int]
     ranks: tuple[Rank, ...]
     relations: tuple[Relation, ...]
     totals: frozenset[int]
@@ -53,6 +56,7 @@ class CountSystem:
         self._ranks: list[Rank] = []
         self._parent: list[int] = []
         self._relations: list[tuple[tuple[int, ...], int, bool]] = []
+        self._unnamed: set[int] = set()
         self._totals: set[int] = set()
         self._ties: list[frozenset[int]] = []
         self._places: dict[Place, int] = {}
@@ -66,18 +70,21 @@ class CountSystem:
         model: int = 0,
         locked: bool = False,
         total: bool = False,
+        unnamed: bool = False,
     ) -> int:
         """A count; without a place it is one that only follows from others. Later models are hidden first."""
         number = len(self._values)
         self._values.append(value)
         self._shown.append(place is not None or locked)
         self._locked.append(locked)
-        self._ranks.append((ZERO if value == 0 and rank == CELL else rank, -model))
+        self._ranks.append((ZERO if value == 0 and rank in (ASIDE, CELL) else rank, -model))
         self._parent.append(number)
         if place is not None:
             self._places[place] = number
         if total:
             self._totals.add(number)
+        if unnamed:
+            self._unnamed.add(number)
         return number
 
     def value(self, number: int) -> int:
@@ -117,7 +124,7 @@ class CountSystem:
         roots = sorted({self.root(number) for number in range(len(self._values))})
         index = {root: k for k, root in enumerate(roots)}
         own = [index[self.root(number)] for number in range(len(self._values))]
-        shown, locked, ranks = [False] * len(roots), set(), [(CELL, -(10**6))] * len(roots)
+        shown, locked, ranks = [False] * len(roots), set(), [(ASIDE, -(10**6))] * len(roots)
         for number, k in enumerate(own):
             shown[k] |= self._shown[number]
             ranks[k] = max(ranks[k], self._ranks[number])
@@ -136,6 +143,7 @@ class CountSystem:
             values=tuple(self._values[root] for root in roots),
             shown=tuple(shown),
             locked=frozenset(locked),
+            unnamed=frozenset(own[number] for number in self._unnamed),
             ranks=tuple(ranks),
             relations=tuple(relations.values()),
             totals=frozenset(own[number] for number in self._totals),

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from itertools import groupby
 
-from oddsmodel.disclosure.system import CountSystem, Place
+from oddsmodel.disclosure.system import ASIDE, CELL, CountSystem, Place
 from oddsmodel.results.tables import Cell, Table, TableColumn
 
 Signature = tuple[object, ...]
@@ -89,8 +89,10 @@ class TableCounts:
         self.scalars, self.model = scalars, model
         self.positions = {column.key: k for k, column in enumerate(table.columns) if column.kind == "count"}
         self.cells: dict[tuple[int, int], int] = {}
+        rank = ASIDE if table.aside else CELL
         for r, k in count_cells(table):
-            self.cells[r, k] = system.add(whole_number(table.rows[r][k]) or 0, ("cell", owner, r, k), model=model)
+            count = whole_number(table.rows[r][k]) or 0
+            self.cells[r, k] = system.add(count, ("cell", owner, r, k), rank=rank, model=model)
 
     def enter(self) -> None:
         """All sums of the table, and the signatures of its counts."""

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import replace
 
+from oddsmodel.disclosure.extremes import rounded_end
 from oddsmodel.disclosure.hiding import Hiding
 from oddsmodel.disclosure.system import Place
 from oddsmodel.disclosure.table_counts import row_blocks, whole_number
@@ -91,6 +92,8 @@ class _State:
             return self.hiding.withheld.text(cell)
         if column.kind in RATIOS and any(one in self.hiding.withheld.estimates for one in estimates_in(cell)):
             return self._hidden("estimate-hidden")
+        if column.rounded and isinstance(cell, int | float):
+            return rounded_end(float(cell), row, column, self.table)
         return cell
 
     def _hidden(self, code: str) -> Hidden:

@@ -7,7 +7,6 @@ from collections.abc import Iterable, Sequence
 from itertools import chain
 
 from oddsmodel.findings import Finding
-from oddsmodel.results.derived import DerivedColumn
 from oddsmodel.results.study import CoefficientResult, CrudeEstimate, DisclosedResults, ModelResult
 from oddsmodel.results.tables import Cell, Hidden, Interval, Table
 
@@ -44,11 +43,9 @@ def csv_files(disclosed: DisclosedResults) -> dict[str, str]:
         found["characteristics.csv"] = _tables([("", study.characteristics)], with_model=False)
     if study.comparison is not None:
         found["comparison.csv"] = _tables([("", study.comparison)], with_model=False)
-    if study.derived:
-        found["derived.csv"] = _csv(
-            ("column", "value", "source", "source_value", "records", "smallest", "largest", "rounded_to", "note"),
-            chain.from_iterable(map(_derived, study.derived)),
-        )
+    derived = [table for one in study.derived for table in one.tables]
+    if derived:
+        found["derived.csv"] = _tables([("", table) for table in derived], with_model=False)
     return found
 
 
@@ -156,13 +153,6 @@ def _flow(model: ModelResult) -> Iterable[Row]:
     steps += [("analysed", None, flow.analysed), ("events", None, flow.events)]
     for step, reason, records in steps:
         yield model.name, step, reason, records, HIDDEN if records is None else None
-
-
-def _derived(column: DerivedColumn) -> Iterable[Row]:
-    for one in column.counts:
-        ends = one.records, one.smallest, one.largest
-        note = HIDDEN if one.records is None else None
-        yield column.name, one.value, one.source, one.source_value, *ends, column.rounded_to, note
 
 
 def _checks(model: ModelResult) -> Iterable[Row]:

@@ -22,6 +22,7 @@ from oddsmodel.results.study import (
     TermTest,
     TrendResult,
 )
+from oddsmodel.results.tables import Hidden, Table
 from oddsmodel.wording import say
 
 SCHEMA_VERSION = "1.1"
@@ -107,27 +108,26 @@ def _exclusions(excluded: tuple[Exclusion, ...]) -> list[dict[str, Any]]:
 
 
 def _derived(column: DerivedColumn, disclosed: DisclosedResults) -> dict[str, Any]:
-    hidden = any(one.records is None for one in column.counts)
+    cells = [cell for table in column.tables for row in table.rows for cell in row]
+    hidden = any(isinstance(cell, Hidden) for cell in cells)
     return {
         "name": column.name,
         "label": column.label,
         "kind": column.kind,
         "rule": column.rule,
+        "told": column.told,
         "sources": list(column.sources),
         "cut_points": [_plain(cut) for cut in column.cut_points],
-        "counts_rounded_to": column.rounded_to,
-        "counts": [
-            {
-                "value": one.value,
-                "source": one.source,
-                "source_value": one.source_value,
-                "records": _plain(one.records),
-                "smallest": _plain(one.smallest),
-                "largest": _plain(one.largest),
-            }
-            for one in column.counts
-        ],
-        "reasons": {"counts.records": say("why-count-hidden", threshold=disclosed.hide_counts_below)} if hidden else {},
+        "tables": [_table(table) for table in column.tables],
+        "reasons": {"tables": say("why-count-hidden", threshold=disclosed.hide_counts_below)} if hidden else {},
+    }
+
+
+def _table(table: Table) -> dict[str, Any]:
+    """A table of text and numbers; a hidden cell is None."""
+    return {
+        "columns": [{"key": column.key, "heading": column.heading} for column in table.columns],
+        "rows": [[None if isinstance(cell, Hidden) else _plain(cell) for cell in row] for row in table.rows],
     }
 
 

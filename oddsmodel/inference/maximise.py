@@ -11,7 +11,7 @@ import numpy as np
 from scipy.linalg import LinAlgError, cho_factor, cho_solve
 
 from oddsmodel.inference.conditioning import Coordinates, Relation, coordinates
-from oddsmodel.inference.separation import separation
+from oddsmodel.inference.separation import Separation, separation
 from oddsmodel.likelihood.base import Array, Likelihood
 
 Status = Literal["converged", "no finite maximum", "aliased", "not converged"]
@@ -45,7 +45,7 @@ class Fit:
     coefficients (p,), covariance (p, p) (singular where the space is smaller than p), information (p, p) at the
     maximum, log_likelihood without constants. dimension: of the space. decrement: the squared Newton decrement
     at the last evaluation. flat (p,): a direction in which the log-likelihood never stops rising, where there is
-    one. Where status is "no finite maximum", log_likelihood is its supremum to within rounding and the
+    one; separation: the verdict on the rows in the coefficients themselves, where one was reached. Where status is "no finite maximum", log_likelihood is its supremum to within rounding and the
     coefficients are not an estimate.
     """
 
@@ -63,6 +63,7 @@ class Fit:
     working_information: Array
     aliased: tuple[Relation, ...] = ()
     flat: Array | None = None
+    separation: Separation | None = None
 
     @cached_property
     def standard_errors(self) -> Array:
@@ -147,6 +148,7 @@ class _Run:
         self.done = False
         self.failed = False
         self.flat: Array | None = None
+        self.separation: Separation | None = None
 
     def _reduced(self, vector: Array) -> Array:
         return vector if self.basis is None else self.basis.T @ vector
@@ -200,6 +202,8 @@ class _Run:
             return flat
         X, events, trials = self.space.working.rows_apart()
         verdict = separation(X if self.basis is None else X @ self.basis, events, trials)
+        if self.basis is None and self.space.to_beta is None:
+            self.separation = verdict
         return verdict.direction if verdict.separated else None
 
     def fit(self, likelihood: Likelihood) -> Fit:
@@ -234,6 +238,7 @@ class _Run:
             working=gamma,
             working_information=self.information,
             flat=flat,
+            separation=self.separation,
         )
 
 

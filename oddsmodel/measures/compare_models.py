@@ -17,48 +17,52 @@ Key = tuple[str, str | None, str | None, str]
 def compare_models(models: Sequence[ModelResult]) -> Table | None:
     """A row for each exposure coefficient and model, coefficients in blocks; None with fewer than two models.
 
-    Where the plan says of a model what it builds upon, its role or whether it was planned, these stand there too, with
-    what differs in words.
-
-    A model that was not estimated, or that has no such coefficient, has a row with its records and an empty estimate;
-    the note says why.
+    Where the plan says what a model builds upon, its role or whether it was planned, the models stand in blocks, with
+    that and what sets them apart in words. A model that was not estimated, or that has no such coefficient, has a row
+    with its records and an empty estimate; the note says why.
     """
     if len(models) < 2:
         return None
     described = any(map(_is_described, models))
-    columns = (
-        TableColumn("exposure", "Exposure"),
-        TableColumn("model", "Model"),
-        *((TableColumn("role", "Role"), TableColumn("differs", "What differs")) if described else ()),
+    exposures = _exposures(models)
+    pairs = [(key, model) for key in exposures for model in models]
+    if described:
+        pairs = [(key, model) for model in models for key in exposures]
+    rows: list[tuple[Cell, ...]] = []
+    notes: dict[str, None] = {}
+    for key, model in pairs:
+        label, coefficient = exposures[key], _keyed(model).get(key)
+        start = (model.name, _description(model), label) if described else (label, model.name)
+        if coefficient is None or coefficient.odds_ratio is None:
+            rows.append((*start, model.records, model.events, None, None))
+            notes[_why_missing(model, label, coefficient)] = None
+        else:
+            limits = lead_interval(coefficient.profile, coefficient.wald)
+            rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
+    levels = sorted({round(100 * model.level, 1) for model in models})
+    text = " and ".join(f"{level:g}%" for level in levels)
+    if any(model.role == "subgroup" for model in models):
+        notes[say("compare-models-subgroups")] = None
+    if any(model.planned is False for model in models):
+        notes[say("compare-models-not-planned")] = None
+    if len({model.records for model in models}) > 1:
+        notes[say("compare-models-different-records")] = None
+    note = " ".join([say("compare-models-note", levels=text), *notes])
+    size = len(exposures) if described else len(models)
+    blocks = tuple(place // size for place in range(len(rows)))
+    return Table("models", "The models side by side", _columns(described), tuple(rows), note, blocks)
+
+
+def _columns(described: bool) -> tuple[TableColumn, ...]:
+    exposure, model = TableColumn("exposure", "Exposure"), TableColumn("model", "Model")
+    what = TableColumn("description", "What it is", said_once=True)
+    return (
+        *((model, what, exposure) if described else (exposure, model)),
         TableColumn("records", "Records", "count"),
         TableColumn("events", "Events", "count", part_of="records"),
         TableColumn("odds_ratio", "Odds ratio", "odds_ratio", hidden_with=("records", "events")),
         TableColumn("interval", "Interval", "interval", hidden_with=("records", "events")),
     )
-    rows: list[tuple[Cell, ...]] = []
-    blocks: list[int] = []
-    notes: dict[str, None] = {}
-    for block, (key, label) in enumerate(_exposures(models).items()):
-        for model in models:
-            coefficient = _keyed(model).get(key)
-            start: tuple[Cell, ...] = (label, model.name, *(_description(model) if described else ()))
-            if coefficient is None or coefficient.odds_ratio is None:
-                rows.append((*start, model.records, model.events, None, None))
-                notes[_why_missing(model, label, coefficient)] = None
-            else:
-                limits = lead_interval(coefficient.profile, coefficient.wald)
-                rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
-            blocks.append(block)
-    if any(model.role == "subgroup" for model in models):
-        notes[say("compare-models-subgroups")] = None
-    if any(model.planned is False for model in models):
-        notes[say("compare-models-not-planned")] = None
-    levels = sorted({round(100 * model.level, 1) for model in models})
-    text = " and ".join(f"{level:g}%" for level in levels)
-    if len({model.records for model in models}) > 1:
-        notes[say("compare-models-different-records")] = None
-    note = " ".join([say("compare-models-note", levels=text), *notes])
-    return Table("models", "The models side by side", columns, tuple(rows), note, tuple(blocks))
 
 
 def models_figure(models: Sequence[ModelResult]) -> EstimatesFigure | None:
@@ -86,17 +90,14 @@ def _is_described(model: ModelResult) -> bool:
     return stated or model.based_on is not None or model.planned is not None
 
 
-def _description(model: ModelResult) -> tuple[str, str]:
-    """The model's role and whether it was planned, and what sets it apart from the others."""
-    differs = "; ".join(
-        part
-        for part in (
-            say("model-adjusted-for", adjustment=list(model.adjustment_labels)) if model.based_on is None else "",
-            model.differs,
-        )
-        if part
-    )
-    return say("model-role", role=model.role, planned=model.planned), differs
+def _description(model: ModelResult) -> str:
+    """The model's role, whether it was planned, and what sets it apart from the others."""
+    parts = [say("model-role-said", role=model.role, planned=model.planned)]
+    if model.based_on is None:
+        parts.append(f"{say('model-adjusted-for', adjustment=list(model.adjustment_labels))}.")
+    if model.differs:
+        parts.append(f"{model.differs}.")
+    return " ".join(parts)
 
 
 def _keyed(model: ModelResult) -> dict[Key, CoefficientResult]:

@@ -75,7 +75,7 @@ def adjustment_findings(design: str, adjusted: bool) -> tuple[Finding, ...]:
 def crude_to_adjusted_table(
     model: FittedModel, coefficients: Sequence[CoefficientResult], averages: Sequence[CoefficientResult] = ()
 ) -> Table:
-    """The same rows as of `levels`, with what adjustment changes and the crude estimate on all records that have the column."""
+    """The rows of `levels`, with what adjustment changes and the crude estimate on all records that have the column."""
     columns = [
         TableColumn("label", "Exposure"),
         TableColumn("records", "Records", "count", sums_known=True),

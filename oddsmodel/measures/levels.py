@@ -99,7 +99,8 @@ def levels(
             blocks.append(block)
     note = say("levels-note" if adjusted else "levels-note-unadjusted")
     for term in dict.fromkeys(one.term for one in averages):
-        note += " " + say("average-note", levels=sum(one.term == term for one in averages))
+        label = next(model.columns[one.sources[0]].label for one in model.design.columns if one.term == term)
+        note += " " + say("average-note", label=label, levels=sum(one.term == term for one in averages))
     return Table("levels", "By exposure", tuple(columns), tuple(rows), note, tuple(blocks))
 
 

@@ -65,7 +65,7 @@ def lost_by_exposure(followed: Followed, columns: Mapping[str, Column], exposure
         TableColumn("lost", say("lost-lost"), "count", part_of="records", sums_known=True),
         TableColumn("share", say("lost-share"), "percent", hidden_with=("records", "lost")),
     )
-    return Table("lost", say("lost-title"), heads, tuple(rows), say("lost-note"), tuple(blocks))
+    return Table("lost", say("lost-title"), heads, tuple(rows), say("lost-note"), tuple(blocks), aside=True)
 
 
 def lost_findings(followed: Followed) -> tuple[Finding, ...]:

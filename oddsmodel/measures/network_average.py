@@ -30,7 +30,7 @@ def network_average(model: FittedModel, name: str) -> tuple[CoefficientResult, .
     """
     if name not in plain_exposures(model) or not level_columns(model, name):
         return ()
-    own = dict(zip((model.design.columns[k].level for k in level_columns(model, name)), level_columns(model, name)))
+    own = {str(model.design.columns[position].level): position for position in level_columns(model, name)}
     present = design_levels(model, name)
     declared = model.columns[name].levels
     order = [level for level in declared if level in present] or list(present)
@@ -79,7 +79,8 @@ def _crude(model: FittedModel, name: str, order: Sequence[str]) -> list[CrudeEst
     for row, level in enumerate(order):
         estimate = float(contrasts[row] @ fit.coefficients)
         one = contrast_result(estimate, errors[row], limits, row, model.level, term=name, role="exposure", label=level)
-        found.append(CrudeEstimate(int(counted.records.sum()), one.odds_ratio, one.wald, one.profile))
+        profiled = one.profile if limits is not None else None
+        found.append(CrudeEstimate(int(counted.records.sum()), one.odds_ratio, one.wald, profiled))
     return found
 
 

@@ -37,6 +37,8 @@ def contrast_result(
         reasons["odds_ratio"] = say("odds-ratio-out-of-range")
     if standard_error is None:
         reasons["standard_error"] = say("no-standard-error-of-one-group")
+    if crude is not None and crude.profile is None:
+        reasons["crude.profile"] = say("no-likelihood-of-grouped-records")
     profile = ProfileResult(None, None)
     if limits is None:
         reasons["profile"] = say("no-likelihood-of-grouped-records")

@@ -28,7 +28,7 @@ SETTLED = ("converged", "no finite maximum")
 class _Spaces:
     """The spaces of one column's two smaller models, as bases (p, r) of the model's coefficients.
 
-    with_score: the score in place of the levels, its coefficient last; without: neither. levels: how many the model has.
+    with_score: the score in place of the levels, its coefficient last; without: neither.
     """
 
     column: str
@@ -39,6 +39,7 @@ class _Spaces:
 
     @property
     def levels(self) -> int:
+        """How many levels the model has."""
         return int(self.with_score.shape[0] - self.without.shape[1] + 1)
 
 

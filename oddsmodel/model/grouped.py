@@ -33,9 +33,9 @@ class Grouping:
     without_error: NDArray[np.bool_]
 
     @property
-    def df(self) -> int:
-        """Degrees of freedom of t, number of groups − 1 (Cameron & Miller 2015, section VI.D)."""
-        return self.number - 1
+    def df(self) -> int | None:
+        """Degrees of freedom of t, number of groups − 1 (Cameron & Miller 2015, section VI.D); None with one group."""
+        return self.number - 1 if self.number > 1 else None
 
     def standard_error(self, contrast: Array) -> float | None:
         """That of contrast'β, contrast (p,); None where a coefficient in it has none."""
@@ -81,7 +81,7 @@ def _marks_of_one_group(design: Design, patterns: Patterns, codes: NDArray[np.in
         own = slice(term.start, term.stop)
         if term.stop - term.start > 1 and binary[own].all():
             # Their reference is a level as well, and may be that of a single group.
-            others = X[:, own].any(axis=1)[index]
+            others = (X[:, own].sum(axis=1) > 0.0)[index]
             if (~others).any() and within_one_group(~others, codes):
                 found[own] = True
     return found

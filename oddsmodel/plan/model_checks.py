@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping, Sequence
+from itertools import pairwise
 from typing import Any
 
 from oddsmodel.errors import Fault
@@ -98,7 +99,7 @@ def check_column(name: str, column: ColumnSection, models: Mapping[int, ModelSec
             yield fault("scores-kind", where, kind=column.kind)
         elif column.levels is not None and len(scores) != len(column.levels):
             yield fault("scores-number", where, scores=len(scores), levels=len(column.levels))
-        if not all(map(math.isfinite, scores)) or any(b <= a for a, b in zip(scores, scores[1:], strict=False)):
+        if not all(map(math.isfinite, scores)) or any(after <= before for before, after in pairwise(scores)):
             yield fault("scores-not-rising", where)
     if column.compare_with == "network average":
         where = at("columns", name, "compare_with")

@@ -154,7 +154,10 @@ def _coded(table: RawTable, plan: StudyPlan) -> Records:
     if plan.records.repeats is not None:
         uses = {*used, plan.outcome.column_name, plan.records.repeats.ordered_by}
         single, said = repeats_left_out(
-            _table(table, coded, counts), plan.records.repeats, plan.records.keep, uses - {plan.records.repeats.of}
+            _table(table, plan, coded, counts),
+            plan.records.repeats,
+            plan.records.keep,
+            uses - {plan.records.repeats.of},
         )
         left_out.update(single)
         findings = [one for one in findings if not _is_of_persons(one, plan.records.repeats.of)]
@@ -205,13 +208,13 @@ def _is_of_persons(said: Finding, column: str) -> bool:
     return said.code == "identifier-repeats" and said.facts["column"] == column
 
 
-def _table(table: RawTable, coded: dict[str, CodedColumn], counts: pd.Series | None) -> Table:
+def _table(table: RawTable, plan: StudyPlan, coded: dict[str, CodedColumn], counts: pd.Series | None) -> Table:
     return Table(
         frame=pd.DataFrame({name: column.values for name, column in coded.items()}, copy=False),
         columns={name: column.column for name, column in coded.items()},
         outside={name: pd.Series(column.outside) for name, column in coded.items() if column.outside is not None},
         counts=counts,
-        source=table.source,
+        where=lambda name: in_column(table.source, file_name(name, plan)),
         first_row=table.first_row,
     )
 
@@ -226,7 +229,7 @@ def _made_outcome(
     text = outcome.event_when or ""
     if any(column.faults and is_mentioned(name, text) for name, column in coded.items()):
         return None
-    return make_outcome(_table(table, coded, counts), outcome)
+    return make_outcome(_table(table, plan, coded, counts), outcome)
 
 
 def _raw_values(table: RawTable, name: str, section: ColumnSection | None, plan: StudyPlan) -> RawValues:

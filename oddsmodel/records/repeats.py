@@ -13,7 +13,7 @@ from oddsmodel.errors import InputFault
 from oddsmodel.findings import Finding
 from oddsmodel.plan.schema import Repeats as RepeatsSection
 from oddsmodel.records.condition import vet_condition
-from oddsmodel.records.faults import fault, in_column
+from oddsmodel.records.faults import fault
 from oddsmodel.records.made_outcome import ROWS_NAMED, Table
 from oddsmodel.records.types import LeftOut
 from oddsmodel.wording import finding
@@ -116,7 +116,7 @@ def repeats_left_out(
             "rows": [int(row) + table.first_row for row in rows[:ROWS_NAMED]],
             "total": len(rows),
         }
-        raise InputFault(fault("repeats-tied", in_column(table.source, repeats.ordered_by), **facts))
+        raise InputFault(fault("repeats-tied", table.where(repeats.ordered_by), **facts))
     facts = {"person": person, "order": order, "use": repeats.use}
     left_out = {
         "person-not-recorded": LeftOut(found.no_person, facts),
@@ -132,5 +132,5 @@ def _order(table: Table, name: str) -> NDArray[np.float64]:
     if table.columns[name].kind == "number":
         return table.frame[name].to_numpy(dtype=np.float64)
     if table.columns[name].kind != "date":
-        raise InputFault(fault("order-not-readable", in_column(table.source, name), column=quoted(name)))
+        raise InputFault(fault("order-not-readable", table.where(name), column=quoted(name)))
     return table.days(name)

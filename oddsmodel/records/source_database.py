@@ -189,7 +189,7 @@ def _columns(connection: Connection, statement: str, source: str, progress: Prog
         names = vetted_names([str(name) for name in given], source)
         columns = [BatchedColumn() for _ in names]
         rows = 0
-        for batch in answer.partitions():
+        for batch in answer.partitions(ROWS_AT_ONCE):
             for column, values in zip(columns, zip(*batch, strict=True), strict=True):
                 column.add(values)
             rows += len(batch)

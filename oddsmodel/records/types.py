@@ -56,7 +56,7 @@ class Records:
     counts: (n,) float64 true frequencies, or None.
     read: records read (the sum of counts where there are any).
     left_out: what the plan leaves out of every model, by the code of its reason (`accounting.REASONS` orders them).
-    derived: how the derived columns were made, each with its cross-counts over all records read.
+    derived: how the derived columns were made.
     """
 
     frame: pd.DataFrame

@@ -147,9 +147,9 @@ class CertificateResult:
 class TrendResult:
     """A trend over the levels of an ordered column: its scores in place of the levels, all else as in the model.
 
-    term: the term of its levels. scores: the levels in order with their scores. step: the log odds ratio per unit of score as a coefficient, None
-    where it could not be estimated. trend, departure: likelihood-ratio tests of the score against nothing, and of the
-    levels against the score.
+    term: the term of its levels. scores: the levels in order with their scores. step: the log odds ratio per unit of
+    score as a coefficient, None where it could not be estimated. trend, departure: likelihood-ratio tests of the score
+    against nothing, and of the levels against the score.
     """
 
     column: str

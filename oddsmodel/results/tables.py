@@ -38,6 +38,9 @@ class TableColumn:
     hidden_with: keys of counts in the same row whose hiding hides this cell too (a percentage, a mean).
     hidden_with_block: hide this cell when any count in its block is hidden (a crude odds ratio, which
         with the reference row would give a hidden cell away).
+    said_once: whether a text that the row above in the same block has as well need not be shown again.
+    rounded: for the smallest ("down") and the largest ("up") of some values, which belong to single records: how they
+        are made coarse. other_end: the key of the column with the other end.
     """
 
     key: str
@@ -47,11 +50,18 @@ class TableColumn:
     sums_known: bool = False
     hidden_with: tuple[str, ...] = ()
     hidden_with_block: bool = False
+    said_once: bool = False
+    rounded: Literal["", "down", "up"] = ""
+    other_end: str = ""
 
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """A table; `blocks` numbers each row's block (rows of one variable), empty when all rows are one block."""
+    """A table; `blocks` numbers each row's block (rows of one variable), empty when all rows are one block.
+
+    aside: its counts are hidden rather than those of other tables, where either would protect a small count; no
+        estimate is made from them.
+    """
 
     id: str
     title: str
@@ -59,3 +69,4 @@ class Table:
     rows: tuple[tuple[Cell, ...], ...]
     note: str = ""
     blocks: tuple[int, ...] = field(default=())
+    aside: bool = False

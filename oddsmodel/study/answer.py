@@ -16,10 +16,12 @@ from oddsmodel.records.types import Column
 from oddsmodel.results.study import AdjustmentColumn, ModelResult, RecordsResult, StudyResults
 from oddsmodel.results.tables import Table
 from oddsmodel.study.check import CheckedPlan
+from oddsmodel.study.derived import with_counts
 from oddsmodel.study.deviations import standard_deviations
 from oddsmodel.study.estimate import estimate
-from oddsmodel.study.follow_up import rules, with_losses
 from oddsmodel.study.fitting import Fitted, fit_model
+from oddsmodel.study.follow_up import rules, with_losses
+from oddsmodel.study.groups import with_groups_told
 from oddsmodel.study.prepare import Prepared, conditions, on_records_of
 from oddsmodel.study.provenance import provenance
 from oddsmodel.wording import finding
@@ -69,7 +71,7 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         comparison=compare_models(results),
         comparison_figure=models_figure(results),
         standard_deviations=standard_deviations(models[0].columns),
-        derived=records.derived,
+        derived=with_counts(records.derived, models[0]),
     )
     return study, tuple(fitted)
 
@@ -102,7 +104,7 @@ def _kept(checked: CheckedPlan, rows: NDArray[np.bool_]) -> KeptRecords:
 
 def _characteristics(checked: CheckedPlan, main: Prepared) -> Table:
     rows = _rows_kept(checked, main, main.exposures)
-    return study_characteristics(
+    table = study_characteristics(
         checked.file.plan.study.design,
         _kept(checked, rows),
         checked.records.columns,
@@ -110,6 +112,7 @@ def _characteristics(checked: CheckedPlan, main: Prepared) -> Table:
         main.adjustment,
         main.accounting.included[rows],
     )
+    return with_groups_told(table, main, checked.file.plan.records.grouped_by)
 
 
 def _records_differ(

@@ -37,8 +37,9 @@ def write_out(
     sections: in the plan's order, bases before what builds upon them. A model has its base's formula, exposures, level
     and `keep`; its own formula, exposures and level stand in their place, its own `keep` must hold beside the base's,
     and `add` and `leave_out` take effect on the base's formula term by term. A sensitivity or subgroup model, and one
-    with a `keep` of its own beside the base's, is on its own complete records unless it says otherwise (`same_records`):
-    what it asks for then leaves out no record of the other models. Roles, reasons and trends are not inherited.
+    with a `keep` of its own beside the base's, is on its own complete records unless it says otherwise
+    (`same_records`): what it asks for then leaves out no record of the other models. Roles, reasons and trends are
+    not inherited.
     """
     found: dict[str, ModelSection] = {}
     told: list[WrittenOut] = []
@@ -82,7 +83,8 @@ def _formula(
         return base.formula, {}, {}
     start = vet_formula(base.formula, columns=columns, outcome=outcome, where=_where(base, "formula"))
     before = _terms(start)
-    added, taken = {}, {}
+    added: Terms = {}
+    taken: Terms = {}
     faults: list[Fault] = []
     for key, texts, change in (("add", section.add, added), ("leave_out", section.leave_out, taken)):
         for number, text in enumerate(texts):

@@ -95,7 +95,7 @@ def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], patterns: Patterns) ->
         ]
         return finding("stop", "aliased", relations=relations)
     if fit.status == "no finite maximum":
-        verdict = separation(patterns.X, patterns.events, patterns.trials)
+        verdict = fit.separation or separation(patterns.X, patterns.events, patterns.trials)
         told = {
             kind: [label for label, found in zip(labels, verdict.coefficients, strict=True) if found == kind]
             for kind in ("plus infinity", "minus infinity", "undetermined")

@@ -28,9 +28,9 @@ def with_losses(
     lost = ~outcome.recorded[rows]
     if not lost.any():
         return result
-    complete = account(
-        records, known, keep=keep, exposures=prepared.exposures, adjustment=prepared.needed
-    ).included[rows]
+    complete = account(records, known, keep=keep, exposures=prepared.exposures, adjustment=prepared.needed).included[
+        rows
+    ]
     counts = None if records.counts is None else records.counts.to_numpy(dtype=np.float64)[rows]
     followed = Followed(records.frame.loc[rows].reset_index(drop=True), lost, complete, counts)
     return replace(

@@ -1,19 +1,15 @@
-"""Records that belong to groups: what is said of how many there are, and Wald's test of several coefficients."""
+"""Records that belong to groups: how many there are, and whether they are enough."""
 
 from __future__ import annotations
 
-import numpy as np
-from scipy.linalg import null_space
-from scipy.special import fdtrc
+from dataclasses import replace
 
 from oddsmodel.findings import Finding
-from oddsmodel.inference import maximise
-from oddsmodel.inference.clustered import clustered_covariance, small_sample_factor
-from oddsmodel.likelihood import BinomialLikelihood
-from oddsmodel.model.fitted import Array, FittedModel
-from oddsmodel.model.grouped import Grouping
-from oddsmodel.results.study import Flow, WaldTest
-from oddsmodel.wording import finding
+from oddsmodel.model.grouped import Grouping, group_codes
+from oddsmodel.results.study import Flow
+from oddsmodel.results.tables import Table
+from oddsmodel.study.prepare import Prepared
+from oddsmodel.wording import finding, say
 
 ENOUGH = 40
 """Below this many groups a cluster-robust interval tends to be too narrow (Cameron & Miller 2015, section VI)."""
@@ -32,41 +28,11 @@ def findings_of_groups(grouping: Grouping, flow: Flow) -> tuple[Finding, ...]:
     return (told,)
 
 
-def contrasts_without(model: FittedModel, columns: tuple[int, ...]) -> tuple[Array, Array, int] | None:
-    """Estimates (r,) and cluster-robust covariance (r, r) of the model of these columns, and the degrees of freedom.
-
-    None where the groups are too few, or where a column has no standard error.
-    """
-    grouping, patterns = model.grouping, model.patterns
-    if grouping is None or grouping.covariance is None or grouping.without_error[list(columns)].any():
-        return None
-    if len(columns) == len(model.design.columns):
-        return model.fit.coefficients, grouping.covariance, grouping.df
-    fit = maximise(BinomialLikelihood(patterns.X[:, list(columns)], patterns.events, trials=patterns.trials))
-    factor = small_sample_factor(grouping.number, float(model.records), len(columns))
-    if fit.status != "converged" or factor is None:
-        return None
-    covariance = clustered_covariance(fit, patterns.index, model.event, grouping.codes, factor, model.counts)
-    return fit.coefficients, covariance, grouping.df
-
-
-def wald_f(estimates: Array, covariance: Array, df: int, within: Array) -> WaldTest | None:
-    """F of the hypothesis that the estimates (r,) lie in the space spanned by within (r, s).
-
-    With L'b = 0 that hypothesis, F = (L'b)'(L'VL)⁻¹(L'b) / q on q = rank of L and `df` degrees of freedom (Cameron &
-    Miller 2015, section VI.D). None where q exceeds df: as many groups cannot tell of so many coefficients at once.
-    """
-    scale = np.sqrt(np.diag(covariance))
-    if not (scale > 0.0).all():
-        return None
-    b, V = estimates / scale, covariance / np.outer(scale, scale)
-    L = null_space((within / scale[:, None]).T) if within.shape[1] else np.eye(b.size)
-    q = L.shape[1]
-    if q == 0 or q > df:
-        return None
-    middle = L.T @ V @ L
-    if np.linalg.cond(middle) > 1e12:
-        return None
-    told = L.T @ b
-    statistic = float(told @ np.linalg.solve(middle, told)) / q
-    return WaldTest(statistic, q, df, float(fdtrc(q, df, statistic)))
+def with_groups_told(table: Table, main: Prepared, grouped_by: str | None) -> Table:
+    """The table of who they were, its note beginning with how many groups the records analysed are of."""
+    if grouped_by is None:
+        return table
+    _, number = group_codes(main.frame[grouped_by])
+    label = main.columns[grouped_by].label
+    told = say("records-analysed-of-groups", records=main.accounting.flow.analysed, groups=number, column=label)
+    return replace(table, note=f"{told} {table.note}".rstrip())

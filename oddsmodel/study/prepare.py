@@ -34,7 +34,8 @@ class Prepared:
 
     section: with everything that it takes from the model it builds upon; differs: what sets it apart, in words.
     frame, event, counts: the analysed records. shared: whether its records are those complete for all models
-    that share theirs. needed: the columns that must be recorded. columns: what is known of the records' columns, with the main model's standard deviations.
+    that share theirs. needed: the columns that must be recorded. columns: what is known of the records' columns,
+    with the main model's standard deviations.
     """
 
     section: ModelSection

@@ -9,9 +9,9 @@ import numpy as np
 from oddsmodel.design.constant import indicators_of_all_levels
 from oddsmodel.design.marginality import restricted_columns
 from oddsmodel.inference import Fit, Problem, likelihood_ratio, maximise_all
+from oddsmodel.measures.wald_f import contrasts_without, wald_f
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import TermTest
-from oddsmodel.study.groups import contrasts_without, wald_f
 from oddsmodel.wording import say
 
 EXPOSURE = "all exposure columns"
@@ -49,7 +49,7 @@ def term_tests(model: FittedModel) -> TermTests:
     pairs.append((WHOLE, everything, intercept))
 
     if model.grouping is not None:
-        return TermTests(tuple(_wald(model, name, *both, ones) for name, *both in pairs), None)
+        return TermTests(tuple(_wald(model, name, larger, smaller, ones) for name, larger, smaller in pairs), None)
     spaces = sorted({columns for _, larger, smaller in pairs for columns in (larger, smaller)} - {everything})
     problems = [Problem(_basis(p, columns, ones)) for columns in spaces]
     fits = maximise_all(model.likelihood, problems, near=model.fit)
@@ -71,11 +71,11 @@ def _wald(
     """
     p = len(model.design.columns)
     space = np.eye(p)[:, list(larger)]
-    within = np.linalg.lstsq(space, _basis(p, smaller, ones), rcond=None)[0]
+    within: Array = np.asarray(np.linalg.lstsq(space, _basis(p, smaller, ones), rcond=None)[0], dtype=np.float64)
     df = len(larger) - int(np.linalg.matrix_rank(within))
     found = contrasts_without(model, larger)
     test = None if found is None else wald_f(*found, within)
-    reason = "no-likelihood-of-grouped-records" if test is not None else "no-term-test-of-groups"
+    reason = "wald-f-in-its-place" if test is not None else "no-term-test-of-groups"
     return TermTest(name, df, None, None, say(reason), test)
 
 

@@ -20,6 +20,13 @@ def _of_groups(facts: Facts) -> str:
     )
 
 
+def _analysed(facts: Facts) -> str:
+    return (
+        f"The {plural(facts['records'], 'record')} analysed are of {plural(facts['groups'], 'group')} by "
+        f"{quoted(facts['column'])}; records are counted here, not groups."
+    )
+
+
 def _few(facts: Facts) -> str:
     return (
         f"There are only {count(facts['groups'])} groups by {quoted(facts['column'])}. With fewer than "
@@ -29,10 +36,21 @@ def _few(facts: Facts) -> str:
 
 
 def _too_few(facts: Facts) -> str:
+    one = facts["groups"] == 1
     return (
-        f"{plural(facts['groups'], 'group').capitalize()} by {quoted(facts['column'])} are too few to learn from them "
+        f"{plural(facts['groups'], 'group')} by {quoted(facts['column'])} {'is' if one else 'are'} too few to learn "
         f"how much groups differ, so the intervals cannot be relied on. Take grouped_by out of the plan, and put "
         f"{quoted(facts['column'])} among the adjustment columns of the formula instead."
+    )
+
+
+def _methods(facts: Facts) -> str:
+    return (
+        f"The {plural(facts['groups'], 'group')} by {facts['column']} were taken as independent, their records not: "
+        f"intervals at {facts['level']} are Wald intervals (Wald, 1943) from a cluster-robust covariance (Liang & "
+        f"Zeger, 1986) with the factor G/(G − 1) · (n − 1)/(n − p) for small samples and Student's distribution with "
+        f"{count(facts['df'])} degrees of freedom (Cameron & Miller, 2015). There is no likelihood of such records, "
+        f"and no test, limit or criterion that rests on one."
     )
 
 
@@ -65,6 +83,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
 
 SENTENCES: dict[str, Sentence] = {
     "records-of-groups": _of_groups,
+    "records-analysed-of-groups": _analysed,
     "groups-few": _few,
     "groups-too-few": _too_few,
     "no-likelihood-of-grouped-records": (
@@ -74,14 +93,16 @@ SENTENCES: dict[str, Sentence] = {
     "no-log-likelihood-of-grouped-records": (
         "The records of a group are not independent, so there is no likelihood of them."
     ),
-    "no-check-of-grouped-records": (
-        "Not given: it takes the records as independent, and those of a group are not."
-    ),
+    "no-check-of-grouped-records": ("It takes the records as independent, and those of a group are not."),
     "no-standard-error-of-one-group": (
         "Its records, or those it is compared with, all belong to a single group, so that nothing tells how much it "
         "differs between groups: there is no standard error that allows for them."
     ),
     "no-wald-of-one-group": "There is no standard error that allows for the groups.",
+    "wald-f-in-its-place": (
+        "The records of a group are not independent, so there is no likelihood-ratio test; Wald's F stands in its "
+        "place."
+    ),
     "no-term-test-of-groups": (
         "The records of a group are not independent, so there is no likelihood-ratio test; and the groups are too few "
         "to test so many coefficients at once by Wald's F."
@@ -90,26 +111,19 @@ SENTENCES: dict[str, Sentence] = {
         "The records belong to groups; this description takes them as independent, which its marks of uncertainty do "
         "not allow for."
     ),
-    "methods-grouped": (
-        lambda facts: f"The {plural(facts['groups'], 'group')} by {facts['column']} were taken as independent, their "
-        f"records not: intervals at {facts['level']} are Wald intervals (Wald, 1943) from a cluster-robust covariance "
-        f"(Liang & Zeger, 1986) with the factor G/(G − 1) · (n − 1)/(n − p) for small samples and Student's "
-        f"distribution with {count(facts['df'])} degrees of freedom (Cameron & Miller, 2015). There is no likelihood "
-        f"of such records, and no test, limit or criterion that rests on one."
-    ),
+    "methods-grouped": _methods,
     "methods-grouped-terms": "Whole terms were tested by Wald's F with that covariance.",
     "lead-grouped": (
-        "The intervals are Wald intervals that allow for records of one group being alike, with Student's "
-        "distribution."
+        "The intervals are Wald intervals that allow for records of one group being alike, with Student's distribution."
     ),
     "column-wald-f": "Wald's F",
     "column-df-denominator": "Degrees of freedom, denominator",
+    "terms-table-grouped": "Wald tests of whole terms",
     "terms-note-grouped": (
         "Each term is tested by Wald's F with the cluster-robust covariance, in a model without the terms that "
         "contain it."
     ),
     "independence-within-groups": _independence,
-    "row-groups": "Groups by {label}",
     "left-out-group-not-recorded": "Group not recorded: {label}",
     **{code: what for code, (what, _) in FAULTS.items()},
     **{f"{code}-remedy": remedy for code, (_, remedy) in FAULTS.items()},

@@ -5,8 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from oddsmodel.wording.numbers import count, decimal, listed, percent, ratio
 from oddsmodel.wording.measures_lost import LOST
+from oddsmodel.wording.numbers import count, decimal, listed, percent, ratio
 from oddsmodel.wording.say import Sentence
 
 

@@ -12,8 +12,8 @@ from oddsmodel.wording.say import Sentence
 def _many_lost(facts: Mapping[str, Any]) -> str:
     return (
         f"Of {plural(facts['followed_records'], 'record')} whose window could have finished, "
-        f"{count(facts['lost_records'])} ({percent(facts['share'])}) were lost before its end, so that their outcome is "
-        f"not recorded. Events that came before the loss are known while the absence of later ones is not, which "
+        f"{count(facts['lost_records'])} ({percent(facts['share'])}) were lost before its end, so that their outcome "
+        f"is not recorded. Events that came before the loss are known while the absence of later ones is not, which "
         f"biases the odds ratio, the more so where exposure goes with loss. A time-to-event analysis, which uses the "
         f"time that the lost were observed, suits these records better."
     )

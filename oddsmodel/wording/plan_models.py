@@ -1,4 +1,4 @@
-"""Sentences on models that build upon others, trends and averages: what is wrong, and under `<code>-remedy` what to do."""
+"""Sentences on models that build upon others, trends and averages; under `<code>-remedy` what to do."""
 
 from __future__ import annotations
 

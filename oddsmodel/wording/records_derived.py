@@ -74,12 +74,6 @@ def _meant(facts: Facts) -> str:
     return f"{listed(meant)}. " if meant else ""
 
 
-def _rounded(to: int | None) -> str:
-    if to is None:
-        return ""
-    return f", rounded to multiples of {to}; the smallest and largest values are rounded outwards"
-
-
 def _not_yes_no(facts: Facts) -> str:
     more = f" and {plural(facts['more'], 'other value')}" if facts["more"] else ""
     return f"{facts['column']} counts points where {facts['part']} is yes, but it also holds {facts['values']}{more}."
@@ -121,20 +115,25 @@ DERIVED_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
 }
 
 DERIVED_WORDS: dict[str, Sentence] = {
-    "derived-heading-value": "Value",
-    "derived-heading-source": "Made from",
-    "derived-heading-source-value": "Its value",
+    "derived-heading-label": "Derived column",
     "derived-heading-records": "Records",
-    "derived-heading-smallest": "Smallest",
-    "derived-heading-largest": "Largest",
-    "derived-title": lambda facts: f"{facts['label']}, counted beside what it was made from",
-    "derived-note": lambda facts: (
-        f"{facts['rule']} Counts are of all records read, before any were left out{_rounded(facts['rounded_to'])}."
-    ),
-    "fold-derived": lambda facts: f"How {listed([plain(label, 60) for label in facts['labels']])} came about",
+    "derived-level-of": lambda facts: f"Level of {plain(facts['label'], 60)}",
+    "derived-part": lambda facts: f"Of these, {plain(facts['label'], 60)}",
+    "derived-smallest": lambda facts: f"Smallest {plain(facts['label'], 60)}",
+    "derived-largest": lambda facts: f"Largest {plain(facts['label'], 60)}",
+    "derived-earliest": lambda facts: f"Earliest {plain(facts['label'], 60)}",
+    "derived-latest": lambda facts: f"Latest {plain(facts['label'], 60)}",
+    "derived-years": "value",
+    "derived-dates": "calendar year",
     "derived-recorded": "recorded",
     "derived-not-recorded": "not recorded",
-    "derived-yes": "yes",
+    "derived-in-no-group": "in no group",
+    "derived-title": lambda facts: f"{plain(facts['label'], 60)}, counted beside what it was made from",
+    "derived-note": lambda facts: (
+        f"{facts['told']} Counted among the records analysed"
+        f"{'; a report to be shared has smallest and largest values rounded outwards' if facts['ends'] else ''}."
+    ),
+    "fold-derived": lambda facts: f"How {listed([plain(label, 60) for label in facts['labels']])} came about",
     "derived-other-levels": "other levels",
     "derived-rule-bands_of": lambda facts: f"Bands of {plain(facts['sources'][0], 60)}; a band holds its lower edge.",
     "derived-rule-years_between": lambda facts: (

@@ -46,32 +46,30 @@ def _undecided(facts: Facts) -> str:
 
 def _used(facts: Facts) -> str:
     return (
-        f"Of the records of the same {_label(facts, 'person')} that belong to the study the {facts['use']} by "
-        f"{_label(facts, 'order')} was used, and the others were left out."
+        f"Of several records of the same “{_label(facts, 'person')}” that belong to the study the {facts['use']} by "
+        f"“{_label(facts, 'order')}” was used."
     )
 
 
 def _window(facts: Facts) -> str:
     first, days = int(facts["from_day"]), int(facts["within_days"])
-    start = _label(facts, "start")
-    when = f"from day {first} after {start} up to, not including, day {first + days}" if first else ""
-    words = (
-        f"The outcome is the event ({_label(facts, 'event')}) in the days {when}, "
-        f"among those event-free and observed until day {first}."
-        if first
-        else f"The outcome is the event ({_label(facts, 'event')}) in the {plural(days, 'day')} that begin with "
-        f"{start}."
-    )
+    start, event = (f"“{_label(facts, key)}”" for key in ("start", "event"))
+    words = f"The outcome is whether {event} lies within {plural(days, 'day')} of {start}, that day included."
+    if first:
+        words = (
+            f"The outcome is whether {event} lies within {plural(days, 'day')} of day {first} after {start}, that day "
+            f"included; records with the event before it, or not observed until it, were left out."
+        )
     words += (
         f" Records whose window could not have finished by extraction ({facts['extracted']}) were left out, whether "
-        f"or not they have an event: to count late entrants as event-free, or to keep those with an event alone, "
-        f"would bias the odds ratio."
+        f"or not they have the event: to count late entrants as event-free, or to keep only those of them with the "
+        f"event, would bias the odds ratio."
     )
     if facts["followed_to"] is None:
         return f"{words} Everybody is taken to have been followed until extraction."
     return (
-        f"{words} Of records without the event that were not followed (to {_label(facts, 'followed_to')}) until the "
-        f"window's end the outcome is not recorded."
+        f"{words} Where there is no event and follow-up (“{_label(facts, 'followed_to')}”) ends before the window, "
+        f"the outcome is not recorded."
     )
 
 
@@ -124,7 +122,7 @@ FOLLOW_UP_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "repeats-tied": (
         lambda facts: (
-            f"Of {count(facts['persons'])} of {plain(facts['person'], LONGEST_LABEL)} it cannot be told which record is "
+            f"For {plural(facts['persons'], 'value')} of {quoted(facts['person'])} it cannot be told which record is "
             f"{facts['use']}: several share that place in the order, and differ otherwise. See {_rows(facts)}."
         ),
         "Order by a column that tells them apart (a time or a running number), or take out the records that do not "

@@ -9,8 +9,6 @@ from oddsmodel.wording.numbers import decimal, listed
 from oddsmodel.wording.report_answer import AVERAGE
 from oddsmodel.wording.say import Sentence
 
-ROLES = {"main": "main", "sensitivity": "sensitivity", "subgroup": "subgroup", "secondary": "secondary"}
-
 
 def _what_differs(facts: Mapping[str, Any]) -> str:
     parts = []
@@ -32,7 +30,7 @@ def _what_differs(facts: Mapping[str, Any]) -> str:
 
 
 def _role(facts: Mapping[str, Any]) -> str:
-    role, planned = ROLES.get(facts["role"], facts["role"]), facts["planned"]
+    role, planned = str(facts["role"]), facts["planned"]
     if planned is None:
         return role
     return f"{role}, {'planned' if planned else 'not planned'}"
@@ -49,8 +47,8 @@ def _adjusted_for(facts: Mapping[str, Any]) -> str:
 
 def _trend_note(facts: Mapping[str, Any]) -> str:
     words = (
-        f"The step is one unit of the scores ({facts['scores']}). The trend puts the scores as a number in place of the "
-        "levels, with everything else as it is."
+        f"The step is one unit of the scores ({facts['scores']}). The trend puts the scores as a number in place of "
+        "the levels, with everything else as it is."
     )
     if facts["likelihood"]:
         words += (
@@ -84,8 +82,8 @@ SENTENCES: dict[str, Sentence] = {
     "model-role-said": lambda facts: f"{_role(facts).capitalize()}.",
     "model-adjusted-for": _adjusted_for,
     "compare-models-subgroups": (
-        "The odds ratios of two subgroups also differ by chance. Whether they differ is judged by an interaction in one "
-        "model, not by one interval holding 1 while the other does not."
+        "The odds ratios of two subgroups also differ by chance. Whether they differ is judged by an interaction in "
+        "one model, not by one interval holding 1 while the other does not."
     ),
     "compare-models-not-planned": (
         "What was not planned was thought of after something had been seen, and is weaker evidence for it."
@@ -111,8 +109,9 @@ SENTENCES: dict[str, Sentence] = {
     "network-average": AVERAGE,
     "average-label": f"{{label}}: {{level}} against {AVERAGE}",
     "average-note": (
-        "The network average is the mean of the log odds over the {levels} levels, each counting the same whatever its "
-        "size. The levels stand in the plan's order and are not ranked: with wide intervals a rank is mostly chance."
+        "{label}: odds ratios are against the network average, which is the mean of the log odds over the {levels} "
+        "levels, each counting the same whatever its size. The levels stand in the plan's order and are not ranked: "
+        "with wide intervals a rank is mostly chance."
     ),
     "average-not-plain-levels": (
         "{label} enters the model in another way than by levels against a reference, so its levels are not compared "
@@ -125,8 +124,8 @@ SENTENCES: dict[str, Sentence] = {
         "and Armitage, 1955)."
     ),
     "methods-averages": (
-        "Levels were compared with the unweighted mean of the log odds over all levels, each by a contrast with its own "
-        "interval, and were not ranked."
+        "Levels were compared with the unweighted mean of the log odds over all levels, each by a contrast with its "
+        "own interval, and were not ranked."
     ),
     "methods-standard-deviations": _standard_deviations,
     "deviation-size": _deviation_size,

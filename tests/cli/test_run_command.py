@@ -176,9 +176,8 @@ def checked(design: object, *findings: Finding) -> Any:
     section = SimpleNamespace(name="main", formula="died ~ smoker")
     prepared = SimpleNamespace(section=section, accounting=SimpleNamespace(flow=FLOW), design=design)
     return SimpleNamespace(
-        file=SimpleNamespace(plan=SimpleNamespace(outcome=SimpleNamespace(column="died"))),
         records=SimpleNamespace(source="records.csv", read=100),
-        outcome=SimpleNamespace(event_label="yes", other_label="no"),
+        outcome=SimpleNamespace(column="died", event_label="yes", other_label="no"),
         models=(prepared,),
         findings=findings,
     )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -17,7 +18,7 @@ from oddsmodel.measures.network_average import network_average
 SITES = ["North", "East", "South", "West"]
 
 
-def records(seed: int = 8, n: int = 900) -> tuple[pd.DataFrame, np.ndarray]:
+def records(seed: int = 8, n: int = 900) -> tuple[pd.DataFrame, Any]:
     rng = np.random.default_rng(seed)
     site = rng.choice(4, n, p=[0.5, 0.25, 0.15, 0.1])
     age = rng.normal(0, 1, n).round(1)
@@ -26,20 +27,20 @@ def records(seed: int = 8, n: int = 900) -> tuple[pd.DataFrame, np.ndarray]:
     return frame, rng.random(n) < 1 / (1 + np.exp(-linear))
 
 
-def sum_coded(frame: pd.DataFrame, last: int) -> np.ndarray:
+def sum_coded(frame: pd.DataFrame, last: int) -> Any:
     """Sum coding with level `last` as the one that is minus the others."""
     codes = frame.site.cat.codes.to_numpy()
     others = [k for k in range(4) if k != last]
     return np.column_stack([(codes == k).astype(float) - (codes == last) for k in others])
 
 
-def fit(X: np.ndarray, y: np.ndarray, offset: np.ndarray | None = None) -> object:
+def fit(X: Any, y: Any, offset: Any | None = None) -> Any:
     return sm.GLM(y.astype(float), X, family=sm.families.Binomial(), offset=offset).fit(tol=1e-13)
 
 
 @pytest.mark.parametrize("reference", ["North", "West"])
 def test_each_level_is_a_sum_contrast_whatever_the_reference(
-    fitting: Callable[..., object], describing: Callable[..., object], reference: str
+    fitting: Callable[..., Any], describing: Callable[..., Any], reference: str
 ) -> None:
     frame, event = records()
     columns = describing(
@@ -48,7 +49,7 @@ def test_each_level_is_a_sum_contrast_whatever_the_reference(
     model, found = fitting(frame, event, "site + age", ["site"], columns=columns)
     against = network_average(model, "site")
     assert [one.level for one in against] == SITES
-    assert [one.label for one in against][0] == "Site: North against the network average"
+    assert against[0].label == "Site: North against the network average"
     ones = np.ones((len(frame), 1))
     for place, one in enumerate(against):
         last = (place + 1) % 4
@@ -81,7 +82,7 @@ def test_each_level_is_a_sum_contrast_whatever_the_reference(
     assert "not ranked" in table.note
 
 
-def test_a_column_in_an_interaction_has_no_average(fitting: Callable[..., object]) -> None:
+def test_a_column_in_an_interaction_has_no_average(fitting: Callable[..., Any]) -> None:
     frame, event = records()
     model, _ = fitting(frame, event, "site * age", ["site"])
     assert network_average(model, "site") == ()

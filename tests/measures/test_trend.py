@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import pandas as pd
@@ -15,7 +16,7 @@ from oddsmodel.measures.trend import trend_table, trends
 LEVELS = ["none", "some", "much", "most"]
 
 
-def records(seed: int = 5, n: int = 700) -> tuple[pd.DataFrame, np.ndarray]:
+def records(seed: int = 5, n: int = 700) -> tuple[pd.DataFrame, Any]:
     rng = np.random.default_rng(seed)
     dose = rng.choice(4, n, p=[0.4, 0.3, 0.2, 0.1])
     age = rng.normal(50, 10, n).round()
@@ -24,13 +25,13 @@ def records(seed: int = 5, n: int = 700) -> tuple[pd.DataFrame, np.ndarray]:
     return frame, rng.random(n) < 1 / (1 + np.exp(-linear))
 
 
-def log_likelihood(X: np.ndarray, y: np.ndarray) -> tuple[float, np.ndarray, np.ndarray]:
+def log_likelihood(X: Any, y: Any) -> tuple[float, Any, Any]:
     fitted = sm.GLM(y.astype(float), X, family=sm.families.Binomial()).fit(tol=1e-13)
     return fitted.llf, fitted.params, fitted.bse
 
 
 @pytest.mark.parametrize("scores", [[0.0, 1.0, 2.0, 3.0], [0.0, 1.0, 4.0, 10.0]])
-def test_step_and_tests_are_those_of_separate_fits(fitting: Callable[..., object], scores: list[float]) -> None:
+def test_step_and_tests_are_those_of_separate_fits(fitting: Callable[..., Any], scores: list[float]) -> None:
     frame, event = records()
     model, found = fitting(frame, event, "dose + age", ["dose"])
     stated = None if scores == [0.0, 1.0, 2.0, 3.0] else {"dose": scores}
@@ -74,7 +75,7 @@ def test_step_and_tests_are_those_of_separate_fits(fitting: Callable[..., object
     assert table.rows[4][4] == trend.trend.p
 
 
-def test_grouped_records_give_the_same_trend(fitting: Callable[..., object]) -> None:
+def test_grouped_records_give_the_same_trend(fitting: Callable[..., Any]) -> None:
     frame, event = records()
     frame["age"] = (frame.age > 50).astype(float)
     together = frame.assign(event=event).groupby(["dose", "age", "event"], observed=True).size().reset_index(name="n")
@@ -87,7 +88,7 @@ def test_grouped_records_give_the_same_trend(fitting: Callable[..., object]) -> 
     assert second.trend.likelihood_ratio == pytest.approx(first.trend.likelihood_ratio, rel=1e-8)
 
 
-def test_a_level_without_records_keeps_the_places_of_the_others(fitting: Callable[..., object]) -> None:
+def test_a_level_without_records_keeps_the_places_of_the_others(fitting: Callable[..., Any]) -> None:
     frame, event = records()
     rows = (frame.dose != "some").to_numpy()
     model, found = fitting(frame[rows].reset_index(drop=True), event[rows], "dose + age", ["dose"])
@@ -100,7 +101,7 @@ def test_a_level_without_records_keeps_the_places_of_the_others(fitting: Callabl
     assert len(trend_table(model, trend, found).rows) == 5
 
 
-def test_where_there_is_no_trend_it_is_said(fitting: Callable[..., object]) -> None:
+def test_where_there_is_no_trend_it_is_said(fitting: Callable[..., Any]) -> None:
     frame, event = records()
     model, found = fitting(frame, event, "dose * age", ["dose"])
     (trend,) = trends(model, ["dose"])

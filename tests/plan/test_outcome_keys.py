@@ -63,9 +63,8 @@ def test_the_plan_written_again_reads_the_same() -> None:
 
 def test_an_outcome_needs_a_way() -> None:
     (fault,) = faults('label = "Death"')
-    assert (fault.where, fault.remedy) == ("plan.toml, [outcome]", 'Write, for example, column = "died".') or (
-        "column" in fault.what
-    )
+    assert fault.where == "plan.toml, [outcome]"
+    assert "column" in fault.what
 
 
 @pytest.mark.parametrize(
@@ -79,7 +78,7 @@ def test_an_outcome_needs_a_way() -> None:
         ('column = "died"\nfrom_day = 3', "[outcome] from_day", "only beside start"),
         ('column = "died"\nname = "x"', "[outcome] name", "only beside event_when or start"),
         (DATES.replace("last_seen", "admitted"), "[outcome]", "two of start, event_date and followed_to"),
-        (DATES.replace("365", "0"), "[outcome] within_days", "between 1 and"),
+        (DATES.replace("365", "0"), "[outcome] within_days", "outside the range from 1"),
         (DATES.replace("365", "1.5"), "[outcome] within_days", "whole number"),
         (DATES.replace("2025-03-31", '"31.03.2025"'), "[outcome] extracted", "is not a date"),
         (DATES.replace("2025-03-31", "20250331"), "[outcome] extracted", "is not a date"),
@@ -106,7 +105,7 @@ def test_the_made_outcome_is_no_exposure() -> None:
     ("records", "where", "told"),
     [
         (REPEATS.replace("first", "frist"), "repeats, use", "frist"),
-        (REPEATS.replace("use =", "uses ="), "repeats, uses", "no key"),
+        (REPEATS.replace("use =", "uses ="), "repeats, uses", "Did you mean use?"),
         (REPEATS.replace('"admitted"', '"patient"'), "repeats", "both for the person and for the order"),
         (REPEATS.replace('"admitted"', '"died"'), "repeats", "must not depend on what happened"),
         (f'{REPEATS}\ncount = "n"', "repeats", "cannot be told apart by person"),
@@ -114,9 +113,8 @@ def test_the_made_outcome_is_no_exposure() -> None:
     ],
 )
 def test_faults_of_repeats(records: str, where: str, told: str) -> None:
-    found = faults('column = "died"', records)
-    assert found[0].where == f"plan.toml, [records] {where}"
-    assert told in found[0].what + found[0].remedy
+    found = {fault.where: f"{fault.what} {fault.remedy}" for fault in faults('column = "died"', records)}
+    assert told in found[f"plan.toml, [records] {where}"]
 
 
 def test_the_order_is_of_dates_or_numbers() -> None:

@@ -14,7 +14,7 @@ from hypothesis import strategies as st
 from oddsmodel.records.follow_up import FollowUp, Window, events_after_follow_up, within_window
 
 sys.path.insert(0, str(Path(__file__).parent))
-from late_entrants import (  # noqa: E402
+from late_entrants import (
     RISK_EXPOSED,
     RISK_UNEXPOSED,
     TRUE,

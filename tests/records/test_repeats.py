@@ -101,7 +101,7 @@ def test_records_alike_are_no_tie_and_others_are() -> None:
     with pytest.raises(InputFault) as caught:
         loaded(twice, {"of": "patient", "use": "first", "ordered_by": "visit"})
     (fault,) = caught.value.faults
-    assert fault.what.startswith("Of 1 of patient it cannot be told which record is first")
+    assert fault.what.startswith('For 1 value of "patient" it cannot be told which record is first')
     assert "row 10" in fault.what
 
 

@@ -11,9 +11,14 @@ import numpy as np
 import pandas as pd
 import pytest
 import statsmodels.formula.api as smf
+from scipy.stats import t as student
 
+from oddsmodel.design.formula import vet_formula
 from oddsmodel.errors import InputFault
 from oddsmodel.export.results_json import results_schema
+from oddsmodel.plan.schema import ModelSection
+from oddsmodel.records.types import Column
+from oddsmodel.study.based_on import write_out
 from oddsmodel.study.run import RunOutcome, run_plan
 
 PLAN = """
@@ -23,6 +28,7 @@ design = "cohort"
 [records]
 source = "records.csv"
 not_recorded = ["NA"]
+{records}
 [outcome]
 column = "died"
 event = "yes"
@@ -64,6 +70,7 @@ def invented(n: int = 900) -> pd.DataFrame:
             "site": np.array(["North", "East", "West"])[site],
             "sex": sex.astype(object),
             "ward": rng.choice(["medical", "surgical"], n).astype(object),
+            "practice": [f"practice {number}" for number in rng.integers(0, 60, n)],
         }
     )
     frame.loc[rng.random(n) < 0.1, "ward"] = "NA"
@@ -71,7 +78,7 @@ def invented(n: int = 900) -> pd.DataFrame:
 
 
 def run(folder: Path, more: str = "", **parts: str) -> tuple[RunOutcome, dict[str, Any]]:
-    given = {"site": "", "dose": "", "main": "", "exposures": '"dose"'} | parts
+    given = {"records": "", "site": "", "dose": "", "main": "", "exposures": '"dose"'} | parts
     invented().to_csv(folder / "records.csv", index=False)
     (folder / "plan.toml").write_text(PLAN.format(more=more, **given), encoding="utf-8")
     outcome = run_plan(folder / "plan.toml")
@@ -153,13 +160,15 @@ def test_models_upon_others(tmp_path: Path) -> None:
 
     table = outcome.results.comparison
     assert table is not None
-    assert [column.heading for column in table.columns][:4] == ["Exposure", "Model", "Role", "What differs"]
-    assert [row[1:4] for row in table.rows[:4]] == [
-        ("main", "main", "Adjusted for Age and site"),
-        ("with ward", "sensitivity, not planned", "As “main”, with ward added"),
-        ("women", "subgroup, planned", "As “main”, only records with sex == 'female'; 90% intervals"),
-        ("older women, without site", "subgroup", "As “women”, without site; only records with age > 55"),
+    assert [column.heading for column in table.columns][:3] == ["Model", "What it is", "Exposure"]
+    assert [row[:2] for row in table.rows[::2]] == [
+        ("main", "Main. Adjusted for Age and site."),
+        ("with ward", "Sensitivity, not planned. As “main”, with ward added."),
+        ("women", "Subgroup, planned. As “main”, only records with sex == 'female'; 90% intervals."),
+        ("older women, without site", "Subgroup. As “women”, without site; only records with age > 55."),
     ]
+    assert [row[2] for row in table.rows[:2]] == ["dose: middle against low", "dose: high against low"]
+    assert table.blocks == (0, 0, 1, 1, 2, 2, 3, 3)
     assert "judged by an interaction" in table.note
     report = (outcome.folder / "report.html").read_text(encoding="utf-8")
     assert "Sensitivity, not planned." in report
@@ -256,3 +265,118 @@ def test_two_models_share_records_as_before(tmp_path: Path) -> None:
     assert second["role"] == "secondary"
     _, results = run(tmp_path, more + "same_records = false\n")
     assert results["models"][0]["records"] == len(invented())
+
+
+def test_groups_are_allowed_for_in_trends_and_averages(tmp_path: Path) -> None:
+    _, results = run(
+        tmp_path,
+        records='grouped_by = "practice"',
+        exposures='"site"',
+        site='compare_with = "network average"',
+        main='trend = ["dose"]',
+    )
+    frame = invented().assign(
+        event=lambda one: (one.died == "yes").astype(float),
+        score=lambda one: one.dose.map({"low": 0, "middle": 1, "high": 2}),
+    )
+    groups = {"groups": pd.factorize(frame.practice)[0]}
+
+    def robust(formula: str) -> Any:
+        return smf.logit(formula, frame).fit(disp=False, tol=1e-12, maxiter=100, cov_type="cluster", cov_kwds=groups)
+
+    average = "C(site, Sum, levels=['North', 'East', 'West'])"
+    # statsmodels takes G/(G - 1) · (n - 1)/(n - p) as its small-sample factor for clusters, as Cameron & Miller 2015.
+    model = results["models"][0]
+    fit = robust(f"event ~ {DOSE} + age + {average}")
+    crude = robust(f"event ~ {average}")
+    for one, name in zip(model["averages"], ["North", "East"], strict=False):
+        assert one["log_odds_ratio"] == pytest.approx(fit.params[f"{average}[S.{name}]"], abs=1e-6)
+        assert one["standard_error"] == pytest.approx(fit.bse[f"{average}[S.{name}]"], rel=1e-4)
+        assert one["wald"]["df"] == 59
+        assert one["profile"] == {"lower": None, "upper": None}
+        assert "profile" in one["reasons"]
+        reach = np.log(one["crude"]["wald"]["upper"] / one["crude"]["wald"]["lower"])
+        assert reach == pytest.approx(2 * student.ppf(0.975, 59) * crude.bse[f"{average}[S.{name}]"], rel=1e-4)
+    (trend,) = model["trends"]
+    line = robust(f"event ~ score + age + {average}")
+    assert trend["step"]["log_odds_ratio"] == pytest.approx(line.params["score"], abs=1e-6)
+    assert trend["step"]["standard_error"] == pytest.approx(line.bse["score"], rel=1e-4)
+    assert trend["trend"]["p"] is None
+    assert "likelihood_ratio" in trend["trend"]["reasons"]
+
+
+def test_a_small_level_hides_its_average_and_what_it_would_give_away(tmp_path: Path) -> None:
+    frame = invented()
+    few = frame.index[frame.site == "West"][40:]
+    frame = frame.drop(few)
+    events = frame.index[(frame.site == "West") & (frame.died == "yes")]
+    frame.loc[events[3:], "died"] = "no"
+    frame.to_csv(tmp_path / "records.csv", index=False)
+    given = {"records": "", "site": 'compare_with = "network average"', "dose": "", "main": "", "exposures": '"site"'}
+    text = PLAN.format(more="", **given).replace("dose + age + site", "site")
+    (tmp_path / "plan.toml").write_text(text, encoding="utf-8")
+    outcome = run_plan(tmp_path / "plan.toml")
+    document = json.loads((outcome.folder / "results.json").read_text(encoding="utf-8"))
+    for one in document["models"][0]["averages"]:
+        assert one["odds_ratio"] is None
+        assert one["crude"]["odds_ratio"] is None
+        assert one["log_odds_ratio"] is None
+
+
+def test_a_trend_that_repeats_hidden_counts_is_withheld(tmp_path: Path) -> None:
+    frame = invented()
+    few = frame.index[frame.dose == "high"][30:]
+    frame = frame.drop(few)
+    events = frame.index[(frame.dose == "high") & (frame.died == "yes")]
+    frame.loc[events[3:], "died"] = "no"
+    frame.to_csv(tmp_path / "records.csv", index=False)
+    given = {"records": "", "site": "", "dose": "", "main": 'trend = ["dose"]', "exposures": '"dose"'}
+    text = PLAN.format(more="", **given).replace("dose + age + site", "dose")
+    (tmp_path / "plan.toml").write_text(text, encoding="utf-8")
+    outcome = run_plan(tmp_path / "plan.toml")
+    document = json.loads((outcome.folder / "results.json").read_text(encoding="utf-8"))
+    (trend,) = document["models"][0]["trends"]
+    assert trend["step"] is None
+    assert trend["trend"]["p"] is None
+    assert trend["departure"]["p"] is None
+    assert "trend over its levels" not in (outcome.folder / "report.html").read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize(
+    "term",
+    [
+        "rcs(age, 4)",
+        "cut(age, [40, 60.5])",
+        "bs(age, df=5, degree=2)",
+        'cr(age, df=4, constraints="center")',
+        "C(site, Sum, levels=['West', 'North', 'East'])",
+        "C(site, Treatment(reference='West'))",
+        "I((age - 50)**2 / 100)",
+        "log(age + 1)",
+        'Q("body mass")',
+        "site:age",
+        "center(age):site",
+    ],
+)
+def test_a_changed_formula_holds_the_other_terms_as_they_were(term: str) -> None:
+    columns = {
+        name: Column(name, kind, name, levels=levels, reference=levels[0] if levels else None)
+        for name, kind, levels in (
+            ("age", "number", ()),
+            ("body mass", "number", ()),
+            ("site", "category", ("North", "East", "West")),
+            ("sex", "category", ("female", "male")),
+        )
+    }
+    main = ModelSection(name="main", formula=f"died ~ 0 + {term} + sex", exposures=("sex",))
+    second = ModelSection(name="second", based_on="main", leave_out=("sex",), add=("age",))
+    (_, written), faults = write_out([main, second], columns, "died")
+    assert not faults
+    before, after = (
+        vet_formula(one.formula, columns=columns, outcome="died", where="") for one in (main, written.section)
+    )
+    assert [factor for factor in before.factors if factor.text != "sex"] == [
+        factor for factor in after.factors if factor in before.factors
+    ]
+    assert not after.intercept
+    assert len(after.terms) == len(before.terms)

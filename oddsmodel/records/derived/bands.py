@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from oddsmodel.plan.band_names import band_names
-from oddsmodel.records.derived.making import Made, Making, counts_by_level, number_values, with_levels
+from oddsmodel.records.derived.making import Made, Making, number_values, with_levels
 
 
 def bands(making: Making) -> Made:
@@ -18,5 +18,4 @@ def bands(making: Making) -> Made:
     levels = band_names(edges)
     position = np.searchsorted(np.asarray(edges, dtype=np.float64), numbers, side="right")
     codes = np.where(np.isnan(numbers), -1, position).astype(np.intp)
-    counts = counts_by_level(making, levels, codes, numbers, edges)
-    return Made(with_levels(making, "ordered", levels, codes), counts)
+    return Made(with_levels(making, "ordered", levels, codes))

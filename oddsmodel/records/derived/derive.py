@@ -20,11 +20,11 @@ from oddsmodel.records.derived.quantile_groups import quantile_groups
 from oddsmodel.records.derived.years import years
 from oddsmodel.records.faults import fault
 from oddsmodel.records.mentions import mentioned
-from oddsmodel.results.derived import DerivedColumn
+from oddsmodel.results.derived import DerivedColumn, Rule
 from oddsmodel.wording import say
 from oddsmodel.wording.plain import quoted
 
-RULES: dict[str, Callable[[Making], Made]] = {
+RULES: dict[Rule, Callable[[Making], Made]] = {
     "bands_of": bands,
     "years_between": years,
     "points": points,
@@ -35,7 +35,7 @@ RULES: dict[str, Callable[[Making], Made]] = {
 
 @dataclass(frozen=True, slots=True)
 class Derived:
-    """columns: the derived columns that could be made. made: how, with their cross-counts. unmade: names of the others.
+    """columns: the derived columns that could be made. made: how. unmade: names of the others.
 
     faults: why not, where it is not that a source is itself at fault.
     """
@@ -103,9 +103,7 @@ class _Work:
         labels = [source.column.label for source in sources]
         told = say(f"derived-rule-{rule}", sources=labels, zero=section.if_part_missing == "zero")
         column = found.coded.column
-        self.made[name] = DerivedColumn(
-            name, column.label, column.kind, told, section.sources, found.counts, found.cut_points
-        )
+        self.made[name] = DerivedColumn(name, column.label, column.kind, rule, told, section.sources, found.cut_points)
 
     def _waits_for(self, name: str, other: str) -> bool:
         """Whether a derived column is made from another, directly or not."""

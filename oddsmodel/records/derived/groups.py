@@ -6,12 +6,10 @@ import numpy as np
 
 from oddsmodel.errors import InputFault
 from oddsmodel.plan.nearest import nearest
-from oddsmodel.records.derived.making import Made, Making, not_recorded, place, with_levels
+from oddsmodel.records.derived.making import Made, Making, place, with_levels
 from oddsmodel.records.faults import fault
 from oddsmodel.records.levels import code_levels
 from oddsmodel.records.same_value import matching, same_value_key
-from oddsmodel.results.derived import DerivedCount
-from oddsmodel.wording import say
 from oddsmodel.wording.plain import quoted
 
 LEVELS_NAMED = 10
@@ -39,17 +37,7 @@ def groups(making: Making) -> Made:
         _refuse(making, [(coded.levels[at], making.number(coded.codes == at)) for at in strays], listed)
     outside = (codes == OUTSIDE) | source.outside
     codes = np.where(codes == OUTSIDE, -1, codes)
-    tallies = np.bincount(coded.codes[coded.codes >= 0], making.weights[coded.codes >= 0], minlength=len(coded.levels))
-    label = source.column.label
-    counts = [
-        DerivedCount(name, label, coded.levels[level], int(tallies[level]))
-        for at, name in enumerate(names)
-        for level in np.flatnonzero((to_group[:-1] == at) & (tallies > 0))
-    ]
-    if outside.any():
-        counts.append(DerivedCount("", label, say("derived-other-levels"), making.number(outside)))
-    missing = not_recorded(making, label, (coded.codes < 0) & ~outside)
-    return Made(with_levels(making, "category", names, codes, outside), (*counts, *missing))
+    return Made(with_levels(making, "category", names, codes, outside))
 
 
 def _refuse(making: Making, strays: list[tuple[str, int]], listed: list[str]) -> None:

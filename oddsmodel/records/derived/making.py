@@ -17,8 +17,7 @@ from oddsmodel.records.coding import CodedColumn
 from oddsmodel.records.faults import fault
 from oddsmodel.records.plausible import within_plausible
 from oddsmodel.records.types import Column
-from oddsmodel.results.derived import DerivedCount
-from oddsmodel.wording import finding, say
+from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
 
 Array = NDArray[np.float64]
@@ -70,10 +69,9 @@ class Making:
 
 @dataclass(frozen=True, slots=True)
 class Made:
-    """The column, its cross-counts with its sources, and cut points that were found in the records."""
+    """The column, and cut points that were found in the records."""
 
     coded: CodedColumn
-    counts: tuple[DerivedCount, ...]
     cut_points: tuple[float, ...] = ()
 
 
@@ -150,30 +148,3 @@ def number_values(making: Making, source: Source) -> Array:
             fault("derived-needs-number", making.where, source=quoted(source.column.name), kind=source.column.kind)
         )
     return source.coded.values.to_numpy(dtype=np.float64)
-
-
-def counts_by_level(
-    making: Making, levels: Sequence[str], codes: Codes, numbers: Array, edges: Sequence[float]
-) -> tuple[DerivedCount, ...]:
-    """Records in each band with the smallest and largest number in it, and those without one."""
-    label = making.sources[0].column.label
-    bounds = [None, *edges, None]
-    rows = []
-    for position, level in enumerate(levels):
-        here = codes == position
-        smallest, largest = value_range(numbers[here])
-        lower, upper = bounds[position], bounds[position + 1]
-        rows.append(DerivedCount(level, label, "", making.number(here), smallest, largest, lower, upper))
-    return (*rows, *not_recorded(making, label, codes < 0))
-
-
-def not_recorded(making: Making, source: str, rows: Mask) -> tuple[DerivedCount, ...]:
-    """The count of records without a derived value, where there are any."""
-    number = making.number(rows)
-    return (DerivedCount(say("derived-not-recorded"), source, "", number),) if number else ()
-
-
-def value_range(numbers: Array) -> tuple[float | None, float | None]:
-    """The smallest and the largest recorded of some numbers (k,)."""
-    found = numbers[~np.isnan(numbers)]
-    return (float(found.min()), float(found.max())) if len(found) else (None, None)

@@ -2,22 +2,17 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-
 import numpy as np
-import pandas as pd
 
 from oddsmodel.errors import Fault, InputFault
-from oddsmodel.records.derived.making import Array, Made, Making, Mask, Source, not_recorded, of_numbers, value_range
+from oddsmodel.records.derived.making import Made, Making, Mask, Source, of_numbers
 from oddsmodel.records.faults import fault
 from oddsmodel.records.levels import code_levels
-from oddsmodel.records.same_value import same_value_key, yes_or_no
-from oddsmodel.results.derived import DerivedCount
+from oddsmodel.records.same_value import yes_or_no
 from oddsmodel.wording import say
 from oddsmodel.wording.numbers import listed
 from oddsmodel.wording.plain import quoted
 
-MOST_CROSSED = 100
 VALUES_NAMED = 5
 
 
@@ -45,9 +40,7 @@ def points(making: Making) -> Made:
         missing |= ~known
     if making.section.if_part_missing == "not recorded":
         score[missing] = np.nan
-    coded = of_numbers(making, score)
-    numbers = coded.values.to_numpy(dtype=np.float64)
-    return Made(coded, tuple(_counts(making, numbers, parts)))
+    return Made(of_numbers(making, score))
 
 
 def _yes(making: Making, source: Source) -> tuple[Mask, Mask]:
@@ -66,26 +59,3 @@ def _not_yes_no(making: Making, source: Source, met: list[str]) -> Fault:
     values = [quoted(level) for level in met[:VALUES_NAMED]] or [say("derived-other-levels")]
     facts = {"part": quoted(source.column.name), "values": listed(values), "more": max(len(met) - VALUES_NAMED, 0)}
     return fault("derived-needs-yes-no", source.where, column=quoted(making.name), **facts)
-
-
-def _counts(making: Making, score: Array, parts: list[tuple[Mask, Mask]]) -> Iterator[DerivedCount]:
-    """Records by score, and for each part those that say yes: by score where that makes a table one can read."""
-    codes, found = pd.factorize(score, sort=True)
-    names = [same_value_key(float(value)) for value in found]
-    crossed = len(names) * len(parts) <= MOST_CROSSED
-    if crossed or len(names) <= MOST_CROSSED:
-        for position, name in enumerate(names):
-            yield DerivedCount(name, "", "", making.number(codes == position))
-    else:
-        recorded = ~np.isnan(score)
-        yield DerivedCount(say("derived-recorded"), "", "", making.number(recorded), *value_range(score))
-    yield from not_recorded(making, "", np.isnan(score))
-    for source, (yes, known) in zip(making.sources, parts, strict=True):
-        label = source.column.label
-        groups = [(name, codes == position) for position, name in enumerate(names)] if crossed else [("", known)]
-        for name, here in groups:
-            number = making.number(here & yes)
-            if number:
-                yield DerivedCount(name, label, say("derived-yes"), number)
-        if not known.all():
-            yield DerivedCount("", label, say("derived-not-recorded"), making.number(~known))

@@ -9,7 +9,7 @@ import numpy as np
 
 from oddsmodel.errors import InputFault
 from oddsmodel.plan.band_names import band_names, edge_text
-from oddsmodel.records.derived.making import Array, Made, Making, counts_by_level, number_values, with_levels
+from oddsmodel.records.derived.making import Array, Made, Making, number_values, with_levels
 from oddsmodel.records.faults import fault
 from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
@@ -43,7 +43,7 @@ def quantile_groups(making: Making) -> Made:
     if len(levels) < asked:
         told.append(finding("caution", "quantile-fewer-groups", **facts, asked=asked, groups=len(levels)))
     coded = replace(coded, findings=(*coded.findings, *told))
-    return Made(coded, counts_by_level(making, levels, codes, values, cuts), cuts)
+    return Made(coded, cuts)
 
 
 def cut_points(values: Array, weights: Array, groups: int) -> tuple[float, ...]:

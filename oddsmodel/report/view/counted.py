@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from oddsmodel.export.derived_table import derived_table
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import FlowFigure
@@ -32,7 +31,7 @@ def counted(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> Co
     return CountedView(
         flow=sheets.figure(flow) if flow is not None else None,
         notes=tuple(dict.fromkeys([*(one.message for one in found if one.severity == "note"), *study.notes])),
-        derived=sheets.tables(derived_table(one) for one in study.derived),
+        derived=sheets.tables(table for one in study.derived for table in one.tables),
         derived_summary=say("fold-derived", labels=[one.label for one in study.derived]) if study.derived else "",
     )
 

@@ -54,9 +54,10 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
     if study.design in CASE_CONTROL:
         yield say("methods-case-control"), ("prentice-pyke-1979",)
     level = say("level", level=lead.level)
-    if lead.groups is not None:
-        facts = {"groups": lead.groups, "df": lead.groups - 1, "column": lead.grouped_by, "level": level}
-        yield say("methods-grouped", **facts), ("cameron-miller-2015", "liang-zeger-1986", "wald-1943")
+    if lead.groups is not None and lead.groups > 1:
+        groups, column = lead.groups, lead.grouped_by
+        told = say("methods-grouped", groups=groups, df=groups - 1, column=column, level=level)
+        yield told, ("cameron-miller-2015", "liang-zeger-1986", "wald-1943")
     elif has_profile(lead):
         yield say("methods-profile", level=level), ("venzon-moolgavkar-1988", "wald-1943")
     else:
@@ -77,7 +78,7 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
             for one in study.standard_deviations
         ]
         yield say("methods-standard-deviations", model=lead.name, deviations=sizes), ()
-    if any(model.trends for model in study.models):
+    if any(trend.trend.p is not None for model in study.models for trend in model.trends):
         yield say("methods-trends"), ("cochran-1954", "armitage-1955")
     if lead.averages:
         yield say("methods-averages"), ()

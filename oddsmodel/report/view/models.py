@@ -167,7 +167,7 @@ def _terms_of_groups(model: ModelResult) -> Table:
         if wald is None and term.reason:
             reasons[say("no-value-reason", label=name, reason=term.reason)] = None
     note = " ".join([say("terms-note-grouped"), *reasons])
-    return Table("terms", say("terms-table"), columns, tuple(rows), note)
+    return Table("terms", say("terms-table-grouped"), columns, tuple(rows), note)
 
 
 def other_models(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> tuple[OtherModelView, ...]:

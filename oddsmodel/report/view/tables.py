@@ -50,6 +50,11 @@ def table_view(table: Table, number: int, hide_counts_below: int) -> TableView:
     for place, cells in enumerate(table.rows):
         first = place > 0 and blocks[place] != blocks[place - 1]
         views = [_cell(cell, column, write) for cell, column, write in zip(cells, table.columns, writers, strict=True)]
+        if place and not first:
+            views = [
+                CellView("") if column.said_once and cell == above else view
+                for view, column, cell, above in zip(views, table.columns, cells, table.rows[place - 1], strict=True)
+            ]
         if stems[place]:
             views[0] = CellView(text=views[0].text[len(stems[place]) :], stem=stems[place])
         rows.append(RowView(tuple(views), first))

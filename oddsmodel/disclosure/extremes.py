@@ -1,0 +1,36 @@
+"""The smallest and the largest of some values belong to single records: they are told in coarse steps."""
+
+from __future__ import annotations
+
+import math
+
+from oddsmodel.disclosure.table_counts import row_blocks
+from oddsmodel.results.tables import Table, TableColumn
+
+STEPS = 20
+"""The range of a column is told in about this many steps."""
+
+
+def rounded_end(value: float, row: int, column: TableColumn, table: Table) -> float:
+    """The end of a range in a row, rounded outwards to a multiple of the step of its block in both columns of ends."""
+    step = _step(table, row, {column.key, column.other_end})
+    if step == 0.0:
+        return value
+    multiple = math.floor(value / step) if column.rounded == "down" else math.ceil(value / step)
+    return float(f"{multiple * step:.12g}")
+
+
+def _step(table: Table, row: int, keys: set[str]) -> float:
+    """1, 2 or 5 times a power of ten, at least 1/20 of the whole range; 0 where all values are the same.
+
+    What all records share tells of no one record.
+    """
+    places = [k for k, column in enumerate(table.columns) if column.key in keys]
+    blocks = row_blocks(table)
+    rows = [one for one, block in zip(table.rows, blocks, strict=True) if block == blocks[row]]
+    ends = [float(cell) for one in rows for k in places if isinstance(cell := one[k], int | float)]
+    width = (max(ends) - min(ends)) / STEPS if ends else 0.0
+    if width <= 0.0:
+        return 0.0
+    power = 10.0 ** math.floor(math.log10(width))
+    return next(power * times for times in (1, 2, 5, 10, 20) if power * times >= width)
