@@ -133,6 +133,7 @@ def fit(
     columns: Mapping[str, Mapping[str, Any]] | None = None,
     keep: str | None = None,
     count: str | None = None,
+    grouped_by: str | None = None,
     not_measured: Sequence[str] = (),
     level: float = 0.95,
     hide_counts_below: int = 5,
@@ -162,7 +163,12 @@ def fit(
             },
             "records": {
                 key: value
-                for key, value in (("source", "data frame"), ("keep", keep), ("count", count))
+                for key, value in (
+                    ("source", "data frame"),
+                    ("keep", keep),
+                    ("count", count),
+                    ("grouped_by", grouped_by),
+                )
                 if value is not None
             },
             "columns": {name: dict(section) for name, section in (columns or {}).items()},

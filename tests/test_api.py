@@ -141,3 +141,15 @@ def test_importing_is_light() -> None:
         check=True,
     )
     assert loaded.stdout.strip() == "False"
+
+
+def test_grouped_records_have_no_profile_limits() -> None:
+    rng = np.random.default_rng(3)
+    patient = np.repeat(np.arange(60), 5)
+    frame = pd.DataFrame(
+        {"patient": patient, "smoker": rng.choice(["yes", "no"], 300), "died": rng.integers(0, 2, 300)}
+    )
+    model = oddsmodel.fit("died ~ smoker", frame, event=1, exposures=["smoker"], grouped_by="patient")
+    smoker = next(one for one in model.result.coefficients if one.role == "exposure")
+    assert smoker.wald.df == 59
+    assert smoker.profile.lower is None

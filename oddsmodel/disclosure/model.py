@@ -51,7 +51,7 @@ def gives_all_away(model: ModelResult, m: int, hiding: Hiding) -> bool:
     hidden would tell it by its log-likelihoods.
     """
     tables = {place[1] for place in hiding.places if place[0] == "cell"}
-    hidden = any(("model", m, t) in tables for t in range(len(model.tables)))
+    hidden = any(("model", m, t) in tables for t, table in enumerate(model.tables) if not table.aside)
     saturated = model.patterns is not None and model.patterns <= model.parameters
     return hiding.hides("events", m) or (saturated and hidden)
 

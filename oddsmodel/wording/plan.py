@@ -145,10 +145,6 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "This version compares levels in this way for a whole column only, as yet.",
         "Until then, take the line out and write compare_with in the section of the exposure's column.",
     ),
-    "later-one-row": (
-        "This version has no way yet to deal with several rows that belong together.",
-        "Until then, keep one row a person or group in the file of records.",
-    ),
     "later-matched": (
         "This version fits no matched sets yet.",
         "Until then, analyse matched studies elsewhere: leaving out the matching would bias the odds ratio.",

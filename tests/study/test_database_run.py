@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import sqlite3
+from importlib import resources
 from pathlib import Path
 from typing import Any
 
@@ -71,6 +72,25 @@ def test_a_database_gives_the_numbers_of_a_file(tmp_path: Path, postgresql: Any)
         assert secret not in texts
     assert "PostgreSQL database, a query" in texts
     assert "select * from stays order by id" in texts
+
+
+def test_the_example_reads_from_a_database_what_its_twin_reads_from_a_file(tmp_path: Path) -> None:
+    stays = resources.files("oddsmodel.examples").joinpath("stays")
+    for name in ("records.csv", "every_stay.toml", "from_database.toml"):
+        (tmp_path / name).write_bytes(stays.joinpath(name).read_bytes())
+    frame = pd.read_csv(tmp_path / "records.csv", sep=";", dtype=str, encoding="utf-8-sig", keep_default_na=False)
+    connection = sqlite3.connect(tmp_path / "registry.db")
+    frame.to_sql("stays", connection, index=False)
+    connection.close()
+    file = run_plan(tmp_path / "every_stay.toml", into=tmp_path / "file").results.models[0]
+    served = run_plan(tmp_path / "from_database.toml", into=tmp_path / "database").results.models[0]
+    assert file.groups is not None
+    assert file.records is not None
+    assert 40 < file.groups < file.records
+    assert file.variant["covariance"] == "cluster-robust"
+    for one, other in zip(file.coefficients, served.coefficients, strict=True):
+        assert other.odds_ratio == pytest.approx(one.odds_ratio, rel=1e-10)
+        assert other.wald.lower == pytest.approx(one.wald.lower, rel=1e-10)
 
 
 def test_other_records_may_be_given_in_a_file(tmp_path: Path) -> None:
