@@ -9,6 +9,8 @@ from oddsmodel.results.tables import Table, TableColumn
 
 STEPS = 20
 """The range of a column is told in about this many steps."""
+WHOLE_STEP = 2.0
+"""So that a largest value told as 8 is 7 or 8."""
 
 
 def rounded_end(value: float, row: int, column: TableColumn, table: Table) -> float:
@@ -21,7 +23,8 @@ def rounded_end(value: float, row: int, column: TableColumn, table: Table) -> fl
 
 
 def _step(table: Table, row: int, keys: set[str]) -> float:
-    """1, 2 or 5 times a power of ten, at least 1/20 of the whole range; 0 where all values are the same.
+    """1, 2 or 5 times a power of ten, at least 1/20 of the whole range, and 2 for whole numbers; 0 where all values
+    are the same.
 
     What all records share tells of no one record.
     """
@@ -33,4 +36,5 @@ def _step(table: Table, row: int, keys: set[str]) -> float:
     if width <= 0.0:
         return 0.0
     power = 10.0 ** math.floor(math.log10(width))
-    return next(power * times for times in (1, 2, 5, 10, 20) if power * times >= width)
+    step = next(power * times for times in (1, 2, 5, 10, 20) if power * times >= width)
+    return max(step, WHOLE_STEP) if all(end.is_integer() for end in ends) else step

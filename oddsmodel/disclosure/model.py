@@ -84,13 +84,13 @@ def crude_numbers(crude: CrudeEstimate | None) -> Iterator[float]:
     """The numbers of a crude estimate."""
     if crude is not None:
         limits = [limit for one in (crude.wald, crude.profile) if one is not None for limit in (one.lower, one.upper)]
-        yield from (value for value in (crude.odds_ratio, *limits) if value is not None and value not in (0.0, 1.0))
+        yield from (value for value in (crude.odds_ratio, *limits) if value is not None and value != 0.0)
 
 
 def estimate_numbers(one: CoefficientResult) -> Iterator[float]:
     """The numbers of an estimate on the odds-ratio scale."""
     limits = (one.wald.lower, one.wald.upper, one.profile.lower, one.profile.upper)
-    yield from (value for value in (one.odds_ratio, *limits) if value is not None and value not in (0.0, 1.0))
+    yield from (value for value in (one.odds_ratio, *limits) if value is not None and value != 0.0)
 
 
 def disclosed_model(model: ModelResult, m: int, hiding: Hiding) -> ModelResult:

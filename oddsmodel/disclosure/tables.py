@@ -26,9 +26,9 @@ def hidden_estimates(table: Table, owner: Place, hiding: Hiding) -> Iterator[flo
 
 
 def estimates_in(cell: Cell) -> Iterator[float]:
-    """The numbers of an estimate that tell it from another: not 0 and 1, which stand for nothing."""
+    """The numbers of an estimate that tell it from another; 0 does not."""
     values = (cell.lower, cell.upper) if isinstance(cell, Interval) else (cell,)
-    yield from (value for value in values if isinstance(value, float) and value not in (0.0, 1.0))
+    yield from (value for value in values if isinstance(value, float) and value != 0.0)
 
 
 def disclosed_table(table: Table, owner: Place, hiding: Hiding) -> Table:

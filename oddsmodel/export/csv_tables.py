@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from collections.abc import Iterable, Sequence
 from itertools import chain
@@ -55,7 +56,7 @@ def neutral(text: str) -> str:
     Also after a semicolon, tab or line break within the text, which start a new cell where a file is opened with other
     separators. Control characters become spaces.
     """
-    text = _CONTROL.sub(" ", _RUN.sub(r"\1'\2", text))
+    text = _RUN.sub(r"\1'\2", _CONTROL.sub(" ", text))
     return f"'{text}" if text.startswith(("\t", "\r", "\n")) else text
 
 
@@ -64,7 +65,7 @@ def _csv(header: Sequence[str], rows: Iterable[Row]) -> str:
 
 
 def _field(value: Value) -> str:
-    """Text always in quotes, numbers never, so that a reader can tell "1" from 1."""
+    """Text always in quotes, numbers never, so that a reader can tell "1" from 1; no number is not finite."""
     if value is None:
         return ""
     if isinstance(value, str):
@@ -72,6 +73,8 @@ def _field(value: Value) -> str:
         return f'"{quoted}"'
     if isinstance(value, bool):
         return "true" if value else "false"
+    if not math.isfinite(value):
+        raise ValueError("a number that is not finite must be None")
     return repr(int(value)) if isinstance(value, int) else repr(float(value))
 
 

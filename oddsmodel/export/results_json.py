@@ -175,14 +175,14 @@ def _model(model: ModelResult, disclosed: DisclosedResults) -> dict[str, Any]:
 
 
 def _test(one: TermTest) -> dict[str, Any]:
-    missing = one.likelihood_ratio is None
+    missing = [name for name in ("likelihood_ratio", "p") if getattr(one, name) is None]
     return {
         "term": one.term,
         "df": _plain(one.df),
         "likelihood_ratio": _plain(one.likelihood_ratio),
         "p": _plain(one.p),
         **({} if one.wald is None else {"wald": asdict(one.wald)}),
-        "reasons": {"likelihood_ratio": one.reason or say("number-not-available")} if missing else {},
+        "reasons": dict.fromkeys(missing, one.reason or say("number-not-available")),
     }
 
 

@@ -45,8 +45,8 @@ class Fit:
     coefficients (p,), covariance (p, p) (singular where the space is smaller than p), information (p, p) at the
     maximum, log_likelihood without constants. dimension: of the space. decrement: the squared Newton decrement
     at the last evaluation. flat (p,): a direction in which the log-likelihood never stops rising, where there is
-    one; separation: the verdict on the rows in the coefficients themselves, where one was reached. Where status is "no finite maximum", log_likelihood is its supremum to within rounding and the
-    coefficients are not an estimate.
+    one; separation: the verdict on the rows in the coefficients themselves, where one was reached. Where status is
+    "no finite maximum", log_likelihood is its supremum to within rounding and the coefficients are not an estimate.
     """
 
     status: Status

@@ -8,7 +8,7 @@ from datetime import date, datetime, time
 from typing import Any
 
 from oddsmodel.errors import Fault
-from oddsmodel.wording.plain import quoted
+from oddsmodel.wording.plain import as_code, quoted
 from oddsmodel.wording.say import say
 
 NAMED_SECTIONS = ("columns", "derived")
@@ -23,7 +23,7 @@ def fault(code: str, where: str, **facts: Any) -> Fault:
 
 def shown_key(key: str) -> str:
     """A key as it is written in TOML: bare where it can be, in quotes otherwise."""
-    return key if BARE_KEY.fullmatch(key) and len(key) <= 60 else quoted(key)
+    return key if BARE_KEY.fullmatch(key) and len(key) <= 60 else as_code(key)
 
 
 def heading(section: str, column: str | None = None) -> str:
@@ -34,7 +34,7 @@ def heading(section: str, column: str | None = None) -> str:
 
 
 def key_path(location: Sequence[str | int], data: Any) -> str:
-    """Where a value stands, in words: `[columns.age] per`, `[[models]] number 2 ("main") exposures, item 1`."""
+    """Where a value stands, in words: `[columns.age] per`, `[[models]] number 2 (“main”) exposures, item 1`."""
     if not location:
         return "the whole plan"
     section, rest = str(location[0]), list(location[1:])
@@ -78,7 +78,7 @@ _SECTION_NAMES = ("study", "records", "columns", "derived", "outcome", "models",
 
 
 def _model_name(data: Any, number: int) -> str:
-    """The name of a model as (" ... ") where it has one, to find it by."""
+    """The name of a model as (“ ... ”) where it has one, to find it by."""
     models = data.get("models") if isinstance(data, dict) else None
     if not isinstance(models, list | tuple) or number >= len(models) or not isinstance(models[number], dict):
         return ""

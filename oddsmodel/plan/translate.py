@@ -12,7 +12,7 @@ from oddsmodel.plan.faults import NAMED_SECTIONS, described, fault, heading, key
 from oddsmodel.plan.later import later
 from oddsmodel.plan.nearest import nearest
 from oddsmodel.plan.schema import LARGEST_SEED, LONGEST_WINDOW, SECTIONS, Repeats, keys_of
-from oddsmodel.wording.plain import plain, quoted
+from oddsmodel.wording.plain import as_code, plain, quoted
 
 Location = tuple[str | int, ...]
 REPEATS = ("records", "repeats")
@@ -108,7 +108,7 @@ def _unknown_key(error: Error) -> Fault:
 
     column = str(error.location[1]) if section in NAMED_SECTIONS else None
     if column is not None and isinstance(error.value, Mapping):
-        in_full = f"[{section}.{quoted(f'{column}.{key}')}]"
+        in_full = f"[{section}.{as_code(f'{column}.{key}')}]"
         return fault("dotted-column-name", error.where, key=shown, column=shown_key(column), example=in_full)
 
     if error.location[:2] == REPEATS:
@@ -132,11 +132,11 @@ def _wrong_kind(error: Error) -> Fault:
 
     line = example(error.location)
     if error.kind == "tuple_type" and isinstance(error.value, str):
-        line = f"{error.key} = [{quoted(error.value)}], in brackets"
+        line = f"{error.key} = [{as_code(error.value)}], in brackets"
     elif error.kind == "string_type" and isinstance(error.location[-1], int):
         line = f"in {line}"
     elif error.kind == "string_type" and isinstance(error.value, bool | int | float) and len(found) < 40:
-        line = f"{error.key} = {quoted(str(error.value).lower())}, in quotes"
+        line = f"{error.key} = {as_code(str(error.value).lower())}, in quotes"
     elif isinstance(error.value, str):
         line = f"{line}, without quotes"
     return fault("wrong-kind-of-value", error.where, found=found, wanted=_WANTED[error.kind], example=line)

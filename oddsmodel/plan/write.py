@@ -11,7 +11,7 @@ from oddsmodel.plan.faults import fault
 from oddsmodel.plan.schema import Kind
 from oddsmodel.plan.toml_text import formula_name, key, text_list, text_value, writable
 from oddsmodel.wording.numbers import count, plural
-from oddsmodel.wording.plain import plain, quoted
+from oddsmodel.wording.plain import as_code, plain, quoted
 from oddsmodel.wording.say import say
 
 MOST_LEVELS = 30
@@ -109,7 +109,7 @@ def _about(records: int) -> str:
 
 
 def _values(levels: Sequence[tuple[str, int]]) -> str:
-    return ", ".join(f"{quoted(level, 40)} ({_about(records)})" for level, records in levels)
+    return ", ".join(f"{as_code(level, 40)} ({_about(records)})" for level, records in levels)
 
 
 def _line(text: str, comment: str = "") -> str:

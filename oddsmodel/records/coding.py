@@ -134,19 +134,22 @@ def _number(raw: RawValues, column: Column, section: ColumnSection | None, use: 
     numbers, implausible = within_plausible(numbers, plausible)
     if use == "model" and not faults:
         said = (section.kind, section.per, section.units, plausible) if section is not None else ()
-        findings = _questions_of_numbers(raw.name, numbers, any(one is not None for one in said))
+        findings = _questions_of_numbers(raw.name, numbers, any(one is not None for one in said), plausible is None)
     return CodedColumn(pd.Series(numbers), column, None, tuple(findings), tuple(faults), implausible)
 
 
-def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: bool) -> list[Finding]:
-    """What is asked about a column of numbers: few whole numbers, and codes that may mean "not recorded"."""
+def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: bool, codes_met: bool) -> list[Finding]:
+    """What is asked about a column of numbers: few whole numbers, and codes that may mean "not recorded".
+
+    declared: the plan says that it is a number. codes_met: no plausible range has set codes aside already.
+    """
     found, counts = numbers_met(numbers)
     questions: list[Finding] = []
     if not declared and 0 < len(found) <= FEW_WHOLE_NUMBERS and np.all(found == np.trunc(found)):
         questions.append(
             finding("note", "few-whole-numbers", column=name, values=[same_value_key(number) for number in found])
         )
-    codes = suspected_codes(found, counts)
+    codes = suspected_codes(found, counts) if codes_met else []
     if codes:
         records = [int(counts[np.searchsorted(found, code)]) for code in codes]
         texts = [same_value_key(code) for code in codes]

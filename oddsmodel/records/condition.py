@@ -22,7 +22,7 @@ from oddsmodel.records.faults import fault
 from oddsmodel.records.kinds import is_number
 from oddsmodel.records.same_value import matching
 from oddsmodel.records.types import Column
-from oddsmodel.wording.plain import quoted
+from oddsmodel.wording.plain import as_code, quoted
 
 __all__ = ["Condition", "vet_condition"]
 
@@ -133,7 +133,7 @@ class _Reader:
     def value(self) -> Token:
         token = self.operand()
         if token.kind == "name":
-            self.refuse(token, "condition-bare-text", text=quoted(token.text))
+            self.refuse(token, "condition-bare-text", text=quoted(token.text), written=as_code(token.text))
         return token
 
     def compared(self, left: Token, sign: str, right: Token) -> nodes.Node:
@@ -158,7 +158,7 @@ class _Reader:
 
     def of_two_columns(self, column: Column, sign: str, right: Token) -> nodes.Node:
         if right.text not in self.columns:
-            self.refuse(right, "condition-bare-text", text=quoted(right.text))
+            self.refuse(right, "condition-bare-text", text=quoted(right.text), written=as_code(right.text))
         other = self.column_of(right)
         if column.kind != "number" or other.kind != "number":
             self.refuse(right, "condition-two-columns", columns=[quoted(column.name), quoted(other.name)])

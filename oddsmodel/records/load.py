@@ -143,7 +143,7 @@ def _coded(table: RawTable, plan: StudyPlan) -> Records:
     if asked is not None and asked in coded and not coded[asked].faults:
         faults.extend(_faults_of_outcome(table, plan, coded, counts))
     if faults:
-        raise InputFault(faults)
+        raise InputFault(tuple(dict.fromkeys(faults)))
     findings = [*table.findings, *(said for column in coded.values() for said in column.findings)]
     findings.extend(_implausible(plan, coded, counts))
     findings.extend(_references_taken(plan, coded, used))

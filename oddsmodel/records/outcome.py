@@ -14,7 +14,7 @@ from oddsmodel.plan.schema import Outcome
 from oddsmodel.records.faults import fault, in_column
 from oddsmodel.records.same_value import is_yes_no_pair, matching, same_value_key, yes_or_no
 from oddsmodel.records.types import Records
-from oddsmodel.wording.plain import quoted
+from oddsmodel.wording.plain import as_code, quoted
 
 VALUES_NAMED = 10
 
@@ -80,7 +80,8 @@ def _event(pair: tuple[str, str], outcome: Outcome) -> str:
     where = "the plan, [outcome] event"
     if outcome.event is None:
         if not is_yes_no_pair(pair):
-            raise InputFault(fault("event-left-open", where, values=values))
+            written = [as_code(value) for value in pair]
+            raise InputFault(fault("event-left-open", where, values=values, written=written))
         return next(value for value in pair if yes_or_no(value) == "yes")
     event = matching(outcome.event, pair)
     if event is None:

@@ -91,8 +91,12 @@ def _engine(address: DatabaseAddress, folder: Path) -> Engine:
         query=dict(address.settings),
         **given,
     )
-    waiting = {"connect_timeout": os.environ.get("PGCONNECT_TIMEOUT", SECONDS_TO_CONNECT)}
-    return sqlalchemy.create_engine(url, poolclass=NullPool, connect_args=waiting, hide_parameters=True)
+    # The password comes from the environment alone, never from a file in somebody's home.
+    settings = {
+        "connect_timeout": os.environ.get("PGCONNECT_TIMEOUT", SECONDS_TO_CONNECT),
+        "passfile": os.environ.get("PGPASSFILE", os.devnull),
+    }
+    return sqlalchemy.create_engine(url, poolclass=NullPool, connect_args=settings, hide_parameters=True)
 
 
 def _sqlite(path: Path) -> Any:

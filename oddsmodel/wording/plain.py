@@ -14,7 +14,8 @@ _STRIPPED = {"Cc", "Cf", "Cs", "Co", "Cn"}
 def plain(text: str, longest: int | None = None) -> str:
     """`text` on one line without control, formatting (right-to-left marks and the like) or unassigned characters.
 
-    Who signs in at an address, and with which password, is never shown. Line breaks and tabs become spaces; beyond `longest` characters the rest is cut off and "…" stands for it.
+    Who signs in at an address, and with which password, is never shown. Line breaks and tabs become spaces; beyond
+    `longest` characters the rest is cut off and "…" stands for it.
     """
     if longest is not None:
         text = text[: 4 * longest + _LONGEST_ADDRESS]
@@ -27,5 +28,10 @@ def plain(text: str, longest: int | None = None) -> str:
 
 
 def quoted(text: str, longest: int = LONGEST) -> str:
-    """`text` made plain, between double quotes."""
+    """`text` made plain, between the quotation marks of a sentence."""
+    return f"“{plain(text, longest)}”"
+
+
+def as_code(text: str, longest: int = LONGEST) -> str:
+    """`text` made plain, between the straight quotation marks of a plan or a condition, to be copied from there."""
     return f'"{plain(text, longest)}"'

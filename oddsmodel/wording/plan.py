@@ -90,11 +90,11 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     # Keys and values.
     "section-missing": ("The plan has no {heading} section.", "Add {heading} and under it {example}."),
     "key-missing": ("{key} is missing.", "Add a line such as {example}."),
-    "unknown-section": ('The plan has no section or key called "{key}".', _nearest_or_all),
-    "unknown-key": ('{heading} has no key called "{key}".', _nearest_or_all),
-    "key-of-another-section": ('{heading} has no key called "{key}".', "It belongs under {other}: move it there."),
+    "unknown-section": ('The plan has no section or key called “{key}”.', _nearest_or_all),
+    "unknown-key": ('{heading} has no key called “{key}”.', _nearest_or_all),
+    "key-of-another-section": ('{heading} has no key called “{key}”.', "It belongs under {other}: move it there."),
     "dotted-column-name": (
-        '"{key}" stands below [columns.{column}] as a section of its own, which no column has.',
+        '“{key}” stands below [columns.{column}] as a section of its own, which no column has.',
         "If the column's name has a full stop in it, put the name in quotes: {example}.",
     ),
     "not-a-section": (
@@ -112,7 +112,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     "wrong-kind-of-value": ("This is {found} where {wanted} is wanted.", "Write it as {example}."),
     "empty-text": ("The text is empty.", "Write something there, such as {example}."),
     "not-one-of": ("{found} is not one of the values that this key can have.", _nearest_or_all),
-    "per-not-positive": ("{found} cannot be the step of an odds ratio.", 'Give a number above 0, or "SD".'),
+    "per-not-positive": ("{found} cannot be the step of an odds ratio.", 'Give a number above 0, or per = "SD".'),
     "out-of-range": ("{found} is outside the range from {least} to {most}.", "Give a number within it."),
     "level-in-percent": (
         "{found} is outside the range from {least} to {most}.",
@@ -202,19 +202,19 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Take the line out and name the value that is the event as event in [outcome].",
     ),
     "event-not-recorded": (
-        '{event} is both the event and a text that means "not recorded".',
+        '{event} is both the event and a text that means “not recorded”.',
         "Name another event, or take it out of not_recorded.",
     ),
     "per-beside-levels": ("A column with levels is no number, so it has no step.", "Take out either per or levels."),
     "outcome-kind": (
-        'A column of the kind "{kind}" cannot be the outcome, which has two values.',
+        'A column of the kind “{kind}” cannot be the outcome, which has two values.',
         'Take the line out, or write kind = "yes-no".',
     ),
     "outcome-levels": ("The outcome has {number} levels here, but it must have exactly two.", "Name the two values."),
     "event-not-a-level": ("{event} is not among the levels that the outcome's own section lists.", _nearest_or_all),
     "count-key": ("{column} counts records, for which {key} has no meaning.", "Take the line out."),
     "count-kind": (
-        'A column of the kind "{kind}" cannot count records.',
+        'A column of the kind “{kind}” cannot count records.',
         'Take the line out, or write kind = "number".',
     ),
     "levels-too-few": (
@@ -231,16 +231,16 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "level-repeated": ("{level} is listed twice.", "List each level once."),
     "level-not-recorded": (
-        '{level} is both a level and a text that means "not recorded".',
+        '{level} is both a level and a text that means “not recorded”.',
         "Keep it in one of the two lists; a column may have a not_recorded list of its own.",
     ),
     "reference-not-a-level": ("{reference} is not among the levels.", _nearest_or_all),
     "key-for-levels": (
-        '{key} has a meaning only for a column with levels, and this one is of the kind "{kind}".',
+        '{key} has a meaning only for a column with levels, and this one is of the kind “{kind}”.',
         'Take the line out, or write kind = "category".',
     ),
     "key-for-numbers": (
-        '{key} has a meaning only for numbers, and this column is of the kind "{kind}".',
+        '{key} has a meaning only for numbers, and this column is of the kind “{kind}”.',
         'Take the line out, or write kind = "number".',
     ),
     "draft-outcome-name": (

@@ -55,7 +55,7 @@ def _suspected(facts: Facts) -> str:
     many = len(parts) > 1
     return (
         f"{quoted(facts['column'])} has {listed(parts)}, which {'look' if many else 'looks'} like "
-        f'{"codes" if many else "a code"} for "not recorded" and {"are" if many else "is"} analysed as '
+        f'{"codes" if many else "a code"} for “not recorded” and {"are" if many else "is"} analysed as '
         f"{'values' if many else 'a value'}. If {'they mean' if many else 'it means'} that, add "
         f"{'them' if many else 'it'} to the column's not_recorded in the plan."
     )
@@ -146,13 +146,13 @@ FINDINGS: dict[str, Sentence] = {
     ),
     "left-out-level-not-in-plan": _left_out("Level not in the plan: {columns}", "Level not in the plan"),
     "survey-suspected": lambda facts: (
-        f'Does {_quoted_list(facts["values"], "or")} mean "not recorded"? Then keep it in not_recorded.'
+        f'Does {_quoted_list(facts["values"], "or")} mean “not recorded”? Then keep it in not_recorded.'
     ),
-    "survey-stray-texts": 'Some cells hold texts among the numbers: which of them mean "not recorded"?',
+    "survey-stray-texts": 'Some cells hold texts among the numbers: which of them mean “not recorded”?',
     "survey-few-whole-numbers": "Few whole numbers: is it a number, or a set of categories?",
     "survey-running-number": "A different whole number in each record: is it an identifier?",
     "survey-identifier": "A different text in each record: is it an identifier?",
-    "survey-date": "Dates are kept but cannot stand in a formula yet; a number of days or years can.",
+    "survey-date": "A date cannot stand in a formula; the years between two dates can: years_between in the plan.",
     "survey-spelled-alike": lambda facts: f"Are {_quoted_list(facts['levels'])} the same? Then write them alike.",
     "survey-many-levels": lambda facts: f"{count(facts['levels'])} levels: is it a category?",
     "survey-empty": "No value is recorded: leave the column out.",

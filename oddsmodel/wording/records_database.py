@@ -54,7 +54,7 @@ DATABASE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "database-needs-packages": (
         "Reading a database needs a part that is not installed.",
-        'Install it with: pip install "oddsmodel[database]" — or save the rows as a CSV or Parquet file.',
+        'Install it with: pip install "oddsmodel[database]"; or save the rows as a CSV or Parquet file.',
     ),
     "database-not-sqlite": (
         "The file cannot be read as a SQLite database: it is damaged, or of another kind.",

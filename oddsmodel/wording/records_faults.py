@@ -61,7 +61,7 @@ def _number_with_text_remedy(facts: Facts) -> str:
     if facts["comma"]:
         return "Write the numbers with a decimal point."
     return (
-        'Correct the file; or, where a text means "not recorded", add it to the column\'s not_recorded in the plan; '
+        'Correct the file; or, where a text means “not recorded”, add it to the column\'s not_recorded in the plan; '
         'or say kind = "category" there.'
     )
 
@@ -99,7 +99,7 @@ def _outcome_values_remedy(facts: Facts) -> str:
     if int(facts["total"]) < 2:
         return "Name a column with an event and its absence under [outcome]."
     return (
-        'Put values that mean "not recorded" into the column\'s not_recorded, or make a column with two values '
+        'Put values that mean “not recorded” into the column\'s not_recorded, or make a column with two values '
         "and name it under [outcome]."
     )
 
@@ -128,7 +128,7 @@ WHOLE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "spreadsheet-needs-openpyxl": (
         "Reading spreadsheets needs a part that is not installed.",
-        'Install it with: pip install "oddsmodel[office]" — or save the sheet as CSV.',
+        'Install it with: pip install "oddsmodel[office]"; or save the sheet as CSV.',
     ),
     "spreadsheet-not-readable": (
         "The file cannot be read as a spreadsheet: it is damaged, protected by a password, or of another kind.",
@@ -228,7 +228,7 @@ COLUMN_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         lambda facts: (
             f"Yes and no are known as yes/no, y/n, true/false and 1/0; the column also has {_with_counts(facts)}."
         ),
-        'Correct the file, put what means "not recorded" into not_recorded, or say kind = "category" in {section}.',
+        'Correct the file, put what means “not recorded” into not_recorded, or say kind = "category" in {section}.',
     ),
     "reference-not-met": (
         "No record has the reference {reference}.",
@@ -249,15 +249,15 @@ COLUMN_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         lambda facts: (
             f"The outcome is {listed(list(facts['values']), 'or')}, and which of them is the event is not said."
         ),
-        lambda facts: f"Add event = {facts['values'][0]} or event = {facts['values'][1]} under [outcome].",
+        lambda facts: f"Add event = {facts['written'][0]} or event = {facts['written'][1]} under [outcome].",
     ),
     "event-not-met": (
         lambda facts: f"The event {facts['event']} is none of the outcome's values, {listed(list(facts['values']))}.",
         lambda facts: f"{_meant(facts)}Name one of the two.",
     ),
     "date-in-formula": (
-        "{column} is a date, and dates cannot stand in a formula yet.",
-        "Make a column with a number of days or years, and use that.",
+        "{column} is a date, which has no place in a formula.",
+        'Make years of it in the plan, as in [derived.age] with years_between = ["born", "admitted"].',
     ),
     "identifier-in-formula": (
         "{column} is an identifier, which has no place in a formula.",
@@ -302,7 +302,7 @@ CONDITION_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "condition-bare-text": (
         "{text} is neither a number nor a text in quotation marks, and no column has that name.",
-        "Write {text} with its quotation marks if it is a value.",
+        "Write {written} with its quotation marks if it is a value.",
     ),
     "condition-call": ("{name} is used as a function, and a condition has none.", "Compare columns with values."),
     "condition-without-column": ("Two values are compared, and no column.", "Name a column on one side."),

@@ -64,6 +64,7 @@ SENTENCES: dict[str, Sentence] = {
     "heading-answer": "The answer",
     "heading-contents": "In this report",
     "heading-crude-adjusted": "From crude to adjusted",
+    "heading-by-exposure": "By exposure",
     "heading-counted": "Who was counted",
     "heading-characteristics": "Who they were",
     "heading-estimates": "The estimates",

@@ -23,9 +23,7 @@ REFERENCES: dict[str, str] = {
     "brier-1950": (
         "Brier GW. Verification of forecasts expressed in terms of probability. Monthly Weather Review 1950; 78: 1–3."
     ),
-    "cochran-1954": (
-        "Cochran WG. Some methods for strengthening the common χ² tests. Biometrics 1954; 10: 417–451."
-    ),
+    "cochran-1954": ("Cochran WG. Some methods for strengthening the common χ² tests. Biometrics 1954; 10: 417–451."),
     "cameron-miller-2015": (
         "Cameron AC, Miller DL. A practitioner's guide to cluster-robust inference. Journal of Human Resources 2015; "
         "50: 317–372."

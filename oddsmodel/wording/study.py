@@ -63,7 +63,7 @@ SENTENCES: dict[str, Sentence] = {
     "columns-not-sections": "Each column's settings are wanted under its name.",
     "columns-not-sections-remedy": 'Write them as in columns={{"age": {{"per": 10, "units": "years"}}}}.',
     "audience-unknown": "There is no audience {audience}.",
-    "audience-unknown-remedy": 'Choose "shareable" or "internal".',
+    "audience-unknown-remedy": 'Give audience="shareable" or audience="internal".',
     "internal-not-named": "An internal report shows small counts.",
     "internal-not-named-remedy": "Put INTERNAL in the file name.",
     "flow-title": "Who was counted: {model}",

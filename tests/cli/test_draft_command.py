@@ -63,7 +63,7 @@ def test_what_is_there_is_never_overwritten(command: Command, records: Path, tmp
 def test_an_outcome_that_is_no_column(command: Command, records: Path) -> None:
     ended = command("draft", records, "--outcome", "dide")
     assert ended.status == 2
-    assert 'Did you mean "died"?' in ended.err
+    assert "Did you mean “died”?" in ended.err
 
 
 def test_records_that_are_not_there(command: Command, tmp_path: Path) -> None:
@@ -75,7 +75,7 @@ def test_records_that_are_not_there(command: Command, tmp_path: Path) -> None:
 def test_an_outcome_whose_event_is_open(command: Command, records: Path) -> None:
     ended = command("draft", records, "--outcome", "sex")
     assert ended.status == 0
-    assert 'Which value of "sex" is the event?' in ended.out
+    assert "Which value of “sex” is the event?" in ended.out
     assert "\nevent = " not in ended.out
     ended = command("draft", records, "--outcome", "parity")
     assert '"parity" must have exactly two values' in ended.out

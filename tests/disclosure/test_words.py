@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+import sys
 from collections.abc import Mapping
 from typing import Any
 
@@ -14,7 +15,6 @@ from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.words import Unsaid, without_counts
 from oddsmodel.findings import Finding
 from oddsmodel.wording import numbers, say
-from oddsmodel.wording import say as say_module
 
 
 @pytest.mark.parametrize(
@@ -65,7 +65,8 @@ def sentences(monkeypatch: pytest.MonkeyPatch) -> dict[str, Any]:
     """Sentences of the tests' own, in the place of the package's."""
 
     def computed(facts: Mapping[str, Any]) -> str:
-        return f"{facts['records']} of {facts['of_records']} ({100 * facts['records'] / facts['of_records']:.1f}%) are old."
+        share = 100 * facts["records"] / facts["of_records"]
+        return f"{facts['records']} of {facts['of_records']} ({share:.1f}%) are old."
 
     invented = {
         "plain": "{records} records lie outside {column}.",
@@ -81,7 +82,7 @@ def sentences(monkeypatch: pytest.MonkeyPatch) -> dict[str, Any]:
             for code in ("fewer-than", "number-not-shown", "share-not-shown", "record-not-shown")
         },
     }
-    monkeypatch.setattr("oddsmodel.wording.say._sentences", lambda: found)
+    monkeypatch.setattr(sys.modules["oddsmodel.wording.say"], "_sentences", lambda: found)
     return found
 
 
@@ -94,7 +95,7 @@ def say_template(code: str) -> str:
 
 
 def made(code: str, **facts: Any) -> Finding:
-    return Finding("note", code, say_module(code, **facts), facts)
+    return Finding("note", code, say(code, **facts), facts)
 
 
 def test_a_plain_sentence_is_made_again(sentences: dict[str, Any]) -> None:

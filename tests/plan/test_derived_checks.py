@@ -113,7 +113,7 @@ def test_band_names_hold_their_lower_edge() -> None:
         ('[derived.n]\nbands_of = "a"\nedges = [1]', "[derived.n]", "cannot be derived"),
         ('[derived.x]\ngroups_of = "died"\ngroups = {a = ["yes"], b = ["no"]}', "[derived.x]", "made from the outcome"),
         ('[derived.x]\nbands_of = "x"\nedges = [1]', "[derived.x]", "made from itself"),
-        ('[derived.x]\nband_of = "a"', "[derived.x] band_of", 'no key called "band_of"'),
+        ('[derived.x]\nband_of = "a"', "[derived.x] band_of", "no key called “band_of”"),
         ("derived = 3", "[derived]", "a section for each column"),
         ("[columns.a]\nplausible = [3, 1]", "[columns.a] plausible", "the lower first"),
         ('[columns.a]\nkind = "category"\nplausible = [0, 1]', "[columns.a] plausible", "only for numbers"),
@@ -143,7 +143,7 @@ def test_a_circle_of_two_is_told_once(tmp_path: Path) -> None:
 
 def test_the_nearest_band_is_offered(tmp_path: Path) -> None:
     (found,) = faults_of(tmp_path, '[derived.x]\nbands_of = "a"\nedges = [40, 60]\nreference = "40 to 60"')
-    assert '"40 to under 60"' in found.remedy
+    assert "“40 to under 60”" in found.remedy
 
 
 def test_a_plan_from_values_knows_derived_columns() -> None:

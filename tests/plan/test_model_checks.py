@@ -42,7 +42,7 @@ def test_a_model_upon_another_inherits_and_may_say_why() -> None:
 @pytest.mark.parametrize(
     ("lines", "key", "words"),
     [
-        (('based_on = "mian"',), "based_on", 'no model called "mian"'),
+        (('based_on = "mian"',), "based_on", "no model called “mian”"),
         (('based_on = "second"',), "based_on", "upon itself"),
         (('add = ["ward"]', 'formula = "age"', 'exposures = ["age"]'), "add", "names none"),
         (('based_on = "main"', 'formula = "smoker"', 'leave_out = ["age"]'), "leave_out", "formula of its own"),
@@ -52,13 +52,13 @@ def test_a_model_upon_another_inherits_and_may_say_why() -> None:
 )
 def test_what_is_wrong_with_a_model_upon_another(lines: tuple[str, ...], key: str, words: str) -> None:
     (fault,) = faults_of(second(*lines))
-    assert fault.where == f'plan.toml, [[models]] number 2 ("second") {key}'
+    assert fault.where == f"plan.toml, [[models]] number 2 (“second”) {key}"
     assert words in fault.what
 
 
 def test_the_nearest_model_is_offered() -> None:
     (fault,) = faults_of(second('based_on = "mian"'))
-    assert fault.remedy == 'Did you mean "main"? Choose from "main".'
+    assert fault.remedy == "Did you mean “main”? Choose from “main”."
 
 
 def test_a_model_without_a_base_needs_a_formula_and_exposures() -> None:
@@ -74,7 +74,7 @@ def test_a_base_that_is_of_the_wrong_kind_is_told_once() -> None:
 def test_a_later_base_and_a_circle_are_told_apart() -> None:
     later = '[[models]]\nname = "first"\nbased_on = "main"\n' + MAIN
     (fault,) = faults_of(later)
-    assert fault.what == '"main" stands further down in the plan.'
+    assert fault.what == "“main” stands further down in the plan."
     circle = MAIN + '[[models]]\nname = "a"\nbased_on = "b"\n[[models]]\nname = "b"\nbased_on = "a"\n'
     (fault,) = faults_of(circle)
     assert '"a" → "b" → "a"' in fault.what
@@ -82,7 +82,7 @@ def test_a_later_base_and_a_circle_are_told_apart() -> None:
 
 def test_the_first_model_has_no_other_role() -> None:
     (fault,) = faults_of(MAIN + 'role = "subgroup"\n')
-    assert fault.where == 'plan.toml, [[models]] number 1 ("main") role'
+    assert fault.where == "plan.toml, [[models]] number 1 (“main”) role"
 
 
 @pytest.mark.parametrize(
@@ -94,8 +94,8 @@ def test_the_first_model_has_no_other_role() -> None:
         ('kind = "category"\nlevels = ["a", "b"]\nscores = [0, 1]', "ordered column"),
         ('kind = "ordered"\nlevels = ["a", "b"]\ncompare_with = "network average"', "levels of a category"),
         ('kind = "category"\ncompare_with = "network average"', "No model has"),
-        ('kind = "category"\ncompare_with = "average"', '"average" is not one of'),
-        ('kind = "ordered"\nlevels = ["a", "b"]\nscores = ["0", "1"]', 'the text "0"'),
+        ('kind = "category"\ncompare_with = "average"', "“average” is not one of"),
+        ('kind = "ordered"\nlevels = ["a", "b"]\nscores = ["0", "1"]', "the text “0”"),
     ],
 )
 def test_keys_that_only_some_columns_can_have(lines: str, words: str) -> None:

@@ -79,7 +79,7 @@ def test_a_key_in_the_wrong_section_is_sent_to_its_own() -> None:
     fault = only(plan(study='title = "t"\ndesign = "cohort"\nhide_counts_below = 3'))
     assert "[report]" in fault.remedy
     fault = only(plan(models=PARTS["models"] + "\nper = 10"))
-    assert fault.where == 'plan.toml, [[models]] number 1 ("main") per'
+    assert fault.where == "plan.toml, [[models]] number 1 (“main”) per"
     assert "[columns.age]" in fault.remedy
 
 
@@ -88,7 +88,7 @@ def test_missing_keys_are_asked_for_with_an_example() -> None:
     assert (fault.where, fault.what) == ("plan.toml, [study]", "design is missing.")
     assert 'design = "cohort"' in fault.remedy
     fault = only(plan(models='name = "main"\nformula = "smoker"'))
-    assert fault.where == 'plan.toml, [[models]] number 1 ("main")'
+    assert fault.where == "plan.toml, [[models]] number 1 (“main”)"
 
 
 def test_a_file_name_with_commas_stays_whole() -> None:
@@ -107,7 +107,7 @@ def test_a_column_name_with_a_full_stop_needs_quotes() -> None:
 
 @pytest.mark.parametrize(("section", "key"), [(section, key) for section, keys in LATER_KEYS.items() for key in keys])
 def test_later_keys_are_not_unknown(section: str, key: str) -> None:
-    line = f'{key} = "x"'
+    line = f"{key} = “x”"
     fault = only(
         plan(f"[columns.age]\n{line}") if section == "columns" else plan(**{section: f"{PARTS[section]}\n{line}"})
     )
@@ -144,7 +144,7 @@ def test_a_model_based_on_another_needs_no_formula_of_its_own() -> None:
 
 
 def test_a_prior_below_a_model_is_told_at_that_model() -> None:
-    assert only(plan("[models.prior]\nm = 2")).where == 'plan.toml, [[models]] number 1 ("main") prior'
+    assert only(plan("[models.prior]\nm = 2")).where == "plan.toml, [[models]] number 1 (“main”) prior"
 
 
 def test_matched_designs_and_checks_come_later() -> None:
@@ -164,7 +164,7 @@ def test_matched_designs_and_checks_come_later() -> None:
         (plan("[columns.age]\nper = -2.5"), "[columns.age] per", "The number -2.5"),
         (plan("[columns.age]\nper = nan"), "[columns.age] per", "The number nan"),
         (plan("[columns.age]\nper = inf"), "[columns.age] per", "The number inf"),
-        (plan("[columns.age]\nper = 'sd'"), "[columns.age] per", '"sd"'),
+        (plan("[columns.age]\nper = 'sd'"), "[columns.age] per", "“sd”"),
         (plan("[columns.age]\nper = [1]"), "[columns.age] per", "A list"),
         (plan(f"[columns.age]\nper = 0x{'f' * 400}"), "[columns.age] per", "A number of more than 30 digits"),
         (plan(study='title = 2026-01-31\ndesign = "cohort"'), "[study] title", "a date"),
@@ -172,14 +172,14 @@ def test_matched_designs_and_checks_come_later() -> None:
         (plan(study='title = 10:00:00\ndesign = "cohort"'), "[study] title", "a time of day"),
         (plan(study='title = " "\ndesign = "cohort"'), "[study] title", "empty"),
         (plan(study='title = "t"\ndesign = 3'), "[study] design", "The number 3"),
-        (plan(records='source = "r.csv"\nnot_recorded = "NA"'), "[records] not_recorded", 'the text "NA"'),
+        (plan(records='source = "r.csv"\nnot_recorded = "NA"'), "[records] not_recorded", "the text “NA”"),
         (plan(records='source = "r.csv"\nnot_recorded = [["NA"]]'), "[records] not_recorded, item 1", "a list"),
         (plan(models=PARTS["models"] + "\nlevel = 95"), "level", "95 is outside"),
         (plan(models=PARTS["models"] + "\nlevel = true"), "level", "the value true"),
         (plan(models=PARTS["models"] + "\nlevel = nan"), "level", "nan"),
         (plan(models=PARTS["models"] + f"\nlevel = 0x{'f' * 400}"), "level", "30 digits"),
         (plan(models=PARTS["models"] + "\nsame_records = 1"), "same_records", "the number 1"),
-        (plan(models=PARTS["models"] + '\nsame_records = "no"'), "same_records", 'the text "no"'),
+        (plan(models=PARTS["models"] + '\nsame_records = "no"'), "same_records", "the text “no”"),
         (plan(report="hide_counts_below = 2.5"), "hide_counts_below", "the number 2.5"),
         (plan(report="hide_counts_below = -1"), "hide_counts_below", "-1 is outside"),
         (plan(report="hide_counts_below = true"), "hide_counts_below", "the value true"),
@@ -197,7 +197,7 @@ def test_wrong_values(text: str, where: str, what: str) -> None:
 
 def test_the_nearest_of_a_few_values_is_offered() -> None:
     fault = only(plan(study='title = "t"\ndesign = "cohrt"'))
-    assert 'Did you mean "cohort"?' in fault.remedy
+    assert "Did you mean “cohort”?" in fault.remedy
     fault = only(plan("[columns.age]\nkind = 'Numbers'"))
     assert 'Did you mean "number"?' in fault.remedy
 
@@ -245,21 +245,21 @@ def test_sections_that_are_no_sections() -> None:
         (plan("[columns.a]\nkind='yes-no'\nlevels=['x', 'y', 'z']"), "[columns.a] levels", "two levels, and 3"),
         (plan("[columns.a]\nlevels=['x']"), "[columns.a] levels", "At least two levels"),
         (plan("[columns.a]\nlevels=[]"), "[columns.a] levels", "At least two levels"),
-        (plan("[columns.a]\nlevels=['x', 'y', 'x', 'x']"), "[columns.a] levels", '"x" is listed twice'),
-        (plan("[columns.a]\nlevels=['x', '']"), "[columns.a] levels", '"" is both a level'),
-        (plan("[columns.a]\nlevels=['x', 'NA']\nnot_recorded=['NA']"), "[columns.a] levels", '"NA" is both a level'),
+        (plan("[columns.a]\nlevels=['x', 'y', 'x', 'x']"), "[columns.a] levels", "“x” is listed twice"),
+        (plan("[columns.a]\nlevels=['x', '']"), "[columns.a] levels", "“” is both a level"),
+        (plan("[columns.a]\nlevels=['x', 'NA']\nnot_recorded=['NA']"), "[columns.a] levels", "“NA” is both a level"),
         (plan("[columns.died]\nper=1"), "[columns.died] per", "is the outcome"),
         (plan("[columns.died]\ntiming='unknown'"), "[columns.died] timing", "is the outcome"),
         (plan("[columns.died]\nreference='no'"), "[columns.died] reference", "is the outcome"),
         (plan("[columns.died]\nkind='date'"), "[columns.died] kind", "cannot be the outcome"),
         (plan("[columns.died]\nlevels=['yes', 'no', 'lost']"), "[columns.died] levels", "exactly two"),
-        (plan("[columns.died]\nlevels=['Dead', 'alive']"), "[outcome] event", '"yes" is not among'),
+        (plan("[columns.died]\nlevels=['Dead', 'alive']"), "[outcome] event", "“yes” is not among"),
         (plan(outcome='column = "died"\nevent = ""'), "[outcome] event", "both the event"),
         (plan(records='source="r"\ncount="died"'), "[records] count", "both as the outcome"),
         (plan("[columns.n]\nper=2", records='source="r"\ncount="n"'), "[columns.n] per", "counts records"),
         (plan("[columns.n]\nkind='date'", records='source="r"\ncount="n"'), "[columns.n] kind", "cannot count"),
         (plan(models='name="m"\nformula="a"\nexposures=[]'), "exposures", "list is empty"),
-        (plan(models='name="m"\nformula="a"\nexposures=["a","a"]'), "exposures", '"a" is listed twice'),
+        (plan(models='name="m"\nformula="a"\nexposures=["a","a"]'), "exposures", "“a” is listed twice"),
         (plan(models='name="m"\nformula="a"\nexposures=["died"]'), "exposures", "is the outcome"),
         (plan(models='name=" "\nformula="a"\nexposures=["a"]'), "name", "empty"),
         (plan(models=f'name="{"x" * 121}"\nformula="a"\nexposures=["a"]'), "name", "longer than 120"),
@@ -276,7 +276,7 @@ def test_keys_that_contradict_one_another(text: str, where: str, what: str) -> N
 
 def test_a_reference_that_is_no_level_offers_the_nearest() -> None:
     fault = only(plan("[columns.sex]\nlevels=['female', 'male']\nreference='femal'"))
-    assert 'Did you mean "female"?' in fault.remedy
+    assert "Did you mean “female”?" in fault.remedy
 
 
 @pytest.mark.parametrize("event", ["1", "1.0", "true", "Yes"])
@@ -305,11 +305,11 @@ def test_all_faults_are_told_together(tmp_path: Path) -> None:
         "[study] prevalence",
         "[columns.sex] per",
         "[columns.sex] colour",
-        '[[models]] number 1 ("main") formula',
+        "[[models]] number 1 (“main”) formula",
         "[columns.sex] levels",
         "[columns.sex] reference",
-        '[[models]] number 1 ("main") exposures',
-        '[[models]] number 1 ("main") exposures',
+        "[[models]] number 1 (“main”) exposures",
+        "[[models]] number 1 (“main”) exposures",
     ]
 
 

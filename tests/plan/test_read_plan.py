@@ -165,7 +165,7 @@ def test_values_at_fault_are_told_as_from_the_call() -> None:
     wheres = [fault.where for fault in caught.value.faults]
     assert any(where.startswith("oddsmodel.fit, [columns.3]") for where in wheres)
     assert "oddsmodel.fit, [columns.age] per" in wheres
-    assert 'oddsmodel.fit, [[models]] number 1 ("main") exposures' in wheres
+    assert "oddsmodel.fit, [[models]] number 1 (“main”) exposures" in wheres
 
 
 def the_fault(path: Path) -> str:

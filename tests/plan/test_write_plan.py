@@ -73,7 +73,7 @@ def test_an_open_event_is_not_guessed(tmp_path: Path) -> None:
     text = draft_plan(records)
     assert read_back(text, tmp_path).plan.outcome.event is None
     assert '# event = "b"' in text
-    assert 'Which value of "state" is the event?' in text
+    assert "Which value of “state” is the event?" in text
 
 
 def test_columns_that_cannot_be_compared_are_kept_out_of_the_model(tmp_path: Path) -> None:

@@ -116,7 +116,7 @@ def test_a_level_that_is_not_in_the_plan_is_recorded_and_none_of_its_levels() ->
 @pytest.mark.parametrize(
     ("text", "code", "place"),
     [
-        ("agee > 18", 'Did you mean "age"?', 1),
+        ("agee > 18", "Did you mean “age”?", 1),
         ("age = 18", "Write == for equal", 5),
         ("age > 18 & start > 1", "Write the word and", 10),
         ("age > 18 || start > 1", "Write the word or", 10),
@@ -126,10 +126,10 @@ def test_a_level_that_is_not_in_the_plan_is_recorded_and_none_of_its_levels() ->
         ("age and start > 1", "stands alone", 1),
         ("age > 18 start", 'the end of the condition is needed', 10),
         ("(age > 18", "closing parenthesis", 10),
-        ("age > 18)", '")" stands where', 9),
+        ("age > 18)", "“)” stands where", 9),
         ("age > old", "neither a number nor a text", 7),
         ("ward == north", "neither a number nor a text", 9),
-        ('ward == "nort"', 'Did you mean "north"?', 9),
+        ('ward == "nort"', "Did you mean “north”?", 9),
         ("ward in [north]", "neither a number nor a text", 10),
         ('ward in "north"', "a list in brackets", 9),
         ("ward in []", "a column, a number or a text", 10),

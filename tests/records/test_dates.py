@@ -53,7 +53,7 @@ def test_equal_day_and_month_read_the_same_either_way():
 def test_an_order_that_nothing_settles_is_a_fault():
     told = fault_of("2024-12-31", "03/04/2024", "05/05/2024", "01/02/2024")
     assert WHERE in told
-    assert 'row 3 has "03/04/2024" and row 5 has "01/02/2024"' in told
+    assert "row 3 has “03/04/2024” and row 5 has “01/02/2024”" in told
     assert "2024-03-14" in told
 
 
@@ -63,17 +63,17 @@ def test_dates_written_with_another_sign_do_not_settle_the_order():
 
 def test_an_order_that_differs_within_the_column_is_a_fault():
     told = fault_of("13/02/2024", "02/14/2024", "03/04/2024")
-    assert '"13/02/2024"' in told
-    assert '"02/14/2024"' in told
+    assert "“13/02/2024”" in told
+    assert "“02/14/2024”" in told
 
 
 def test_texts_that_are_no_date_are_told_together_with_two_digit_years():
     told = fault_of("2024-01-01", "unknown", "13/02/24", "2024-01/02", "20240102")
-    assert 'row 3 has "unknown"' in told
-    assert 'row 4 has "13/02/24"' in told
+    assert "row 3 has “unknown”" in told
+    assert "row 4 has “13/02/24”" in told
     assert "two digits" in told
-    assert '"2024-01/02"' in told
-    assert '"20240102"' in told
+    assert "“2024-01/02”" in told
+    assert "“20240102”" in told
 
 
 def test_days_that_the_calendar_does_not_have():

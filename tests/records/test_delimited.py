@@ -177,7 +177,7 @@ def test_a_field_of_almost_a_megabyte_is_read(tmp_path: Path) -> None:
         ("a,b", "no row"),
         ("a,b\n\n\n", "no row"),
         ("a\n1\n", "not split"),
-        ("a,b,a\n1,2,3\n", 'name "a" is given to columns 1 and 3'),
+        ("a,b,a\n1,2,3\n", "name “a” is given to columns 1 and 3"),
         ("a,,c,\n1,2,3,4\n", "columns 2 and 4"),
         ("a, a \n1,2\n", "is given to columns 1 and 2"),
         ("1,2,3\n4,5,6\n", "only numbers"),
@@ -237,7 +237,7 @@ def test_leading_zeros_large_numbers_and_words_for_no_number_stay_texts(tmp_path
     assert table.types["plain"] == table.types["dose"] == "number"
 
 
-@pytest.mark.parametrize("cell", ["01", '"01"', " 01", "-01", " 01 ", "00.5"])
+@pytest.mark.parametrize("cell", ["01", "“01”", " 01", "-01", " 01 ", "00.5"])
 def test_a_leading_zero_is_found_wherever_it_stands(tmp_path: Path, cell: str, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("oddsmodel.records.delimited.WINDOW", 5)
     for before in range(6):

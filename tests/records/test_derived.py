@@ -83,7 +83,7 @@ def test_bands_are_those_of_pandas(values: list[float], edges: list[int]) -> Non
 def test_bands_of_a_category_are_refused() -> None:
     told = fault_of(pd.DataFrame({"ward": ["a", "b"] * 4}), {"band": {"bands_of": "ward", "edges": [1]}})
     assert "[derived.band]" in told
-    assert '"ward" is of the kind category' in told
+    assert "“ward” is of the kind category" in told
 
 
 def test_a_reference_that_no_record_has() -> None:
@@ -93,7 +93,7 @@ def test_a_reference_that_no_record_has() -> None:
 
 def test_a_band_without_records_is_told() -> None:
     records = coded(pd.DataFrame({"x": [1.0, 2.0, 25.0]}), {"band": {"bands_of": "x", "edges": [10, 20]}})
-    assert '"10 to under 20"' in codes_of(records)["level-absent"]
+    assert "“10 to under 20”" in codes_of(records)["level-absent"]
 
 
 # Years.
@@ -116,7 +116,7 @@ def test_years_are_days_by_365_25() -> None:
 def test_an_ambiguous_order_names_the_column_and_what_to_do() -> None:
     frame = pd.DataFrame({"born": ["03/04/1960", "05/06/1961"], "admitted": ["2024-01-31"] * 2})
     told = fault_of(frame, {"age": {"years_between": ["born", "admitted"]}})
-    assert 'data frame, column "born"' in told
+    assert "data frame, column “born”" in told
     assert "whether day or month comes first" in told
     assert "Write the dates as year-month-day" in told
 
@@ -154,8 +154,8 @@ def test_points_are_summed_and_parts_not_recorded() -> None:
 def test_a_part_with_other_values_is_refused() -> None:
     frame = pd.DataFrame({"diabetes": ["yes", "no", "maybe", "no"], "cancer": [1, 0, 2, 3]})
     told = fault_of(frame, {"score": {"points": {"diabetes": 1, "cancer": 2}}})
-    assert 'column "diabetes": "score" counts points where "diabetes" is yes, but it also holds "maybe"' in told
-    assert '"2" and "3"' in told
+    assert "column “diabetes”: “score” counts points where “diabetes” is yes, but it also holds “maybe”" in told
+    assert "“2” and “3”" in told
 
 
 def test_points_of_groups_named_yes_and_no() -> None:
@@ -184,8 +184,8 @@ def test_a_level_without_a_group_stops_or_is_counted() -> None:
     frame = pd.DataFrame({"ward": ["S1", "M1", "S1x", "S1x", "Q"]})
     rule = {"groups_of": "ward", "groups": {"surgical": ["S1"], "medical": ["M1"]}}
     told = fault_of(frame, {"side": rule})
-    assert '[derived.side] groups: No group has "S1x" (2 records) and "Q" (1 record) of "ward"' in told
-    assert '"S1x" may be meant for "S1"' in told
+    assert "[derived.side] groups: No group has “S1x” (2 records) and “Q” (1 record) of “ward”" in told
+    assert "“S1x” may be meant for “S1”" in told
     records = coded(frame, {"side": {**rule, "other_levels": "exclude and count"}})
     assert records.outside_levels["side"].tolist() == [False, False, True, True, True]
 
@@ -220,7 +220,7 @@ def test_quantile_groups_rest_on_the_records_kept_and_on_counts() -> None:
     # The kept records are 20, 20, 20, 30, 40, 40, 50 with the median 30; the 50 records of age 9 are not recorded.
     assert records.derived[0].cut_points == (30.0,)
     assert records.columns["half"].levels == ("under 30", "30 or over")
-    assert 'cut at 30 to make "half"' in codes_of(records)["quantile-cuts"]
+    assert "cut at 30 to make “half”" in codes_of(records)["quantile-cuts"]
 
 
 def test_ties_make_fewer_groups_and_say_so() -> None:
@@ -238,6 +238,13 @@ def test_keep_by_its_own_quantile_groups_is_a_circle() -> None:
     told = fault_of(frame, derived, records={"keep": 'half == "under 2.5"'})
     assert "made from itself, by way of other derived columns or of keep" in told
     assert told.count("\n") == 0
+
+
+def test_a_condition_at_fault_is_told_once() -> None:
+    derived = {"half": {"quantile_groups_of": "x", "groups": 2}}
+    told = fault_of(pd.DataFrame({"x": [1.0, 2.0, 3.0, 4.0]}), derived, records={"keep": "y > 1"})
+    assert told.count("\n") == 0
+    assert "[records] keep, character 1: The records have no column “y”" in told
 
 
 def test_keep_by_another_derived_column() -> None:
@@ -269,7 +276,7 @@ def test_renamed_columns_are_told_and_messages_name_the_file(tmp_path: Path) -> 
     records = load_records(path, plan_from_values(values).plan, Silent())
     assert records.frame.parity.tolist()[0] == 1.0
     assert records.columns["ward"].levels == ("01", "02")
-    assert '"Parity (n)" in the file is "parity"' in codes_of(records)["columns-renamed"]
+    assert "“Parity (n)” in the file is “parity”" in codes_of(records)["columns-renamed"]
     assert "in 9 records" in codes_of(records)["implausible-values"]
     assert "suspected-codes" not in codes_of(records)
     values["columns"]["parity"]["not_recorded"] = [""]  # type: ignore[index]
@@ -289,13 +296,13 @@ def test_names_may_be_exchanged_but_not_taken() -> None:
     records = coded(frame, {}, columns={"a": {"from": "b"}, "b": {"from": "a"}}, formula="a")
     assert records.frame.a.tolist() == [4.0, 5.0, 60.5]
     told = fault_of(frame, {}, columns={"a": {"from": "b"}}, formula="a")  # type: ignore[arg-type]
-    assert 'The file has a column "a" besides "b"' in told
+    assert "The file has a column “a” besides “b”" in told
 
 
 def test_a_derived_name_that_the_file_has() -> None:
     told = fault_of(pd.DataFrame({"x": [1.0, 2.0]}), {"x": {"bands_of": "y", "edges": [1]}})
-    assert 'The file has a column "x" of its own' in told
-    assert 'no column "y"' in told
+    assert "The file has a column “x” of its own" in told
+    assert "no column “y”" in told
 
 
 def test_a_source_at_fault_is_told_once() -> None:
@@ -313,7 +320,7 @@ def test_references_of_sources_alone_are_not_told() -> None:
     frame = pd.DataFrame({"ward": ["S1", "M1", "S1", "M1"]})
     derived = {"side": {"groups_of": "ward", "groups": {"surgical": ["S1"], "medical": ["M1"]}}}
     assert codes_of(coded(frame, derived))["references-taken"].endswith(
-        'with the first one: "side" against "surgical".'
+        "with the first one: “side” against “surgical”."
     )
 
 

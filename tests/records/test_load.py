@@ -85,14 +85,14 @@ def test_texts_that_mean_not_recorded_by_plan_and_by_column(tmp_path: Path) -> N
     assert cells(records, "x") == [40, None, None, 43, None, None]
     assert cells(records, "ward") == [None, "a", "b", "a", "b", "a"]
     (fault,) = faults(tmp_path, columns | {"x": "40,NA,1,2,3,4"}, study)
-    assert 'row 3 has "NA"' in fault.what
+    assert "row 3 has “NA”" in fault.what
 
 
 def test_stray_texts_in_a_number_column_name_their_first_rows(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "number"}})
     (fault,) = faults(tmp_path, {"died": DIED, "x": "40,n/a,?,43,4O,<b>"}, study)
-    assert 'row 3 has "n/a", row 4 has "?", row 6 has "4O" and row 7 has "<b>"' in fault.what
-    assert 'column "x"' in fault.where
+    assert "row 3 has “n/a”, row 4 has “?”, row 6 has “4O” and row 7 has “<b>”" in fault.what
+    assert "column “x”" in fault.where
     assert "not_recorded" in fault.remedy
 
 
@@ -108,7 +108,7 @@ def test_an_undeclared_column_that_is_mostly_numbers_is_a_number_with_stray_text
     numbers = ",".join([str(20 + i) for i in range(39)] + ["old"])
     columns = {"died": ",".join(["no", "yes"] * 20), "x": numbers}
     (fault,) = faults(tmp_path, columns, plan())
-    assert 'row 41 has "old"' in fault.what
+    assert "row 41 has “old”" in fault.what
     columns = {"died": ",".join(["no", "yes"] * 20), "x": "3," * 39 + "4", "spare": numbers}
     assert load(tmp_path, columns, plan()).columns["spare"].kind == "category"
 
@@ -116,7 +116,7 @@ def test_an_undeclared_column_that_is_mostly_numbers_is_a_number_with_stray_text
 @pytest.mark.parametrize("word", ["nan", "inf", "-Infinity"])
 def test_words_that_parsers_take_for_numbers_are_stray_texts(tmp_path: Path, word: str) -> None:
     (fault,) = faults(tmp_path, {"died": DIED, "x": f"40,{word},42,43,44,45"}, plan(columns={"x": {"kind": "number"}}))
-    assert f'row 3 has "{word}"' in fault.what
+    assert f"row 3 has “{word}”" in fault.what
 
 
 def test_numbers_too_large_to_tell_apart(tmp_path: Path) -> None:
@@ -148,12 +148,12 @@ def test_few_whole_numbers_are_asked_about_unless_the_plan_speaks(tmp_path: Path
 def test_suspected_codes_are_asked_about_and_stay_values(tmp_path: Path) -> None:
     records = load(tmp_path, {"died": DIED, "x": "1,2,3,9,2,9"}, plan(columns={"x": {"kind": "number"}}))
     message = messages(records)["suspected-codes"]
-    assert '"9" (2 records)' in message
+    assert "“9” (2 records)" in message
     assert cells(records, "x") == [1, 2, 3, 9, 2, 9]
     records = load(tmp_path, {"died": DIED, "x": "a,b,unknown,a,b,a"}, plan())
     assert '"unknown" (1 record)' in messages(records)["suspected-codes"]
     records = load(tmp_path, {"died": DIED, "x": "1,2,3,9,2,9"}, plan(columns={"x": {"kind": "category"}}))
-    assert '"9" (2 records)' in messages(records)["suspected-codes"]
+    assert "“9” (2 records)" in messages(records)["suspected-codes"]
 
 
 def test_levels_in_every_spelling(tmp_path: Path) -> None:
@@ -174,8 +174,8 @@ def test_levels_found_are_sorted_numbers_first_by_size(tmp_path: Path) -> None:
     records = load(tmp_path, {"died": DIED, "x": "10,9,b,B,é,2"}, plan(columns={"x": {"kind": "category"}}))
     assert records.columns["x"].levels == ("2", "9", "10", "B", "b", "é")
     assert records.columns["x"].reference == "2"
-    assert '"x" against "2"' in messages(records)["references-taken"]
-    assert '"B" and "b"' in messages(records)["levels-differ-by-case"]
+    assert "“x” against “2”" in messages(records)["references-taken"]
+    assert "“B” and “b”" in messages(records)["levels-differ-by-case"]
 
 
 def test_the_plainest_or_most_frequent_spelling_is_kept(tmp_path: Path) -> None:
@@ -188,8 +188,8 @@ def test_the_plainest_or_most_frequent_spelling_is_kept(tmp_path: Path) -> None:
 def test_a_level_that_is_not_in_the_plan_stops(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "category", "levels": ["never", "current"]}})
     (fault,) = faults(tmp_path, {"died": DIED, "x": "never,curent,current,never,past,past"}, study)
-    assert '"past" (2 records) and "curent" (1 record)' in fault.what
-    assert '"curent" may be meant for "current"' in fault.remedy
+    assert "“past” (2 records) and “curent” (1 record)" in fault.what
+    assert "“curent” may be meant for “current”" in fault.remedy
     assert "exclude and count" in fault.remedy
 
 
@@ -203,7 +203,7 @@ def test_a_level_that_is_not_in_the_plan_can_be_left_out(tmp_path: Path) -> None
 def test_a_level_that_is_absent_is_a_note_and_no_default_reference(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "ordered", "levels": ["low", "mid", "top"]}})
     records = load(tmp_path, {"died": DIED, "x": "mid,top,mid,top,mid,top"}, study)
-    assert 'No record has "low"' in messages(records)["level-absent"]
+    assert "No record has “low”" in messages(records)["level-absent"]
     assert records.columns["x"].levels == ("low", "mid", "top")
     assert records.columns["x"].reference == "mid"
     assert records.frame["x"].cat.ordered
@@ -213,7 +213,7 @@ def test_a_reference_that_no_record_has_is_a_fault(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "category", "reference": "nevr"}})
     (fault,) = faults(tmp_path, {"died": DIED, "x": "never,past,never,past,never,past"}, study)
     assert fault.where == "the plan, [columns.x] reference"
-    assert 'Did you mean "never"?' in fault.remedy
+    assert "Did you mean “never”?" in fault.remedy
 
 
 @pytest.mark.parametrize("spelt", ["yes,no,,yes,no,yes", "Y,n,,y,N,Y", "1,0,,1,0,1", "TRUE,False,,true,FALSE,True"])
@@ -237,7 +237,7 @@ def test_yes_no_columns_are_inferred_and_have_levels_of_the_plan(tmp_path: Path)
 def test_a_third_value_in_a_yes_no_column_is_a_fault(tmp_path: Path) -> None:
     study = plan(columns={"x": {"kind": "yes-no"}})
     (fault,) = faults(tmp_path, {"died": DIED, "x": "yes,no,maybe,no,maybe,yes"}, study)
-    assert '"maybe" (2 records)' in fault.what
+    assert "“maybe” (2 records)" in fault.what
 
 
 def test_dates_and_identifiers_are_texts_and_have_no_place_in_a_formula(tmp_path: Path) -> None:
@@ -248,7 +248,7 @@ def test_dates_and_identifiers_are_texts_and_have_no_place_in_a_formula(tmp_path
     assert cells(records, "seen")[:2] == ["2020-01-02", None]
     assert load(tmp_path, columns, plan()).columns["seen"].kind == "date"
     found = unusable_in_formula(records.columns, ["x", "id", "seen", "absent"], 'the plan, [[models]] "main" formula')
-    assert [fault.what.split(" ")[0] for fault in found] == ['"id"', '"seen"']
+    assert [fault.what.split(" ")[0] for fault in found] == ["“id”", "“seen”"]
     assert messages(records) == {}
 
 
@@ -312,13 +312,13 @@ def test_all_faults_are_reported_together_each_with_the_nearest_name(tmp_path: P
     found = faults(tmp_path, columns, study)
     text = "\n".join(str(fault) for fault in found)
     for wanted in (
-        '[outcome] column: The records have no column "dead". Did you mean "died"?',
-        '[records] count: The records have no column "number".',
-        '[columns.hieght]: The records have no column "hieght". Did you mean "height"?',
-        'exposures: The records have no column "smokr". Did you mean "smoker"?',
-        'row 3 has "old"',
-        'levels do not have "c" (1 record)',
-        '[records] keep, character 1: The records have no column "agee". Did you mean "age"?',
+        "[outcome] column: The records have no column “dead”. Did you mean “died”?",
+        "[records] count: The records have no column “number”.",
+        "[columns.hieght]: The records have no column “hieght”. Did you mean “height”?",
+        "exposures: The records have no column “smokr”. Did you mean “smoker”?",
+        "row 3 has “old”",
+        "levels do not have “c” (1 record)",
+        "[records] keep, character 1: The records have no column “agee”. Did you mean “age”?",
     ):
         assert wanted in text, wanted
     assert len(found) == 7
@@ -391,7 +391,7 @@ def test_a_data_frame_keeps_the_order_of_its_categories() -> None:
 
 
 def test_rows_of_a_data_frame_are_counted_from_one() -> None:
-    with pytest.raises(InputFault, match='row 2 has "x"'):
+    with pytest.raises(InputFault, match="row 2 has “x”"):
         records_from_frame(pd.DataFrame({"died": [0, 1], "x": [1, "x"]}), plan(columns={"x": {"kind": "number"}}))
 
 

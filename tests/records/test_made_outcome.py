@@ -119,14 +119,14 @@ def test_faults_of_dates_are_told_together() -> None:
     faults = told(frame, DATES)
     assert len(faults) == 2
     assert "whether day or month comes first" in faults[0]
-    assert 'column "last_seen"' in faults[1]
+    assert "column “last_seen”" in faults[1]
 
 
 def test_dates_after_extraction_are_a_fault() -> None:
     frame = STAYS.assign(died_on=["2025-04-01", *STAYS.died_on[1:]], last_seen=[*STAYS.last_seen[:-1], "2026-01-01"])
     assert told(frame, DATES) == [
-        'data frame, column "died_on": A date is later than the extraction (2025-03-31): row 1.',
-        'data frame, column "last_seen": A date is later than the extraction (2025-03-31): row 8.',
+        "data frame, column “died_on”: A date is later than the extraction (2025-03-31): row 1.",
+        "data frame, column “last_seen”: A date is later than the extraction (2025-03-31): row 8.",
     ]
 
 
@@ -139,7 +139,7 @@ def test_a_start_after_extraction_is_a_window_not_finished() -> None:
 @pytest.mark.parametrize("key", ["start", "event_date", "followed_to"])
 def test_columns_of_dates_that_are_not_there(key: str) -> None:
     (fault,) = told(STAYS, {**DATES, key: "admited"})
-    assert fault == f'the plan, [outcome] {key}: The records have no column "admited".'
+    assert fault == f"the plan, [outcome] {key}: The records have no column “admited”."
 
 
 def test_an_outcome_that_is_known_of_nobody_or_always_the_same() -> None:
@@ -151,7 +151,7 @@ def test_an_outcome_that_is_known_of_nobody_or_always_the_same() -> None:
 
 def test_the_name_of_a_column_cannot_be_that_of_the_outcome() -> None:
     (fault,) = told(STAYS.assign(age="50"), {**DATES, "name": "age"})
-    assert 'called "age", and so is a column' in fault
+    assert "called “age”, and so is a column" in fault
 
 
 EITHER = {"event_when": "died == 'yes' or readmitted == 'yes'", "name": "bad_end"}

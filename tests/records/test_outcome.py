@@ -60,13 +60,13 @@ def test_an_event_left_open_is_asked_for() -> None:
 
 
 def test_an_event_that_is_no_value() -> None:
-    assert 'Did you mean "dead"?' in fault(["alive", "dead"], "daed")
+    assert "Did you mean “dead”?" in fault(["alive", "dead"], "daed")
     assert 'none of the outcome\'s values, "1" and "2"' in fault([1.0, 2.0], "0")
 
 
 def test_three_values_are_listed_with_their_counts() -> None:
     message = fault(["a", "b", "b", "c", "c", "c"])
-    assert 'has 3: "c" (3 records), "b" (2 records) and "a" (1 record)' in message
+    assert "has 3: “c” (3 records), “b” (2 records) and “a” (1 record)" in message
     message = fault([0.0, 1.0, 9.0], counts=[5, 4, 30])
     assert '"9" (30 records), "0" (5 records) and "1" (4 records)' in message
 
@@ -88,7 +88,7 @@ def test_a_value_with_a_count_of_none_is_not_met() -> None:
 
 
 def test_a_column_that_is_absent() -> None:
-    with pytest.raises(InputFault, match='Did you mean "died"'):
+    with pytest.raises(InputFault, match="Did you mean “died”"):
         code_outcome(records([0.0, 1.0]), Outcome(column="dead"))
 
 

@@ -101,15 +101,15 @@ def test_records_alike_are_no_tie_and_others_are() -> None:
     with pytest.raises(InputFault) as caught:
         loaded(twice, {"of": "patient", "use": "first", "ordered_by": "visit"})
     (fault,) = caught.value.faults
-    assert fault.what.startswith('For 1 value of "patient" it cannot be told which record is first')
+    assert fault.what.startswith("For 1 value of “patient” it cannot be told which record is first")
     assert "row 10" in fault.what
 
 
 @pytest.mark.parametrize(
     ("repeats", "told"),
     [
-        ({"of": "patnt", "use": "first", "ordered_by": "visit"}, 'no column "patnt"'),
-        ({"of": "patient", "use": "first", "ordered_by": "vist"}, 'no column "vist"'),
+        ({"of": "patnt", "use": "first", "ordered_by": "visit"}, "no column “patnt”"),
+        ({"of": "patient", "use": "first", "ordered_by": "vist"}, "no column “vist”"),
         ({"of": "patient", "use": "first", "ordered_by": "smoker"}, "neither dates nor numbers"),
     ],
 )

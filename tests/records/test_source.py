@@ -210,8 +210,8 @@ def test_a_sheet_of_mixed_cells(tmp_path: Path) -> None:
         "mixed": "text",
         "empty": "empty",
     }
-    assert '"Patients"' in table.findings[0].message
-    assert '"Notes"' in table.findings[0].message
+    assert "“Patients”" in table.findings[0].message
+    assert "“Notes”" in table.findings[0].message
     assert table.first_row == 2
 
 

@@ -115,7 +115,7 @@ def test_no_sqlite_file_is_made(tmp_path: Path) -> None:
 
 def test_what_is_not_there_is_told_with_the_nearest(tmp_path: Path) -> None:
     sqlite_file(tmp_path)
-    assert 'Did you mean "stays"?' in fault_of(lambda: read(tmp_path, table="stay"))
+    assert "Did you mean “stays”?" in fault_of(lambda: read(tmp_path, table="stay"))
     assert "no such column: nome" in fault_of(lambda: read(tmp_path, query="select nome from stays"))
     assert "no row of records" in fault_of(lambda: read(tmp_path, query="select * from stays where number > 9"))
     twice = fault_of(lambda: read(tmp_path, query="select a.name, b.name from stays a, stays b"))
@@ -235,7 +235,7 @@ def test_messages_hold_no_secret(postgresql: Any, tmp_path: Path, monkeypatch: p
     said.append(fault_of(lambda: read(tmp_path, postgresql.address, query="select nothing from nowhere")))
     monkeypatch.setenv("ODDSMODEL_DATABASE_PASSWORD", "quite-wrong")
     said.append(fault_of(lambda: read(tmp_path, postgresql.address, table="x")))
-    assert 'no database "nowhere"' in said[0]
+    assert "no database “nowhere”" in said[0]
     assert "not reached" in said[1]
     assert "relation" in said[2]
     assert "refused the login" in said[3]

@@ -70,7 +70,7 @@ def test_levels(tmp_path: Path) -> None:
     assert ward.not_recorded == 14
     assert [level for level, _ in ward.levels] == ["North", "north"]
     assert sum(count for _, count in ward.levels) == 106
-    assert any('"North" and "north"' in question for question in ward.questions)
+    assert any("“North” and “north”" in question for question in ward.questions)
     assert columns["died"].levels == (("no", 102), ("yes", 18))
     assert (columns["street"].different, len(columns["street"].levels)) == (40, 30)
     assert any("40 levels" in question for question in columns["street"].questions)

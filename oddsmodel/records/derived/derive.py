@@ -91,10 +91,10 @@ class _Work:
             return
         sources = tuple(Source(self.columns[one], self.where(one), self.first_row) for one in section.sources)
         rule = next(rule for rule in RULES if rule in section.model_fields_set)
-        kept = self._kept() if by_quantiles else np.ones(len(self.weights), dtype=np.bool_)
-        if kept is None:
-            return
         try:
+            kept = self._kept() if by_quantiles else np.ones(len(self.weights), dtype=np.bool_)
+            if kept is None:
+                return
             found = RULES[rule](Making(name, section, sources, kept, self.weights))
         except InputFault as fault_found:
             self.faults.extend(fault_found.faults)
@@ -118,15 +118,15 @@ class _Work:
         return False
 
     def _kept(self) -> Mask | None:
-        """Rows (n,) that the plan's condition is known to hold for; None where it is at fault, told elsewhere."""
+        """Rows (n,) that the plan's condition is known to hold for; None where a column in it is at fault.
+
+        Raises: InputFault as `vet_condition` does.
+        """
         text = self.plan.records.keep
         if text is None:
             return np.ones(len(self.weights), dtype=np.bool_)
         columns = {name: one.column for name, one in self.columns.items()}
-        try:
-            condition = vet_condition(text, columns, "keep")
-        except InputFault:
-            return None
+        condition = vet_condition(text, columns, "the plan, [records] keep")
         if any(self.columns[name].faults for name in condition.columns):
             return None
         frame = pd.DataFrame({name: self.columns[name].values for name in condition.columns})

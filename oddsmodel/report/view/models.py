@@ -34,6 +34,7 @@ class EstimatesView:
 
 @dataclass(frozen=True, slots=True)
 class CrudeView:
+    heading: str
     by_level: TableView | None
     change: TableView | None
     notes: tuple[str, ...]
@@ -67,6 +68,7 @@ def crude(model: ModelResult, sheets: Sheets) -> CrudeView:
     levels, change = (by_id.get(name) for name in CRUDE_TABLES)
     notes = tuple(one.message for one in model.findings if one.code in ABOUT_ADJUSTMENT)
     return CrudeView(
+        heading="heading-crude-adjusted" if model.adjustment else "heading-by-exposure",
         by_level=sheets.table(levels) if levels is not None else None,
         change=sheets.table(change) if change is not None else None,
         notes=notes or ((say("same-records-caution"),) if model.adjustment else ()),
