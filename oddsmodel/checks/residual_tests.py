@@ -107,7 +107,7 @@ def _table(tests: ResidualTests, pearson_p: float, deviance_p: float) -> Table:
         TableColumn("statistic", "Statistic"),
         TableColumn("value", "Value", "number"),
         TableColumn("df", "Degrees of freedom", "number"),
-        TableColumn("p", "p", "p"),
+        TableColumn("p", "p-value", "p"),
     )
     rows = (
         ("Pearson chi-square", tests.pearson, tests.df, pearson_p),

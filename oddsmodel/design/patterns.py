@@ -32,11 +32,6 @@ class Patterns:
     index: NDArray[np.intp]
     first_row: NDArray[np.intp]
 
-    @property
-    def all_distinct(self) -> bool:
-        """Whether every record is a pattern of its own; X is then the matrix that was given."""
-        return self.first_row.size == self.index.size
-
 
 def collapse(X: Array, event: NDArray[np.bool_], counts: Array | None = None) -> Patterns:
     """The patterns of a model matrix X (n, p) of finite numbers, with the events of event (n,).

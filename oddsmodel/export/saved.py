@@ -98,6 +98,7 @@ class SavedModel(Saved):
     records: Count | None
     events: Count | None
     coefficients: Annotated[tuple[SavedCoefficient, ...], BeforeValidator(_list_as_tuple)]
+    averages: Annotated[tuple[SavedCoefficient, ...], BeforeValidator(_list_as_tuple)] = ()
     findings: Findings
 
 

@@ -35,7 +35,7 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
         start = (model.name, _description(model), label) if described else (label, model.name)
         if coefficient is None or coefficient.odds_ratio is None:
             rows.append((*start, model.records, model.events, None, None))
-            notes[_why_missing(model, label, coefficient)] = None
+            notes[_why_missing(model, exposures, key)] = None
         else:
             limits = lead_interval(coefficient.profile, coefficient.wald)
             rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
@@ -110,10 +110,14 @@ def _exposures(models: Sequence[ModelResult]) -> dict[Key, str]:
     return {key: one.label for model in models for key, one in _keyed(model).items()}
 
 
-def _why_missing(model: ModelResult, label: str, coefficient: CoefficientResult | None) -> str:
+def _why_missing(model: ModelResult, exposures: dict[Key, str], key: Key) -> str:
+    """Why the model's row is empty; of all the exposures that the model does not have, one sentence."""
+    keyed = _keyed(model)
+    label, coefficient = exposures[key], keyed.get(key)
     if coefficient is not None:
         reason = coefficient.reasons.get("odds_ratio", say("odds-ratio-out-of-range"))
         return say("compare-models-withheld", model=model.name, label=label, reason=reason)
     if model.status != "converged":
         return say("compare-models-not-estimated", model=model.name, status=model.status)
-    return say("compare-models-not-in-model", model=model.name, label=label)
+    labels = [one for other, one in exposures.items() if other not in keyed]
+    return say("compare-models-not-in-model", model=model.name, labels=labels)

@@ -113,7 +113,7 @@ def _values(levels: Sequence[tuple[str, int]]) -> str:
 
 
 def _line(text: str, comment: str = "") -> str:
-    return f"{text:<{COMMENT_COLUMN}}# {comment}" if comment else text
+    return f"{f'{text} ':<{COMMENT_COLUMN}}# {comment}" if comment else text
 
 
 def _comment(code: str, **facts: str) -> str:

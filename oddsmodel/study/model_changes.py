@@ -83,8 +83,9 @@ def _series(
     for place, model in enumerate(models):
         if model is None or not is_estimated(model):
             continue
-        for one in model.coefficients:
-            if one.role == "exposure":
+        averaged = {one.term for one in model.averages}
+        for one in (*model.coefficients, *model.averages):
+            if one.role == "exposure" and (one.term not in averaged or one in model.averages):
                 unit = units[place].get(one.term) if one.level is None else None
                 levels = tuple(sorted((one.levels or {}).items()))
                 key = (one.term, one.level, one.reference, levels, unit)

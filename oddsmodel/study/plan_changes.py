@@ -9,7 +9,7 @@ from typing import Any
 from oddsmodel.export.saved import SavedResults
 from oddsmodel.plan.faults import heading, shown_key
 from oddsmodel.wording import say
-from oddsmodel.wording.plain import plain, quoted
+from oddsmodel.wording.plain import as_code, plain
 
 NAMED = ("columns", "derived", "outcomes", "models")
 """Sections with an entry a name."""
@@ -103,7 +103,7 @@ def _differ(one: Any, other: Any) -> bool:
 def _heading(entry: tuple[str, ...]) -> str:
     section, *name = entry
     if section == "models":
-        return f"{heading('models')} {quoted(name[0])}"
+        return f"{heading('models')} {as_code(name[0])}"
     return heading(shown_key(section), name[0] if name else None)
 
 

@@ -99,7 +99,7 @@ FAULTS: dict[str, tuple[str, str]] = {
         "The value here is not what results hold at this place.",
         "The file was changed after the run: take an unchanged copy, or run the plan again.",
     ),
-    "results-more-faults": ("{number} more values are not what they should be.", "Mend those above first."),
+    "results-more-faults": ("Not what they should be: {number} more.", "Mend those above first."),
     "changes-too-few": (
         "There is nothing to compare: name at least two results.",
         "Write oddsmodel changes EARLIER/results.json LATER/results.json.",
@@ -157,7 +157,7 @@ SENTENCES: dict[str, Sentence] = {
     "plan-key-new": "{where} is new: {after}",
     "plan-key-gone": "{where} is no longer there; it was {before}",
     "plan-key-changed": "{where} was {before} and is now {after}",
-    "plan-more-changes": "… and {number} more changes of the plan.",
+    "plan-more-changes": "… and {number} more in the plan.",
     # Changes of the records
     "column-kind": "“{label}”, whose kind the plan leaves open, was taken as {before} and is now taken as {after}.",
     "column-levels-new": _levels_new,

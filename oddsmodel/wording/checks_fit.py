@@ -189,9 +189,9 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "hosmer-lemeshow-line": _hosmer_lemeshow_line,
     "hosmer-lemeshow-misfit": _hosmer_lemeshow_line,
     "hosmer-lemeshow-too-many-records": _hosmer_lemeshow_too_many,
-    "hosmer-lemeshow-few-groups": (
-        "Equal fitted probabilities leave only {groups} groups, and with fewer than {fewest} the Hosmer–Lemeshow test "
-        "would find hardly any misfit; it is left out."
+    "hosmer-lemeshow-few-groups": lambda facts: (
+        f"Equal fitted probabilities leave only {plural(facts['groups'], 'group')}, and with fewer than "
+        f"{facts['fewest']} the Hosmer–Lemeshow test would find hardly any misfit; it is left out."
     ),
     "hosmer-lemeshow-few-patterns": _hosmer_lemeshow_few_patterns,
     "hosmer-lemeshow-small-expected": (
@@ -205,11 +205,11 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "hosmer-lemeshow-explanation": (
         "Records are put in order of their fitted probability and cut into groups of about equal size; records with "
         "equal fitted probabilities are never split. Observed and expected counts are compared by a chi-square "
-        "statistic with two degrees of freedom fewer than there are groups (Hosmer & Lemeshow 1980). Up to 1,000 "
+        "statistic with two degrees of freedom fewer than there are groups (Hosmer & Lemeshow, 1980). Up to 1\u202f000 "
         "records there are 10 groups; from there on their number grows so that the test's power does not "
-        "(Paul, Pennell & Lemeshow 2013), and above 25,000 records it is left out. It is also left out with fewer "
-        "than 6 groups; with fewer than 5 distinct fitted probabilities a group, unless 80% of the records have one "
-        "of their own; and where the groups' expected counts give the statistic less than half or more than twice "
+        "(Paul, Pennell & Lemeshow, 2013), and above 25\u202f000 records it is left out. It is also left out with "
+        "fewer than 6 groups; with fewer than 5 distinct fitted probabilities a group, unless 80% of the records have "
+        "one of their own; and where the groups' expected counts give the statistic less than half or more than twice "
         "the variance of a chi-square. The table always shows ten groups. A high p does not show that the model is "
         "right, and no p says how an odds ratio would change."
     ),
@@ -224,8 +224,8 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "residual-tests-explanation": (
         "Records with equal values of all columns form a covariate pattern. The Pearson chi-square and the deviance "
         "compare each pattern's count of events with the fitted one; their degrees of freedom are patterns minus "
-        "coefficients (McCullagh & Nelder 1989). The p-values are shown only where expected records with and without "
-        "the event are at least 5 in four of five patterns and at least 1 in all (Cochran 1954): with a pattern for "
+        "coefficients (McCullagh & Nelder, 1989). The p-values are shown only where expected records with and without "
+        "the event are at least 5 in four of five patterns and at least 1 in all (Cochran, 1954): with a pattern for "
         "nearly every record the statistics say nothing about fit."
     ),
     "calibration-title": "Observed share against fitted probability",
@@ -239,7 +239,7 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "calibration-explanation": (
         "Groups are tenths of the fitted probability (equal probabilities stay together), each with its observed "
         "share and Wilson's interval. The curve is a local straight line over the nearest 75% of the records "
-        "(Cleveland 1979), drawn between the first and the last hundredth of the records. This describes the "
+        "(Cleveland, 1979), drawn between the first and the last hundredth of the records. This describes the "
         "records that the model was fitted to, whose overall level and slope agree by construction; it does not say "
         "how well the model would do elsewhere. It is called worth a look where at least three intervals leave out "
         "the fitted share and the mean gap is above a tenth of the share of the rarer outcome."
@@ -264,9 +264,9 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "brier-no-risk": _no_risk("The Brier score"),
     "brier-one-outcome": "All records have the same outcome, so there is nothing to scale the score by.",
     "brier-explanation": (
-        "The mean squared distance between outcome (1 or 0) and fitted probability (Brier 1950); 0 is best. Beside it "
+        "The mean squared distance between outcome (1 or 0) and fitted probability (Brier, 1950); 0 is best. Beside it "
         "stands the score of giving every record the overall share of events; the scaled score is the part of that "
-        "which the model takes away (Steyerberg et al. 2010). Measured on the records that the model was fitted to, "
+        "which the model takes away (Steyerberg et al., 2010). Measured on the records that the model was fitted to, "
         "it flatters."
     ),
     "influence-title": "Influence of single covariate patterns",
@@ -300,7 +300,7 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "influence-explanation": (
         "Records with equal values of all columns form a covariate pattern. Leverage, the falls in Pearson chi-square "
         "and deviance, and the shift of the coefficients without a pattern are taken to one step of the fit "
-        "(Pregibon 1981); patterns are put in order by how far the exposure's coefficients shift. The odds ratios "
+        "(Pregibon, 1981); patterns are put in order by how far the exposure's coefficients shift. The odds ratios "
         "without the 1, 5 and 10 patterns of most influence are exact: the model is fitted again. Leaving out the "
         "records of most influence always moves an estimate: ten of a thousand ordinary records by half a standard "
         "error to two, the more the fewer events the exposed have. It is a caution where one pattern (at most 5% of "

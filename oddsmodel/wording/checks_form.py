@@ -107,7 +107,7 @@ def _linearity_explanation(facts: Mapping[str, Any]) -> str:
     text = (
         "Each number that enters as a straight line, in itself or as its log, is given a restricted cubic spline "
         "(four knots at the 5th, 35th, 65th and 95th centile, three where the values are few or pile up) in place of "
-        "the line, and the two are compared by a likelihood-ratio test (Durrleman & Simon 1989; Harrell 2001). "
+        "the line, and the two are compared by a likelihood-ratio test (Durrleman & Simon, 1989; Harrell, 2015). "
         "With many records the smallest bend is found, so the size of the bend and what it does to the exposure's "
         "odds ratio say whether it matters, not the p-value. The size is the largest ratio between the odds by the "
         "curve and by the line over the middle 90% of the records, both set to one at the median."
@@ -180,7 +180,7 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "form-heading-standard-error-factor": "Standard error wider by a factor of",
     "form-heading-likelihood-ratio": "Likelihood ratio",
     "form-heading-degrees-of-freedom": "Degrees of freedom",
-    "form-heading-p": "p",
+    "form-heading-p": "p-value",
     "form-heading-departure": "Curve against line, largest ratio of the odds",
     "form-heading-exposure-with-line": "Exposure's odds ratio with the line",
     "form-heading-exposure-with-curve": "Exposure's odds ratio with the curve",
@@ -200,12 +200,12 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "collinearity-no-exposure": "No column of the model is an exposure.",
     "collinearity-no-number": "The part is all but a combination of the other columns: no factor can be trusted.",
     "collinearity-explanation": (
-        "The generalised variance inflation (Fox & Monette 1992) is the factor by which the joint variance of a part's "
-        "estimates exceeds what it would be if the part were unrelated to the other columns, as the model weighs the "
-        "records. Its root, shared out over the part's coefficients, is the factor by which the standard errors are "
-        "wider. Columns in one term, or in terms that share a column, are one part. Overlap among adjustment "
-        "columns does not harm the exposure's estimate; overlap with the exposure widens its interval, which is then "
-        "honestly wide: leaving a confounder out to narrow it would trade precision for bias."
+        "The generalised variance inflation (Fox & Monette, 1992) is the factor by which the joint variance of a "
+        "part's estimates exceeds what it would be if the part were unrelated to the other columns, as the model "
+        "weighs the records. Its root, shared out over the part's coefficients, is the factor by which the standard "
+        "errors are wider. Columns in one term, or in terms that share a column, are one part. Overlap among "
+        "adjustment columns does not harm the exposure's estimate; overlap with the exposure widens its interval, "
+        "which is then honestly wide: leaving a confounder out to narrow it would trade precision for bias."
     ),
     "linearity-title": "Do the numbers act as straight lines?",
     "linearity-table": "A curve in place of each straight line",
@@ -236,9 +236,9 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "events-per-parameter-no-columns": "The model has no coefficient beside the intercept.",
     "events-per-parameter-explanation": (
         "Records of the rarer outcome divided by the coefficients beside the intercept. Ten was put forward by Peduzzi "
-        "et al. 1996; Vittinghoff & McCulloch 2007 found five to nine often enough when one exposure is adjusted for "
-        "confounders, and van Smeden et al. 2016 found no one number that holds everywhere. It is a rough guide, not a "
-        "rule to pass or fail."
+        "et al. (1996); Vittinghoff & McCulloch (2007) found five to nine often enough when one exposure is adjusted "
+        "for confounders, and van Smeden et al. (2016) found no one number that holds everywhere. It is a rough guide, "
+        "not a rule to pass or fail."
     ),
     "sparse-cells-title": "Are any levels short of records?",
     "sparse-cells-table": "Records and events by level",
@@ -254,7 +254,7 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "sparse-cells-explanation": (
         "Each level of each category column is crossed with the outcome; a level with fewer than {few} events or fewer "
         "than {few} records without one is named. Estimates from such levels are drawn away from 1 and large-sample "
-        "intervals are rough (Greenland, Mansournia & Altman 2016)."
+        "intervals are rough (Greenland, Mansournia & Altman, 2016)."
     ),
     "overlap-title": "Can the exposure's groups be compared?",
     "overlap-table": "Records outside the overlap",
@@ -280,10 +280,10 @@ FORM_SENTENCES: dict[str, Sentence] = {
     ),
     "overlap-explanation": (
         "A logistic model foretells the exposure from the adjustment columns. Its probability is put on the footing "
-        "that both groups were equally large (the preference score of Walker et al. 2013), so that a rare exposure "
+        "that both groups were equally large (the preference score of Walker et al., 2013), so that a rare exposure "
         "does not look like a lack of overlap. Where it is below 0.05 or above 0.95 hardly anybody in the other group "
-        "is alike, and the odds ratio there rests on the form of the model, not on a comparison (Crump et al. 2009; "
-        "Petersen et al. 2012). The model is fitted again without those records. For a number, the share of its "
+        "is alike, and the odds ratio there rests on the form of the model, not on a comparison (Crump et al., 2009; "
+        "Petersen et al., 2012). The model is fitted again without those records. For a number, the share of its "
         "variance that the adjustment columns explain is given instead."
     ),
     "little-overlap": _overlap_line,
@@ -297,7 +297,7 @@ FORM_SENTENCES: dict[str, Sentence] = {
         "which an identifier of records, rather than of people, cannot show."
     ),
     "independence-unchecked": (
-        "The records are taken to be independent; no identifier was declared by which repeated people could be found."
+        "The records are taken to be independent; no identifier shows that each is of another person."
     ),
     "independence-grouped": "The records are grouped counts, each record taken to be a different, independent person.",
     "independence-matched": (

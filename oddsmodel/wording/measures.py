@@ -121,12 +121,12 @@ SENTENCES: dict[str, Sentence] = {
     "crude-without-standard-error": "No percentage change: the crude estimate has no standard error.",
     "noncollapsibility": (
         "Odds ratios change on adjustment even where nothing confounds, mostly away from 1, because they cannot be "
-        "averaged over the groups (Greenland, Robins & Pearl 1999). The change is not a measure of confounding."
+        "averaged over the groups (Greenland, Robins & Pearl, 1999). The change is not a measure of confounding."
     ),
     "adjustment-in-a-trial": (
         "In a trial the groups differ by chance imbalance only. Adjustment corrects for it, and also moves the odds "
         "ratio further from 1 where nothing is out of balance, because odds ratios cannot be averaged over the groups "
-        "(Greenland, Robins & Pearl 1999)."
+        "(Greenland, Robins & Pearl, 1999)."
     ),
     "odds-ratio-overstates-risk-ratio": _overstates,
     # Models side by side
@@ -141,7 +141,9 @@ SENTENCES: dict[str, Sentence] = {
     ),
     "compare-models-withheld": "{model} gives no odds ratio for {label}: {reason}",
     "compare-models-not-estimated": "{model} could not be estimated ({status}).",
-    "compare-models-not-in-model": "{model} has no odds ratio of its own for {label}.",
+    "compare-models-not-in-model": lambda facts: (
+        f"{facts['model']} has no odds ratio of its own for {listed(facts['labels'])}."
+    ),
     # Who they were
     "groups-case-status": "Shown by case status.",
     "groups-levels": "Shown by {label}.",

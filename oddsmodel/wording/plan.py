@@ -90,11 +90,11 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     # Keys and values.
     "section-missing": ("The plan has no {heading} section.", "Add {heading} and under it {example}."),
     "key-missing": ("{key} is missing.", "Add a line such as {example}."),
-    "unknown-section": ('The plan has no section or key called “{key}”.', _nearest_or_all),
-    "unknown-key": ('{heading} has no key called “{key}”.', _nearest_or_all),
-    "key-of-another-section": ('{heading} has no key called “{key}”.', "It belongs under {other}: move it there."),
+    "unknown-section": ("The plan has no section or key called “{key}”.", _nearest_or_all),
+    "unknown-key": ("{heading} has no key called “{key}”.", _nearest_or_all),
+    "key-of-another-section": ("{heading} has no key called “{key}”.", "It belongs under {other}: move it there."),
     "dotted-column-name": (
-        '“{key}” stands below [columns.{column}] as a section of its own, which no column has.',
+        "“{key}” stands below [columns.{column}] as a section of its own, which no column has.",
         "If the column's name has a full stop in it, put the name in quotes: {example}.",
     ),
     "not-a-section": (
@@ -202,19 +202,19 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Take the line out and name the value that is the event as event in [outcome].",
     ),
     "event-not-recorded": (
-        '{event} is both the event and a text that means “not recorded”.',
+        "{event} is both the event and a text that means “not recorded”.",
         "Name another event, or take it out of not_recorded.",
     ),
     "per-beside-levels": ("A column with levels is no number, so it has no step.", "Take out either per or levels."),
     "outcome-kind": (
-        'A column of the kind “{kind}” cannot be the outcome, which has two values.',
+        "A column of the kind “{kind}” cannot be the outcome, which has two values.",
         'Take the line out, or write kind = "yes-no".',
     ),
     "outcome-levels": ("The outcome has {number} levels here, but it must have exactly two.", "Name the two values."),
     "event-not-a-level": ("{event} is not among the levels that the outcome's own section lists.", _nearest_or_all),
     "count-key": ("{column} counts records, for which {key} has no meaning.", "Take the line out."),
     "count-kind": (
-        'A column of the kind “{kind}” cannot count records.',
+        "A column of the kind “{kind}” cannot count records.",
         'Take the line out, or write kind = "number".',
     ),
     "levels-too-few": (
@@ -231,16 +231,16 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "level-repeated": ("{level} is listed twice.", "List each level once."),
     "level-not-recorded": (
-        '{level} is both a level and a text that means “not recorded”.',
+        "{level} is both a level and a text that means “not recorded”.",
         "Keep it in one of the two lists; a column may have a not_recorded list of its own.",
     ),
     "reference-not-a-level": ("{reference} is not among the levels.", _nearest_or_all),
     "key-for-levels": (
-        '{key} has a meaning only for a column with levels, and this one is of the kind “{kind}”.',
+        "{key} has a meaning only for a column with levels, and this one is of the kind “{kind}”.",
         'Take the line out, or write kind = "category".',
     ),
     "key-for-numbers": (
-        '{key} has a meaning only for numbers, and this column is of the kind “{kind}”.',
+        "{key} has a meaning only for numbers, and this column is of the kind “{kind}”.",
         'Take the line out, or write kind = "number".',
     ),
     "draft-outcome-name": (
@@ -294,7 +294,7 @@ DRAFT: dict[str, Sentence] = {
     "draft-levels-unlisted": "{number} different values, too few or too many to compare as levels",
     "draft-timing": "before or after the exposure?",
     "draft-name-unusable": "A column is left out here: its name is too long or cannot be written.",
-    "draft-columns-left": "{number} more columns are not described here; they can be used all the same.",
+    "draft-columns-left": "Not described here, but as usable as the others: {number} more of the columns.",
     "draft-candidates": "With every other candidate (take out what does not belong):",
     "draft-exposures": "what the question is about",
     "draft-audience": 'or "internal", which shows small counts',

@@ -55,11 +55,11 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "List one score for each level, in the order of the levels.",
     ),
     "scores-kind": (
-        'Scores belong to the levels of an ordered column, and this one is of the kind “{kind}”.',
+        "Scores belong to the levels of an ordered column, and this one is of the kind “{kind}”.",
         'Take the line out, or write kind = "ordered" and list the levels from the lowest.',
     ),
     "average-kind": (
-        'The levels of a category can be compared with their average, and this column is of the kind “{kind}”.',
+        "The levels of a category can be compared with their average, and this column is of the kind “{kind}”.",
         'Take the line out, or write kind = "category".',
     ),
     "average-not-an-exposure": (
@@ -83,7 +83,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "trend-not-in-formula": ("The trend column {column} is not a column of the formula.", _choose),
     "trend-not-ordered": (
-        'A trend needs an ordered column, and {column} is of the kind “{kind}”.',
+        "A trend needs an ordered column, and {column} is of the kind “{kind}”.",
         'Write kind = "ordered" in its section and list its levels from the lowest.',
     ),
 }

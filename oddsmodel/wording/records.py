@@ -55,7 +55,7 @@ def _suspected(facts: Facts) -> str:
     many = len(parts) > 1
     return (
         f"{quoted(facts['column'])} has {listed(parts)}, which {'look' if many else 'looks'} like "
-        f'{"codes" if many else "a code"} for “not recorded” and {"are" if many else "is"} analysed as '
+        f"{'codes' if many else 'a code'} for “not recorded” and {'are' if many else 'is'} analysed as "
         f"{'values' if many else 'a value'}. If {'they mean' if many else 'it means'} that, add "
         f"{'them' if many else 'it'} to the column's not_recorded in the plan."
     )
@@ -96,7 +96,7 @@ def _identifier_repeats(facts: Facts) -> str:
         f"{quoted(facts['column'])} is an identifier, but {plural(facts['records'], 'record')} have only "
         f"{count(facts['different'])} different values of it: some persons or units stand in several records. "
         f"Such records are not independent, and standard errors that take them so are too small. "
-        f"Keep a single record of each."
+        f"Keep a single record of each (repeats, in [records]), or allow for their likeness (grouped_by)."
     )
 
 
@@ -134,7 +134,10 @@ FINDINGS: dict[str, Sentence] = {
     "levels-differ-by-case": _by_case,
     "references-taken": _references,
     "identifier-repeats": _identifier_repeats,
-    "rows-of-no-record": lambda facts: f"{plural(facts['zeros'], 'row')} with a count of 0 stand for no record.",
+    "rows-of-no-record": lambda facts: (
+        f"{plural(facts['zeros'], 'row')} with a count of 0 {'stands' if facts['zeros'] == 1 else 'stand'} for no "
+        "record."
+    ),
     "left-out-not-kept": _not_kept,
     "left-out-keep-undecided": _left_out(
         "Cannot be decided whether they are kept: not recorded in {columns}", "Cannot be decided whether they are kept"
@@ -146,9 +149,9 @@ FINDINGS: dict[str, Sentence] = {
     ),
     "left-out-level-not-in-plan": _left_out("Level not in the plan: {columns}", "Level not in the plan"),
     "survey-suspected": lambda facts: (
-        f'Does {_quoted_list(facts["values"], "or")} mean “not recorded”? Then keep it in not_recorded.'
+        f"Does {_quoted_list(facts['values'], 'or')} mean “not recorded”? Then keep it in not_recorded."
     ),
-    "survey-stray-texts": 'Some cells hold texts among the numbers: which of them mean “not recorded”?',
+    "survey-stray-texts": "Some cells hold texts among the numbers: which of them mean “not recorded”?",
     "survey-few-whole-numbers": "Few whole numbers: is it a number, or a set of categories?",
     "survey-running-number": "A different whole number in each record: is it an identifier?",
     "survey-identifier": "A different text in each record: is it an identifier?",

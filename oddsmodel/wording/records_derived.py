@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from oddsmodel.wording.numbers import count, listed, plural
+from oddsmodel.wording.numbers import listed, plural
 from oddsmodel.wording.plain import plain, quoted
 from oddsmodel.wording.say import Sentence
 
@@ -26,7 +26,7 @@ ISO = "Write the dates as year-month-day, such as 2024-03-14"
 DATE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     "date-not-readable": (
         lambda facts: f"This is a column of dates, but {_with_rows(facts)}.",
-        f'{ISO}; where a text means “not recorded”, add it to the column\'s not_recorded in the plan.',
+        f"{ISO}; where a text means “not recorded”, add it to the column's not_recorded in the plan.",
     ),
     "date-two-digit-year": (
         lambda facts: f"A date has a year of two digits, so its century is not told: {_with_rows(facts)}.",
@@ -34,11 +34,11 @@ DATE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "date-not-in-calendar": (
         lambda facts: f"The calendar does not have this date: {_with_rows(facts)}.",
-        'Correct it; where it means “not recorded”, add it to the column\'s not_recorded in the plan.',
+        "Correct it; where it means “not recorded”, add it to the column's not_recorded in the plan.",
     ),
     "date-far-off": (
         lambda facts: f"A date is before {facts['least']} or after {facts['most']}: {_with_rows(facts)}.",
-        'Correct it; where it means “not recorded”, add it to the column\'s not_recorded in the plan.',
+        "Correct it; where it means “not recorded”, add it to the column's not_recorded in the plan.",
     ),
     "date-order-ambiguous": (
         lambda facts: (
@@ -64,7 +64,7 @@ def _met(facts: Facts) -> str:
     ]
     more = int(facts["total"]) - len(parts)
     if more > 0:
-        parts.append(f"{count(more)} other values")
+        parts.append(plural(more, "other value"))
     return listed(parts)
 
 
@@ -90,7 +90,7 @@ DERIVED_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "derived-needs-yes-no": (
         _not_yes_no,
-        'Put what means “not recorded” into the column\'s not_recorded; or make yes and no of its levels by groups_of '
+        "Put what means “not recorded” into the column's not_recorded; or make yes and no of its levels by groups_of "
         "in a derived column, and give the points to that.",
     ),
     "derived-level-unmapped": (

@@ -37,7 +37,7 @@ def _with_counts(facts: Facts) -> str:
     ]
     more = int(facts["total"]) - len(parts)
     if more > 0:
-        parts.append(f"{count(more)} other values")
+        parts.append(plural(more, "other value"))
     return listed(parts)
 
 
@@ -61,7 +61,7 @@ def _number_with_text_remedy(facts: Facts) -> str:
     if facts["comma"]:
         return "Write the numbers with a decimal point."
     return (
-        'Correct the file; or, where a text means “not recorded”, add it to the column\'s not_recorded in the plan; '
+        "Correct the file; or, where a text means “not recorded”, add it to the column's not_recorded in the plan; "
         'or say kind = "category" there.'
     )
 
@@ -99,7 +99,7 @@ def _outcome_values_remedy(facts: Facts) -> str:
     if int(facts["total"]) < 2:
         return "Name a column with an event and its absence under [outcome]."
     return (
-        'Put values that mean “not recorded” into the column\'s not_recorded, or make a column with two values '
+        "Put values that mean “not recorded” into the column's not_recorded, or make a column with two values "
         "and name it under [outcome]."
     )
 
@@ -136,7 +136,10 @@ WHOLE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "spreadsheet-too-large": ("The spreadsheet unpacks to more than {gigabytes} GB.", "Save the sheet as CSV."),
     "formula-without-value": (
-        lambda facts: f"{plural(int(facts['cells']), 'cell')} with a formula were saved without the value.",
+        lambda facts: (
+            f"{plural(int(facts['cells']), 'cell')} with a formula {'was' if int(facts['cells']) == 1 else 'were'} "
+            "saved without the value."
+        ),
         "Open the file in the spreadsheet program, save it, and try again; or replace formulas by their values.",
     ),
     "encoding-not-read": ("The file is {encoding} text, which is not read.", "Save it as UTF-8."),
@@ -220,7 +223,7 @@ COLUMN_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Correct the file, or name the value in the column's not_recorded.",
     ),
     "number-too-large": (
-        _with_rows("Whole numbers beyond 9 007 199 254 740 992 cannot be told apart as numbers:", "."),
+        _with_rows(f"Whole numbers beyond {count(2**53)} cannot be told apart as numbers:", "."),
         'If they name persons or units, say kind = "identifier" in the plan.',
     ),
     "level-not-in-plan": (_not_in_plan, _not_in_plan_remedy),

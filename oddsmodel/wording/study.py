@@ -21,7 +21,8 @@ def _estimates(facts: Mapping[str, Any]) -> str:
         for label, series, estimate, lower, upper in facts["marks"]
         if estimate is not None
     ]
-    return f"Odds ratios with {facts['percent']:g}% intervals. {'; '.join(told)}."
+    words = f"Odds ratios with {facts['percent']:g}% intervals."
+    return f"{words} {'; '.join(told)}." if told else f"{words} None can be shown."
 
 
 SENTENCES: dict[str, Sentence] = {

@@ -78,4 +78,4 @@ def test_an_outcome_whose_event_is_open(command: Command, records: Path) -> None
     assert "Which value of “sex” is the event?" in ended.out
     assert "\nevent = " not in ended.out
     ended = command("draft", records, "--outcome", "parity")
-    assert '"parity" must have exactly two values' in ended.out
+    assert "“parity” must have exactly two values" in ended.out

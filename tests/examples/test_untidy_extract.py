@@ -45,7 +45,7 @@ def test_the_odds_ratios_are_near_the_truth_that_the_script_states(tmp_path: Pat
 def test_the_second_quarter_has_a_ward_in_no_group(tmp_path: Path) -> None:
     with pytest.raises(InputFault) as caught:
         run_plan(EXAMPLE / "untidy.toml", into=tmp_path / "report", records=EXAMPLE / "second-quarter.csv")
-    assert 'No group has "Birth centre"' in str(caught.value)
+    assert "No group has “Birth centre”" in str(caught.value)
     plan = (EXAMPLE / "untidy.toml").read_text(encoding="utf-8").replace('["L1", "L2"]', '["L1", "L2", "Birth centre"]')
     (tmp_path / "plan.toml").write_text(plan, encoding="utf-8")
     outcome = run_plan(tmp_path / "plan.toml", records=EXAMPLE / "second-quarter.csv")

@@ -157,7 +157,7 @@ def test_a_missing_key_is_told_and_very_many_faults_are_counted(tmp_path: Path) 
     document = {key: value for key, value in SMALL.items() if key == "schema_version"}
     told = fault_of(written(tmp_path, document))
     assert "study: This key is not there." in told
-    assert "2 more values" in told or "1 more values" in told
+    assert "2 more" in told or "1 more" in told
 
 
 def test_what_is_no_ordinary_file_or_too_large_is_refused(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:

@@ -66,3 +66,10 @@ def test_what_a_model_lacks_is_said() -> None:
     assert "spline has no odds ratio of its own" in table.note
     assert "broken could not be estimated (aliased)" in table.note
     assert "different records" not in table.note
+
+
+def test_all_that_a_model_lacks_is_said_in_one_sentence() -> None:
+    several = model("main", 100, coefficient("former", 1.3), coefficient("current", 2.0))
+    table = compare_models([several, model("spline", 100)])
+    assert table is not None
+    assert table.note.count("spline has no odds ratio of its own") == 1

@@ -77,7 +77,7 @@ def test_a_later_base_and_a_circle_are_told_apart() -> None:
     assert fault.what == "“main” stands further down in the plan."
     circle = MAIN + '[[models]]\nname = "a"\nbased_on = "b"\n[[models]]\nname = "b"\nbased_on = "a"\n'
     (fault,) = faults_of(circle)
-    assert '"a" → "b" → "a"' in fault.what
+    assert "“a” → “b” → “a”" in fault.what
 
 
 def test_the_first_model_has_no_other_role() -> None:

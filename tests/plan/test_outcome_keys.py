@@ -80,7 +80,7 @@ def test_an_outcome_needs_a_way() -> None:
         (DATES.replace("last_seen", "admitted"), "[outcome]", "two of start, event_date and followed_to"),
         (DATES.replace("365", "0"), "[outcome] within_days", "outside the range from 1"),
         (DATES.replace("365", "1.5"), "[outcome] within_days", "whole number"),
-        (DATES.replace("2025-03-31", "“31.03.2025”"), "[outcome] extracted", "is not a date"),
+        (DATES.replace("2025-03-31", '"31.03.2025"'), "[outcome] extracted", "is not a date"),
         (DATES.replace("2025-03-31", "20250331"), "[outcome] extracted", "is not a date"),
         (DATES.replace("2025-03-31", "2025-03-31T10:00:00"), "[outcome] extracted", "is not a date"),
     ],

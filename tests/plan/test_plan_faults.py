@@ -107,7 +107,7 @@ def test_a_column_name_with_a_full_stop_needs_quotes() -> None:
 
 @pytest.mark.parametrize(("section", "key"), [(section, key) for section, keys in LATER_KEYS.items() for key in keys])
 def test_later_keys_are_not_unknown(section: str, key: str) -> None:
-    line = f"{key} = “x”"
+    line = f'{key} = "x"'
     fault = only(
         plan(f"[columns.age]\n{line}") if section == "columns" else plan(**{section: f"{PARTS[section]}\n{line}"})
     )
@@ -199,7 +199,7 @@ def test_the_nearest_of_a_few_values_is_offered() -> None:
     fault = only(plan(study='title = "t"\ndesign = "cohrt"'))
     assert "Did you mean “cohort”?" in fault.remedy
     fault = only(plan("[columns.age]\nkind = 'Numbers'"))
-    assert 'Did you mean "number"?' in fault.remedy
+    assert "Did you mean “number”?" in fault.remedy
 
 
 def test_remedies_show_the_line_as_it_should_be() -> None:
@@ -336,9 +336,7 @@ JUNK: st.SearchStrategy[Any] = st.recursive(
     lambda inner: st.lists(inner, max_size=3) | st.dictionaries(st.text(max_size=8), inner, max_size=3),
     max_leaves=6,
 )
-KNOWN = st.sampled_from(
-    sorted({key for kind in SECTIONS.values() for key in keys_of(kind)} | {"start"})
-)
+KNOWN = st.sampled_from(sorted({key for kind in SECTIONS.values() for key in keys_of(kind)} | {"start"}))
 SECTION = st.dictionaries(KNOWN | st.text(max_size=6), JUNK, max_size=6) | JUNK
 
 

@@ -98,7 +98,7 @@ def test_a_draft_of_very_many_columns_stays_a_plan(tmp_path: Path) -> None:
     columns = [DraftColumn(f"column {n}", "category", levels) for n in range(300)]
     text = draft_plan(DraftRecords("r.csv", 40, DIED, columns))
     assert len(text.encode()) < 1_000_000
-    assert "more columns are not described here" in text
+    assert "Not described here" in text
     read_back(text, tmp_path)
 
 

@@ -282,11 +282,11 @@ def test_renamed_columns_are_told_and_messages_name_the_file(tmp_path: Path) -> 
     values["columns"]["parity"]["not_recorded"] = [""]  # type: ignore[index]
     with pytest.raises(InputFault) as caught:
         load_records(path, plan_from_values(values).plan, Silent())
-    assert 'records.csv, column "Parity (n)"' in str(caught.value)
+    assert "records.csv, column “Parity (n)”" in str(caught.value)
     values["columns"]["parity"]["from"] = "parity (n)"  # type: ignore[index]
     with pytest.raises(InputFault) as caught:
         load_records(path, plan_from_values(values).plan, Silent())
-    assert '[columns.parity] from: The records have no column "parity (n)". Did you mean "Parity (n)"?' in str(
+    assert "[columns.parity] from: The records have no column “parity (n)”. Did you mean “Parity (n)”?" in str(
         caught.value
     )
 

@@ -151,7 +151,7 @@ def test_suspected_codes_are_asked_about_and_stay_values(tmp_path: Path) -> None
     assert "“9” (2 records)" in message
     assert cells(records, "x") == [1, 2, 3, 9, 2, 9]
     records = load(tmp_path, {"died": DIED, "x": "a,b,unknown,a,b,a"}, plan())
-    assert '"unknown" (1 record)' in messages(records)["suspected-codes"]
+    assert "“unknown” (1 record)" in messages(records)["suspected-codes"]
     records = load(tmp_path, {"died": DIED, "x": "1,2,3,9,2,9"}, plan(columns={"x": {"kind": "category"}}))
     assert "“9” (2 records)" in messages(records)["suspected-codes"]
 

@@ -61,21 +61,21 @@ def test_an_event_left_open_is_asked_for() -> None:
 
 def test_an_event_that_is_no_value() -> None:
     assert "Did you mean “dead”?" in fault(["alive", "dead"], "daed")
-    assert 'none of the outcome\'s values, "1" and "2"' in fault([1.0, 2.0], "0")
+    assert "none of the outcome's values, “1” and “2”" in fault([1.0, 2.0], "0")
 
 
 def test_three_values_are_listed_with_their_counts() -> None:
     message = fault(["a", "b", "b", "c", "c", "c"])
     assert "has 3: “c” (3 records), “b” (2 records) and “a” (1 record)" in message
     message = fault([0.0, 1.0, 9.0], counts=[5, 4, 30])
-    assert '"9" (30 records), "0" (5 records) and "1" (4 records)' in message
+    assert "“9” (30 records), “0” (5 records) and “1” (4 records)" in message
 
 
 def test_of_many_values_ten_are_listed() -> None:
     message = fault([float(number) for number in range(25)])
     assert "has 25" in message
     assert "and 15 other values" in message
-    assert '"9"' in message
+    assert "“9”" in message
 
 
 def test_one_value_or_none() -> None:

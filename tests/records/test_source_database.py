@@ -119,7 +119,7 @@ def test_what_is_not_there_is_told_with_the_nearest(tmp_path: Path) -> None:
     assert "no such column: nome" in fault_of(lambda: read(tmp_path, query="select nome from stays"))
     assert "no row of records" in fault_of(lambda: read(tmp_path, query="select * from stays where number > 9"))
     twice = fault_of(lambda: read(tmp_path, query="select a.name, b.name from stays a, stays b"))
-    assert 'The name "name" is given to columns 1 and 2' in twice
+    assert "The name “name” is given to columns 1 and 2" in twice
 
 
 @pytest.mark.parametrize(

@@ -229,6 +229,18 @@ def test_an_estimate_beyond_the_interval_before_is_pointed_at(runs: Runs, tmp_pa
     assert any("lies outside the interval of “1 (spring)”" in note for note in compared.models[0].notes)
 
 
+def test_a_column_compared_with_the_network_average_is_a_series_against_it(runs: Runs, tmp_path: Path) -> None:
+    models = loaded(runs.spring)["models"]
+    shift = next(one for one in models[0]["coefficients"] if one["term"] == "shift")
+    against = {"reference": "the network average", "label": "shift against the average", "odds_ratio": 1.25}
+    models[0]["averages"] = [shift | against]
+    main = changes([rewritten(runs.spring, tmp_path, models=models), runs.autumn]).models[0]
+    assert main.figure is not None
+    estimates = {mark.label: mark.estimate for mark in main.figure.marks if mark.series.startswith("1")}
+    assert estimates["shift against the average"] == 1.25
+    assert estimates["shift: night against day"] is None
+
+
 def test_another_adjustment_is_a_warning_not_a_trend(runs: Runs, tmp_path: Path) -> None:
     models = loaded(runs.autumn)["models"]
     models[0] |= {"adjustment": ["ward", "sex"], "formula": "fell ~ shift + age + ward + sex"}

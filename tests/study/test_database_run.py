@@ -109,7 +109,7 @@ def test_other_records_may_be_given_in_a_file(tmp_path: Path) -> None:
         ('source = "postgresql://host/base"', "neither a query nor a table"),
         ('source = "sqlite:///a.db"\ntable = "a"\nquery = "select 1"', "both a query and a table"),
         ('source = "stays.csv"\ntable = "a"', "source is a file"),
-        ('source = "sqlite:///a.db"\nquery = "delete from a"', 'begins with "delete"'),
+        ('source = "sqlite:///a.db"\nquery = "delete from a"', "begins with “delete”"),
         ('source = "sqlite:///a.db"\nquery = "select 1; drop table a"', "semicolon"),
     ],
 )

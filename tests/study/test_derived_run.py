@@ -167,8 +167,8 @@ def test_cross_counts_cut_points_and_notes(tmp_path: Path) -> None:
     cuts = next(one for one in results["derived"] if one["name"] == "age_third")["cut_points"]
     np.testing.assert_allclose(cuts, np.quantile(ages[ages >= 18], [1 / 3, 2 / 3]), atol=0.05)
     messages = {one["code"]: one["message"] for one in results["findings"]}
-    assert '"BMI at entry" in the file is "bmi"' in messages["columns-renamed"]
-    assert '"age" was cut at' in messages["quantile-cuts"]
+    assert "“BMI at entry” in the file is “bmi”" in messages["columns-renamed"]
+    assert "“age” was cut at" in messages["quantile-cuts"]
     told = [one["message"] for one in results["findings"] if one["code"] == "implausible-values"]
     assert len(told) == 2
     assert results["plan"]["columns"]["bmi"]["from"] == "BMI at entry"
@@ -201,7 +201,7 @@ def test_a_ward_that_appears_in_the_second_quarter_stops_the_run(tmp_path: Path)
     with pytest.raises(InputFault) as caught:
         run(tmp_path, second=True)
     told = str(caught.value)
-    assert told.startswith('the plan, [derived.side] groups: No group has "S4" (')
+    assert told.startswith("the plan, [derived.side] groups: No group has “S4” (")
     assert '"exclude and count"' in told
     assert not (tmp_path / "plan-report").exists()
 

@@ -224,7 +224,7 @@ def test_every_level_against_the_network_average(tmp_path: Path) -> None:
     ("lines", "where", "words", "remedy"),
     [
         ('leave_out = ["sight"]', "leave_out, item 1", "sight", "site"),
-        ('leave_out = ["rcs(age, 4)"]', "leave_out, item 1", "does not hold", 'Did you mean "age"?'),
+        ('leave_out = ["rcs(age, 4)"]', "leave_out, item 1", "does not hold", "Did you mean “age”?"),
         ('add = ["age"]', "add, item 1", "already holds", "Take it out"),
         ('add = ["ward - 1"]', "add, item 1", "intercept", "Leave 0"),
         ('add = ["1"]', "add, item 1", "no term", "Name a term"),
@@ -238,7 +238,7 @@ def test_every_level_against_the_network_average(tmp_path: Path) -> None:
 def test_what_cannot_be_built_upon_a_model(tmp_path: Path, lines: str, where: str, words: str, remedy: str) -> None:
     (fault,) = faults_of(tmp_path, f'[[models]]\nname = "second"\nbased_on = "main"\n{lines}\n')
     assert where in fault.where
-    assert '"second"' in fault.where
+    assert "“second”" in fault.where
     assert words in fault.what
     assert remedy in fault.remedy
 
@@ -249,7 +249,7 @@ def test_models_upon_a_model_at_fault_are_not_told_as_well(tmp_path: Path) -> No
         '[[models]]\nname = "third"\nbased_on = "second"\nadd = ["ward"]\n'
     )
     (fault,) = faults_of(tmp_path, more)
-    assert '"second"' in fault.where
+    assert "“second”" in fault.where
 
 
 def test_a_category_only_has_a_network_average(tmp_path: Path) -> None:
