@@ -43,8 +43,8 @@ def disclosed_finding(finding: Finding, withheld: Withheld) -> Finding:
 
     A fact is hidden where its name says that it counts records and its number is withheld, where it is an estimate
     that is, where it is a share and a count of the same finding is hidden, and where it says which record it was.
-    Sentences that compute from a hidden number cannot be made again: the old one is used without its numbers, but for
-    those that are facts which stay.
+    A sentence that computes from a hidden number cannot be made again: the one of its code with "-withheld" is said,
+    or, where there is none, the old one without its numbers, but for those that are facts which stay.
     """
     facts = {key: _stand_in(key, value, withheld) for key, value in finding.facts.items()}
     hides = any(_is_hidden(value) for value in facts.values())
@@ -59,9 +59,16 @@ def disclosed_finding(finding: Finding, withheld: Withheld) -> Finding:
         try:
             message = say(finding.code, **facts)
         except (ArithmeticError, AttributeError, LookupError, TypeError, ValueError):
-            message = _without_numbers(message, finding.facts, facts, withheld)
+            message = _said_otherwise(finding, facts, withheld)
     plain = {key: withheld.text(value) if isinstance(value, str) else _plain(value) for key, value in facts.items()}
     return replace(finding, message=withheld.text(message), facts=plain)
+
+
+def _said_otherwise(finding: Finding, facts: Mapping[str, Any], withheld: Withheld) -> str:
+    try:
+        return say(f"{finding.code}-withheld")
+    except KeyError:
+        return _without_numbers(finding.message, finding.facts, facts, withheld)
 
 
 def _stand_in(key: str, value: Any, withheld: Withheld) -> Any:

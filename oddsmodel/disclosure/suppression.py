@@ -9,6 +9,9 @@ from dataclasses import dataclass, field
 from oddsmodel.disclosure.feasible import Bounds, Equation, components, feasible_bounds
 from oddsmodel.disclosure.system import Counts, Relation
 
+MOST_WORK = 200_000
+"""Equations looked at, over all questions, before the search for the fewest counts to hide gives way: some seconds."""
+
 HINTED = 3
 """With a threshold under 3 a reader who knows that a count is small knows it is 1: nothing can hide that."""
 
@@ -50,6 +53,7 @@ class Suppression:
     unprotected: set[int] = field(default_factory=set)
     """Counts that nothing in the output could protect further: all that stands beside them is hidden."""
     _bounds: dict[tuple[int, frozenset[int]], dict[int, Bounds]] = field(default_factory=dict)
+    _work: int = 0
     _readers: tuple[_Reader, ...] = ()
     _touching: dict[int, list[Relation]] = field(default_factory=dict)
 
@@ -63,6 +67,9 @@ class Suppression:
         self._hide(number for number in range(len(values)) if shown[number] and self._small(number))
         while failing := sorted(self._failing(), key=self._by_size):
             helper = self._helper(failing)
+            if self._work > MOST_WORK:
+                self._hide_the_family(failing)
+                return frozenset(self.hidden)
             if helper is None:
                 self.unprotected |= set(failing)
             else:
@@ -72,6 +79,21 @@ class Suppression:
 
     def _by_size(self, number: int) -> tuple[int, int]:
         return self.counts.values[number], number
+
+    def _hide_the_family(self, failing: Iterable[int]) -> None:
+        """Hide all that has to do with the failing counts, the totals only where the rest is not enough.
+
+        The way out where the counts hang together too closely to find the fewest in time: more is hidden than need be.
+        """
+        family, waiting = set(failing), list(failing)
+        while waiting:
+            new = self._touching_counts(waiting.pop()) - family
+            family |= new
+            waiting += new
+        totals = max(self.counts.ranks[number] for number in family)
+        self._hide(n for n in sorted(family) if self.counts.ranks[n] < totals and self._can_hide(n))
+        if self._failing():
+            self._hide(n for n in sorted(family) if self._can_hide(n))
 
     def _show_again(self) -> None:
         """Show what turned out not to be needed, the most useful first."""
@@ -156,6 +178,7 @@ class Suppression:
         wanted = [n for n in members if self._protected(n)] if only is None else [only]
         missing = [number for number in wanted if number not in found]
         if missing:
+            self._work += len(equations)
             reader = self._readers[which]
             found |= feasible_bounds(
                 equations,
@@ -247,6 +270,8 @@ class Suppression:
         """Of the choices for each failing count, the first that protects it, or else the one that helps most."""
         for failing, offered in choices.items():
             for choice in offered:
+                if self._work > MOST_WORK:
+                    return None
                 with self._with_hidden(choice):
                     if all(passed for passed, _ in self._judged(failing)):
                         return choice
@@ -254,6 +279,8 @@ class Suppression:
         for failing, offered in choices.items():
             passed, width = self._standing(failing)
             for choice in offered:
+                if self._work > MOST_WORK:
+                    return None
                 with self._with_hidden(choice):
                     standing = self._standing(failing)
                 gain = (standing[0] - passed) * 10**6 + min(standing[1] - width, 10**5)

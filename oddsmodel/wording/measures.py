@@ -129,6 +129,10 @@ SENTENCES: dict[str, Sentence] = {
         "(Greenland, Robins & Pearl, 1999)."
     ),
     "odds-ratio-overstates-risk-ratio": _overstates,
+    "odds-ratio-overstates-risk-ratio-withheld": (
+        "The event is common among these records. An odds ratio then lies noticeably further from 1 than the risk "
+        "ratio: read as a risk ratio it would overstate it."
+    ),
     # Models side by side
     "compare-models-note": "{levels} intervals: profile-likelihood limits, or Wald limits where there are none.",
     "compare-models-different-records": (

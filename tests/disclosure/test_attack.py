@@ -15,7 +15,7 @@ import pytest
 from numpy.typing import NDArray
 from scipy.optimize import Bounds, LinearConstraint, milp
 
-from oddsmodel.disclosure import disclose
+from oddsmodel.disclosure import disclose, suppression
 
 sys.path.insert(0, str(Path(__file__).parent))
 from sample_study import (
@@ -133,6 +133,14 @@ def test_no_hidden_count_can_be_worked_out(seed: int, other_records: bool) -> No
     for name, mask in small.items():
         lowest, highest = hinted.bounds(mask)
         assert lowest < highest, f"{name} is worked out with hints: {lowest}"
+
+
+@pytest.mark.parametrize("seed", [0, 17])
+def test_nothing_more_can_be_worked_out_where_the_search_is_cut_short(
+    seed: int, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(suppression, "MOST_WORK", 0)
+    test_no_hidden_count_can_be_worked_out(seed, True)
 
 
 def test_the_attacker_succeeds_without_protection() -> None:

@@ -14,7 +14,7 @@ from hypothesis import strategies as st
 from oddsmodel.disclosure.findings import Withheld, disclosed_finding
 from oddsmodel.disclosure.words import Unsaid, without_counts
 from oddsmodel.findings import Finding
-from oddsmodel.wording import numbers, say
+from oddsmodel.wording import finding, numbers, say
 
 
 @pytest.mark.parametrize(
@@ -145,3 +145,10 @@ def test_counts_in_lists_and_hidden_estimates() -> None:
     }
     assert "1.75" not in answer.message
     assert say("fewer-than", threshold=7) == "fewer than 7"
+
+
+def test_a_share_that_is_withheld_leaves_the_fixed_numbers_of_a_sentence_alone() -> None:
+    told = finding("caution", "odds-ratio-overstates-risk-ratio", share=0.163, quantity="risk")
+    message = disclosed_finding(told, Withheld(5, estimates=frozenset({0.163}))).message
+    assert "further from 1 than the risk ratio" in message
+    assert "16" not in message
