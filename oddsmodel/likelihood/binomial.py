@@ -14,6 +14,9 @@ from oddsmodel.passes import Leaf, MemoryPasses, Passes
 PRODUCT_BYTES = 1 << 20
 """Pairwise products of the columns are formed for so many bytes of rows at a time, to stay in cache."""
 
+BATCH, FEW = 4, 2
+"""So many leaves are worked on together where coefficient vectors are few; with more, one leaf fills the cache."""
+
 MANY = 4
 """From so many coefficient vectors on, pairwise products of the columns are formed once and shared."""
 
@@ -77,7 +80,7 @@ class BinomialLikelihood:
         if member is not None and np.any(member):
             raise ValueError("this likelihood has one data set only, member 0")
         points = np.atleast_2d(np.asarray(beta, dtype=np.float64))
-        kernel = _Value(information)
+        kernel = _Value(information, batch=BATCH if len(points) <= FEW else 1)
         answer = self.passes.reduce([kernel], points)[0]
         log_likelihood, score = answer[0], answer[1].T
         lost = ~np.isfinite(log_likelihood)
@@ -139,12 +142,16 @@ class BinomialLikelihood:
 class _Value:
     """Log-likelihood, score and, where asked, information at many coefficient vectors."""
 
-    def __init__(self, information: bool) -> None:
-        self.information = information
+    def __init__(self, information: bool, batch: int) -> None:
+        self.information, self.batch = information, batch
 
     def leaf(self, rows: Leaf, beta: Array) -> tuple[Array, ...]:
+        return tuple(answer[0] for answer in self.leaves(rows, 1, beta))
+
+    def leaves(self, rows: Leaf, number: int, beta: Array) -> tuple[Array, ...]:
         X, events = rows["X"], rows["events"]
         trials, offset = rows.get("trials"), rows.get("offset")
+        apart = X.reshape(number, -1, X.shape[1])
         with np.errstate(over="ignore", invalid="ignore", under="ignore"):
             linear = X @ beta.T
             if offset is not None:
@@ -154,35 +161,42 @@ class _Value:
             risk = np.where(linear >= 0.0, 1.0, small) / whole
             normaliser = np.log1p(small)
             normaliser += np.maximum(linear, 0.0)
-            if trials is None:
-                log_likelihood = events @ linear - normaliser.sum(axis=0)
-                residual = events[:, None] - risk
-            else:
-                log_likelihood = events @ linear - trials @ normaliser
+            if trials is not None:
+                normaliser *= trials[:, None]
                 residual = events[:, None] - trials[:, None] * risk
-            score = X.T @ residual
+            else:
+                residual = events[:, None] - risk
+            linear *= events[:, None]
+            linear -= normaliser
+            log_likelihood = linear.reshape(number, -1, len(beta)).sum(axis=1)
+            score = np.matmul(apart.transpose(0, 2, 1), residual.reshape(number, -1, len(beta)))
             if not self.information:
                 return log_likelihood, score
             weight = small / (whole * whole)
             if trials is not None:
                 weight *= trials[:, None]
-            return log_likelihood, score, _weighted_products(X, weight)
+            return log_likelihood, score, _weighted_products(apart, weight.reshape(number, -1, len(beta)))
 
 
 def _weighted_products(X: Array, weight: Array) -> Array:
-    """X' diag(w) X for each column w of weight (n, k): (k, p, p), or packed (p(p+1)/2, k) where k is large."""
-    p, k = X.shape[1], weight.shape[1]
+    """X' diag(w) X in each of b leaves, X (b, n, p), for each column w of weight (b, n, k).
+
+    (b, k, p, p), or packed (b, p(p+1)/2, k) where k is large.
+    """
+    leaves, rows, p = X.shape
+    k = weight.shape[2]
     if k < MANY:
-        products = np.empty((k, p, p))
+        products = np.empty((leaves, k, p, p))
         for one in range(k):
-            products[one] = X.T @ (X * weight[:, one : one + 1])
+            products[:, one] = np.matmul((X * weight[:, :, one : one + 1]).transpose(0, 2, 1), X)
         return products
     first, second = np.triu_indices(p)
-    packed = np.zeros((first.size, k))
+    packed = np.zeros((leaves, first.size, k))
     step = max(64, PRODUCT_BYTES // (8 * first.size))
-    for start in range(0, X.shape[0], step):
-        block = X[start : start + step]
-        packed += (block[:, first] * block[:, second]).T @ weight[start : start + step]
+    for leaf in range(leaves):
+        for start in range(0, rows, step):
+            block = X[leaf, start : start + step]
+            packed[leaf] += (block[:, first] * block[:, second]).T @ weight[leaf, start : start + step]
     return packed
 
 
@@ -195,9 +209,16 @@ def _unpack(packed: Array, p: int) -> Array:
 
 
 class _Gram:
+    batch = BATCH
+
     def leaf(self, rows: Leaf, state: None) -> tuple[Array]:
         X, trials = rows["X"], rows.get("trials")
         return (X.T @ X if trials is None else X.T @ (X * trials[:, None]),)
+
+    def leaves(self, rows: Leaf, number: int, state: None) -> tuple[Array]:
+        weighted = rows["X"] if "trials" not in rows else rows["X"] * rows["trials"][:, None]
+        X, weighted = (array.reshape(number, -1, array.shape[1]) for array in (rows["X"], weighted))
+        return (np.matmul(X.transpose(0, 2, 1), weighted),)
 
 
 class _ExtendedScore:

@@ -23,6 +23,18 @@ class Kernel(Protocol):
         """The answer for one leaf; must not keep or change `rows`."""
 
 
+class BatchKernel(Kernel, Protocol):
+    """A kernel that answers for several neighbouring leaves at once, so that threads seldom wait for one another.
+
+    batch: for how many, a power of two up to 16; what they need together should stay in the cache.
+    """
+
+    batch: int
+
+    def leaves(self, rows: Leaf, number: int, state: Any) -> Answer:
+        """The answers for `number` leaves of equal length, each array with a first axis over the leaves."""
+
+
 class Passes(Protocol):
     """All rows, wherever they are."""
 

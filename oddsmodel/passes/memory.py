@@ -6,12 +6,12 @@ import os
 from collections.abc import Sequence
 from concurrent.futures import ThreadPoolExecutor
 from functools import cache
-from typing import Any
+from typing import Any, cast
 
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.passes.base import LEAF_ROWS, Answer, Kernel, Tree
+from oddsmodel.passes.base import LEAF_ROWS, Answer, BatchKernel, Kernel, Tree
 
 TASK_HEIGHT = 4
 """A task is a subtree of 16 leaves, whatever the number of threads."""
@@ -48,12 +48,23 @@ class MemoryPasses:
         leaves = max(1, -(-self.rows // LEAF_ROWS))
         task_leaves = 1 << TASK_HEIGHT
         tasks = range(0, leaves, task_leaves)
+        batches = [cast(BatchKernel, kernel) for kernel in kernels]
+        batch = min(getattr(kernel, "batch", 1) for kernel in kernels)
 
         def task(first: int) -> list[Answer]:
             tree = Tree()
-            for leaf in range(first, min(first + task_leaves, leaves)):
-                rows = {name: array[leaf * LEAF_ROWS : (leaf + 1) * LEAF_ROWS] for name, array in self.arrays.items()}
-                tree.add([kernel.leaf(rows, state) for kernel in kernels])
+            leaf, last = first, min(first + task_leaves, leaves)
+            while leaf < last:
+                number = batch if (leaf + batch) * LEAF_ROWS <= self.rows else 1
+                span = slice(leaf * LEAF_ROWS, (leaf + number) * LEAF_ROWS)
+                rows = {name: array[span] for name, array in self.arrays.items()}
+                if number == 1:
+                    tree.add([kernel.leaf(rows, state) for kernel in kernels])
+                else:
+                    answers = [kernel.leaves(rows, number, state) for kernel in batches]
+                    for one in range(number):
+                        tree.add([tuple(array[one] for array in answer) for answer in answers])
+                leaf += number
             return tree.total()
 
         with _products().limit(limits=1, user_api="blas"):
