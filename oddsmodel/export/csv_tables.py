@@ -183,7 +183,11 @@ def _tables(tables: Sequence[tuple[str, Table]], *, with_model: bool) -> str:
         if column.kind == "interval" or any(isinstance(row[k], Interval) for row in table.rows)
     }
     keys = list(dict.fromkeys(column.key for _, table in tables for column in table.columns))
-    names = chain.from_iterable((f"{key}_lower", f"{key}_upper") if key in intervals else (key,) for key in keys)
+    # A group's column is named by the group, whose number says nothing.
+    groups = {c.key: c.heading for _, table in tables for c in table.columns if c.key.startswith("group_")}
+    names = chain.from_iterable(
+        (f"{key}_lower", f"{key}_upper") if key in intervals else (groups.get(key, key),) for key in keys
+    )
     header = (*(("model",) if with_model else ()), *names, "note")
     rows: list[Row] = []
     for model, table in tables:

@@ -8,19 +8,34 @@ about them without knowing how the package thinks of it.
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable
 from dataclasses import dataclass, field
 
 import numpy as np
+from joint_records import (
+    AGE,
+    BANDS,
+    COMPLETE,
+    EVENT,
+    EVERYONE,
+    HAS_SMOKING,
+    SEX,
+    SMOKING,
+    Mask,
+    age,
+    bands,
+    index,
+    sex,
+    smoking,
+)
 from numpy.typing import NDArray
+from sample_estimates import coefficient, crude_odds_ratio, marks, marks_of
 
 from oddsmodel.findings import Finding
 from oddsmodel.results.figures import (
     CalibrationFigure,
     CalibrationGroup,
     CurveFigure,
-    EstimateMark,
     EstimatesFigure,
     FlowFigure,
     HistogramFigure,
@@ -36,26 +51,14 @@ from oddsmodel.results.study import (
     Exclusion,
     Flow,
     ModelResult,
-    ProfileResult,
     Provenance,
     RecordsResult,
     StudyResults,
     TermTest,
-    WaldResult,
 )
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 
-Mask = NDArray[np.bool_]
 Shown = Callable[[StudyResults], object]
-
-SMOKING = ("never", "former", "current")
-SEX = ("female", "male")
-AGE = ("under 40", "40 to 64", "65 and over")
-SHAPE = (4, 3, 4, 2)
-"""Smoking, sex, age band: the last place of each is "not recorded"; outcome: no, yes."""
-
-BANDS = 18
-CELLS = 96 + 2 * BANDS
 
 
 @dataclass
@@ -68,57 +71,6 @@ class Sample:
 
     def true(self, mask: Mask) -> int:
         return int(self.joint[mask].sum())
-
-
-def joint_table(seed: int, scale: float = 40.0) -> NDArray[np.int64]:
-    """Invented numbers of records (132,): the joint table, then the bands; some cells crowded, some nearly empty."""
-    random = np.random.default_rng(seed)
-    share = np.einsum(
-        "i,j,k->ijk",
-        [0.6, 0.3, random.uniform(0.02, 0.12), 0.02],
-        [0.55, 0.44, 0.01],
-        [0.3, 0.4, random.uniform(0.02, 0.3), 0.02],
-    )
-    risk = np.array([0.08, 0.12, 0.2, 0.1])[:, None, None] * np.array([0.5, 1.0, 1.8, 1.0])[None, None, :]
-    risk = np.broadcast_to(risk, share.shape)
-    mean = scale * 20 * np.stack([share * (1 - risk), share * risk], axis=-1)
-    joint = random.poisson(mean)
-    rising = np.linspace(0.3, 1.7, BANDS)
-    complete = joint[:3, :2, :3].sum(axis=(0, 1, 2))
-    shares = [np.full(BANDS, 1 / BANDS), rising / rising.sum()]
-    bands = [random.multinomial(number, share) for number, share in zip(complete, shares, strict=True)]
-    return np.concatenate([joint.ravel(), np.stack(bands, axis=1).ravel()])
-
-
-def _index(axis: int, place: int | slice) -> Mask:
-    mask = np.zeros(SHAPE, dtype=bool)
-    mask[(slice(None),) * axis + (place,)] = True
-    return np.concatenate([mask.ravel(), np.zeros(2 * BANDS, dtype=bool)])
-
-
-def bands(start: int, stop: int, outcome: slice = slice(None)) -> Mask:
-    """Complete records in bands of fitted risk, with either outcome or one."""
-    mask = np.zeros((BANDS, 2), dtype=bool)
-    mask[start:stop, outcome] = True
-    return np.concatenate([np.zeros(96, dtype=bool), mask.ravel()])
-
-
-def smoking(place: int) -> Mask:
-    return _index(0, place)
-
-
-def sex(place: int) -> Mask:
-    return _index(1, place)
-
-
-def age(place: int) -> Mask:
-    return _index(2, place)
-
-
-EVENT = _index(3, 1)
-EVERYONE = _index(3, slice(None))
-HAS_SMOKING = _index(0, slice(0, 3))
-COMPLETE = HAS_SMOKING & _index(1, slice(0, 2)) & _index(2, slice(0, 3))
 
 
 def sample_study(joint: NDArray[np.int64], *, other_records: bool = True) -> Sample:
@@ -152,19 +104,10 @@ def sample_study(joint: NDArray[np.int64], *, other_records: bool = True) -> Sam
         ),
         provenance=Provenance("plan.toml", "[study]\n", "1" * 64, {"oddsmodel": "0.1.0"}, 20260101),
         comparison=making.comparison(models),
-        comparison_figure=EstimatesFigure("models", "Odds ratios under each model", "", _marks(models[0])),
+        comparison_figure=EstimatesFigure("models", "Odds ratios under each model", "", marks(models[0])),
     )
     making.count("records read", lambda s: s.records.read, EVERYONE)
     return Sample(joint, study, making.counts)
-
-
-def crude_odds_ratio(a: int, b: int, c: int, d: int) -> CrudeEstimate | None:
-    """Odds ratio of the 2×2 table with Woolf's limits; None where a cell is 0."""
-    if min(a, b, c, d) == 0:
-        return None
-    ratio, error = a * d / (b * c), math.sqrt(1 / a + 1 / b + 1 / c + 1 / d)
-    limits = [ratio * math.exp(sign * 1.959963984540054 * error) for sign in (-1, 1)]
-    return CrudeEstimate(a + b + c + d, ratio, WaldResult(limits[0], limits[1], 0.03), ProfileResult(*limits))
 
 
 class _Making:
@@ -233,20 +176,20 @@ class _Making:
                     flow.analysed,
                     flow.events,
                 ),
-                EstimatesFigure(f"estimates-{m}", "Odds ratios", "Every odds ratio.", _marks_of(coefficients)),
+                EstimatesFigure(f"estimates-{m}", "Odds ratios", "Every odds ratio.", marks_of(coefficients)),
             ),
         )
 
     def coefficients(self, analysed: Mask, adjusted: bool) -> list[CoefficientResult]:
-        found = [_coefficient("Intercept", None, None, "intercept", "Intercept", 0.09, None)]
+        found = [coefficient("Intercept", None, None, "intercept", "Intercept", 0.09, None)]
         for place, level in enumerate(SMOKING[1:], start=1):
             crude = self.crude(analysed, place)
             everyone = self.crude(HAS_SMOKING, place)
             ratio = 1.1 + place / 10 if adjusted or crude is None else crude.odds_ratio
             label = f"Smoking: {level} against never"
-            found.append(_coefficient("smoking", level, "never", "exposure", label, ratio, crude, everyone))
+            found.append(coefficient("smoking", level, "never", "exposure", label, ratio, crude, everyone))
         if adjusted:
-            found.append(_coefficient("sex", "male", "female", "adjustment", "Sex: male against female", 1.3, None))
+            found.append(coefficient("sex", "male", "female", "adjustment", "Sex: male against female", 1.3, None))
         return found
 
     def crude(self, analysed: Mask, place: int) -> CrudeEstimate | None:
@@ -341,7 +284,7 @@ class _Making:
         blocks: list[int] = []
         for block, (label, axis, levels) in enumerate((("Smoking", 0, SMOKING), ("Sex", 1, SEX), ("Age", 2, AGE))):
             for place, level in enumerate(levels):
-                mask = analysed & _index(axis, place)
+                mask = analysed & index(axis, place)
                 row = len(rows)
                 counts = [self.cell("sparse", table, row, k + 2, part) for k, part in enumerate((mask, mask & EVENT))]
                 rows.append((label, level, *counts))
@@ -489,8 +432,8 @@ class _Making:
         line("Records analysed", COMPLETE, 0, COMPLETE)
         for block, (label, axis, levels) in enumerate((("Sex", 1, SEX), ("Age", 2, AGE))):
             for place, level in enumerate(levels):
-                line(f"{label}: {level}", COMPLETE & _index(axis, place), 2 * block + 1, COMPLETE)
-            line(f"{label}: not recorded", _index(axis, len(levels)), 2 * block + 2, EVERYONE)
+                line(f"{label}: {level}", COMPLETE & index(axis, place), 2 * block + 1, COMPLETE)
+            line(f"{label}: not recorded", index(axis, len(levels)), 2 * block + 2, EVERYONE)
         return Table("characteristics", "Who they were", tuple(columns), tuple(rows), "", tuple(blocks))
 
     def comparison(self, models: tuple[ModelResult, ...]) -> Table:
@@ -528,49 +471,3 @@ def _cuts(making: _Making, number: int) -> list[tuple[int, int]]:
 
 def _steps(events: int, others: int) -> tuple[tuple[float, float], ...]:
     return tuple((k / others, min(1.0, (k / others) ** 0.5)) for k in range(others + 1)) if others and events else ()
-
-
-def _coefficient(
-    term: str,
-    level: str | None,
-    reference: str | None,
-    role: str,
-    label: str,
-    ratio: float | None,
-    crude: CrudeEstimate | None,
-    everyone: CrudeEstimate | None = None,
-) -> CoefficientResult:
-    log = None if ratio is None else math.log(ratio)
-    limits = (None, None) if ratio is None else (ratio * 0.7, ratio * 1.5)
-    return CoefficientResult(
-        term=term,
-        level=level,
-        reference=reference,
-        levels=None,
-        role=role,  # type: ignore[arg-type]
-        label=label,
-        log_odds_ratio=log,
-        standard_error=None if ratio is None else 0.21,
-        odds_ratio=ratio,
-        wald=WaldResult(*limits, 0.2),
-        profile=ProfileResult(*limits),
-        crude=crude,
-        crude_all_records=everyone and CrudeEstimate(everyone.records, everyone.odds_ratio),
-        reasons={} if crude else {"crude": "There is no crude estimate."},
-    )
-
-
-def _marks_of(coefficients: tuple[CoefficientResult, ...]) -> tuple[EstimateMark, ...]:
-    marks = []
-    for one in coefficients:
-        if one.role != "exposure":
-            continue
-        if one.crude is not None and one.crude.wald is not None:
-            limits = one.crude.wald
-            marks.append(EstimateMark(one.label, "crude", one.crude.odds_ratio, limits.lower, limits.upper))
-        marks.append(EstimateMark(one.label, "adjusted", one.odds_ratio, one.profile.lower, one.profile.upper))
-    return tuple(marks)
-
-
-def _marks(model: ModelResult) -> tuple[EstimateMark, ...]:
-    return _marks_of(model.coefficients)

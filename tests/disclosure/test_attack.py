@@ -18,19 +18,18 @@ from scipy.optimize import Bounds, LinearConstraint, milp
 from oddsmodel.disclosure import disclose, suppression
 
 sys.path.insert(0, str(Path(__file__).parent))
-from sample_study import (
+from joint_records import (
     BANDS,
     COMPLETE,
     EVENT,
     EVERYONE,
     HAS_SMOKING,
     Mask,
-    Sample,
     bands,
     joint_table,
-    sample_study,
     smoking,
 )
+from sample_study import Sample, sample_study
 
 THRESHOLD = 5
 

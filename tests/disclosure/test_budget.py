@@ -11,11 +11,12 @@ from oddsmodel.disclosure import disclose, suppression
 from oddsmodel.disclosure.suppression import Suppression
 
 sys.path.insert(0, str(Path(__file__).parent))
-import sample_study
+from joint_records import joint_table
+from sample_study import sample_study
 
 
 def test_without_time_to_search_the_whole_family_is_hidden(monkeypatch: pytest.MonkeyPatch) -> None:
-    study = sample_study.sample_study(sample_study.joint_table(3)).study
+    study = sample_study(joint_table(3)).study
     found = disclose(study, audience="shareable", hide_counts_below=5)
     asked: list[int] = []
     hide = Suppression._hide_the_family

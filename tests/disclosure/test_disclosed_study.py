@@ -19,7 +19,8 @@ from oddsmodel.results.study import DisclosedResults, StudyResults
 from oddsmodel.results.tables import Hidden
 
 sys.path.insert(0, str(Path(__file__).parent))
-from sample_study import BANDS, COMPLETE, EVENT, Sample, sample_study, smoking
+from joint_records import BANDS, COMPLETE, EVENT, smoking
+from sample_study import Sample, sample_study
 
 
 def few_current_smokers() -> Sample:

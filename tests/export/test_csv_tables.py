@@ -21,7 +21,8 @@ from oddsmodel.results.study import DisclosedResults
 from oddsmodel.results.tables import Hidden, Interval, Table, TableColumn
 
 sys.path.insert(0, str(Path(__file__).parent.parent / "disclosure"))
-from sample_study import joint_table, sample_study
+from joint_records import joint_table
+from sample_study import sample_study
 
 NAMES = {
     *("estimates.csv", "terms.csv", "flow.csv", "checks.csv", "findings.csv"),
@@ -132,3 +133,11 @@ def test_no_cell_starts_with_what_a_spreadsheet_runs_whatever_the_separator(text
                 assert not cell.lstrip(' "').startswith(("=", "+", "-", "@", "＝"))
     assert "\x00" not in neutral(text)
     assert neutral("plain, text - as it is") == "plain, text - as it is"
+
+
+def test_groups_are_named_and_their_names_run_nothing(disclosed: DisclosedResults) -> None:
+    columns = (TableColumn("label", "Characteristic"), TableColumn("group_1_records", "=1+1, records", "count"))
+    table = Table("characteristics", "Who they were", columns, (("All", 7),))
+    study = replace(disclosed.study, characteristics=table)
+    header = csv_files(replace(disclosed, study=study))["characteristics.csv"].splitlines()[0]
+    assert header == '"label","\'=1+1, records","note"'

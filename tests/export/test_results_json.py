@@ -20,7 +20,8 @@ from oddsmodel.export.results_json import results_document, results_schema, resu
 from oddsmodel.results.study import CheckResult, DisclosedResults, ProfileResult, WaldResult
 
 sys.path.insert(0, str(Path(__file__).parent.parent / "disclosure"))
-from sample_study import joint_table, sample_study
+from joint_records import joint_table
+from sample_study import sample_study
 
 MODEL_KEYS = (
     *("id", "name", "formula", "method", "added_by_program", "variant", "records", "events", "patterns"),
