@@ -8,7 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.linalg import LinAlgError, cholesky
 
-from oddsmodel.inference.maximise import Fit, _solve
+from oddsmodel.inference.maximise import Fit
+from oddsmodel.inference.symmetric import solve
 from oddsmodel.likelihood.base import Array
 
 MOST_REFINEMENTS = 4
@@ -74,10 +75,10 @@ def _newton_step(fit: Fit, score: NDArray[np.longdouble]) -> tuple[Array, float]
     """The step I^-1 s for a score in beta coordinates, and the squared decrement s'I^-1 s."""
     to_beta = fit.space.to_beta
     if to_beta is None:
-        step = _solve(fit.working_information, np.asarray(score, dtype=np.float64))
+        step = solve(fit.working_information, np.asarray(score, dtype=np.float64))
         return step, float(step @ np.asarray(score, dtype=np.float64))
     working_score = np.asarray(to_beta.astype(np.longdouble).T @ score, dtype=np.float64)
-    working_step = _solve(fit.working_information, working_score)
+    working_step = solve(fit.working_information, working_score)
     return to_beta @ working_step, float(working_step @ working_score)
 
 

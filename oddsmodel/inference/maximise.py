@@ -8,10 +8,10 @@ from functools import cached_property
 from typing import Literal
 
 import numpy as np
-from scipy.linalg import LinAlgError, cho_factor, cho_solve
 
 from oddsmodel.inference.conditioning import Coordinates, Relation, coordinates
 from oddsmodel.inference.separation import Separation, separation
+from oddsmodel.inference.symmetric import solve
 from oddsmodel.likelihood.base import Array, Likelihood
 
 Status = Literal["converged", "no finite maximum", "aliased", "not converged"]
@@ -185,7 +185,7 @@ class _Run:
         self.value, self.information, self.halvings = value, information, 0
         self.steps += 1
         reduced_score, reduced = self._reduced(score), self._both(information)
-        step = _solve(reduced, reduced_score)
+        step = solve(reduced, reduced_score)
         self.decrement = float(reduced_score @ step)
         if self.decrement <= DECREMENT:
             self.flat = self._separated_along(_flat(reduced, self.gram))
@@ -210,7 +210,7 @@ class _Run:
         gamma = self.gamma(self.h)
         reduced = self._both(self.information)
         p = self.space.gram.shape[0]
-        inverse = _solve(reduced, np.eye(reduced.shape[0]))
+        inverse = solve(reduced, np.eye(reduced.shape[0]))
         covariance = inverse if self.basis is None else self.basis @ inverse @ self.basis.T
         information = self.information
         to_beta, from_beta = self.space.to_beta, self.space.from_beta
@@ -251,20 +251,6 @@ def _newton(likelihood: Likelihood, runs: Sequence[_Run]) -> None:
         for k, run in enumerate(active):
             run.take(float(evaluation.log_likelihood[k]), evaluation.score[k], evaluation.information[k])
         active = [run for run in active if not (run.done or run.failed)]
-
-
-def _solve(matrix: Array, right: Array) -> Array:
-    """Solution of a symmetric system, scaled; the least-squares one where it is singular to working precision."""
-    if matrix.shape[0] == 0:
-        return np.zeros_like(right)
-    scale = np.sqrt(np.maximum(np.diag(matrix), np.finfo(float).tiny))
-    scaled = matrix / np.outer(scale, scale)
-    scaled_right = (right.T / scale).T
-    try:
-        solved = cho_solve(cho_factor(scaled), scaled_right)
-    except (LinAlgError, ValueError):
-        solved = np.linalg.pinv(np.nan_to_num(scaled), rcond=1e-14, hermitian=True) @ scaled_right
-    return np.asarray((solved.T / scale).T)
 
 
 def _flat(information: Array, gram: Array) -> Array | None:

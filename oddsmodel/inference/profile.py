@@ -9,8 +9,9 @@ from typing import Literal
 import numpy as np
 from scipy.special import chdtri
 
-from oddsmodel.inference.maximise import Fit, _solve
+from oddsmodel.inference.maximise import Fit
 from oddsmodel.inference.profile_search import search_limit
+from oddsmodel.inference.symmetric import solve
 from oddsmodel.likelihood.base import Array
 
 LimitStatus = Literal["found", "no finite limit", "not found"]
@@ -76,7 +77,7 @@ class _Search:
         working = contrasts if space.to_beta is None else contrasts @ space.to_beta
         self.contrast = np.repeat(working, 2, axis=0)
         self.sign = np.tile([-1.0, 1.0], contrasts.shape[0])
-        spread = _solve(fit.working_information, working.T).T
+        spread = solve(fit.working_information, working.T).T
         size = np.sqrt((spread * working).sum(axis=1))
         self.centre = self.contrast @ fit.working
         self.standard_error = np.repeat(size, 2)
@@ -126,7 +127,7 @@ class _Search:
     def _step(self, bound: int, value: float, score: Array, information: Array) -> tuple[Array | None, float]:
         """The step, and how far the present point is from the limit in units of log-likelihood."""
         c = self.contrast[bound]
-        both = _solve(information, np.column_stack([score, c]))
+        both = solve(information, np.column_stack([score, c]))
         along = float(c @ both[:, 1])
         square = (2.0 * (value - self.height) + float(score @ both[:, 0])) / along if along > 0 else -1.0
         if not (np.isfinite(square) and square >= 0.0):

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from oddsmodel.likelihood.base import Array, Evaluation
+from oddsmodel.likelihood.logistic import logistic
 from oddsmodel.passes import Leaf, MemoryPasses, Passes
 
 PRODUCT_BYTES = 1 << 20
@@ -156,9 +157,7 @@ class _Value:
             linear = X @ beta.T
             if offset is not None:
                 linear += offset[:, None]
-            small = np.exp(-np.abs(linear))
-            whole = 1.0 + small
-            risk = np.where(linear >= 0.0, 1.0, small) / whole
+            small, whole, risk = logistic(linear)
             normaliser = np.log1p(small)
             normaliser += np.maximum(linear, 0.0)
             if trials is not None:
@@ -229,7 +228,6 @@ class _ExtendedScore:
         linear = X @ beta
         if "offset" in rows:
             linear += rows["offset"]
-        small = np.exp(-np.abs(linear))
-        risk = np.where(linear >= 0, np.longdouble(1), small) / (1 + small)
+        _, _, risk = logistic(linear)
         expected = risk if "trials" not in rows else rows["trials"] * risk
         return ((rows["events"] - expected) @ X,)

@@ -9,6 +9,7 @@ from numpy.typing import NDArray
 
 from oddsmodel.likelihood.base import Array, Evaluation
 from oddsmodel.likelihood.binomial import BinomialLikelihood
+from oddsmodel.likelihood.logistic import logistic
 from oddsmodel.passes import Leaf
 
 
@@ -81,9 +82,8 @@ class _PenaltyScore:
         linear = X @ beta.T
         if "offset" in rows:
             linear += rows["offset"][:, None]
-        small = np.exp(-np.abs(linear))
-        risk = np.where(linear >= 0.0, 1.0, small) / (1.0 + small)
-        weight = small / (1.0 + small) ** 2
+        small, whole, risk = logistic(linear)
+        weight = small / (whole * whole)
         if "trials" in rows:
             weight *= rows["trials"][:, None]
         reach = np.stack([np.einsum("ij,ij->i", X @ inverse, X) for inverse in self.inverse], axis=1)

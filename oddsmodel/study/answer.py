@@ -9,6 +9,7 @@ from oddsmodel.findings import Finding
 from oddsmodel.measures.characteristics import study_characteristics
 from oddsmodel.measures.compare_models import compare_models, models_figure
 from oddsmodel.measures.crude import KeptRecords
+from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.records.accounting import account
@@ -38,15 +39,18 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         fitted.append(fit_model(prepared, plan))
         progress.advance()
     results = []
+    populations: dict[tuple[str, ...], KeptRecords] = {}
     for prepared, fit in zip(models, fitted, strict=True):
-        kept = _kept(checked, _rows_kept(checked, prepared, ()))
-        result = estimate(prepared, fit, plan, records, kept, progress)
+        who = tuple(conditions(plan, prepared.section))
+        if who not in populations:
+            populations[who] = _kept(checked, _rows_kept(checked, prepared, ()))
+        result = estimate(prepared, fit, plan, records, populations[who], progress)
         results.append(with_losses(result, prepared, plan, records, checked.outcome))
     differing = _records_differ(checked, tuple(fitted), tuple(results))
     main = results[0]
     used = dict.fromkeys(column for prepared in models for column in (*prepared.exposures, *prepared.adjustment))
     outcome = records.columns[plan.outcome.column_name]
-    comparable = plan.study.design not in ("case-control", "matched case-control")
+    comparable = plan.study.design not in CASE_CONTROL
     share = main.events / main.records if comparable and main.records and main.events is not None else None
     study = StudyResults(
         title=plan.study.title,

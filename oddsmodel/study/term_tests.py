@@ -93,6 +93,6 @@ def _test(name: str, larger: Fit, smaller: Fit) -> TermTest:
     settled = {"converged", "no finite maximum"}
     if larger.status not in settled or smaller.status not in settled:
         df = larger.dimension - smaller.dimension
-        return TermTest(name, df, None, None, "A model that this test compares did not settle.")
+        return TermTest(name, df, None, None, say("term-test-not-settled"))
     statistic, df, p = likelihood_ratio(larger, smaller)
     return TermTest(name, df, statistic, p)

@@ -7,6 +7,7 @@ from typing import Any
 
 from oddsmodel.wording.numbers import listed, plural
 from oddsmodel.wording.plain import plain, quoted
+from oddsmodel.wording.records_faults import with_counts
 from oddsmodel.wording.say import Sentence
 
 Facts = Mapping[str, Any]
@@ -57,17 +58,6 @@ DATE_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
 }
 
 
-def _met(facts: Facts) -> str:
-    parts = [
-        f"{value} ({plural(int(records), 'record')})"
-        for value, records in zip(facts["values"], facts["with_records"], strict=True)
-    ]
-    more = int(facts["total"]) - len(parts)
-    if more > 0:
-        parts.append(plural(more, "other value"))
-    return listed(parts)
-
-
 def _meant(facts: Facts) -> str:
     pairs = zip(facts["values"], facts["nearest"], strict=True)
     meant = [f"{value} may be meant for {near}" for value, near in pairs if near]
@@ -94,7 +84,7 @@ DERIVED_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "in a derived column, and give the points to that.",
     ),
     "derived-level-unmapped": (
-        lambda facts: f"No group has {_met(facts)} of {facts['source']}.",
+        lambda facts: f"No group has {with_counts(facts)} of {facts['source']}.",
         lambda facts: (
             f"{_meant(facts)}Put each level into a group, correct the file, or leave these records out with "
             f'other_levels = "exclude and count".'

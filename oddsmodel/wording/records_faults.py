@@ -29,7 +29,7 @@ def _with_rows(before: str, after: str) -> Sentence:
     return lambda facts: f"{before} {_rows(facts)} {after}".replace(" .", ".")
 
 
-def _with_counts(facts: Facts) -> str:
+def with_counts(facts: Facts) -> str:
     """'"a" (12 records) and "b" (1 record)', and how many other values there are."""
     parts = [
         f"{value} ({plural(int(records), 'record')})"
@@ -67,7 +67,7 @@ def _number_with_text_remedy(facts: Facts) -> str:
 
 
 def _not_in_plan(facts: Facts) -> str:
-    return f"The plan's levels do not have {_with_counts(facts)}."
+    return f"The plan's levels do not have {with_counts(facts)}."
 
 
 def _not_in_plan_remedy(facts: Facts) -> str:
@@ -89,9 +89,9 @@ def _outcome_values(facts: Facts) -> str:
     if total == 0:
         return "The outcome has no recorded value."
     if total == 1:
-        return f"The outcome has one value only: {_with_counts(facts)}."
+        return f"The outcome has one value only: {with_counts(facts)}."
     return (
-        f"The outcome must have exactly two values among recorded ones, and has {count(total)}: {_with_counts(facts)}."
+        f"The outcome must have exactly two values among recorded ones, and has {count(total)}: {with_counts(facts)}."
     )
 
 
@@ -229,7 +229,7 @@ COLUMN_FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     "level-not-in-plan": (_not_in_plan, _not_in_plan_remedy),
     "not-yes-or-no": (
         lambda facts: (
-            f"Yes and no are known as yes/no, y/n, true/false and 1/0; the column also has {_with_counts(facts)}."
+            f"Yes and no are known as yes/no, y/n, true/false and 1/0; the column also has {with_counts(facts)}."
         ),
         'Correct the file, put what means “not recorded” into not_recorded, or say kind = "category" in {section}.',
     ),

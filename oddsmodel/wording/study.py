@@ -67,6 +67,7 @@ SENTENCES: dict[str, Sentence] = {
     "audience-unknown-remedy": 'Give audience="shareable" or audience="internal".',
     "internal-not-named": "An internal report shows small counts.",
     "internal-not-named-remedy": "Put INTERNAL in the file name.",
+    "term-test-not-settled": "A model that this test compares did not settle.",
     "flow-title": "Who was counted: {model}",
     "flow-alt": _flow,
     "estimates-title": "Odds ratios of the exposure: {model}",
