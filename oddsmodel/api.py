@@ -24,6 +24,7 @@ from oddsmodel.records.outcome import code_outcome
 from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
 from oddsmodel.study.answer import answer
 from oddsmodel.study.check import CheckedPlan
+from oddsmodel.study.data import RecordsInMemory
 from oddsmodel.study.prepare import prepare
 from oddsmodel.wording.plain import plain, quoted
 
@@ -182,7 +183,8 @@ def fit(
     )
     records = records_from_frame(frame, file.plan)
     coded = code_outcome(records, file.plan.outcome)
-    checked = CheckedPlan(file, records, coded, prepare(file.plan, records, coded))
+    data = RecordsInMemory(file.plan, records, coded)
+    checked = CheckedPlan(file, data, prepare(file.plan, records, coded))
     results, fitted = answer(checked)
     return Model(results, fitted[0].model, hide_counts_below)
 

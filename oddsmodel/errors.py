@@ -31,3 +31,7 @@ class InputFault(OddsmodelError):
     def __init__(self, faults: Fault | Sequence[Fault]) -> None:
         self.faults: tuple[Fault, ...] = (faults,) if isinstance(faults, Fault) else tuple(faults)
         super().__init__("\n".join(str(fault) for fault in self.faults))
+
+    def __reduce__(self) -> tuple[type[InputFault], tuple[tuple[Fault, ...]]]:
+        """Faults that a worker finds are told here as they are."""
+        return InputFault, (self.faults,)

@@ -4,17 +4,12 @@ from __future__ import annotations
 
 from typing import NamedTuple
 
-import numpy as np
-from numpy.typing import NDArray
-
-from oddsmodel.checks.residuals import pattern_residuals
+from oddsmodel.checks.one_pass import one_pass
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult
 from oddsmodel.results.tables import Table, TableColumn
 from oddsmodel.wording import say
-
-Array = NDArray[np.float64]
 
 
 class Brier(NamedTuple):
@@ -25,14 +20,12 @@ class Brier(NamedTuple):
     scaled: float | None
 
 
-def brier_score(events: Array, trials: Array, probability: Array, complement: Array) -> Brier:
-    """Mean of (y − p)² over all records (Brier 1950, Monthly Weather Review 78:1-3), all arguments (m,).
+def brier_score(total: float, records: float, events: float) -> Brier:
+    """Mean of (y − p)² over all records (Brier 1950, Monthly Weather Review 78:1-3), from its total over them.
 
     The maximum and the scaled score are those of Steyerberg et al. 2010, Epidemiology 21:128-138.
     """
-    records = float(trials.sum())
-    score = float(events @ complement**2 + (trials - events) @ probability**2) / records
-    share = float(events.sum()) / records
+    score, share = total / records, events / records
     maximum = share * (1.0 - share)
     return Brier(score, maximum, 1.0 - score / maximum if maximum > 0.0 else None)
 
@@ -53,8 +46,7 @@ def check(model: FittedModel) -> CheckResult:
             reasons=dict.fromkeys(nothing, reason),
             explanation=reason,
         )
-    residuals = pattern_residuals(model)
-    brier = brier_score(model.patterns.events, model.patterns.trials, residuals.probability, residuals.complement)
+    brier = brier_score(one_pass(model).sums.brier, model.records, model.events)
     reason = "" if brier.scaled is not None else say("brier-one-outcome")
     columns = (
         TableColumn("score", "Brier score", "number"),

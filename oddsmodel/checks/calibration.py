@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.checks.probability_groups import OrderedRecords, grouped, ordered_records
+from oddsmodel.checks.one_pass import one_pass
+from oddsmodel.checks.probability_groups import OrderedRecords
 from oddsmodel.checks.smooth import smooth_share
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.measures.wald import normal_quantile
@@ -16,7 +17,6 @@ from oddsmodel.wording import finding, say
 
 Array = NDArray[np.float64]
 
-TENTHS = 10
 GROUPS_OUTSIDE = 3
 RELATIVE_GAP = 0.1
 
@@ -57,8 +57,8 @@ def check(model: FittedModel) -> CheckResult:
             reasons=dict.fromkeys(names, reason),
             explanation=reason,
         )
-    ordered = ordered_records(model)
-    groups = grouped(ordered, TENTHS)
+    ordered = one_pass(model).ordered
+    groups = ordered.tenths
     lower, upper = wilson(groups.events, groups.records, model.level)
     gap = np.abs(groups.events / groups.records - groups.probability)
     # Where every record has its own probability of 0 or 1 to within rounding, rounding alone is no departure.

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from oddsmodel.checks.probability_groups import Array, OrderedRecords, group_table, grouped, ordered_records
+from oddsmodel.checks.one_pass import one_pass
+from oddsmodel.checks.probability_groups import TENTHS, Array, OrderedRecords, group_table, grouped
 from oddsmodel.checks.severity import severity
 from oddsmodel.inference.tests import chi_square_p
 from oddsmodel.measures.risks import QUANTITY
@@ -12,7 +13,6 @@ from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.wording import finding, say
 
-TENTHS = 10
 MOST_RECORDS = 25_000
 FEWEST_GROUPS = 6
 DISTINCT_A_GROUP = 5
@@ -38,15 +38,15 @@ def check(model: FittedModel) -> CheckResult:
     """sum over groups of (O − E)² / (E (1 − E/n)), chi-square with groups − 2 degrees of freedom.
 
     Hosmer & Lemeshow 1980, Communications in Statistics A9:1043-1069. E/n is the group's mean fitted probability.
-    Withheld, with the reason, where its chi-square distribution is not to be trusted: see `_withheld`.
+    Withheld, with the reason, where its chi-square distribution is not to be trusted: see `_left_out` and `_withheld`.
     """
-    ordered = ordered_records(model)
-    wanted = groups_wanted(model.records, model.events)
-    groups = grouped(ordered, wanted)
-    formed = int(groups.records.size)
-    table = group_table(grouped(ordered, TENTHS), cases=model.study_design not in QUANTITY)
+    ordered = one_pass(model).ordered
+    table = group_table(ordered.tenths, cases=model.study_design not in QUANTITY)
     title, explanation = say("hosmer-lemeshow-title"), say("hosmer-lemeshow-explanation")
-    reason = _withheld(model, ordered, groups)
+    reason = _left_out(model)
+    groups = ordered.tenths if reason else grouped(ordered, groups_wanted(model.records, model.events))
+    formed = int(groups.records.size)
+    reason = reason or _withheld(model, ordered, groups)
     if reason is not None:
         nothing = dict.fromkeys(("groups", "statistic", "df", "p"))
         return CheckResult(
@@ -83,25 +83,33 @@ def _binomial_variance(groups: OrderedRecords) -> Array:
     return groups.expected * (groups.unexpected / groups.records)
 
 
-def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecords) -> str | None:
-    """Why there is no test, or None. There is none either where records belong to groups and are not independent.
+def _left_out(model: FittedModel) -> str | None:
+    """Why there is no test for such records, whatever their counts, or None.
 
-    1. More than 25,000 records: misfit too small to matter is found (Paul et al. 2013).
-    2. Fewer than 6 groups formed: hardly any misfit is found (Hosmer & Lemeshow 2000, section 5.2.2, from
-       memory).
-    3. Covariate patterns are few: fewer than five distinct fitted probabilities a group, unless four in five records
-       have one of their own.
-    4. Expected counts too small (or groups of a record or two): the statistic's variance under the fitted model,
-       2(g − 2) + sum of κ4/V² over the g groups, with V and κ4 the variance and the fourth cumulant of the group's
-       count, is not between half and twice that of chi-square.
-    5. No intercept in the span of the columns: events and their expectations then have different totals.
+    Records that belong to groups are not independent; with more than 25,000, misfit too small to matter is found (Paul
+    et al. 2013).
     """
-    formed, distinct = int(groups.records.size), int(ordered.records.size)
-    surplus = abs(float(ordered.events.sum() - ordered.expected.sum()))
     if model.grouping is not None:
         return say("no-check-of-grouped-records")
     if model.records > MOST_RECORDS:
         return say("hosmer-lemeshow-too-many-records", most=MOST_RECORDS)
+    return None
+
+
+def _withheld(model: FittedModel, ordered: OrderedRecords, groups: OrderedRecords) -> str | None:
+    """Why the counts allow no test, or None.
+
+    1. Fewer than 6 groups formed: hardly any misfit is found (Hosmer & Lemeshow 2000, section 5.2.2, from
+       memory).
+    2. Covariate patterns are few: fewer than five distinct fitted probabilities a group, unless four in five records
+       have one of their own.
+    3. Expected counts too small (or groups of a record or two): the statistic's variance under the fitted model,
+       2(g − 2) + sum of κ4/V² over the g groups, with V and κ4 the variance and the fourth cumulant of the group's
+       count, is not between half and twice that of chi-square.
+    4. No intercept in the span of the columns: events and their expectations then have different totals.
+    """
+    formed, distinct = int(groups.records.size), int(ordered.records.size)
+    surplus = abs(float(ordered.events.sum() - ordered.expected.sum()))
     if formed < FEWEST_GROUPS:
         return say("hosmer-lemeshow-few-groups", groups=formed, fewest=FEWEST_GROUPS)
     if distinct < DISTINCT_A_GROUP * formed and distinct < OWN_PROBABILITY * model.records:

@@ -10,13 +10,14 @@ import numpy as np
 from oddsmodel.checks.deletion import Deletion, without
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
 from oddsmodel.checks.influence_views import deletions_table, patterns_table, scatter
-from oddsmodel.checks.one_step import one_step, ranked
+from oddsmodel.checks.one_pass import LISTED, interest, one_pass
+from oddsmodel.checks.one_step import ranked
 from oddsmodel.checks.severity import severity
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.rows import MOST_PATTERNS
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.wording import finding, say
 
-LISTED = 10
 LEFT_OUT = (1, 5, 10)
 FEW_RECORDS = 0.05
 SEVERAL_RECORDS = 0.02
@@ -48,49 +49,54 @@ class Judged:
 
 
 def check(model: FittedModel) -> CheckResult:
-    """Diagnostics by covariate pattern, and exact fits without the 1, 5 and 10 that move the exposure most.
+    """Diagnostics by covariate pattern (by row where these are too many), and exact fits without the foremost 1, 5, 10.
 
     Patterns are put in order by the one-step shift of the exposure's coefficients, standardised by their
     covariance. "Caution" where k patterns of few records move a coefficient by sqrt(k) standard errors and its odds
     ratio by ten per cent, or one pattern leaves it without an estimate; "look" from three quarters of that on, and
     where several patterns leave it without one.
     """
-    targets = model.exposure_indices or tuple(
-        i for i, column in enumerate(model.design.columns) if column.role != "intercept"
-    )
-    patterns = int((model.patterns.trials > 0.0).sum())
+    targets = interest(model)
     if not targets:
         return _not_applicable(say("influence-no-columns"))
+    single = model.rows.single
+    seen = one_pass(model)
+    patterns = seen.sums.patterns
     if patterns <= model.fit.dimension:
         return _not_applicable(say("influence-saturated", patterns=patterns))
-    steps = one_step(model, targets)
-    score = np.where(steps.essential, 2.0 * steps.target_distance.max() + 1.0, steps.target_distance)
-    top = ranked(np.where(model.patterns.trials > 0.0, score, -1.0), min(LISTED, patterns))
-    judged = [_judge(model, without(model, top[:k], targets), targets) for k in LEFT_OUT if k == 1 or 2 * k <= patterns]
+    top = seen.kept.at(ranked(seen.kept.steps.score, LISTED))
+    sets = [top.position[:k] for k in LEFT_OUT if k == 1 or 2 * k <= patterns]
+    judged = [_judge(model, deletion, targets) for deletion in without(model, sets, targets)]
     spoken = _spoken(judged)
     code, facts = _said(model, spoken)
+    shift = None if spoken.shift is None else _rounded(spoken.shift)
     statistics: dict[str, float | int | None] = {
         "patterns": patterns,
         "patterns_left_out": spoken.deletion.patterns,
-        "shift_in_standard_errors": None if spoken.shift is None else _rounded(spoken.shift),
+        "shift_in_standard_errors": shift,
         "odds_ratio_without": None if spoken.moved is None else _rounded(spoken.moved.after),
     }
-    missing = say("influence-no-odds-ratio" if spoken.shift is not None else "influence-no-estimate")
+    missing = say("influence-no-odds-ratio" if shift is not None else "influence-no-estimate")
+    reasons = {name: missing for name, value in statistics.items() if value is None}
+    if single:
+        uncounted = say("influence-one-by-one", most=MOST_PATTERNS)
+        statistics |= {"patterns": None, "patterns_left_out": None, "rows_left_out": spoken.deletion.patterns}
+        reasons |= {"patterns": uncounted, "patterns_left_out": uncounted}
     return CheckResult(
         name="influence",
         family="influence",
-        title=say("influence-title"),
+        title=say("influence-title", single=single),
         verdict=spoken.verdict,
         line=say(code, **facts),
         statistics=statistics,
-        reasons={name: missing for name, value in statistics.items() if value is None},
+        reasons=reasons,
         findings=() if spoken.verdict == "fine" else (finding(severity(spoken.verdict), code, **facts),),
         tables=(
             deletions_table(model, [one.deletion for one in judged]),
-            patterns_table(model, steps, top, targets),
+            patterns_table(model, top, targets),
         ),
-        figures=(scatter(model, steps),),
-        explanation=say("influence-explanation"),
+        figures=(scatter(model, seen),),
+        explanation=say("influence-explanation", single=single, most=MOST_PATTERNS),
     )
 
 
@@ -99,12 +105,12 @@ def _not_applicable(reason: str) -> CheckResult:
     return CheckResult(
         name="influence",
         family="influence",
-        title=say("influence-title"),
+        title=say("influence-title", single=False),
         verdict="not applicable",
         line=reason,
         statistics=dict.fromkeys(names),
         reasons=dict.fromkeys(names, reason),
-        explanation=say("influence-explanation"),
+        explanation=say("influence-explanation", single=False),
     )
 
 
@@ -141,6 +147,8 @@ def _said(model: FittedModel, spoken: Judged) -> tuple[str, dict[str, str | int 
         "exposed": bool(model.exposure_indices),
         "exposure": "",
     }
+    if model.rows.single:
+        facts["single"] = True
     if spoken.moved is not None:
         facts |= {
             "exposure": spoken.moved.label,

@@ -9,7 +9,7 @@ import numpy as np
 
 from oddsmodel.checks.curves import Curve, Curves, Line, fit_curves, straight_lines
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
-from oddsmodel.design.weighted import weighted_quantiles
+from oddsmodel.errors import InputFault
 from oddsmodel.findings import Finding
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.figures import CurveFigure
@@ -25,6 +25,7 @@ GRID = 101
 BINS = 20
 LONGEST_WHOLE_GRID = 200
 LARGEST_DRAWN_LOG = 12.0
+MOST_STEPS = 4096
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,18 +121,18 @@ def _withheld(reason: str) -> CheckResult:
 
 
 def _judge(model: FittedModel, curve: Curve, tests: int) -> Judged:
-    x, trials = model.patterns.X[:, curve.line.position], model.patterns.trials
-    lower, middle, upper = weighted_quantiles(x, (0.05, 0.5, 0.95), trials).tolist()
+    position = curve.line.position
+    lower, middle, upper = curve.line.entered.quantiles((0.05, 0.5, 0.95)).tolist()
     grid = np.linspace(lower, upper, GRID)
-    bend = curve.log_odds(grid, middle)[0] - model.fit.coefficients[curve.line.position] * (grid - middle)
+    bend = curve.log_odds(grid, middle)[0] - model.fit.coefficients[position] * (grid - middle)
     largest = float(np.abs(bend).max())
-    others = [i for i in model.exposure_indices if i != curve.line.position]
+    others = [i for i in model.exposure_indices if i != position]
     return Judged(
         curve=curve,
         departure=math.exp(largest) if largest <= LARGEST_DRAWN_LOG else None,
-        moved=moved(model, curve.fit.coefficients, others),
+        moved=moved(model, curve.coefficients, others),
         seen=curve.p * tests < DOUBT,
-        of_exposure=curve.line.position in model.exposure_indices,
+        of_exposure=position in model.exposure_indices,
     )
 
 
@@ -140,7 +141,7 @@ def _otherwise(model: FittedModel, curves: Curves) -> Moved | None:
     if curves.together is None:
         return None
     bent = {curve.line.position for curve in curves.fitted}
-    return moved(model, curves.together.coefficients, [i for i in model.exposure_indices if i not in bent])
+    return moved(model, curves.together, [i for i in model.exposure_indices if i not in bent])
 
 
 def _far(one: Moved | None) -> bool:
@@ -216,22 +217,21 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
     """Odds ratio against the column's value, relative to the median, over the middle 95% of the records."""
     from scipy.special import ndtri
 
-    line, trials = curve.line, model.patterns.trials
-    entered = model.patterns.X[:, line.position]
-    x, axis = _in_own_units(model, line, entered)
-    whole = bool((x == np.rint(x)).all())
-    lower, reference, upper = weighted_quantiles(x, (0.025, 0.5, 0.975), trials).tolist()
+    line = curve.line
+    steady = _steady(model, line)
+    spread, axis = (line.own, line.axis) if steady else (line.entered, line.label)
+    whole = bool((spread.values == np.rint(spread.values)).all())
+    lower, reference, upper = spread.quantiles((0.025, 0.5, 0.975)).tolist()
     if not lower < upper:
         return None
     grid = np.linspace(lower, upper, GRID)
     if whole and upper - lower <= LONGEST_WHOLE_GRID:
         lower, upper = math.floor(lower), math.ceil(upper)
         grid = np.arange(lower, upper + 1.0)
-    entered_grid, entered_reference = grid, reference
-    if x is not entered:
-        order = np.argsort(x, kind="stable")
-        entered_grid = np.interp(grid, x[order], entered[order])
-        entered_reference = float(np.interp(reference, x[order], entered[order]))
+    at = _entered(model, line, np.append(grid, reference)) if steady else np.append(grid, reference)
+    if at is None:
+        return None
+    entered_grid, entered_reference = at[:-1], float(at[-1])
     log_odds, error = curve.log_odds(entered_grid, entered_reference)
     half = float(ndtri(0.5 + model.level / 2.0)) * error
     straight = model.fit.coefficients[line.position] * (entered_grid - entered_reference)
@@ -240,7 +240,7 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
         return None
     ratios = [tuple(row) for row in np.exp(drawn).tolist()]
     edges = _edges(lower, upper, whole=whole)
-    records = np.rint(np.histogram(x, edges, weights=trials)[0]).astype(int)
+    records = np.rint(spread.in_bins(edges)).astype(int)
     return CurveFigure(
         id=f"linearity-{line.position}",
         title=say("linearity-figure-title", column=line.label),
@@ -256,16 +256,28 @@ def _figure(model: FittedModel, curve: Curve) -> CurveFigure | None:
     )
 
 
-def _in_own_units(model: FittedModel, line: Line, entered: Array) -> tuple[Array, str]:
-    """The record column's values by pattern (m,) and its axis, where what entered rises or falls with them steadily.
+def _steady(model: FittedModel, line: Line) -> bool:
+    """Whether what entered the model rises or falls steadily with the record column's values."""
+    own = line.own.values
+    if own.size > MOST_STEPS:
+        own = own[np.linspace(0, own.size - 1, MOST_STEPS).astype(int)]
+    entered = _entered(model, line, own)
+    if entered is None:
+        return False
+    steps = np.diff(entered)
+    return bool((steps >= 0).all() or (steps <= 0).all())
 
-    Otherwise (a column such as (x - 3)**2) the values as they entered the model.
-    """
-    own = model.frame[line.source].to_numpy(dtype=np.float64)[model.patterns.first_row]
-    if np.array_equal(own, entered):
-        return entered, line.axis
-    steps = np.diff(entered[np.argsort(own, kind="stable")])
-    return (own, line.axis) if (steps >= 0).all() or (steps <= 0).all() else (entered, line.label)
+
+def _entered(model: FittedModel, line: Line, own: Array) -> Array | None:
+    """What values (g,) of the record column become in the model matrix (g,); None where one has no place there."""
+    if line.own is line.entered:
+        return own
+    record = model.rows.columns_at(np.zeros(1, dtype=np.int64))
+    records = record.iloc[np.zeros(own.size, dtype=int)].assign(**{line.source: own})
+    try:
+        return model.design.encode(records)[:, line.position]
+    except InputFault:
+        return None
 
 
 def _edges(lower: float, upper: float, *, whole: bool) -> Array:

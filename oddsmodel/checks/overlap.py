@@ -2,14 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from oddsmodel.checks.exposure import MATTERS, Moved, moved
-from oddsmodel.checks.preference import BINS, Comparison, compare, fit_kept, variation_explained
+from oddsmodel.checks.preference import (
+    BINS,
+    Comparison,
+    Inside,
+    coefficients_near,
+    compare,
+    fit_kept,
+    made_once,
+    with_places,
+)
+from oddsmodel.checks.variation import variation_explained
 from oddsmodel.findings import Finding
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.figures import HistogramFigure
@@ -107,14 +116,14 @@ def _category(model: FittedModel, exposure: str, gathered: _Gathered) -> None:
     if not comparisons:
         gathered.told.append(("not applicable", "overlap-not-fitted", {}))
         return
-    outside = np.any([one.outside for one in comparisons], axis=0)
-    inside = _refitted(model, exposure, outside) if outside.any() else None
+    outside = any(one.outside_records for one in comparisons)
+    inside = _refitted(model, exposure, comparisons) if outside else None
     worst = max(comparisons, key=lambda one: one.share)
     facts = {
         "group": f"{label}: {worst.level}",
         "other": worst.reference,
         "share": _told_share(worst),
-        "any_outside": bool(outside.any()),
+        "any_outside": outside,
         "alone": any(one.alone for one in comparisons),
         "exposure": inside.label if inside else None,
         "before": inside.before if inside else None,
@@ -137,17 +146,19 @@ def _category(model: FittedModel, exposure: str, gathered: _Gathered) -> None:
         gathered.figures.append(_figure(f"overlap-{len(gathered.figures) + 1}", label, one))
 
 
-def _refitted(model: FittedModel, exposure: str, outside: NDArray[np.bool_]) -> Moved | None:
-    """The exposure's odds ratio without the patterns outside the overlap; None where it has none there."""
-    patterns = model.patterns
-    rows = np.flatnonzero(~outside & (patterns.trials > 0))
-    if rows.size == 0:
-        return None
-    fit, kept = fit_kept(patterns.X[rows], patterns.events[rows], patterns.trials[rows], model.fit.coefficients)
-    if fit.status != "converged":
-        return None
-    coefficients = np.zeros(patterns.X.shape[1])
-    coefficients[kept] = fit.coefficients
+def _refitted(model: FittedModel, exposure: str, comparisons: Sequence[Comparison]) -> Moved | None:
+    """The exposure's odds ratio without the records outside the overlap; None where it has none there."""
+    rows, _ = with_places(model, exposure)
+    passes = made_once(rows, Inside(tuple(one.preference for one in comparisons)))
+    start = model.fit.coefficients
+    kept = list(range(start.size))
+    coefficients = coefficients_near(passes, start, start.size)
+    if coefficients is None:
+        fit, kept = fit_kept(passes, start)
+        if fit.status != "converged":
+            return None
+        coefficients = np.zeros(start.size)
+        coefficients[kept] = fit.coefficients
     own = [i for i in kept if model.design.columns[i].sources == (exposure,)]
     return moved(model, coefficients, own)
 

@@ -2,19 +2,19 @@
 
 from __future__ import annotations
 
+import math
+from collections.abc import Mapping
 from typing import NamedTuple
 
-import numpy as np
-
-from oddsmodel.checks.residuals import PatternResiduals, pattern_residuals
+from oddsmodel.checks.one_pass import Sums, one_pass
 from oddsmodel.checks.severity import severity
 from oddsmodel.inference.tests import chi_square_p
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.rows import MOST_PATTERNS
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.results.tables import Table, TableColumn
 from oddsmodel.wording import finding, say
 
-LARGE = 5.0
 MOSTLY = 0.8
 SMALLEST = 1.0
 
@@ -27,12 +27,10 @@ class ResidualTests(NamedTuple):
     df: int
 
 
-def residual_tests(residuals: PatternResiduals, patterns: int, parameters: int) -> ResidualTests:
+def residual_tests(sums: Sums, parameters: int) -> ResidualTests:
     """Sums of squares of the Pearson and deviance residuals (McCullagh & Nelder 1989, sections 4.4.3 and 4.4.5)."""
-    with np.errstate(over="ignore"):
-        pearson = float((residuals.pearson**2).sum())
-    deviance = float((residuals.deviance**2).sum())
-    return ResidualTests(pearson if np.isfinite(pearson) else None, deviance, patterns - parameters)
+    pearson = sums.pearson if math.isfinite(sums.pearson) else None
+    return ResidualTests(pearson, sums.deviance, sums.patterns - parameters)
 
 
 def check(model: FittedModel) -> CheckResult:
@@ -41,9 +39,14 @@ def check(model: FittedModel) -> CheckResult:
     The rule (Cochran 1954, Biometrics 10:417-451): expected events and expected records without the event are both
     at least 5 in four of five patterns, and at least 1 in all.
     """
-    residuals = pattern_residuals(model)
-    patterns = int((model.patterns.trials > 0.0).sum())
-    tests = residual_tests(residuals, patterns, model.fit.dimension)
+    if model.rows.single:
+        return _not_applicable(
+            dict.fromkeys(("pearson", "pearson_p", "deviance", "deviance_p", "df")),
+            say("residual-tests-uncounted", most=MOST_PATTERNS),
+        )
+    sums = one_pass(model).sums
+    patterns = sums.patterns
+    tests = residual_tests(sums, model.fit.dimension)
     statistics: dict[str, float | int | None] = {
         "pearson": tests.pearson,
         "pearson_p": None,
@@ -51,20 +54,9 @@ def check(model: FittedModel) -> CheckResult:
         "deviance_p": None,
         "df": tests.df,
     }
-    title, explanation = say("residual-tests-title"), say("residual-tests-explanation")
-    reason = _withheld(model, residuals, tests, patterns)
+    reason = _withheld(model, sums, tests)
     if reason is not None or tests.pearson is None:
-        reason = reason or say("residual-tests-small-expected", patterns=patterns)
-        return CheckResult(
-            name="residual_tests",
-            family="fit",
-            title=title,
-            verdict="not applicable",
-            line=reason,
-            statistics=statistics,
-            reasons={name: reason for name, value in statistics.items() if value is None},
-            explanation=explanation,
-        )
+        return _not_applicable(statistics, reason or say("residual-tests-small-expected", patterns=patterns))
     pearson_p, deviance_p = chi_square_p(tests.pearson, tests.df), chi_square_p(tests.deviance, tests.df)
     least = min(pearson_p, deviance_p)
     verdict: Verdict = "fine" if least >= 0.05 else "look" if least >= 0.01 else "caution"
@@ -79,26 +71,36 @@ def check(model: FittedModel) -> CheckResult:
     return CheckResult(
         name="residual_tests",
         family="fit",
-        title=title,
+        title=say("residual-tests-title"),
         verdict=verdict,
         line=say("residual-tests-line", **facts),
         statistics={**statistics, "pearson_p": pearson_p, "deviance_p": deviance_p},
         findings=() if verdict == "fine" else (finding(severity(verdict), "residual-tests-misfit", **facts),),
         tables=(_table(tests, pearson_p, deviance_p),),
-        explanation=explanation,
+        explanation=say("residual-tests-explanation"),
     )
 
 
-def _withheld(model: FittedModel, residuals: PatternResiduals, tests: ResidualTests, patterns: int) -> str | None:
+def _not_applicable(statistics: Mapping[str, float | int | None], reason: str) -> CheckResult:
+    return CheckResult(
+        name="residual_tests",
+        family="fit",
+        title=say("residual-tests-title"),
+        verdict="not applicable",
+        line=reason,
+        statistics=statistics,
+        reasons={name: reason for name, value in statistics.items() if value is None},
+        explanation=say("residual-tests-explanation"),
+    )
+
+
+def _withheld(model: FittedModel, sums: Sums, tests: ResidualTests) -> str | None:
     if model.grouping is not None:
         return say("no-check-of-grouped-records")
     if tests.df < 1:
-        return say("residual-tests-saturated", patterns=patterns)
-    least = model.patterns.trials * np.minimum(residuals.probability, residuals.complement)
-    least = least[model.patterns.trials > 0.0]
-    share = float((least >= LARGE).mean())
-    if share < MOSTLY or float(least.min()) < SMALLEST:
-        return say("residual-tests-small-expected", patterns=patterns)
+        return say("residual-tests-saturated", patterns=sums.patterns)
+    if sums.enough / sums.patterns < MOSTLY or sums.fewest < SMALLEST:
+        return say("residual-tests-small-expected", patterns=sums.patterns)
     return None
 
 

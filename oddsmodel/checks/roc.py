@@ -8,7 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import expit, logit
 
-from oddsmodel.checks.probability_groups import ordered_records
+from oddsmodel.checks.one_pass import one_pass
+from oddsmodel.checks.probability_groups import CLASSES
 from oddsmodel.measures.wald import normal_quantile
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.figures import StepFigure
@@ -19,6 +20,9 @@ from oddsmodel.wording import say
 Array = NDArray[np.float64]
 
 MOST_POINTS = 200
+
+NEGLIGIBLE = 5e-5
+"""An error of the area that would show in four decimals."""
 
 
 @dataclass(frozen=True)
@@ -56,10 +60,19 @@ def area_under_curve(events: Array, others: Array) -> Area:
     return Area(area, float(np.sqrt(s10 / n1 + s01 / n0)))
 
 
+def area_error(events: Array, others: Array) -> float:
+    """How far the area can be off where records are counted in classes of the score, events and others (j,).
+
+    Pairs within a class count one half; each could count 0 or 1, and pairs in different classes are exact.
+    """
+    return float(events @ others) / (2.0 * float(events.sum()) * float(others.sum()))
+
+
 def check(model: FittedModel) -> CheckResult:
     """Area under the curve of the fitted probabilities, on the records that the model was fitted to."""
     title, explanation = say("roc-title"), say("roc-explanation")
-    ordered = ordered_records(model)
+    seen = one_pass(model)
+    ordered = seen.ordered
     events, others = ordered.events, ordered.records - ordered.events
     if not (events.any() and others.any()):
         reason = say("roc-one-outcome")
@@ -81,6 +94,12 @@ def check(model: FittedModel) -> CheckResult:
     else:
         lower, upper, reason = _interval(answer, model.level)
     statistics = {"estimate": answer.area, "standard_error": answer.standard_error, "lower": lower, "upper": upper}
+    reasons = {name: reason for name, value in statistics.items() if value is None}
+    note = reason
+    if seen.classed:
+        bound = statistics["error_bound"] = area_error(events, others)
+        if bound > NEGLIGIBLE:
+            note = f"{reason} {say('roc-classes', classes=CLASSES, bound=bound)}".strip()
     points = _points(events, others)
     return CheckResult(
         name="auc",
@@ -89,8 +108,8 @@ def check(model: FittedModel) -> CheckResult:
         verdict="fine",
         line="",
         statistics=statistics,
-        reasons={name: reason for name, value in statistics.items() if value is None},
-        tables=(_table(answer, lower, upper, model.level, reason),),
+        reasons=reasons,
+        tables=(_table(answer, lower, upper, model.level, note),),
         figures=(StepFigure("roc", title, say("roc-alt", area=answer.area), points, answer.area),),
         explanation=explanation,
     )
@@ -122,11 +141,11 @@ def _points(events: Array, others: Array) -> tuple[tuple[float, float], ...]:
     return tuple(zip(false_share.tolist(), true_share.tolist(), strict=True))
 
 
-def _table(answer: Area, lower: float | None, upper: float | None, level: float, reason: str) -> Table:
+def _table(answer: Area, lower: float | None, upper: float | None, level: float, note: str) -> Table:
     columns = (
         TableColumn("area", "Area under the curve", "number"),
         TableColumn("standard_error", "Standard error", "number"),
         TableColumn("interval", f"{round(100 * level, 1):g}% interval", "interval"),
     )
     row = (answer.area, answer.standard_error, Interval(lower, upper))
-    return Table("area_under_curve", "Area under the curve", columns, (row,), note=reason)
+    return Table("area_under_curve", "Area under the curve", columns, (row,), note=note)

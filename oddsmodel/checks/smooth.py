@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.checks.probability_groups import group_numbers
+from oddsmodel.checks.probability_groups import group_starts
 
 Array = NDArray[np.float64]
 
@@ -33,9 +33,11 @@ def smooth_share(probability: Array, records: Array, events: Array) -> tuple[tup
     if probability.size < FEWEST_VALUES or total < FEWEST_RECORDS:
         return ()
     if probability.size > MOST_BINS:
-        bins = group_numbers(records, MOST_BINS)
-        heaped = np.array([np.bincount(bins, weights=values) for values in (probability * records, records, events)])
-        probability, records, events = heaped[0] / heaped[1], heaped[1], heaped[2]
+        starts = group_starts(records, MOST_BINS)
+        expected, records, events = (
+            np.add.reduceat(values, starts) for values in (probability * records, records, events)
+        )
+        probability = expected / records
     reached = np.cumsum(records)
     first, last = np.searchsorted(reached, [TAIL * total, (1.0 - TAIL) * total])
     low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])

@@ -24,14 +24,15 @@ def check(model: FittedModel) -> CheckResult:
     names = [
         name
         for name in dict.fromkeys((*model.exposures, *model.adjustment))
-        if model.columns[name].kind in CATEGORY_KINDS and name in model.frame
+        if model.columns[name].kind in CATEGORY_KINDS
     ]
     rows: list[tuple[Cell, ...]] = []
     blocks: list[int] = []
     sparse: dict[bool, list[str]] = {True: [], False: []}
     for block, name in enumerate(names):
         label = model.columns[name].label
-        counted = level_counts(model.frame[name], model.event, model.counts, model_levels(model, name))
+        people = model.people.of(name)
+        counted = level_counts(people.frame[name], people.event, people.counts, model_levels(model, name))
         for level, records, events in zip(counted.levels, counted.records, counted.events, strict=True):
             if records == 0:
                 continue

@@ -65,15 +65,29 @@ def run(
         ),
     ] = None,
     records: RecordsOption = None,
+    workers: Annotated[
+        str | None,
+        typer.Option(
+            "--workers",
+            metavar="ADDRESS|local",
+            help="Share the work among the workers of the Dask scheduler at this address (tcp://host:port, or "
+            "tls://host:port), or among processes started here for it (local).",
+            show_default=False,
+        ),
+    ] = None,
 ) -> None:
     """Fit the models of a plan and write the report.
 
     The folder will hold report.html, which opens in any browser, results.json for other programs, and the tables
     as CSV files. A folder with other files in it is left alone.
+
+    Records that do not fit into memory stay on disk, or with --workers on the workers, which read them themselves. The
+    numbers are the same wherever the records are. Name only a scheduler that you trust: whoever runs it can run
+    programs on this machine in your name.
     """
     from oddsmodel.cli.run import run_command
 
-    raise typer.Exit(ended(lambda: run_command(plan, into, records)))
+    raise typer.Exit(ended(lambda: run_command(plan, into, records, workers)))
 
 
 @app.command(short_help="Read a plan against its records, without fitting.")

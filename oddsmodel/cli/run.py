@@ -16,12 +16,12 @@ from oddsmodel.wording import say
 MOST_FINDINGS = 12
 
 
-def run_command(plan: Path, into: Path | None, records: Path | None) -> int:
-    """Run a plan; the exit status says whether every model was estimated."""
+def run_command(plan: Path, into: Path | None, records: Path | None, workers: str | None = None) -> int:
+    """Run a plan; the exit status says whether every model was estimated. workers: see `run_plan`."""
     from oddsmodel.study.run import run_plan
 
     with drawn_progress() as progress:
-        outcome = run_plan(plan, into=into, records=records, progress=progress)
+        outcome = run_plan(plan, into=into, records=records, workers=workers, progress=progress)
     report = next((file for file in outcome.files if file.suffix == ".html"), outcome.folder)
     write(say("report-is-in", file=str(report)))
     write_answer(outcome.results)

@@ -12,9 +12,9 @@ from oddsmodel.design.factors import Bands, Computed, Factor, Levels, PlainColum
 from oddsmodel.design.levels import LevelPiece
 from oddsmodel.design.numbers import NumberPiece
 from oddsmodel.design.planning import Piece, PlannedBlock, PlannedTerm
-from oddsmodel.design.reading import Array, Reader
+from oddsmodel.design.reading import Array
+from oddsmodel.design.training import Training, deviation
 from oddsmodel.design.types import ColumnKind, DesignColumn, DesignTerm, Role
-from oddsmodel.design.weighted import weighted_deviation
 from oddsmodel.records.types import Column
 from oddsmodel.wording import say
 from oddsmodel.wording.numbers import listed
@@ -36,7 +36,7 @@ class _Part:
 
 
 class Describer:
-    """Describes the columns of planned terms. reader, counts: the training records, for standard deviations."""
+    """Describes the columns of planned terms. training: the training records, for standard deviations."""
 
     def __init__(
         self,
@@ -44,11 +44,10 @@ class Describer:
         pieces: Sequence[Piece],
         columns: Mapping[str, Column],
         exposures: Collection[str],
-        reader: Reader,
-        counts: Array | None,
+        training: Training,
     ) -> None:
         self.factors, self.pieces, self.columns = factors, pieces, columns
-        self.exposures, self.reader, self.counts = frozenset(exposures), reader, counts
+        self.exposures, self.training = frozenset(exposures), training
 
     def describe(self, planned: Sequence[PlannedTerm]) -> tuple[tuple[DesignColumn, ...], tuple[DesignTerm, ...]]:
         """The columns and terms of the model matrix, in its order."""
@@ -188,9 +187,9 @@ class Describer:
 
     def deviation(self, source: str, *, lost: int) -> float:
         """The training standard deviation of a column; InputFault where it is 0."""
-        found = weighted_deviation(self.reader.number(source), self.counts, lost=lost)
+        found = deviation(self.training, source, lost=lost)
         if found == 0.0:
-            raise self.reader.fault("design-constant", source, term=source)
+            raise self.training.reader.fault("design-constant", source, term=source)
         return found
 
     def label(self, factor: Factor) -> str:

@@ -11,6 +11,7 @@ import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from oddsmodel.design.coded import CodedRows
 from oddsmodel.design.describe import Describer
 from oddsmodel.design.factors import Bands, CubicSpline, Factor, Levels, PlainColumn
 from oddsmodel.design.faults import formula_fault, piece
@@ -19,6 +20,7 @@ from oddsmodel.design.levels import LevelPiece, level_piece
 from oddsmodel.design.numbers import NumberPiece, number_piece
 from oddsmodel.design.planning import Piece, PlannedBlock, plan_terms
 from oddsmodel.design.reading import Array, Reader
+from oddsmodel.design.training import FrameTraining, Training
 from oddsmodel.design.types import DesignColumn, DesignTerm
 from oddsmodel.errors import Fault, InputFault
 from oddsmodel.findings import Finding
@@ -78,23 +80,26 @@ class Design:
     blocks: tuple[Block, ...]
     where: str
 
-    def encode(self, frame: pd.DataFrame) -> Array:
-        """The model matrix (n, p) of a frame with n records: float64, in C order (a record's columns side by side).
+    def encode(self, frame: pd.DataFrame | CodedRows) -> Array:
+        """The model matrix (n, p) of n records: float64, in C order (a record's columns side by side).
 
         Splines go on as straight lines beyond the range of the training records. InputFault where a column is not
         recorded, has a level that the training records did not have, or where a function has no value.
         """
-        reader = Reader(frame, self.where)
-        X = np.empty((len(frame), len(self.columns)))
-        read = self._read(reader)
-        for first in range(0, len(frame), ROWS_AT_ONCE):
+        return self.matrix(self.read(frame), len(frame))
+
+    def matrix(self, read: Sequence[NDArray[Any]], n: int) -> Array:
+        """The model matrix (n, p) of what `read` gives."""
+        X = np.empty((n, len(self.columns)))
+        for first in range(0, n, ROWS_AT_ONCE):
             rows = slice(first, first + ROWS_AT_ONCE)
             for block in self.blocks:
                 block.fill(X[rows, block.start : block.stop], read, rows)
         return X
 
-    def _read(self, reader: Reader) -> list[NDArray[Any]]:
+    def read(self, frame: pd.DataFrame | CodedRows) -> list[NDArray[Any]]:
         """For each piece the places (n,) of its levels or its numbers (n, width); the faults of all together."""
+        reader = Reader(frame, self.where)
         read: list[NDArray[Any]] = []
         faults: list[Fault] = []
         for one in self.pieces:
@@ -114,20 +119,26 @@ def build_design(
     exposures: Sequence[str],
     counts: Array | None = None,
 ) -> Design:
-    """The design of a formula on the training records.
+    """The design of a formula on training records in memory.
 
     frame: complete coded records. columns: what is known of each column. exposures: the columns that the question is
     about; every term that holds one has their role. counts (n,): true frequencies, for means, deviations and knots.
     InputFault with all faults of the formula against these records together.
     """
-    reader = Reader(frame, formula.where)
     frequencies = None if counts is None else np.asarray(counts, dtype=np.float64)
+    return design_of(formula, FrameTraining(frame, formula.where, frequencies), columns, exposures)
+
+
+def design_of(
+    formula: VettedFormula, training: Training, columns: Mapping[str, Column], exposures: Sequence[str]
+) -> Design:
+    """The design of a formula on training records wherever they are; see `build_design`."""
     findings: list[Finding] = []
     pieces: list[Piece] = []
     faults: list[Fault] = []
     for factor in formula.factors:
         try:
-            made, notes = _piece(factor, columns, reader, frequencies)
+            made, notes = _piece(factor, columns, training)
             pieces.append(made)
             findings.extend(notes)
         except InputFault as found:
@@ -141,13 +152,12 @@ def build_design(
     blocks = _blocks([block for term in planned for block in term.blocks], pieces)
     if blocks[-1].stop > MOST_COLUMNS:
         raise formula_fault("design-too-many-columns", formula.where, None, most=MOST_COLUMNS)
-    described = Describer(formula.factors, pieces, columns, exposures, reader, frequencies).describe(planned)
+    described = Describer(formula.factors, pieces, columns, exposures, training).describe(planned)
     return Design(*described, tuple(findings), tuple(pieces), blocks, formula.where)
 
 
-def _piece(
-    factor: Factor, columns: Mapping[str, Column], reader: Reader, counts: Array | None
-) -> tuple[Piece, tuple[Finding, ...]]:
+def _piece(factor: Factor, columns: Mapping[str, Column], training: Training) -> tuple[Piece, tuple[Finding, ...]]:
+    reader = training.reader
     numbers_only = not isinstance(factor, PlainColumn) and not (
         isinstance(factor, Levels) and isinstance(factor.source, PlainColumn)
     )
@@ -160,8 +170,8 @@ def _piece(
             raise InputFault(fault("design-not-a-number", reader.where, **facts))
     column = columns[factor.columns[0]]
     if isinstance(factor, Bands | Levels) or (isinstance(factor, PlainColumn) and column.kind != "number"):
-        return level_piece(factor, column, reader, counts)
-    return number_piece(factor, reader, counts), ()
+        return level_piece(factor, column, training)
+    return number_piece(factor, training), ()
 
 
 def _constants_held_twice(formula: VettedFormula) -> list[Finding]:

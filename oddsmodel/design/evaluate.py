@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,6 +25,9 @@ from oddsmodel.plan.faults import fault
 from oddsmodel.wording import say
 from oddsmodel.wording.numbers import decimal
 
+if TYPE_CHECKING:
+    from oddsmodel.design.training import Training
+
 NUMPY: dict[str, Callable[[Array], Array]] = {
     "log": np.log,
     "log2": np.log2,
@@ -43,29 +47,29 @@ def evaluate(expression: Expression, reader: Reader) -> Array:
         return np.asarray(_value(expression, reader), dtype=np.float64)
 
 
-def remembered(expression: Expression, reader: Reader, counts: Array | None) -> Expression:
+def remembered(expression: Expression, training: Training) -> Expression:
     """The expression with `center` and `standardize` replaced by arithmetic with the means and deviations found here.
 
-    counts (n,): true frequencies. Standard deviations divide by n. InputFault where one is 0.
+    Standard deviations divide by the number of records. InputFault where one is 0.
     """
     if isinstance(expression, Total):
-        return Total(tuple((sign, remembered(item, reader, counts)) for sign, item in expression.items))
+        return Total(tuple((sign, remembered(item, training)) for sign, item in expression.items))
     if isinstance(expression, Operation):
-        left, right = remembered(expression.left, reader, counts), remembered(expression.right, reader, counts)
+        left, right = remembered(expression.left, training), remembered(expression.right, training)
         return Operation(expression.operator, left, right)
     if not isinstance(expression, Function):
         return expression
-    argument = remembered(expression.argument, reader, counts)
+    argument = remembered(expression.argument, training)
     if expression.name not in ("center", "standardize"):
         return Function(expression.name, argument)
-    values = evaluate(argument, reader)
+    values, counts = training.values(argument)
     centred = Total((("+", argument), ("-", Constant(weighted_mean(values, counts)))))
     if expression.name == "center":
         return centred
     deviation = weighted_deviation(values, counts, lost=0)
     if deviation == 0.0:
         term, column = piece(text_of(expression)), piece(text_of(expression.argument))
-        raise InputFault(fault("design-constant", reader.where, term=term, column=column))
+        raise InputFault(fault("design-constant", training.reader.where, term=term, column=column))
     return Operation("/", centred, Constant(deviation))
 
 
@@ -138,5 +142,5 @@ def _all_good(
         inside=piece(text_of(inside)),
         value=decimal(value, 0) if value.is_integer() else f"{value:.6g}",
     )
-    facts = {"faulty_records": int(bad.sum()), "row": row + 1, "reason": why}
+    facts = {"faulty_records": int(bad.sum()), "row": reader.first + row + 1, "reason": why}
     raise InputFault(fault("design-no-value", reader.where, term=piece(text_of(expression)), **facts))

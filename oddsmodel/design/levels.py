@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from itertools import pairwise
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.design.arithmetic import Expression
+from oddsmodel.design.arithmetic import ColumnValue, Expression
 from oddsmodel.design.evaluate import evaluate, remembered
 from oddsmodel.design.factors import Bands, Coding, Levels, PlainColumn
 from oddsmodel.design.faults import piece
@@ -21,6 +22,9 @@ from oddsmodel.plan.nearest import nearest
 from oddsmodel.records.same_value import matching
 from oddsmodel.records.types import Column
 from oddsmodel.wording import finding
+
+if TYPE_CHECKING:
+    from oddsmodel.design.training import Training
 
 MOST_LEVELS = 500
 MOST_POLYNOMIAL = 15
@@ -109,9 +113,7 @@ class _Declared:
     reference: str | None = None
 
 
-def level_piece(
-    factor: LevelFactor, column: Column, reader: Reader, counts: Array | None
-) -> tuple[LevelPiece, tuple[Finding, ...]]:
+def level_piece(factor: LevelFactor, column: Column, training: Training) -> tuple[LevelPiece, tuple[Finding, ...]]:
     """The piece of a factor, and a note for each level that no training record has.
 
     column: the record column it is made of. Levels and reference are those of the column unless C(...) says otherwise:
@@ -119,8 +121,9 @@ def level_piece(
     reference or all but one level are without records, and for levels that do not exist.
     """
     asked = factor if isinstance(factor, Levels) else Levels(factor)
-    declared = _declared(asked.source, column, reader, counts)
-    number = np.bincount(declared.source.codes(reader, declared.levels), minlength=len(declared.levels))
+    reader = training.reader
+    declared = _declared(asked.source, column, training)
+    number = training.at_levels(declared.source, declared.levels).astype(np.int64)
     records = dict(zip(declared.levels, number.tolist(), strict=True))
 
     order, reference = declared.levels, declared.reference
@@ -153,16 +156,16 @@ def level_piece(
     return LevelPiece(declared.source, levels, place, coding, scores), notes
 
 
-def _declared(source: PlainColumn | Bands, column: Column, reader: Reader, counts: Array | None) -> _Declared:
+def _declared(source: PlainColumn | Bands, column: Column, training: Training) -> _Declared:
     if isinstance(source, Bands):
-        expression = remembered(source.expression, reader, counts)
+        expression = remembered(source.expression, training)
         texts = band_texts(source.edges)
         return _Declared(BandLevels(expression, np.array(source.edges), texts, column.name), texts)
     if column.kind != "number":
         return _Declared(ColumnLevels(source.column), column.levels, column.reference)
-    values = np.unique(reader.number(source.column))
+    values, _ = training.values(ColumnValue(source.column))
     if values.size > MOST_LEVELS:
-        raise reader.fault("design-too-many-levels", column.name, most=MOST_LEVELS)
+        raise training.reader.fault("design-too-many-levels", column.name, most=MOST_LEVELS)
     texts = tuple(number_text(float(value)) for value in values)
     return _Declared(NumberLevels(source.column, values, texts), texts)
 

@@ -15,6 +15,7 @@ from oddsmodel.design.factors import BasisSpline, Computed, CubicSpline, PlainCo
 from oddsmodel.design.faults import piece
 from oddsmodel.design.reading import Array, Reader
 from oddsmodel.design.splines import HARRELL_QUANTILES, harrell_knots, restricted_cubic_basis
+from oddsmodel.design.training import Training
 from oddsmodel.errors import InputFault
 from oddsmodel.plan.faults import fault
 
@@ -61,31 +62,30 @@ class NumberPiece:
         return x[:, np.newaxis] if self.basis is None else self.basis(x)
 
 
-def number_piece(factor: NumberFactor, reader: Reader, counts: Array | None) -> NumberPiece:
+def number_piece(factor: NumberFactor, training: Training) -> NumberPiece:
     """The piece of a factor, with what the training records say kept in it: means, deviations, knots.
 
     InputFault where these records do not allow it.
     """
     if isinstance(factor, PlainColumn):
-        reader.number(factor.column)
+        training.check(ColumnValue(factor.column))
         return NumberPiece(ColumnValue(factor.column))
-    expression = remembered(factor.expression, reader, counts)
-    x = evaluate(expression, reader)
+    expression = remembered(factor.expression, training)
     if isinstance(factor, Computed):
+        training.check(expression)
         return NumberPiece(expression)
-    different = np.unique(x)
+    reader = training.reader
+    different, counts = training.values(expression)
     if different.size == 1:
         raise _fault("design-no-range", factor, reader)
-    basis = _basis(factor, x, reader, counts)
+    basis = _basis(factor, different, reader, counts)
     constant = isinstance(factor, CubicSpline) and not factor.centred
     if different.size < basis.width + (not constant):
         raise _fault("design-few-values", factor, reader, values=int(different.size), columns=basis.width)
     return NumberPiece(expression, basis)
 
 
-def _basis(
-    factor: BasisSpline | CubicSpline | RestrictedCubicSpline, x: Array, reader: Reader, counts: Array | None
-) -> Basis:
+def _basis(factor: BasisSpline | CubicSpline | RestrictedCubicSpline, x: Array, reader: Reader, counts: Array) -> Basis:
     if isinstance(factor, RestrictedCubicSpline):
         return _restricted_cubic(factor, x, reader, counts)
     lowest, highest = float(x.min()), float(x.max())
@@ -97,9 +97,7 @@ def _basis(
     return made
 
 
-def _restricted_cubic(
-    factor: RestrictedCubicSpline, x: Array, reader: Reader, counts: Array | None
-) -> RestrictedCubicBasis:
+def _restricted_cubic(factor: RestrictedCubicSpline, x: Array, reader: Reader, counts: Array) -> RestrictedCubicBasis:
     if not isinstance(factor.knots, int):
         return RestrictedCubicBasis(np.array(factor.knots))
     knots = harrell_knots(x, factor.knots, counts)

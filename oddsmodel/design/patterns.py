@@ -48,6 +48,17 @@ def collapse(X: Array, event: NDArray[np.bool_], counts: Array | None = None) ->
     return Patterns(rows, events, trials, index, first_row)
 
 
+def distinct_rows(X: Array) -> tuple[Bits, NDArray[np.intp], NDArray[np.intp]] | None:
+    """The hash of every row (n,), its place among the distinct rows (n,), and the first row of each, in the order met.
+
+    None where different rows share a hash.
+    """
+    hashes = row_hashes(X, 0)
+    index = pd.factorize(hashes)[0]
+    first_row = np.flatnonzero(np.diff(np.maximum.accumulate(index), prepend=-1) > 0)
+    return (hashes, index, first_row) if _holds(X, index, first_row) else None
+
+
 def _grouped(X: Array) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
     """The pattern of each row and the first row of each pattern."""
     for attempt in range(HASHES):

@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
 
+from oddsmodel.design.coded import CodedRows
 from oddsmodel.design.faults import piece
 from oddsmodel.errors import InputFault
 from oddsmodel.plan.faults import fault
@@ -14,17 +17,22 @@ Array = NDArray[np.float64]
 
 
 class Reader:
-    """Reads the columns of one frame of n records; `where` is the place of the formula that asks."""
+    """Reads the columns of n records; `where` is the place of the formula that asks."""
 
-    def __init__(self, frame: pd.DataFrame, where: str) -> None:
+    def __init__(self, frame: pd.DataFrame | CodedRows, where: str) -> None:
         self.frame, self.where = frame, where
         self.records = len(frame)
+        self.first = frame.first if isinstance(frame, CodedRows) else 0
         self._numbers: dict[str, Array] = {}
 
     def number(self, column: str) -> Array:
         """A number column (n,). InputFault where it is missing, not of numbers or not recorded in some record."""
         if column not in self._numbers:
-            series = self._series(column)
+            if isinstance(self.frame, CodedRows):
+                values = self._array(self.frame, column)
+                self._none_missing(column, ~np.isfinite(values))
+                return self._numbers.setdefault(column, values)
+            series = self._series(self.frame, column)
             if not pd.api.types.is_numeric_dtype(series.dtype) or pd.api.types.is_complex_dtype(series.dtype):
                 raise self.fault("design-column-not-numbers", column)
             values = series.to_numpy(dtype=np.float64)
@@ -37,10 +45,7 @@ class Reader:
 
         InputFault where the column is missing, is not recorded in some record, or has a level that is none of them.
         """
-        series = self._series(column)
-        categorical = series.array if isinstance(series.dtype, pd.CategoricalDtype) else pd.Categorical(series)
-        codes: NDArray[np.integer] = np.asarray(categorical.codes)
-        names = [str(name) for name in categorical.categories]
+        codes, names = self._coded(column)
         if codes.size and codes.min() < 0:
             self._none_missing(column, codes < 0)
         if tuple(names) == levels:
@@ -59,18 +64,34 @@ class Reader:
             column,
             level=piece(level),
             unseen_records=int(which.sum()),
-            row=int(np.argmax(which)) + 1,
+            row=self.first + int(np.argmax(which)) + 1,
         )
 
-    def _series(self, column: str) -> pd.Series:
-        if column not in self.frame.columns:
+    def _coded(self, column: str) -> tuple[NDArray[np.integer], list[str]]:
+        """The place of each record's level (n,), below 0 where not recorded, and the levels."""
+        if isinstance(self.frame, CodedRows):
+            return self._array(self.frame, column), list(self.frame.levels[column])
+        series = self._series(self.frame, column)
+        categorical = series.array if isinstance(series.dtype, pd.CategoricalDtype) else pd.Categorical(series)
+        return np.asarray(categorical.codes), [str(name) for name in categorical.categories]
+
+    def _series(self, frame: pd.DataFrame, column: str) -> pd.Series:
+        if column not in frame.columns:
             raise self.fault("design-column-missing", column)
-        return self.frame[column]
+        return frame[column]
+
+    def _array(self, rows: CodedRows, column: str) -> NDArray[Any]:
+        if column not in rows.arrays:
+            raise self.fault("design-column-missing", column)
+        return rows.arrays[column]
 
     def _none_missing(self, column: str, missing: NDArray[np.bool_]) -> None:
         if missing.any():
             raise self.fault(
-                "design-not-recorded", column, missing_records=int(missing.sum()), row=int(np.argmax(missing)) + 1
+                "design-not-recorded",
+                column,
+                missing_records=int(missing.sum()),
+                row=self.first + int(np.argmax(missing)) + 1,
             )
 
     def fault(self, code: str, column: str, **facts: object) -> InputFault:

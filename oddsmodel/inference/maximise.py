@@ -10,7 +10,7 @@ from typing import Literal
 import numpy as np
 
 from oddsmodel.inference.conditioning import Coordinates, Relation, coordinates
-from oddsmodel.inference.separation import Separation, separation
+from oddsmodel.inference.separation import Separation, separating_direction, separation_of
 from oddsmodel.inference.symmetric import solve
 from oddsmodel.likelihood.base import Array, Likelihood
 
@@ -45,8 +45,9 @@ class Fit:
     coefficients (p,), covariance (p, p) (singular where the space is smaller than p), information (p, p) at the
     maximum, log_likelihood without constants. dimension: of the space. decrement: the squared Newton decrement
     at the last evaluation. flat (p,): a direction in which the log-likelihood never stops rising, where there is
-    one; separation: the verdict on the rows in the coefficients themselves, where one was reached. Where status is
-    "no finite maximum", log_likelihood is its supremum to within rounding and the coefficients are not an estimate.
+    one; separation: the verdict on the rows, where all coefficients were free and it was asked for. Where status is
+    "no finite maximum", the coefficients are not an estimate, and log_likelihood is its supremum to within rounding
+    where the decrement is at most 1e-16, else what was reached.
     """
 
     status: Status
@@ -95,7 +96,8 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
     A direction v is flat when v'Iv < 1e-9 v'X'NXv. If the records are separated along v, every record moved by
     v has x'v of the sign of its outcome, so v'Iv <= max|x'v| s'v; at a decrement of 1e-16 the curvature is then
     below 1e-16 of v'X'NXv: no separated data set converges without a flat direction. A flat direction alone is
-    only a symptom; the linear program of `separation` then decides, so that clean records pay nothing.
+    only a symptom, and so is a search that does not settle; the linear programs of `separation` then decide, so that
+    clean records pay nothing.
 
     near: the fit of a larger space, whose quadratic approximation gives the starting points.
     Large data start from the maximum over an evenly spaced part of the rows.
@@ -103,11 +105,11 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
     space = coordinates(likelihood)
     if space.aliased:
         return [_aliased(likelihood, space) for _ in problems]
-    runs = [_Run(space, problem, near) for problem in problems]
+    runs = [_Run(likelihood, space, problem, near) for problem in problems]
     starting = [run for run in runs if near is None and run.problem.start is None]
     if starting and likelihood.rows >= THIN_FROM:
         thin = space.working.thinned(THIN_LEAVES)
-        trial = [_Run(space, run.problem, None, trial=True) for run in starting]
+        trial = [_Run(likelihood, space, run.problem, None, trial=True) for run in starting]
         _newton(thin, trial)
         for run, tried in zip(starting, trial, strict=True):
             if tried.done and tried.flat is None:
@@ -119,9 +121,11 @@ def maximise_all(likelihood: Likelihood, problems: Sequence[Problem], *, near: F
 class _Run:
     """One maximisation in progress, in the coordinates of its own space."""
 
-    def __init__(self, space: Coordinates, problem: Problem, near: Fit | None, *, trial: bool = False) -> None:
+    def __init__(
+        self, likelihood: Likelihood, space: Coordinates, problem: Problem, near: Fit | None, *, trial: bool = False
+    ) -> None:
         p = space.gram.shape[0]
-        self.trial = trial
+        self.likelihood, self.trial = likelihood, trial
         self.space, self.problem = space, problem
         self.origin = space.gamma(np.zeros(p) if problem.origin is None else np.asarray(problem.origin, float))
         if problem.basis is None:
@@ -179,7 +183,8 @@ class _Run:
         if not value >= self.value - slack:
             self.step = self.step / 2.0
             self.halvings += 1
-            self.failed = self.halvings > MOST_HALVINGS
+            if self.halvings > MOST_HALVINGS:
+                self._give_up()
             return
         self.h = self.h + self.step
         self.value, self.information, self.halvings = value, information, 0
@@ -188,23 +193,29 @@ class _Run:
         step = solve(reduced, reduced_score)
         self.decrement = float(reduced_score @ step)
         if self.decrement <= DECREMENT:
-            self.flat = self._separated_along(_flat(reduced, self.gram))
+            flat = _flat(reduced, self.gram)
+            self.flat = flat if flat is None or self.trial else self._separated_along()
             if self.flat is None:
                 self.h = self.h + step
             self.done = True
             return
         self.step = step
-        self.failed = self.steps >= MOST_STEPS
+        if self.steps >= MOST_STEPS:
+            self._give_up()
 
-    def _separated_along(self, flat: Array | None) -> Array | None:
-        """A direction of separation within this space, sought only where a flat direction is the symptom."""
-        if flat is None or self.trial:
-            return flat
-        X, events, trials = self.space.working.rows_apart()
-        verdict = separation(X if self.basis is None else X @ self.basis, events, trials)
-        if self.basis is None and self.space.to_beta is None:
-            self.separation = verdict
-        return verdict.direction if verdict.separated else None
+    def _give_up(self) -> None:
+        """End a search that does not settle, which separated records can be the reason of."""
+        if not self.trial and self.likelihood.concave:
+            self.flat = self._separated_along()
+        self.done = self.flat is not None
+        self.failed = not self.done
+
+    def _separated_along(self) -> Array | None:
+        """A direction of separation within this space, in its own coordinates; proved where the space is the whole."""
+        if self.basis is not None:
+            return separating_direction(self.space.working.transformed(self.basis))
+        self.separation = separation_of(self.likelihood)
+        return self.space.gamma(self.separation.direction) if self.separation.separated else None
 
     def fit(self, likelihood: Likelihood) -> Fit:
         gamma = self.gamma(self.h)

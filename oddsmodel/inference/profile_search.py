@@ -6,7 +6,6 @@ from typing import Literal
 
 import numpy as np
 from scipy.linalg import null_space
-from scipy.optimize import brentq
 
 from oddsmodel.inference.maximise import Fit, Problem, maximise_all
 from oddsmodel.likelihood.base import Array
@@ -29,6 +28,8 @@ def search_limit(
     does not settle from its neighbour's place is begun again from the maximum; where that fails too, the limit is
     not found.
     """
+    from scipy.optimize import brentq
+
     centre = float(contrast @ fit.working)
     slice_basis = null_space(contrast[None, :])
     direction = contrast / float(contrast @ contrast)

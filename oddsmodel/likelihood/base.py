@@ -23,6 +23,20 @@ class Evaluation:
     information: Array | None
 
 
+@dataclass(frozen=True, slots=True)
+class TraceDerivatives:
+    """Derivatives in beta of tr(M I(beta)), M (p, p) held fixed, I the information, at k coefficient vectors.
+
+    gradient (k, p): tr(M dI/dbeta_a). Where asked for, hessian (k, p, p): tr(M d2I/dbeta_a dbeta_b), and products
+    (k, p, p): tr(M dI/dbeta_a M dI/dbeta_b). With M the inverse information these are the gradient of log|I| and the
+    two parts of its Hessian, `hessian - products`. The last two guide steps and may be approximate.
+    """
+
+    gradient: Array
+    hessian: Array | None
+    products: Array | None
+
+
 class Likelihood(Protocol):
     """A log-likelihood of p coefficients.
 
@@ -61,3 +75,16 @@ class Likelihood(Protocol):
 
     def rows_apart(self) -> tuple[Array, Array, Array]:
         """X (n, p), events (n,) and trials (n,), for deciding whether the rows are separated."""
+
+
+class InformationLikelihood(Likelihood, Protocol):
+    """A likelihood that can also say how its expected information changes with the coefficients."""
+
+    def trace_derivatives(
+        self, beta: Array, roots: Array, *, member: NDArray[np.int64] | None = None, second: bool = False
+    ) -> TraceDerivatives:
+        """Derivatives of tr(M I) at beta (k, p) with M = R R' for each R (p, r) of roots (k, p, r), in one pass."""
+
+    def transformed(self, basis: Array) -> InformationLikelihood: ...
+
+    def thinned(self, leaves: int) -> InformationLikelihood: ...

@@ -8,18 +8,10 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.likelihood.base import Array, Evaluation
-from oddsmodel.likelihood.logistic import logistic
-from oddsmodel.passes import Leaf, MemoryPasses, Passes
-
-PRODUCT_BYTES = 1 << 20
-"""Pairwise products of the columns are formed for so many bytes of rows at a time, to stay in cache."""
-
-BATCH, FEW = 4, 2
-"""So many leaves are worked on together where coefficient vectors are few; with more, one leaf fills the cache."""
-
-MANY = 4
-"""From so many coefficient vectors on, pairwise products of the columns are formed once and shared."""
+from oddsmodel.likelihood.base import Array, Evaluation, TraceDerivatives
+from oddsmodel.likelihood.jeffreys_kernel import trace_derivatives
+from oddsmodel.likelihood.kernels import ExtendedScoreKernel, GramKernel, ValueKernel, unpacked
+from oddsmodel.passes import LEAF_ROWS, Leaf, MemoryPasses, Passes
 
 
 class BinomialLikelihood:
@@ -81,153 +73,79 @@ class BinomialLikelihood:
         if member is not None and np.any(member):
             raise ValueError("this likelihood has one data set only, member 0")
         points = np.atleast_2d(np.asarray(beta, dtype=np.float64))
-        kernel = _Value(information, batch=BATCH if len(points) <= FEW else 1)
-        answer = self.passes.reduce([kernel], points)[0]
-        log_likelihood, score = answer[0], answer[1].T
+        answer = self.passes.reduce([ValueKernel(information, len(points))], points)[0]
+        log_likelihood, score = answer[0], answer[1]
         lost = ~np.isfinite(log_likelihood)
         if lost.any():
             log_likelihood = np.where(lost, -np.inf, log_likelihood)
             score = np.where(lost[:, None], 0.0, score)
         curvature = None
         if information:
-            curvature = answer[2]
-            if curvature.ndim == 2:
-                curvature = _unpack(curvature, self.parameters)
+            curvature = unpacked(answer[2], self.parameters)
             if lost.any():
                 curvature = np.where(lost[:, None, None], 0.0, curvature)
-        return Evaluation(log_likelihood, np.ascontiguousarray(score), curvature)
+        return Evaluation(log_likelihood, score, curvature)
 
     @cached_property
     def _gram(self) -> Array:
-        return self.passes.reduce([_Gram()], None)[0][0]
+        return self.passes.reduce([GramKernel()], None)[0][0]
 
     def gram(self) -> Array:
         return self._gram
 
     def transformed(self, basis: Array) -> BinomialLikelihood:
-        if not isinstance(self.passes, MemoryPasses):
-            raise TypeError("rows that are not in memory cannot be transformed")
-        X = self.passes.arrays["X"]
-        exact = np.asarray(basis, dtype=np.longdouble)
-        moved = np.empty((X.shape[0], basis.shape[1]))
-        for start in range(0, X.shape[0], 4096):
-            moved[start : start + 4096] = X[start : start + 4096].astype(np.longdouble) @ exact
-        return BinomialLikelihood.over(MemoryPasses({**self.passes.arrays, "X": moved}), basis.shape[1])
+        moved = Moved(np.asarray(basis, dtype=np.longdouble))
+        if isinstance(self.passes, MemoryPasses):
+            X = np.empty((self.rows, basis.shape[1]))
+            for start in range(0, self.rows, LEAF_ROWS):
+                X[start : start + LEAF_ROWS] = moved.of(self.passes.arrays["X"][start : start + LEAF_ROWS])
+            return BinomialLikelihood.over(MemoryPasses({**self.passes.arrays, "X": X}), basis.shape[1])
+        return BinomialLikelihood.over(self.passes.mapped(moved).kept(), basis.shape[1])
 
     def thinned(self, leaves: int) -> BinomialLikelihood:
         return BinomialLikelihood.over(self.passes.thinned(leaves), self._parameters)
 
     def triangle(self) -> Array:
-        if not isinstance(self.passes, MemoryPasses):
-            raise TypeError("rows that are not in memory cannot be factorised")
-        X, trials = self.passes.arrays["X"], self.passes.arrays.get("trials")
-        if trials is not None and not (trials > 0.0).all():
-            # a row of no trials bears on nothing: a column that only such rows fill is aliased
-            X = X[trials > 0.0]
-        size = max(4096, 4 * X.shape[1])
-        triangle = np.zeros((0, X.shape[1]))
-        for start in range(0, X.shape[0], size):
-            triangle = np.asarray(np.linalg.qr(np.vstack([triangle, X[start : start + size]]), mode="r"))
+        triangle = np.zeros((0, self.parameters))
+        for part in self.passes.each(triangle_of_rows):
+            triangle = np.asarray(np.linalg.qr(np.vstack([triangle, part]), mode="r"))
         return triangle
 
     def rows_apart(self) -> tuple[Array, Array, Array]:
         if not isinstance(self.passes, MemoryPasses):
-            raise TypeError("separation is decided on rows in memory")
+            raise TypeError("these rows are not in memory")
         arrays = self.passes.arrays
         return arrays["X"], arrays["events"], arrays.get("trials", np.ones(self.rows))
 
     def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
-        return self.passes.reduce([_ExtendedScore()], beta)[0][0]
+        return self.passes.reduce([ExtendedScoreKernel()], beta)[0][0]
+
+    def trace_derivatives(
+        self, beta: Array, roots: Array, *, member: NDArray[np.int64] | None = None, second: bool = False
+    ) -> TraceDerivatives:
+        if member is not None and np.any(member):
+            raise ValueError("this likelihood has one data set only, member 0")
+        return trace_derivatives(self.passes, beta, roots, second)
 
 
-class _Value:
-    """Log-likelihood, score and, where asked, information at many coefficient vectors."""
+class Moved:
+    """Rows whose matrix is multiplied by a basis (p, r) that is taken as exact."""
 
-    def __init__(self, information: bool, batch: int) -> None:
-        self.information, self.batch = information, batch
+    def __init__(self, basis: NDArray[np.longdouble]) -> None:
+        self.basis = basis
 
-    def leaf(self, rows: Leaf, beta: Array) -> tuple[Array, ...]:
-        return tuple(answer[0] for answer in self.leaves(rows, 1, beta))
+    def of(self, X: Array) -> Array:
+        """X basis (n, r), rounded once."""
+        return np.asarray(X.astype(np.longdouble) @ self.basis, dtype=np.float64)
 
-    def leaves(self, rows: Leaf, number: int, beta: Array) -> tuple[Array, ...]:
-        X, events = rows["X"], rows["events"]
-        trials, offset = rows.get("trials"), rows.get("offset")
-        apart = X.reshape(number, -1, X.shape[1])
-        with np.errstate(over="ignore", invalid="ignore", under="ignore"):
-            linear = X @ beta.T
-            if offset is not None:
-                linear += offset[:, None]
-            small, whole, risk = logistic(linear)
-            normaliser = np.log1p(small)
-            normaliser += np.maximum(linear, 0.0)
-            if trials is not None:
-                normaliser *= trials[:, None]
-                residual = events[:, None] - trials[:, None] * risk
-            else:
-                residual = events[:, None] - risk
-            linear *= events[:, None]
-            linear -= normaliser
-            log_likelihood = linear.reshape(number, -1, len(beta)).sum(axis=1)
-            score = np.matmul(apart.transpose(0, 2, 1), residual.reshape(number, -1, len(beta)))
-            if not self.information:
-                return log_likelihood, score
-            weight = small / (whole * whole)
-            if trials is not None:
-                weight *= trials[:, None]
-            return log_likelihood, score, _weighted_products(apart, weight.reshape(number, -1, len(beta)))
+    def __call__(self, rows: Leaf) -> Leaf:
+        return {**rows, "X": self.of(rows["X"])}
 
 
-def _weighted_products(X: Array, weight: Array) -> Array:
-    """X' diag(w) X in each of b leaves, X (b, n, p), for each column w of weight (b, n, k).
-
-    (b, k, p, p), or packed (b, p(p+1)/2, k) where k is large.
-    """
-    leaves, rows, p = X.shape
-    k = weight.shape[2]
-    if k < MANY:
-        products = np.empty((leaves, k, p, p))
-        for one in range(k):
-            products[:, one] = np.matmul((X * weight[:, :, one : one + 1]).transpose(0, 2, 1), X)
-        return products
-    first, second = np.triu_indices(p)
-    packed = np.zeros((leaves, first.size, k))
-    step = max(64, PRODUCT_BYTES // (8 * first.size))
-    for leaf in range(leaves):
-        for start in range(0, rows, step):
-            block = X[leaf, start : start + step]
-            packed[leaf] += (block[:, first] * block[:, second]).T @ weight[leaf, start : start + step]
-    return packed
-
-
-def _unpack(packed: Array, p: int) -> Array:
-    first, second = np.triu_indices(p)
-    full = np.empty((packed.shape[1], p, p))
-    full[:, first, second] = packed.T
-    full[:, second, first] = packed.T
-    return full
-
-
-class _Gram:
-    batch = BATCH
-
-    def leaf(self, rows: Leaf, state: None) -> tuple[Array]:
-        X, trials = rows["X"], rows.get("trials")
-        return (X.T @ X if trials is None else X.T @ (X * trials[:, None]),)
-
-    def leaves(self, rows: Leaf, number: int, state: None) -> tuple[Array]:
-        weighted = rows["X"] if "trials" not in rows else rows["X"] * rows["trials"][:, None]
-        X, weighted = (array.reshape(number, -1, array.shape[1]) for array in (rows["X"], weighted))
-        return (np.matmul(X.transpose(0, 2, 1), weighted),)
-
-
-class _ExtendedScore:
-    """The score in extended precision at one coefficient vector held in extended precision."""
-
-    def leaf(self, rows: Leaf, beta: NDArray[np.longdouble]) -> tuple[NDArray[np.longdouble]]:
-        X = rows["X"].astype(np.longdouble)
-        linear = X @ beta
-        if "offset" in rows:
-            linear += rows["offset"]
-        _, _, risk = logistic(linear)
-        expected = risk if "trials" not in rows else rows["trials"] * risk
-        return ((rows["events"] - expected) @ X,)
+def triangle_of_rows(rows: Leaf, first: int, state: None) -> Array:
+    """R of a QR factorisation of the rows' matrix. A row of no trials bears on nothing: a column that only such rows
+    fill is aliased."""
+    X, trials = rows["X"], rows.get("trials")
+    if trials is not None and not (trials > 0.0).all():
+        X = X[trials > 0.0]
+    return np.asarray(np.linalg.qr(X, mode="r"))

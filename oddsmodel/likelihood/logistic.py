@@ -15,4 +15,4 @@ def logistic(linear: NDArray[Any]) -> tuple[NDArray[Any], NDArray[Any], NDArray[
     """
     small = np.exp(-np.abs(linear))
     whole = 1.0 + small
-    return small, whole, np.where(linear >= 0.0, 1.0, small) / whole
+    return small, whole, np.maximum(small, linear >= 0.0) / whole

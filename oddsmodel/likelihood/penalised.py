@@ -1,90 +1,170 @@
-"""The binomial likelihood with Jeffreys' penalty: finite estimates where maximum likelihood has none."""
+"""A likelihood with Jeffreys' penalty: finite estimates where maximum likelihood has none."""
 
 from __future__ import annotations
 
-from typing import Literal
+from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.linalg import solve_triangular
 
-from oddsmodel.likelihood.base import Array, Evaluation
-from oddsmodel.likelihood.binomial import BinomialLikelihood
-from oddsmodel.likelihood.logistic import logistic
-from oddsmodel.passes import Leaf
+from oddsmodel.likelihood.base import Array, Evaluation, InformationLikelihood
+
+LEAST_CURVATURE = 0.1
+"""Curvature, relative to the information of the likelihood alone, that every direction is given for a step."""
+
+VANISHED = 1e-250
+"""Share of the gram matrix's diagonal at which the information counts as singular, before anything overflows."""
 
 
 class JeffreysPenalisedLikelihood:
-    """Penalised log-likelihood l(beta) + log|I(beta)| / 2 of a binomial likelihood (Firth 1993, Biometrika 80:27-38).
+    """Penalised log-likelihood l(beta) + a log|I(beta)|, a = 1/2 (Firth 1993, Biometrika 80:27-38).
 
-    Its score adds, for each row with risk mu and hat value h = n mu (1 - mu) x'I^-1 x, the term h (1/2 - mu) x
-    (Firth 1993, section 3.1; Heinze & Schemper 2002, equation 2). The information given is that of the likelihood
-    without the penalty, so steps are those of Fisher scoring. Restricted to a subspace, the penalty keeps the
-    information of all coefficients, so that a test does not depend on the scaling of the column left out.
+    Its score adds a tr(I^-1 dI/dbeta_j): for binomial rows with risk mu and hat value h = n mu (1 - mu) x'I^-1 x the
+    term h (1/2 - mu) x a row (Firth 1993, section 3.1; Heinze & Schemper 2002, Statistics in Medicine 21:2409-2419,
+    equation 2). Other powers a > 0 of the penalty are those of Kosmidis & Firth 2021 (Biometrika 108:71-82).
 
-    The penalty is the same in any coordinates but for a constant, which is left out. It is minus infinity where the
-    information is singular.
+    The penalty is that of the whole model. Restricted to a subspace it keeps the information of all coefficients, so
+    that a test, or a profile limit, does not depend on how the column left out is scaled. In other coordinates the
+    value is the same, where the change of coordinates is of full rank.
+
+    Conditions. Where the columns are linearly independent, the value of a binomial likelihood falls to minus infinity
+    in every direction, so that a finite maximum exists whatever the outcomes (Kosmidis & Firth 2021). The value is not
+    concave in general: with weights w_i = n_i mu_i (1 - mu_i), hat values h_ij = (w_i w_j)^1/2 x_i'I^-1 x_j and
+    d_i = 1 - 2 mu_i, the Hessian of log|I| is
+
+        - 2 sum h_ii mu_i (1 - mu_i) x_i x_i' + 1/2 sum_ij h_ij^2 (d_i x_i - d_j x_j)(d_i x_i - d_j x_j)',
+
+    and its second sum, though mostly small, can win. Columns of 0 and 1 have not been seen to give two maxima; columns
+    with far-out values do. Use `oddsmodel.inference.maximise_penalised`, which looks for a second one.
+
+    The information given is minus the exact Hessian, its eigenvalues relative to I raised to 0.1 where they are
+    smaller, so that every step goes up and steps near a maximum are Newton's. `expected_information` is I, whose
+    inverse is by convention the estimate's covariance (Heinze & Schemper 2002, section 2).
+
+    The value is minus infinity where the information is singular.
     """
 
-    curvature: Literal["Hessian", "expected"] = "expected"
+    curvature: Literal["Hessian", "expected"] = "Hessian"
     concave = False
 
-    def __init__(self, likelihood: BinomialLikelihood) -> None:
-        self.likelihood = likelihood
+    def __init__(
+        self, likelihood: InformationLikelihood, *, power: float = 0.5, scale: float = 0.0, within: Array | None = None
+    ) -> None:
+        """power: a, above zero. scale: a constant taken off log|I|, for coordinates that change its determinant.
+
+        within (p, r): a basis of the subspace that this is restricted to, all p coefficients where None.
+        """
+        if not power > 0.0:
+            raise ValueError("the power of the penalty must be above zero")
+        self.likelihood, self.power, self.scale, self.within = likelihood, power, scale, within
 
     @property
     def parameters(self) -> int:
-        return self.likelihood.parameters
+        return self.likelihood.parameters if self.within is None else int(self.within.shape[1])
 
     @property
     def rows(self) -> int:
         return self.likelihood.rows
 
     def evaluate(self, beta: Array, *, member: NDArray[np.int64] | None = None, information: bool = True) -> Evaluation:
-        """Values at beta (k, p); two passes, one for the information and one for the penalty's score."""
-        points = np.atleast_2d(np.asarray(beta, dtype=np.float64))
+        """Values at beta (k, p); two passes, one for the information and one for its derivatives."""
+        points = self._points(beta)
         plain = self.likelihood.evaluate(points, member=member)
         if plain.information is None:
             raise TypeError("the penalty needs the information")
-        sign, log_determinant = np.linalg.slogdet(plain.information)
-        regular = (sign > 0) & np.isfinite(plain.log_likelihood)
-        inverse = np.zeros_like(plain.information)
-        inverse[regular] = np.linalg.inv(plain.information[regular])
-        added = self.likelihood.passes.reduce([_PenaltyScore(inverse)], points)[0][0].T
-        with np.errstate(invalid="ignore"):
-            value = np.where(regular, plain.log_likelihood + 0.5 * log_determinant, -np.inf)
-        return Evaluation(value, plain.score + added, plain.information if information else None)
+        least = VANISHED * np.diag(self.likelihood.gram())
+        roots = np.zeros_like(plain.information)
+        determinant = np.full(len(points), -np.inf)
+        for k, one in enumerate(plain.information):
+            if np.isfinite(plain.log_likelihood[k]):
+                determinant[k] = _inverse_root(one, least, roots[k])
+        regular = np.isfinite(determinant)
+        change = self.likelihood.trace_derivatives(points, roots, member=member, second=information)
+        value = np.full(len(points), -np.inf)
+        value[regular] = plain.log_likelihood[regular] + self.power * (determinant[regular] - self.scale)
+        score = plain.score + self.power * change.gradient
+        if self.within is not None:
+            score = score @ self.within
+        if not information:
+            return Evaluation(value, score, None)
+        curvature = plain.information.copy()
+        if change.hessian is not None and change.products is not None:
+            for k in np.flatnonzero(regular):
+                added = self.power * (change.hessian[k] - change.products[k])
+                curvature[k] = _raised(plain.information[k] - added, plain.information[k], roots[k])
+        return Evaluation(value, score, self._both(curvature))
+
+    def _points(self, beta: Array) -> Array:
+        """All coefficients (k, p) of beta (k, r) or (r,)."""
+        points = np.atleast_2d(np.asarray(beta, dtype=np.float64))
+        return points if self.within is None else points @ self.within.T
+
+    def _both(self, matrix: Array) -> Array:
+        """A matrix (..., p, p) of second derivatives in the coefficients of the subspace."""
+        return matrix if self.within is None else self.within.T @ matrix @ self.within
+
+    def expected_information(self, beta: Array) -> Array:
+        """The information (p, p) of the likelihood alone at beta (p,)."""
+        plain = self.likelihood.evaluate(self._points(beta))
+        if plain.information is None:
+            raise TypeError("the penalty needs the information")
+        return self._both(plain.information[0])
+
+    def with_power(self, power: float) -> JeffreysPenalisedLikelihood:
+        """The same rows with another power of the penalty."""
+        return self._with(self.likelihood, power=power)
+
+    def _with(self, likelihood: InformationLikelihood, **changes: Any) -> JeffreysPenalisedLikelihood:
+        kept = {"power": self.power, "scale": self.scale, "within": self.within}
+        return JeffreysPenalisedLikelihood(likelihood, **{**kept, **changes})
 
     def gram(self) -> Array:
-        return self.likelihood.gram()
+        return self._both(self.likelihood.gram())
 
     def transformed(self, basis: Array) -> JeffreysPenalisedLikelihood:
-        return JeffreysPenalisedLikelihood(self.likelihood.transformed(basis))
+        """The same value in other coordinates; in fewer, the penalty is still that of the whole model."""
+        if self.within is not None or basis.shape[0] != basis.shape[1]:
+            return self._with(self.likelihood, within=basis if self.within is None else self.within @ basis)
+        scale = self.scale + 2.0 * float(np.linalg.slogdet(basis)[1])
+        return self._with(self.likelihood.transformed(basis), scale=scale)
 
     def thinned(self, leaves: int) -> JeffreysPenalisedLikelihood:
-        return JeffreysPenalisedLikelihood(self.likelihood.thinned(leaves))
+        return self._with(self.likelihood.thinned(leaves))
 
     def triangle(self) -> Array:
-        return self.likelihood.triangle()
+        triangle = self.likelihood.triangle()
+        return triangle if self.within is None else np.asarray(np.linalg.qr(triangle @ self.within, mode="r"))
 
     def rows_apart(self) -> tuple[Array, Array, Array]:
-        return self.likelihood.rows_apart()
+        """Rows that separate in no direction: the penalty takes the value down in every one, whatever the outcomes."""
+        p = self.parameters
+        return np.eye(p), np.full(p, 0.5), np.ones(p)
 
     def extended_score(self, beta: NDArray[np.longdouble]) -> NDArray[np.longdouble]:
         raise TypeError("a penalised fit has no certificate: its score is not computed in extended precision")
 
 
-class _PenaltyScore:
-    def __init__(self, inverse: Array) -> None:
-        self.inverse = inverse
+def _inverse_root(information: Array, least: Array, root: Array) -> float:
+    """log|I|, or minus infinity where I is singular; R with I^-1 = R R' is written into `root`."""
+    diagonal = np.diag(information)
+    if not (np.isfinite(diagonal).all() and (diagonal > least).all()):
+        return -np.inf
+    size = np.sqrt(diagonal)
+    try:
+        factor = np.linalg.cholesky(information / np.outer(size, size))
+    except np.linalg.LinAlgError:
+        return -np.inf
+    root[:] = solve_triangular(factor, np.eye(size.size), lower=True).T / size[:, None]
+    return 2.0 * float(np.log(np.diag(factor)).sum() + np.log(size).sum())
 
-    def leaf(self, rows: Leaf, beta: Array) -> tuple[Array]:
-        X = rows["X"]
-        linear = X @ beta.T
-        if "offset" in rows:
-            linear += rows["offset"][:, None]
-        small, whole, risk = logistic(linear)
-        weight = small / (whole * whole)
-        if "trials" in rows:
-            weight *= rows["trials"][:, None]
-        reach = np.stack([np.einsum("ij,ij->i", X @ inverse, X) for inverse in self.inverse], axis=1)
-        return (X.T @ (weight * reach * (0.5 - risk)),)
+
+def _raised(curvature: Array, information: Array, root: Array) -> Array:
+    """The curvature with its eigenvalues relative to the information at least `LEAST_CURVATURE`."""
+    values, vectors = np.linalg.eigh(root.T @ curvature @ root)
+    if values.size == 0 or values[0] >= LEAST_CURVATURE:
+        return curvature
+    low = values < LEAST_CURVATURE
+    # in whitened coordinates V (raised - values) V' is added; R'^-1 = I R brings it back
+    back = information @ (root @ vectors[:, low])
+    return np.asarray(curvature + (back * (LEAST_CURVATURE - values[low])) @ back.T)

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import combinations
 
@@ -12,12 +12,12 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from oddsmodel.measures.counts import level_codes, whole
-from oddsmodel.measures.crude import KeptRecords
 from oddsmodel.measures.groups import Groups, groups_of_study
 from oddsmodel.measures.standardised_difference import (
     standardised_difference_of_means,
     standardised_difference_of_shares,
 )
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.records.types import Column
 from oddsmodel.results.tables import Cell, Table, TableColumn
 from oddsmodel.wording import say
@@ -79,27 +79,56 @@ def characteristics(
     """
     analysed = np.ones(len(frame), dtype=bool) if analysed is None else analysed
     weight = np.ones(len(frame)) if counts is None else counts
-    used = analysed & (groups.codes >= 0)
+    whole_table = {name: Described(frame[name], groups.codes, analysed, weight) for name in names if name in frame}
+    everyone = Described(pd.Series(analysed), groups.codes, analysed, weight)
+    return characteristics_of(everyone, whole_table.__getitem__, columns, names, groups)
+
+
+@dataclass(frozen=True, slots=True)
+class Described:
+    """One column of the records to be described, whole or counted by its values: all (j,).
+
+    values: of the column. group: the group of each, -1 for none. analysed: whether the model uses them. weight: how
+    many records each stands for.
+    """
+
+    values: pd.Series
+    group: NDArray[np.int64]
+    analysed: NDArray[np.bool_]
+    weight: Array
+
+
+def characteristics_of(
+    everyone: Described,
+    described: Callable[[str], Described],
+    columns: Mapping[str, Column],
+    names: Sequence[str],
+    groups: Groups,
+) -> Table:
+    """See `characteristics`; everyone: the records, whatever their values; described: one column at a time."""
     size = len(groups.labels)
-    totals = np.bincount(groups.codes[used], weights=weight[used], minlength=size)
+    used = everyone.analysed & (everyone.group >= 0)
+    totals = np.bincount(everyone.group[used], weights=everyone.weight[used], minlength=size)
     blocks: list[list[_Line]] = [[_Line(say("row-records"), whole(totals), [None] * size)]]
     without_spread: list[str] = []
     for name in names:
         column = columns[name]
         if name == groups.by or column.kind in ("identifier", "date"):
             continue
+        one = described(name)
+        used = one.analysed & (one.group >= 0)
         if column.levels:
-            codes = level_codes(frame[name], column.levels)
+            codes = level_codes(one.values, column.levels)
             recorded = codes >= 0
-            lines = _level_lines(column, codes, groups.codes, weight, used & recorded, size)
+            lines = _level_lines(column, codes, one.group, one.weight, used & recorded, size)
         else:
-            values = frame[name].to_numpy(dtype=np.float64)
+            values = one.values.to_numpy(dtype=np.float64)
             recorded = np.isfinite(values)
-            lines = [_number_line(column, values, groups.codes, weight, used & recorded, size)]
+            lines = [_number_line(column, values, one.group, one.weight, used & recorded, size)]
         if size > 1 and lines[0].difference is None:
             without_spread.append(column.label)
         blocks.append(lines)
-        blocks += _not_recorded(column, recorded, groups.codes, weight, size)
+        blocks += _not_recorded(column, recorded, one.group, one.weight, size)
     return _laid_out(groups, blocks, without_spread)
 
 
@@ -213,10 +242,11 @@ def _skewness(x: Array, weight: Array) -> float:
     if total == 0.0:
         return 0.0
     deviation = x - float(weight @ x) / total
-    second = float(weight @ deviation**2) / total
+    weighted = weight * deviation * deviation
+    second = float(weighted.sum()) / total
     if second <= 0.0:
         return 0.0
-    return float(weight @ deviation**3) / total / math.sqrt(second) ** 3
+    return float(weighted @ deviation) / total / math.sqrt(second) ** 3
 
 
 def quartiles(x: Array, weight: Array) -> Array:

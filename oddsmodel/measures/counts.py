@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from oddsmodel.design.words import number_text
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.passes import Leaf
 
 Array = NDArray[np.float64]
 
@@ -68,11 +69,20 @@ def exposure_counts(model: FittedModel, name: str) -> LevelCounts | None:
     if not levels:
         return None
     if model.columns[name].levels:
-        return level_counts(model.frame[name], model.event, model.counts, levels)
-    own = level_columns(model, name)
-    at = model.patterns.X[:, own] == 1.0
-    at = np.column_stack([~at.any(axis=1), at])
-    return LevelCounts(levels, whole(model.patterns.trials @ at), whole(model.patterns.events @ at))
+        counted = model.people.of(name)
+        return level_counts(counted.frame[name], counted.event, counted.counts, levels)
+    records, events = model.rows.passes.reduce([_AtIndicators()], level_columns(model, name))[0]
+    return LevelCounts(levels, whole(records), whole(events))
+
+
+class _AtIndicators:
+    """Records and events at none and at each of some indicator columns."""
+
+    def leaf(self, rows: Leaf, own: list[int]) -> tuple[Array, Array]:
+        at = rows["X"][:, own] == 1.0
+        at = np.column_stack([~at.any(axis=1), at]).astype(np.float64)
+        trials = rows.get("trials")
+        return at.sum(axis=0) if trials is None else trials @ at, rows["events"] @ at
 
 
 def model_levels(model: FittedModel, name: str) -> tuple[str, ...]:

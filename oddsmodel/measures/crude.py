@@ -20,22 +20,11 @@ from oddsmodel.measures.scale import exponential, limits_on_ratio_scale
 from oddsmodel.measures.wald import wald
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.model.grouped import group_codes
+from oddsmodel.model.kept import KeptRecords, People
 from oddsmodel.results.study import CrudeEstimate, ProfileResult, WaldResult
 from oddsmodel.wording import say
 
 Array = NDArray[np.float64]
-
-
-@dataclass(frozen=True, slots=True)
-class KeptRecords:
-    """Records that belong to the study and have the outcome, whether or not the other columns are recorded.
-
-    frame: coded columns (n rows); event (n,): whether the event happened; counts (n,): true frequencies, or None.
-    """
-
-    frame: pd.DataFrame
-    event: NDArray[np.bool_]
-    counts: Array | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -50,7 +39,7 @@ class Crude:
     reasons: Mapping[str, str] = field(default_factory=dict)
 
 
-def crude(model: FittedModel, kept: KeptRecords | None = None) -> dict[int, Crude]:
+def crude(model: FittedModel, kept: People | None = None) -> dict[int, Crude]:
     """The crude estimates of every exposure coefficient, by its position in the model matrix.
 
     A crude estimate comes from a logistic model of the one exposure and an intercept. With an exposure in levels
@@ -65,7 +54,6 @@ def crude(model: FittedModel, kept: KeptRecords | None = None) -> dict[int, Crud
     answers: dict[int, Crude] = {}
     intercept = any(column.kind == "intercept" for column in model.design.columns)
     plain = set(plain_exposures(model))
-    own = KeptRecords(model.frame, model.event, model.counts)
     for position in model.exposure_indices:
         column = model.design.columns[position]
         if not intercept:
@@ -73,7 +61,7 @@ def crude(model: FittedModel, kept: KeptRecords | None = None) -> dict[int, Crud
         elif column.sources[0] not in plain or not column.shown:
             answers[position] = Crude(None, reasons={"crude": say("crude-of-several-columns", term=column.term)})
         else:
-            answers[position] = _both(model, position, own, kept)
+            answers[position] = _both(model, position, kept)
     return answers
 
 
@@ -87,13 +75,13 @@ def plain_exposures(model: FittedModel) -> tuple[str, ...]:
     return tuple(plain)
 
 
-def _both(model: FittedModel, position: int, own: KeptRecords, kept: KeptRecords | None) -> Crude:
+def _both(model: FittedModel, position: int, kept: People | None) -> Crude:
     column = model.design.columns[position]
     reasons: dict[str, str] = {}
-    same = _estimate(model, position, _values(model, column, own), "crude", reasons)
+    same = _estimate(model, position, _values(model, column, model.people.of(column.sources[0])), "crude", reasons)
     if kept is None:
         return Crude(same, None, reasons)
-    everyone = _values(model, column, kept)
+    everyone = _values(model, column, kept.of(column.sources[0]))
     if everyone.records == same.records:
         reasons["crude_all_records"] = say("crude-same-records")
         return Crude(same, None, reasons)
@@ -223,7 +211,8 @@ def _table(model: FittedModel, position: int, values: _Values) -> tuple[Array, A
         x = values.distinct.to_numpy(dtype=np.float64)
         return np.column_stack([np.ones(x.size), x]), values.events, values.trials, np.arange(x.size)
     # Only the exposure's own columns are read: the others hold any values that the model knows.
-    frame = model.frame.iloc[np.zeros(len(values.distinct), dtype=int)].reset_index(drop=True)
+    one = model.rows.columns_at(np.zeros(1, dtype=np.int64))
+    frame = one.iloc[np.zeros(len(values.distinct), dtype=int)].reset_index(drop=True)
     frame[name] = values.distinct
     X = model.design.encode(frame)
     if column.kind == "transform":

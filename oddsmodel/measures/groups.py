@@ -22,13 +22,15 @@ Array = NDArray[np.float64]
 class Groups:
     """labels of the g groups in order; codes (n,): each row's group, -1 for none; described: how they were made.
 
-    `by` is the column they are made from, None for case status.
+    `by` is the column they are made from, None for case status. cuts: of a number, the largest value of every group but
+    the last; None where the groups are levels or case status.
     """
 
     labels: tuple[str, ...]
     codes: NDArray[np.int64]
     described: str
     by: str | None = None
+    cuts: tuple[float, ...] | None = None
 
 
 def groups_of_study(
@@ -63,20 +65,22 @@ def _thirds(column: Column, values: Array, counts: Array | None) -> Groups:
 
     # No value at all: a single group of nobody.
     if distinct.size == 0:
-        return Groups((column.label,), np.full(values.size, -1), say("groups-one", label=column.label), column.name)
+        return Groups((column.label,), np.full(values.size, -1), say("groups-one", label=column.label), column.name, ())
     wanted = np.array([1.0, 2.0]) / 3.0 * cumulated[-1] * (1.0 - 1e-12)
     cuts = np.unique(distinct[np.searchsorted(cumulated, wanted)])
     cuts = cuts[cuts < distinct[-1]]
     codes = np.full(values.size, -1, dtype=np.int64)
     codes[recorded] = np.searchsorted(cuts, values[recorded], side="left")
     if cuts.size == 0:
-        return Groups((column.label,), codes, say("groups-one", label=column.label), column.name)
+        return Groups((column.label,), codes, say("groups-one", label=column.label), column.name, ())
     unit = f" {column.units}" if column.units else ""
     edges = [plain_number(float(cut)) for cut in cuts]
     between = [f"above {low}, up to {high}" for low, high in pairwise(edges)]
     spans = [f"up to {edges[0]}", *between, f"above {edges[-1]}"]
     labels = tuple(f"{span}{unit}" for span in spans)
-    return Groups(labels, codes, say("groups-thirds", label=column.label, groups=len(labels)), column.name)
+    return Groups(
+        labels, codes, say("groups-thirds", label=column.label, groups=len(labels)), column.name, tuple(cuts.tolist())
+    )
 
 
 def plain_number(value: float) -> str:

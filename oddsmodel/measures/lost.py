@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -37,25 +37,28 @@ class Followed:
         return int(rows.sum() if self.counts is None else round(self.counts[rows].sum()))
 
 
-def lost_by_exposure(followed: Followed, columns: Mapping[str, Column], exposures: Sequence[str]) -> Table:
+def lost_by_exposure(
+    followed: Callable[[str], Followed], columns: Mapping[str, Column], exposures: Sequence[str]
+) -> Table:
     """Records and losses at the levels of each exposure, or in its thirds for a number.
 
     The rows of the levels are of records complete but for the outcome, so that those not lost are the ones analysed;
     the others stand together in a row of their own. The sum of the losses is the accounting's.
+    followed: the records, whole or counted by an exposure.
     """
     rows: list[tuple[Cell, ...]] = []
     blocks: list[int] = []
-    own = followed.frame.loc[followed.complete].reset_index(drop=True)
-    counts = None if followed.counts is None else followed.counts[followed.complete]
     for block, name in enumerate(exposures):
-        column = columns[name]
+        column, found = columns[name], followed(name)
+        own = found.frame.loc[found.complete].reset_index(drop=True)
+        counts = None if found.counts is None else found.counts[found.complete]
         groups = groups_of_study("cohort", column, own, np.zeros(len(own), dtype=np.bool_), counts)
-        codes = np.full(len(followed.lost), -1, dtype=np.int64)
-        codes[followed.complete] = groups.codes
+        codes = np.full(len(found.lost), -1, dtype=np.int64)
+        codes[found.complete] = groups.codes
         labels = (*(f"{column.label}: {label}" for label in groups.labels), say("lost-others"))
         for code, label in zip([*range(len(groups.labels)), -1], labels, strict=True):
             here = codes == code
-            records, lost = followed.records(here), followed.records(here & followed.lost)
+            records, lost = found.records(here), found.records(here & found.lost)
             if records:
                 rows.append((label, records, lost, lost / records))
                 blocks.append(block)

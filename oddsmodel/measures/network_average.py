@@ -94,12 +94,13 @@ def _crude_errors(
         if factor is None or grouping.without_error[level_columns(model, name)].any():
             return [(None, grouping.df)] * len(order)
         own = level_columns(model, name)
-        indicators = np.column_stack([model.patterns.X[:, k] == 1.0 for k in own])
+        held, patterns = model.grouped
+        indicators = np.column_stack([patterns.X[:, k] == 1.0 for k in own])
         levels = [str(model.design.columns[k].level) for k in own]
         reference = next(level for level in order if level not in levels)
         places = np.array([order.index(level) for level in (*levels, reference)])
         at = np.where(indicators.any(axis=1), indicators.argmax(axis=1), len(levels))
-        index = places[at][model.patterns.index]
-        covariance = clustered_covariance(fit, index, model.event, grouping.codes, factor, model.counts)
+        index = places[at][patterns.index]
+        covariance = clustered_covariance(fit, index, held.event, grouping.codes, factor, held.counts)
     errors = np.sqrt(np.maximum(0.0, np.einsum("ij,jk,ik->i", contrasts, covariance, contrasts)))
     return [(float(error), None if grouping is None else grouping.df) for error in errors]

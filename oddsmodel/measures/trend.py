@@ -10,7 +10,6 @@ import numpy as np
 from oddsmodel.design.words import number_text
 from oddsmodel.inference import Fit, Problem, likelihood_ratio, maximise_all, profile
 from oddsmodel.inference.clustered import clustered_covariance, small_sample_factor
-from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.measures.counts import level_columns
 from oddsmodel.measures.intervals import lead_interval
 from oddsmodel.measures.levels import REFERENCE
@@ -109,10 +108,9 @@ def _step(
     """The log odds ratio per unit of score with its intervals, from the trend model's own matrix."""
     if with_score.status != "converged":
         return None, say("trend-not-estimated", status=with_score.status)
-    basis, patterns = spaces.with_score, model.patterns
+    basis = spaces.with_score
     start: Array = np.asarray(np.linalg.lstsq(basis, with_score.coefficients, rcond=None)[0], dtype=np.float64)
-    likelihood = BinomialLikelihood(patterns.X @ basis, patterns.events, trials=patterns.trials)
-    fit = maximise_all(likelihood, [Problem(start=start)])[0]
+    fit = maximise_all(model.likelihood.transformed(basis), [Problem(start=start)])[0]
     # The same space in other coordinates, so the search can only differ by rounding.
     if fit.status != "converged":
         return None, say("trend-not-estimated", status=fit.status)
@@ -132,8 +130,8 @@ def _standard_error(model: FittedModel, fit: Fit) -> tuple[float | None, int | N
     factor = small_sample_factor(grouping.number, model.records, fit.coefficients.size)
     if factor is None:
         return None, grouping.df
-    index = model.patterns.index
-    covariance = clustered_covariance(fit, index, model.event, grouping.codes, factor, model.counts)
+    held, patterns = model.grouped
+    covariance = clustered_covariance(fit, patterns.index, held.event, grouping.codes, factor, held.counts)
     return float(np.sqrt(covariance[-1, -1])), grouping.df
 
 

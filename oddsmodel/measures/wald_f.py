@@ -21,7 +21,8 @@ def covariance_of(model: FittedModel, fit: Fit) -> Array | None:
     factor = small_sample_factor(grouping.number, float(model.records), fit.coefficients.size)
     if factor is None:
         return None
-    return clustered_covariance(fit, model.patterns.index, model.event, grouping.codes, factor, model.counts)
+    held, patterns = model.grouped
+    return clustered_covariance(fit, patterns.index, held.event, grouping.codes, factor, held.counts)
 
 
 def contrasts_without(model: FittedModel, columns: tuple[int, ...]) -> tuple[Array, Array, int] | None:
@@ -29,7 +30,7 @@ def contrasts_without(model: FittedModel, columns: tuple[int, ...]) -> tuple[Arr
 
     None where the groups are too few, or where a column has no standard error.
     """
-    grouping, patterns = model.grouping, model.patterns
+    grouping = model.grouping
     if (
         grouping is None
         or grouping.covariance is None
@@ -39,6 +40,7 @@ def contrasts_without(model: FittedModel, columns: tuple[int, ...]) -> tuple[Arr
         return None
     if len(columns) == len(model.design.columns):
         return model.fit.coefficients, grouping.covariance, grouping.df
+    _, patterns = model.grouped
     fit = maximise(BinomialLikelihood(patterns.X[:, list(columns)], patterns.events, trials=patterns.trials))
     covariance = covariance_of(model, fit)
     return None if covariance is None else (fit.coefficients, covariance, grouping.df)

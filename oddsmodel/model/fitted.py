@@ -4,31 +4,43 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
-from scipy.special import expit
 
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.patterns import Patterns
-from oddsmodel.inference.maximise import Fit, maximise
+from oddsmodel.inference.maximise import Fit
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.model.grouped import Grouping
+from oddsmodel.model.kept import People
+from oddsmodel.model.rows import ModelRows
 from oddsmodel.records.types import Column
 
 Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class Held:
+    """Records in memory: coded columns (n rows), whether the event happened (n,), true frequencies (n,) or None.
+
+    patterns: their covariate patterns, with the pattern of each record, where the records belong to groups.
+    """
+
+    frame: pd.DataFrame
+    event: NDArray[np.bool_]
+    counts: Array | None
+    patterns: Patterns | None = None
 
 
 @dataclass(frozen=True)
 class FittedModel:
     """A converged maximum-likelihood fit and everything it was made from.
 
-    frame, event, counts: the analysed records in source order: coded columns, whether the event happened (n,),
-        true frequencies (n,) or None where every row is one record.
-    patterns: the covariate patterns of the model matrix (m of them): X (m, p), events (m,), trials (m,),
-        index (n,) from row to pattern, first_row (m,) from pattern to a row of the frame.
+    rows: the rows of the model matrix, covariate patterns or single records, wherever they are.
+    people: the records analysed, to be counted by the values of columns. records, events: how many they are.
+    held: the records in memory; None where they are not in memory.
     study_design, aim: as the plan says them ("cohort", "case-control", ...; "association", "prediction").
     exposures, adjustment: the record columns in either role. also: the checks the plan asks for.
     grouping: the groups that the records belong to, where they are not independent; there is then no likelihood of the
@@ -40,11 +52,11 @@ class FittedModel:
     aim: str
     level: float
     design: Design
-    frame: pd.DataFrame
     columns: Mapping[str, Column]
-    event: NDArray[np.bool_]
-    counts: Array | None
-    patterns: Patterns
+    rows: ModelRows
+    people: People
+    records: int
+    events: int
     likelihood: BinomialLikelihood
     fit: Fit
     exposures: tuple[str, ...]
@@ -52,26 +64,16 @@ class FittedModel:
     also: tuple[str, ...] = ()
     seed: int = 20260101
     grouping: Grouping | None = None
-
-    @cached_property
-    def fitted(self) -> Array:
-        """Fitted probabilities of the patterns (m,)."""
-        return np.asarray(expit(self.patterns.X @ self.fit.coefficients))
-
-    @property
-    def records(self) -> int:
-        """Number of records analysed (the sum of counts where there are any)."""
-        return round(float(self.patterns.trials.sum()))
-
-    @property
-    def events(self) -> int:
-        return round(float(self.patterns.events.sum()))
+    held: Held | None = None
 
     @property
     def exposure_indices(self) -> tuple[int, ...]:
         """Positions of the exposure's columns in the model matrix."""
         return tuple(i for i, column in enumerate(self.design.columns) if column.role == "exposure")
 
-    def refit(self, X: Array) -> Fit:
-        """The fit of another matrix (m, q) to the same patterns' outcomes."""
-        return maximise(BinomialLikelihood(X, self.patterns.events, trials=self.patterns.trials))
+    @property
+    def grouped(self) -> tuple[Held, Patterns]:
+        """The records in memory with their patterns, for what allows for groups."""
+        if self.held is None or self.held.patterns is None:
+            raise TypeError("records that belong to groups are held in memory with their patterns")
+        return self.held, self.held.patterns

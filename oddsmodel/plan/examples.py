@@ -86,7 +86,7 @@ EXAMPLES: dict[str, dict[str, str]] = {
     },
     "report": {"audience": 'audience = "shareable"', "hide_counts_below": "hide_counts_below = 5"},
     "checks": {"also": "also = []"},
-    "run": {"seed": "seed = 20260101"},
+    "run": {"seed": "seed = 20260101", "memory": 'memory = "2 GB"'},
 }
 
 

@@ -36,7 +36,6 @@ LATER_KEYS: dict[str, dict[str, str]] = {
         "earlier": "later-earlier",
         "smallest_important": "later-smallest-important",
     },
-    "run": {"memory": "later-memory"},
 }
 """Section → key → the code of its sentence."""
 

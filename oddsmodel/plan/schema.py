@@ -10,6 +10,8 @@ from pydantic import BaseModel, BeforeValidator, ConfigDict, Field
 from pydantic.fields import FieldInfo
 from pydantic_core import PydanticCustomError
 
+from oddsmodel.plan.size import bytes_of
+
 Design = Literal["cohort", "cross-sectional", "case-control", "matched case-control", "trial"]
 Kind = Literal["number", "category", "ordered", "yes-no", "identifier", "date"]
 Timing = Literal["before exposure", "after exposure", "unknown"]
@@ -61,6 +63,13 @@ def _day(value: Any) -> Any:
             raise PydanticCustomError("not_a_day", "a text that is no date") from None
     if isinstance(value, datetime) or not isinstance(value, date):
         raise PydanticCustomError("not_a_day", "no date")
+    return value
+
+
+def _size(value: Any) -> Any:
+    """A size of memory, such as "2 GB"."""
+    if not isinstance(value, str) or bytes_of(value) is None:
+        raise PydanticCustomError("not_a_size", "no size of memory")
     return value
 
 
@@ -240,6 +249,7 @@ class RunSection(Section):
     """How the work is run."""
 
     seed: Annotated[int, Field(ge=0, le=LARGEST_SEED)] = 20260101
+    memory: Annotated[str, BeforeValidator(_size)] | None = None
 
 
 Columns = dict[str, ColumnSection]

@@ -199,6 +199,10 @@ def _not_a_day(error: Error) -> Fault:
     return fault("not-a-day", error.where, found=_found(error.value))
 
 
+def _not_a_size(error: Error) -> Fault:
+    return fault("not-a-size", error.where, found=_found(error.value))
+
+
 def _found(value: Any) -> str:
     """What was found, to open a sentence with."""
     words = quoted(value) if isinstance(value, str) else described(value)
@@ -230,4 +234,5 @@ _TRANSLATORS: dict[str, Callable[[Error], Fault | None]] = {
     "per_range": _per,
     "groups_type": _groups,
     "not_a_day": _not_a_day,
+    "not_a_size": _not_a_size,
 }

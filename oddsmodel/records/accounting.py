@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from oddsmodel.records.condition import vet_condition
 from oddsmodel.records.outcome import CodedOutcome
-from oddsmodel.records.types import Records
+from oddsmodel.records.types import Column, Records
 from oddsmodel.results.study import Exclusion, Flow
 from oddsmodel.wording import say
 
@@ -47,6 +48,21 @@ class Accounting:
     flow: Flow
 
 
+@dataclass(frozen=True, slots=True)
+class Tally:
+    """Who is analysed among some rows, before it is told in words; tallies of rows one after another add up.
+
+    included: rows (n,) that are analysed. left_out: by reason how many records, and the columns that bring it about.
+    asked: by reason, all columns that could.
+    """
+
+    included: Mask
+    left_out: Mapping[str, tuple[int, tuple[str, ...]]]
+    asked: Mapping[str, tuple[str, ...]]
+    analysed: int
+    events: int
+
+
 def account(
     records: Records,
     outcome: CodedOutcome,
@@ -63,6 +79,20 @@ def account(
 
     Raises: InputFault for a condition that does not fit the columns.
     """
+    found = tally(records, outcome, keep=keep, exposures=exposures, adjustment=adjustment)
+    facts = {code: one.facts for code, one in records.left_out.items()}
+    return Accounting(found.included, flow_of([found], records.read, records.columns, keep, facts))
+
+
+def tally(
+    records: Records,
+    outcome: CodedOutcome,
+    *,
+    keep: Sequence[str],
+    exposures: Sequence[str],
+    adjustment: Sequence[str],
+) -> Tally:
+    """Who is analysed among some rows; the arguments are those of `account`."""
     n = len(records.frame)
     conditions = [vet_condition(text, records.columns, "keep") for text in keep]
     holds, fails = np.ones(n, dtype=np.bool_), np.zeros(n, dtype=np.bool_)
@@ -83,25 +113,40 @@ def account(
         "level-not-in-plan": (in_model, _outside(records, in_model)),
     }
     included = np.ones(n, dtype=np.bool_)
-    left_out: list[Exclusion] = []
+    left_out: dict[str, tuple[int, tuple[str, ...]]] = {}
     for code in sorted(reasons, key=REASONS.index):
         columns, mask = reasons[code]
         here = included & mask
         included &= ~mask
         number = _records(records, here)
         if number:
-            concerned = _concerned(records, code, columns, here)
-            labels = [records.columns[name].label for name in concerned]
-            facts = records.left_out[code].facts if code in records.left_out else {}
-            words = say(f"left-out-{code}", **{"labels": labels, "conditions": list(keep), **facts})
-            left_out.append(Exclusion(code, words, number))
-    flow = Flow(
-        read=records.read,
+            left_out[code] = (number, tuple(_concerned(records, code, columns, here)))
+    asked_of = {code: columns for code, (columns, _) in reasons.items()}
+    return Tally(included, left_out, asked_of, _records(records, included), _records(records, included & outcome.event))
+
+
+def flow_of(
+    tallies: Sequence[Tally],
+    read: int,
+    columns: Mapping[str, Column],
+    keep: Sequence[str],
+    facts: Mapping[str, Mapping[str, Any]],
+) -> Flow:
+    """Tallies added up and told. read: records read. facts: what the sentences of `records.left_out` need."""
+    left_out: list[Exclusion] = []
+    for code in REASONS:
+        parts = [one.left_out[code] for one in tallies if code in one.left_out]
+        if parts:
+            concerned = {name for _, names in parts for name in names}
+            labels = [columns[name].label for name in tallies[0].asked[code] if name in concerned]
+            words = say(f"left-out-{code}", **{"labels": labels, "conditions": list(keep), **facts.get(code, {})})
+            left_out.append(Exclusion(code, words, sum(number for number, _ in parts)))
+    return Flow(
+        read=read,
         left_out=tuple(left_out),
-        analysed=_records(records, included),
-        events=_records(records, included & outcome.event),
+        analysed=sum(one.analysed for one in tallies),
+        events=sum(one.events for one in tallies),
     )
-    return Accounting(included, flow)
 
 
 def _records(records: Records, rows: Mask) -> int:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Literal
@@ -21,6 +21,7 @@ from oddsmodel.records.levels import CodedLevels, code_levels, spelled_alike
 from oddsmodel.records.numbers import code_number
 from oddsmodel.records.plausible import within_plausible
 from oddsmodel.records.raw import RawType
+from oddsmodel.records.rows import Rows, Weights, occurrences
 from oddsmodel.records.same_value import absent_mask, matching, same_value_key
 from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
 from oddsmodel.records.texts import without_texts
@@ -40,7 +41,8 @@ class CodedColumn:
     """A coded column (see `Records.frame`), with what is to be said of it.
 
     outside: the mask (n,) of rows whose level is not in the plan, where any is. implausible: the mask (n,) of rows
-    whose number was set aside as outside the plausible range, where any is.
+    whose number was set aside as outside the plausible range, where any is. day_first: for dates of which the values
+    are a part, the order of day and month by sign (`dates.orders_of_dates`); None: the values say it.
     """
 
     values: pd.Series
@@ -49,23 +51,25 @@ class CodedColumn:
     findings: tuple[Finding, ...] = ()
     faults: tuple[Fault, ...] = ()
     implausible: NDArray[np.bool_] | None = None
+    day_first: Mapping[str, bool] | None = None
 
 
 @dataclass(frozen=True)
 class RawValues:
     """A raw column with its name and place.
 
-    not_recorded: the plan's texts for this column; first_row: see RawTable; file_name: its name in the file, where the
-    plan calls it otherwise.
+    not_recorded: the plan's texts for this column; file_name: its name in the file, where the plan calls it otherwise;
+    different: how many numbers are met at least, where `values` has only the lowest and the highest of them.
     """
 
     name: str
     values: pd.Series
     type: RawType
     source: str
-    first_row: int
+    rows: Rows
     not_recorded: Collection[str]
     file_name: str | None = None
+    different: int | None = None
 
     @property
     def where(self) -> str:
@@ -85,8 +89,8 @@ class RawValues:
 
 def code_column(raw: RawValues, section: ColumnSection | None, use: Use) -> CodedColumn:
     """The column coded by its kind. Columns that the plan does not use carry no findings and no faults."""
-    kind = kind_of(raw.recorded, raw.type, section)
-    column = _described(raw.name, kind, section)
+    kind = kind_of(raw.recorded, raw.type, section, raw.rows.weights)
+    column = described(raw.name, kind, section)
     if use == "none":
         return _unused(raw, column)
     if kind == "number":
@@ -99,7 +103,8 @@ def code_column(raw: RawValues, section: ColumnSection | None, use: Use) -> Code
     return replace(coded, findings=(finding("caution", "column-empty", column=raw.name),)) if empty else coded
 
 
-def _described(name: str, kind: Kind, section: ColumnSection | None) -> Column:
+def described(name: str, kind: Kind, section: ColumnSection | None) -> Column:
+    """What the plan says of a column."""
     if section is None:
         return Column(name, kind, name)
     per = section.per if section.per is not None else 1.0
@@ -117,39 +122,42 @@ def _described(name: str, kind: Kind, section: ColumnSection | None) -> Column:
 
 def _unused(raw: RawValues, column: Column) -> CodedColumn:
     if column.kind == "number":
-        numbers, faults = code_number(raw.values, raw.keys, where=raw.where, first_row=raw.first_row)
+        numbers, faults = code_number(raw.values, raw.keys, where=raw.where, rows=raw.rows)
         if not faults or raw.type == "number":
             return CodedColumn(pd.Series(numbers), column)
         column = replace(column, kind="category")
     if column.kind in WITH_LEVELS and raw.type != "empty" and len(raw.recorded.cat.categories) <= 1000:
-        coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind, keep_order=_ordered(raw))
+        coded = _code_levels(raw, column.kind, None)
         return CodedColumn(coded.series(column.kind == "ordered"), replace(column, levels=coded.levels))
     return _texts(raw, column)
 
 
 def _number(raw: RawValues, column: Column, section: ColumnSection | None, use: Use) -> CodedColumn:
-    numbers, faults = code_number(raw.values, raw.keys, where=raw.where, first_row=raw.first_row)
+    numbers, faults = code_number(raw.values, raw.keys, where=raw.where, rows=raw.rows)
     findings: list[Finding] = []
     plausible = section.plausible if section is not None else None
     numbers, implausible = within_plausible(numbers, plausible)
     if use == "model" and not faults:
         said = (section.kind, section.per, section.units, plausible) if section is not None else ()
-        findings = _questions_of_numbers(raw.name, numbers, any(one is not None for one in said), plausible is None)
+        findings = _questions_of_numbers(raw, numbers, any(one is not None for one in said), plausible is None)
     return CodedColumn(pd.Series(numbers), column, None, tuple(findings), tuple(faults), implausible)
 
 
-def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: bool, codes_met: bool) -> list[Finding]:
+def _questions_of_numbers(
+    raw: RawValues, numbers: NDArray[np.float64], declared: bool, codes_met: bool
+) -> list[Finding]:
     """What is asked about a column of numbers: few whole numbers, and codes that may mean "not recorded".
 
     declared: the plan says that it is a number. codes_met: no plausible range has set codes aside already.
     """
-    found, counts = numbers_met(numbers)
+    name = raw.name
+    found, counts = numbers_met(numbers, raw.rows.weights)
     questions: list[Finding] = []
     if not declared and 0 < len(found) <= FEW_WHOLE_NUMBERS and np.all(found == np.trunc(found)):
         questions.append(
             finding("note", "few-whole-numbers", column=name, values=[same_value_key(number) for number in found])
         )
-    codes = suspected_codes(found, counts) if codes_met else []
+    codes = suspected_codes(found, counts, raw.different) if codes_met else []
     if codes:
         records = [int(counts[np.searchsorted(found, code)]) for code in codes]
         texts = [same_value_key(code) for code in codes]
@@ -157,17 +165,19 @@ def _questions_of_numbers(name: str, numbers: NDArray[np.float64], declared: boo
     return questions
 
 
-def numbers_met(numbers: NDArray[np.float64]) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
-    """The different recorded numbers in order, and in how many rows each is met."""
+def numbers_met(
+    numbers: NDArray[np.float64], weights: Weights | None = None
+) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
+    """The different recorded numbers in order, and in how many rows each is met. weights (n,): rows for each number."""
     codes, found = pd.factorize(numbers)
-    counts = np.bincount(codes[codes >= 0], minlength=len(found)).astype(np.int64)
+    counts = occurrences(codes, len(found), weights)
     order = np.argsort(found)
     return np.asarray(found, dtype=np.float64)[order], counts[order]
 
 
 def _levels(raw: RawValues, column: Column, section: ColumnSection | None, use: Use) -> CodedColumn:
     planned = section.levels if section is not None else None
-    coded = code_levels(raw.values, raw.keys, levels=planned, kind=column.kind, keep_order=_ordered(raw))
+    coded = _code_levels(raw, column.kind, planned)
     column = replace(column, levels=coded.levels)
     faults: list[Fault] = []
     outside = None
@@ -259,17 +269,17 @@ def _texts(raw: RawValues, column: Column) -> CodedColumn:
     if isinstance(raw.values.dtype, pd.CategoricalDtype):
         values = raw.recorded
     else:
-        coded = code_levels(raw.values, raw.keys, levels=None, kind=column.kind)
-        values = coded.series()
+        values = code_levels(raw.values, raw.keys, levels=None, kind=column.kind, weights=raw.rows.weights).series()
     findings: tuple[Finding, ...] = ()
     if column.kind == "identifier":
-        met = np.bincount(np.asarray(values.cat.codes) + 1, minlength=1)[1:]
+        met = occurrences(np.asarray(values.cat.codes, dtype=np.intp), 0, raw.rows.weights)
         if met.max(initial=0) > 1:
             facts = {"records": int(met.sum()), "different": int((met > 0).sum())}
             findings = (finding("stop", "identifier-repeats", column=column.name, **facts),)
     return CodedColumn(values, column, None, findings)
 
 
-def _ordered(raw: RawValues) -> bool:
-    """Whether the categories came with an order of their own."""
-    return raw.type in ("category", "ordered")
+def _code_levels(raw: RawValues, kind: str, levels: Sequence[str] | None) -> CodedLevels:
+    """The levels, in their own order where the categories came with one."""
+    ordered = raw.type in ("category", "ordered")
+    return code_levels(raw.values, raw.keys, levels=levels, kind=kind, keep_order=ordered, weights=raw.rows.weights)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -13,6 +14,7 @@ from numpy.typing import NDArray
 
 from oddsmodel.errors import Fault, InputFault
 from oddsmodel.records.faults import fault
+from oddsmodel.records.rows import Rows, RowsInOrder
 from oddsmodel.wording.plain import quoted
 
 Array = NDArray[np.float64]
@@ -24,31 +26,33 @@ YEAR_FIRST = r"^(?P<first>[0-9]{4})(?P<sign>[-/.])(?P<second>[0-9]{1,2})(?P<agai
 YEAR_LAST = r"^(?P<first>[0-9]{1,2})(?P<sign>[-/.])(?P<second>[0-9]{1,2})(?P<again>[-/.])(?P<third>[0-9]{4})"
 TWO_DIGITS = r"^[0-9]{1,2}[-/.][0-9]{1,2}[-/.][0-9]{2}$"
 FIRST_YEAR, LAST_YEAR = 1800, 2200
-NAMED = 5
 
 
 @dataclass(frozen=True, slots=True)
 class _Cells:
-    """The different texts (k,) of a column, each row's code (n,) among them (-1: empty), and where the column is."""
+    """The different texts (k,) of a column, the code (n,) of each value among them (-1: empty), and where it is."""
 
     texts: list[str]
     codes: NDArray[np.intp]
     where: str
-    first_row: int
+    rows: Rows
 
     def fault(self, code: str, wanted: Mask, **facts: Any) -> Fault:
         """A fault that names the first rows whose text is among the wanted (k,)."""
         at = np.flatnonzero(np.append(wanted, False)[self.codes])
-        rows = [int(row) + self.first_row for row in at[:NAMED]]
-        values = [quoted(self.texts[self.codes[row]]) for row in at[:NAMED]]
-        return fault(code, self.where, rows=rows, values=values, total=len(at), **facts)
+        named, positions = self.rows.first(at)
+        values = [quoted(self.texts[self.codes[position]]) for position in positions]
+        return fault(code, self.where, rows=named, values=values, total=self.rows.total(at), **facts)
 
 
-def parse_dates(texts: pd.Series, *, where: str, first_row: int = 2) -> Array:
+def parse_dates(
+    texts: pd.Series, *, where: str, rows: Rows | None = None, day_first: Mapping[str, bool] | None = None
+) -> Array:
     """Days since 1970-01-01 (n,), NaN where the cell is empty. A time of day is left aside.
 
     texts: a categorical or object series of texts (n,), such as a column of kind date in `Records.frame`.
-    where: the place of the column in messages (`records.faults.in_column`); first_row: what its first row is called.
+    where: the place of the column in messages (`records.faults.in_column`); rows: by default the first is called 2.
+    day_first: the order of day and month by sign where it is settled (`orders_of_dates`), as for a part of a column.
 
     A date is year-month-day, in which a slash or a point may stand for the dash, or has its four-digit year last:
     13/02/2024 or 02/13/2024. For these the order of day and month is settled by a number above 12, met in any date of
@@ -58,15 +62,23 @@ def parse_dates(texts: pd.Series, *, where: str, first_row: int = 2) -> Array:
         years before 1800 or after 2200, an order of day and month that no date settles, or that two settle
         differently.
     """
-    cells = _cells(texts, where, first_row)
-    days, faults = _days(cells)
+    cells = _cells(texts, where, rows or RowsInOrder())
+    days, _, faults = _days(cells, day_first)
     if faults:
         raise InputFault(faults)
     return np.append(days, np.nan)[cells.codes]
 
 
-def _cells(texts: pd.Series, where: str, first_row: int) -> _Cells:
-    """The texts that at least one row holds."""
+def orders_of_dates(texts: pd.Series, *, where: str, rows: Rows) -> dict[str, bool]:
+    """Whether the day comes first in dates with the year last, by their sign. Raises: InputFault as `parse_dates`."""
+    _, day_first, faults = _days(_cells(texts, where, rows), None)
+    if faults:
+        raise InputFault(faults)
+    return day_first
+
+
+def _cells(texts: pd.Series, where: str, rows: Rows) -> _Cells:
+    """The texts that are met."""
     if isinstance(texts.dtype, pd.CategoricalDtype):
         codes, known = np.asarray(texts.cat.codes, dtype=np.intp), [str(text) for text in texts.cat.categories]
     else:
@@ -74,15 +86,16 @@ def _cells(texts: pd.Series, where: str, first_row: int) -> _Cells:
         known = [str(text) for text in found]
     met = np.bincount(codes + 1, minlength=len(known) + 1)[1:] > 0
     position = np.append(np.where(met, np.cumsum(met) - 1, -1), -1)
-    return _Cells([text for text, here in zip(known, met, strict=True) if here], position[codes], where, first_row)
+    return _Cells([text for text, here in zip(known, met, strict=True) if here], position[codes], where, rows)
 
 
-def _days(cells: _Cells) -> tuple[Array, list[Fault]]:
-    """The days (k,) of the different texts, and what is wrong with them."""
+def _days(cells: _Cells, settled: Mapping[str, bool] | None) -> tuple[Array, dict[str, bool], list[Fault]]:
+    """The days (k,) of the different texts, whether the day comes first by sign, and what is wrong with them."""
     texts = pa.array(cells.texts, pa.string())
     iso, (year, month, day), _ = _parts(texts, YEAR_FIRST)
     last, (first, second, late), signs = _parts(texts, YEAR_LAST)
     faults: list[Fault] = []
+    orders: dict[str, bool] = {}
     other = ~iso & ~last
     short = other & np.asarray(pc.match_substring_regex(texts, TWO_DIGITS).to_numpy(zero_copy_only=False), dtype=bool)
     for code, at in (("date-two-digit-year", short), ("date-not-readable", other & ~short)):
@@ -90,15 +103,17 @@ def _days(cells: _Cells) -> tuple[Array, list[Fault]]:
             faults.append(cells.fault(code, at))
     for sign in sorted(set(signs[last])):
         here = last & (signs == sign)
-        day_first, wrong = _order(cells, here, first, second)
+        day_first, wrong = _order(cells, here, first, second) if settled is None else (settled[sign], None)
         if wrong is not None:
             faults.append(wrong)
             continue
+        orders[sign] = day_first
         year[here] = late[here]
         day[here], month[here] = (first[here], second[here]) if day_first else (second[here], first[here])
     if faults:
-        return np.empty(0), faults
-    return _in_calendar(cells, year, month, day)
+        return np.empty(0), orders, faults
+    days, faults = _in_calendar(cells, year, month, day)
+    return days, orders, faults
 
 
 def _parts(texts: pa.Array, pattern: str) -> tuple[Mask, tuple[Whole, Whole, Whole], NDArray[Any]]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator
+from collections.abc import Collection, Iterable, Iterator
 
 import pyarrow as pa
 import pyarrow.compute as pc
@@ -17,38 +17,42 @@ THOUSANDS = r"^\s*[+-]?[1-9][0-9]{0,2}(?:,[0-9]{3})+\s*$"
 EITHER = r"^\s*[+-]?[0-9]*[.,]?[0-9]+\s*$"
 
 
-def has_decimal_commas(table: pa.Table, apart: Collection[str], source: str) -> bool:
-    """Whether a column, other than those kept apart as text, has numbers written with a comma.
+Texts = Iterable[tuple[str, pa.ChunkedArray]]
+"""The names of text columns and their different texts."""
+
+
+def has_decimal_commas(columns: Texts, source: str) -> bool:
+    """Whether a column has numbers written with a comma.
 
     Raises: InputFault when every one of them can as well be a whole number with its thousands marked off.
     """
-    columns = [
+    found = [
         (name, texts.filter(pc.match_substring_regex(texts, COMMA)))
-        for name, texts in _texts(table, apart)
+        for name, texts in columns
         if _share(texts, EITHER) >= 0.5
     ]
-    written = [(name, texts) for name, texts in columns if len(texts)]
+    written = [(name, texts) for name, texts in found if len(texts)]
     if written and all(_share(texts, THOUSANDS) == 1.0 for _, texts in written):
         raise InputFault([fault("decimal-mark-ambiguous", in_column(source, name)) for name, _ in written])
     return bool(written)
 
 
-def refuse_ambiguous(table: pa.Table, apart: Collection[str], source: str) -> None:
-    """Refuse a table, read with the decimal comma, in which some column speaks for the decimal point.
+def refuse_ambiguous(columns: Texts, source: str) -> None:
+    """Refuse columns, read with the decimal comma, of which some speaks for the decimal point.
 
     Raises: InputFault naming each column that has both spellings, or thousands marked off.
     """
     faults = [
         fault("decimal-mark-ambiguous", in_column(source, name))
-        for name, texts in _texts(table, apart)
+        for name, texts in columns
         if _share(texts, EITHER) >= 0.5 and (_share(texts, POINT) > 0 or _share(texts, BOTH) > 0)
     ]
     if faults:
         raise InputFault(faults)
 
 
-def _texts(table: pa.Table, apart: Collection[str]) -> Iterator[tuple[str, pa.Array]]:
-    """The different texts of each text column."""
+def different_texts(table: pa.Table, apart: Collection[str]) -> Iterator[tuple[str, pa.ChunkedArray]]:
+    """The different texts of each text column, other than those kept apart as text."""
     for name in table.column_names:
         if pa.types.is_dictionary(table[name].type) and name not in apart:
             chunks = [chunk.dictionary for chunk in table[name].chunks]

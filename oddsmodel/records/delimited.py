@@ -13,7 +13,7 @@ import pyarrow.csv as pa_csv
 
 from oddsmodel.errors import InputFault
 from oddsmodel.findings import Finding
-from oddsmodel.records.decimal_comma import has_decimal_commas, refuse_ambiguous
+from oddsmodel.records.decimal_comma import different_texts, has_decimal_commas, refuse_ambiguous
 from oddsmodel.records.delimiter import detect_delimiter
 from oddsmodel.records.encoding import to_utf8
 from oddsmodel.records.faults import fault, in_column
@@ -40,13 +40,21 @@ class DelimitedText:
     not_recorded: tuple[str, ...]
     decimal_point: str = "."
 
-    def parse(self, *, text_columns: Collection[str] = (), only: Sequence[str] = ()) -> pa.Table:
+    def parse(
+        self,
+        *,
+        text_columns: Collection[str] = (),
+        only: Sequence[str] = (),
+        types: Mapping[str, pa.DataType] | None = None,
+    ) -> pa.Table:
         """The table; `text_columns` are kept as text, of the others the types are told from all their values.
+
+        types: of columns for which they are settled.
 
         Raises: pyarrow.ArrowInvalid when the rows cannot be told apart.
         """
         options = pa_csv.ConvertOptions(
-            column_types=dict.fromkeys(text_columns, TEXT),
+            column_types={**dict.fromkeys(text_columns, TEXT), **(types or {})},
             include_columns=list(only),
             null_values=sorted({"", *self.not_recorded}),
             strings_can_be_null=False,
@@ -81,16 +89,16 @@ def read_delimited(
     known = tuple(name for name in text.names if name in set(text_columns))
     table = _parsed(text, known, source)
     comma_notes: tuple[Finding, ...] = ()
-    if text.delimiter != "," and has_decimal_commas(table, known, source):
+    if text.delimiter != "," and has_decimal_commas(different_texts(table, known), source):
         text = replace(text, decimal_point=",")
         table = _parsed(text, known, source)
-        refuse_ambiguous(table, known, source)
+        refuse_ambiguous(different_texts(table, known), source)
         comma_notes = (finding("note", "decimal-comma"),)
     if table.num_rows == 0:
         raise InputFault(fault("no-rows", source))
     _refuse_open_quote(table, content, source)
     table = _with_numbers_as_written(table, text)
-    _refuse_long_fields(table, source)
+    refuse_long_fields(table, source)
     return table, notes + delimiter_notes + comma_notes + _blank_lines(content)
 
 
@@ -103,9 +111,13 @@ def _layout(content: bytes, source: str, not_recorded: tuple[str, ...]) -> tuple
     names = header_names(content[:end], delimiter, source)
     if SOMETHING.search(content, end) is None:
         raise InputFault(fault("no-rows", source))
+    return DelimitedText(content, delimiter, tuple(names), not_recorded), told_of_delimiter(delimiter, source)
+
+
+def told_of_delimiter(delimiter: str, source: str) -> tuple[Finding, ...]:
+    """A note where fields are not separated as the file's name says."""
     usual = "\t" if source.lower().endswith((".tsv", ".tab")) else ","
-    notes = () if delimiter == usual else (finding("note", "delimiter", delimiter=DELIMITER_NAMES[delimiter]),)
-    return DelimitedText(content, delimiter, tuple(names), not_recorded), notes
+    return () if delimiter == usual else (finding("note", "delimiter", delimiter=DELIMITER_NAMES[delimiter]),)
 
 
 def _parsed(text: DelimitedText, text_columns: Collection[str], source: str) -> pa.Table:
@@ -123,26 +135,27 @@ def _with_numbers_as_written(table: pa.Table, text: DelimitedText) -> pa.Table:
     takes for one ("nan", "inf").
     """
     doubtful = [name for name in table.column_names if _is_not_finite_or_large(table[name])]
-    numbers = [name for name in table.column_names if name not in doubtful and _is_number(table[name].type)]
-    zeros = numbers if numbers and _has_leading_zeros(text.content, text.delimiter) else []
+    numbers = [name for name in table.column_names if name not in doubtful and is_number(table[name].type)]
+    zeros = numbers if numbers and has_leading_zeros(text.content, text.delimiter) else []
     if not doubtful and not zeros:
         return table
     again = text.parse(text_columns=[*doubtful, *zeros], only=[*doubtful, *zeros])
     mapping: Mapping[str, pa.ChunkedArray] = {
         **{name: again[name] for name in doubtful},
-        **{name: again[name] for name in zeros if _starts_with_zero(again[name])},
+        **{name: again[name] for name in zeros if starts_with_zero(again[name])},
     }
     for name, column in mapping.items():
         table = table.set_column(table.column_names.index(name), name, column)
     return table
 
 
-def _is_number(kind: pa.DataType) -> bool:
+def is_number(kind: pa.DataType) -> bool:
+    """Whether a type is one of numbers."""
     return bool(pa.types.is_integer(kind) or pa.types.is_floating(kind))
 
 
 def _is_not_finite_or_large(column: pa.ChunkedArray) -> bool:
-    if not _is_number(column.type):
+    if not is_number(column.type):
         return False
     if pa.types.is_floating(column.type) and not pc.all(pc.is_finite(column), min_count=0).as_py():
         return True
@@ -153,7 +166,7 @@ def _is_not_finite_or_large(column: pa.ChunkedArray) -> bool:
     return largest >= WHOLE_BOUND and bool(pc.all(pc.equal(column, pc.trunc(column))).as_py())
 
 
-def _has_leading_zeros(content: bytes, delimiter: str) -> bool:
+def has_leading_zeros(content: bytes, delimiter: str) -> bool:
     """Whether any field starts with a zero before another digit, in quotation marks, after a space or a sign or not."""
     opens = np.zeros(256, dtype=bool)
     opens[[10, 13, 34, ord(delimiter)]] = True
@@ -169,7 +182,8 @@ def _has_leading_zeros(content: bytes, delimiter: str) -> bool:
     return False
 
 
-def _starts_with_zero(column: pa.ChunkedArray) -> bool:
+def starts_with_zero(column: pa.ChunkedArray) -> bool:
+    """Whether any text of a column has a zero before another digit."""
     for chunk in column.chunks:
         if pc.any(pc.match_substring_regex(chunk.dictionary, r"^\s*[+-]?0[0-9]")).as_py():
             return True
@@ -188,9 +202,9 @@ def _refuse_open_quote(table: pa.Table, content: bytes, source: str) -> None:
                 raise InputFault(fault("quote-not-closed", f"{source}, row {first_odd_line(content)}"))
 
 
-def _refuse_long_fields(table: pa.Table, source: str) -> None:
+def refuse_long_fields(table: pa.Table, source: str, first_row: int = 2) -> None:
+    """Refuse texts of more than a megabyte. first_row: what the first row of the table is called."""
     faults = []
-    first_row = 2
     for name in table.column_names:
         column = table[name]
         if not pa.types.is_dictionary(column.type):

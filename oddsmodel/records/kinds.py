@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from oddsmodel.plan.schema import ColumnSection, Kind
 from oddsmodel.records.raw import RawType
+from oddsmodel.records.rows import Weights, occurrences
 from oddsmodel.records.same_value import yes_or_no
 
 NUMBER = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)(?:[eE][+-]?[0-9]{1,3})?")
@@ -32,25 +33,37 @@ FEWEST_NUMBERS = 10
 MOSTLY = 0.9
 
 
-def kind_of(values: pd.Series, raw_type: RawType, section: ColumnSection | None) -> Kind:
-    """The kind by the plan, by the keys that the plan gives the column, or by its values (not recorded: NaN)."""
-    if section is not None and section.kind is not None:
-        return section.kind
-    if section is not None and (section.levels is not None or section.reference is not None):
+def kind_of(
+    values: pd.Series, raw_type: RawType, section: ColumnSection | None, weights: Weights | None = None
+) -> Kind:
+    """The kind by the plan, by the keys that the plan gives the column, or by its values (not recorded: NaN).
+
+    weights (n,): rows that each value stands for.
+    """
+    kind = kind_by_plan(section, raw_type)
+    if kind is not None:
+        return kind
+    return kind_of_texts(values, weights) if raw_type == "text" else SPELLED_TYPES[raw_type]
+
+
+def kind_by_plan(section: ColumnSection | None, raw_type: RawType = "text") -> Kind | None:
+    """The kind by the plan, or by the keys that the plan gives the column; None where these leave it open."""
+    if section is None or section.kind is not None:
+        return None if section is None else section.kind
+    if section.levels is not None or section.reference is not None:
         return "ordered" if raw_type == "ordered" else "category"
-    if section is not None and not (section.per is None and section.units is None and section.plausible is None):
+    if not (section.per is None and section.units is None and section.plausible is None):
         return "number"
-    return kind_of_texts(values) if raw_type == "text" else SPELLED_TYPES[raw_type]
+    return None
 
 
-def kind_of_texts(values: pd.Series) -> Kind:
+def kind_of_texts(values: pd.Series, weights: Weights | None = None) -> Kind:
     """The kind of a column of texts.
 
     Numbers if nine in ten records hold one and more than ten different ones are met: the others are then stray
     texts. An identifier if no text is met twice in fifty records or more.
     """
-    codes = np.asarray(values.cat.codes)
-    counts = np.bincount(codes[codes >= 0], minlength=len(values.cat.categories))
+    counts = occurrences(np.asarray(values.cat.codes, dtype=np.intp), len(values.cat.categories), weights)
     texts = list(values.cat.categories[counts > 0])
     counts = counts[counts > 0]
     if not texts:

@@ -10,6 +10,7 @@ import pandas as pd
 from numpy.typing import NDArray
 
 from oddsmodel.records.kinds import is_number
+from oddsmodel.records.rows import Weights, occurrences
 from oddsmodel.records.same_value import same_value_key, yes_or_no
 
 YES_NO = ("no", "yes")
@@ -43,15 +44,17 @@ def code_levels(
     levels: Sequence[str] | None,
     kind: str,
     keep_order: bool = False,
+    weights: Weights | None = None,
 ) -> CodedLevels:
     """The levels of a column.
 
     levels: those of the plan; None takes the values met, numbers by size and texts by code point (or, with
     `keep_order`, as the categories stand). Of several spellings of a value the plainest number or the most
-    frequent text is kept. A yes-no column without levels of its own has the levels no and yes.
+    frequent text is kept. A yes-no column without levels of its own has the levels no and yes. weights (n,): rows that
+    each value stands for.
     """
     texts, codes = _texts_and_codes(values)
-    counts = np.bincount(codes + 1, minlength=len(texts) + 1)[1:]
+    counts = occurrences(codes, len(texts), weights)
     keys = [same_value_key(text) for text in texts]
     if kind == "yes-no" and levels is None:
         levels = YES_NO
@@ -71,7 +74,7 @@ def code_levels(
         elif said and yes_or_no(text) is not None:
             to_level[number] = said[yes_or_no(text)]
     coded = to_level[codes]
-    by_level = np.bincount(coded[coded >= 0], minlength=len(levels))
+    by_level = occurrences(coded, len(levels), weights)
     outside = [(texts[at], int(counts[at])) for at in np.flatnonzero(to_level[:-1] == OUTSIDE) if counts[at]]
     outside.sort(key=lambda found: (-found[1], found[0]))
     return CodedLevels(tuple(levels), coded, tuple(int(count) for count in by_level), tuple(outside))
@@ -88,7 +91,7 @@ def _texts_and_codes(values: pd.Series) -> tuple[list[str], NDArray[np.intp]]:
 def _levels_met(
     texts: Sequence[str],
     keys: Sequence[str],
-    counts: NDArray[np.intp],
+    counts: Weights,
     not_recorded: Collection[str],
     keep_order: bool,
 ) -> list[str]:

@@ -24,10 +24,7 @@ def within_plausible(
     return (np.where(outside, np.nan, numbers), outside) if outside.any() else (numbers, None)
 
 
-def implausible_finding(
-    column: str, outside: NDArray[np.bool_], counts: NDArray[np.float64] | None, plausible: Sequence[float]
-) -> Finding:
-    """How many records have a value that was set aside. counts (n,): records that each row stands for."""
-    number = int(outside.sum() if counts is None else counts[outside].sum())
+def implausible_finding(column: str, records: int, plausible: Sequence[float]) -> Finding:
+    """How many records have a value that was set aside."""
     limits = [float(limit) for limit in plausible]
-    return finding("note", "implausible-values", column=column, limits=limits, records=number)
+    return finding("note", "implausible-values", column=column, limits=limits, records=records)

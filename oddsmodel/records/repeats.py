@@ -14,7 +14,7 @@ from oddsmodel.findings import Finding
 from oddsmodel.plan.schema import Repeats as RepeatsSection
 from oddsmodel.records.condition import vet_condition
 from oddsmodel.records.faults import fault
-from oddsmodel.records.made_outcome import ROWS_NAMED, Table
+from oddsmodel.records.made_outcome import Table
 from oddsmodel.records.types import LeftOut
 from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
@@ -113,7 +113,7 @@ def repeats_left_out(
             "persons": len(np.unique(codes[rows])),
             "person": person,
             "use": repeats.use,
-            "rows": [int(row) + table.first_row for row in rows[:ROWS_NAMED]],
+            "rows": table.rows.first(rows)[0],
             "total": len(rows),
         }
         raise InputFault(fault("repeats-tied", table.where(repeats.ordered_by), **facts))

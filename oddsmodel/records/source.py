@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Collection, Iterable, Sequence
+from collections.abc import Collection, Iterable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -35,7 +35,7 @@ def read_table(path: Path, *, text_columns: Collection[str] = (), not_recorded: 
     Raises: InputFault for a path that cannot be read and for everything that the readers refuse.
     """
     if path.is_dir():
-        return _from_arrow(read_parquet(path, path.name), path.name, _folder_sha256(path))
+        return _from_arrow(read_parquet(path, path.name), path.name, folder_sha256(path))
     if not path.exists():
         raise InputFault(fault("file-missing", str(path)))
     if not path.is_file():
@@ -95,20 +95,25 @@ def assembled(
     found = dict(columns)
     raw = {name: column for name, column in found.items() if isinstance(column, RawColumn)}
     refused = {name: column for name, column in found.items() if isinstance(column, str)}
-    notes += _repairs("spaces-removed", {name: column.stripped for name, column in raw.items()})
-    notes += _repairs("characters-removed", {name: column.cleaned for name, column in raw.items()})
-    if refused:
-        notes += (finding("note", "columns-left-out", columns=list(refused), hold=list(refused.values())),)
     frame: pd.DataFrame = pd.DataFrame({name: column.values for name, column in raw.items()}, copy=False)
     return RawTable(
         frame=frame,
         types={name: column.type for name, column in raw.items()},
         source=source,
         sha256=sha256,
-        findings=notes,
+        findings=(*notes, *told_of_columns(raw, refused)),
         refused=refused,
         first_row=first_row,
     )
+
+
+def told_of_columns(raw: Mapping[str, RawColumn], refused: Mapping[str, str]) -> tuple[Finding, ...]:
+    """Notes on what was repaired in columns, and on those that hold no plain values."""
+    notes = _repairs("spaces-removed", {name: column.stripped for name, column in raw.items()})
+    notes += _repairs("characters-removed", {name: column.cleaned for name, column in raw.items()})
+    if refused:
+        notes += (finding("note", "columns-left-out", columns=list(refused), hold=list(refused.values())),)
+    return notes
 
 
 def _repairs(code: str, changed: dict[str, int]) -> tuple[Finding, ...]:
@@ -116,7 +121,13 @@ def _repairs(code: str, changed: dict[str, int]) -> tuple[Finding, ...]:
     return (finding("note", code, columns=columns, records=sum(changed.values())),) if columns else ()
 
 
-def _folder_sha256(folder: Path) -> str:
+def file_sha256(path: Path) -> str:
+    """Checksum of the bytes of a file."""
+    with path.open("rb") as file:
+        return hashlib.file_digest(file, "sha256").hexdigest()
+
+
+def folder_sha256(folder: Path) -> str:
     """Checksum of the names and bytes of a folder's Parquet files, in the order of their names."""
     digest = hashlib.sha256()
     for path in parquet_files(folder):

@@ -15,6 +15,7 @@ from oddsmodel.records.kinds import FEWEST_FOR_IDENTIFIER, kind_of
 from oddsmodel.records.levels import code_levels, spelled_alike
 from oddsmodel.records.numbers import code_number
 from oddsmodel.records.raw import RawType
+from oddsmodel.records.rows import RowsInOrder
 from oddsmodel.records.same_value import same_value_key
 from oddsmodel.records.source import read_table
 from oddsmodel.records.suspected_codes import looks_not_recorded, suspected_codes
@@ -78,7 +79,7 @@ def _column(name: str, values: pd.Series, raw_type: RawType) -> ColumnSurvey:
 
 
 def _numbers(name: str, values: pd.Series, like: list[str]) -> ColumnSurvey:
-    numbers, faults = code_number(values, (), where=name, first_row=1)
+    numbers, faults = code_number(values, (), where=name, rows=RowsInOrder())
     found, counts = numbers_met(numbers)
     finite = np.isfinite(found)
     found, counts = found[finite], counts[finite]

@@ -9,6 +9,7 @@ import pyarrow.compute as pc
 from numpy.typing import NDArray
 
 from oddsmodel.records.raw import RawColumn, RawType
+from oddsmodel.records.rows import Weights, occurrences
 
 NOT_SHOWN = r"[\x00-\x1f\x7f-\x{9f}\x{200b}\x{202a}-\x{202e}\x{2066}-\x{2069}\x{feff}]+"
 
@@ -22,8 +23,12 @@ def without_texts(values: pd.Series, absent: NDArray[np.bool_]) -> pd.Series:
     return pd.Series(pd.Categorical.from_codes(codes, categories=values.cat.categories[~absent]))
 
 
-def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) -> RawColumn:
-    """A column of texts from its different texts and one code a row (n,), -1 for an empty cell.
+def text_column(
+    dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType, weights: Weights | None = None
+) -> RawColumn:
+    """A column of texts from its different texts and a code for each cell (n,), -1 for an empty one.
+
+    weights (n,): how many rows have the cell, where it is not one.
 
     Spaces around a text go; runs of control and direction-changing characters become one space (they could make
     a text look like another one); composed and decomposed accents are one (Unicode NFC). A text of which nothing
@@ -33,7 +38,7 @@ def text_column(dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType) ->
     trimmed = pc.utf8_trim_whitespace(texts)
     shown = pc.utf8_trim_whitespace(pc.replace_substring_regex(trimmed, NOT_SHOWN, " "))
     clean = pc.utf8_normalize(shown, form="NFC")
-    counts = np.bincount(codes + 1, minlength=len(texts) + 1)[1:]
+    counts = occurrences(codes, len(texts), weights)
     stripped = int(counts[pc.not_equal(texts, trimmed).to_numpy(zero_copy_only=False)].sum())
     cleaned = int(counts[pc.not_equal(trimmed, shown).to_numpy(zero_copy_only=False)].sum())
     if not clean.equals(texts) or pc.any(pc.equal(clean, "")).as_py() or len(pc.unique(clean)) < len(clean):

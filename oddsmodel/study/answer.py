@@ -3,27 +3,21 @@
 from __future__ import annotations
 
 import numpy as np
-from numpy.typing import NDArray
 
 from oddsmodel.findings import Finding
-from oddsmodel.measures.characteristics import study_characteristics
 from oddsmodel.measures.compare_models import compare_models, models_figure
-from oddsmodel.measures.crude import KeptRecords
 from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.kept import People
 from oddsmodel.progress import Progress, Silent
-from oddsmodel.records.accounting import account
 from oddsmodel.records.types import Column
 from oddsmodel.results.study import AdjustmentColumn, ModelResult, RecordsResult, StudyResults
-from oddsmodel.results.tables import Table
 from oddsmodel.study.check import CheckedPlan
-from oddsmodel.study.derived import with_counts
 from oddsmodel.study.deviations import standard_deviations
 from oddsmodel.study.estimate import estimate
 from oddsmodel.study.fitting import Fitted, fit_model
 from oddsmodel.study.follow_up import rules, with_losses
-from oddsmodel.study.groups import with_groups_told
-from oddsmodel.study.prepare import Prepared, conditions, on_records_of
+from oddsmodel.study.prepare import conditions
 from oddsmodel.study.provenance import provenance
 from oddsmodel.wording import finding
 from oddsmodel.wording.numbers import ratio
@@ -32,24 +26,24 @@ from oddsmodel.wording.numbers import ratio
 def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[StudyResults, tuple[Fitted, ...]]:
     """The results of the whole study, internal until disclosure has seen them, and the fits they rest on."""
     progress = progress or Silent()
-    plan, records, models = checked.file.plan, checked.records, checked.models
+    plan, data, models = checked.file.plan, checked.data, checked.models
     progress.stage("fitting", len(models))
     fitted = []
     for prepared in models:
         fitted.append(fit_model(prepared, plan))
         progress.advance()
     results = []
-    populations: dict[tuple[str, ...], KeptRecords] = {}
+    populations: dict[tuple[str, ...], People] = {}
     for prepared, fit in zip(models, fitted, strict=True):
         who = tuple(conditions(plan, prepared.section))
         if who not in populations:
-            populations[who] = _kept(checked, _rows_kept(checked, prepared, ()))
-        result = estimate(prepared, fit, plan, records, populations[who], progress)
-        results.append(with_losses(result, prepared, plan, records, checked.outcome))
+            populations[who] = data.kept(prepared)
+        result = estimate(prepared, fit, plan, data.columns, populations[who], progress)
+        results.append(with_losses(result, prepared, plan, data))
     differing = _records_differ(checked, tuple(fitted), tuple(results))
     main = results[0]
     used = dict.fromkeys(column for prepared in models for column in (*prepared.exposures, *prepared.adjustment))
-    outcome = records.columns[plan.outcome.column_name]
+    outcome = data.columns[plan.outcome.column_name]
     comparable = plan.study.design not in CASE_CONTROL
     share = main.events / main.records if comparable and main.records and main.events is not None else None
     study = StudyResults(
@@ -60,22 +54,20 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
         audience=plan.report.audience,
         outcome=plan.outcome.column_name,
         outcome_label=outcome.label,
-        event=checked.outcome.event_label,
+        event=data.event_label,
         event_share=share,
         not_measured=plan.study.not_measured,
-        columns=tuple(_column(records.columns[name]) for name in used),
-        records=RecordsResult(
-            source=records.source, sha256=records.sha256, read=records.read, excluded=main.flow.left_out
-        ),
+        columns=tuple(_column(data.columns[name]) for name in used),
+        records=RecordsResult(source=data.source, sha256=data.sha256, read=data.read, excluded=main.flow.left_out),
         models=tuple(results),
-        characteristics=_characteristics(checked, models[0]),
-        findings=(*checked.records.findings, *differing),
+        characteristics=data.characteristics(models[0]),
+        findings=(*data.findings, *differing),
         provenance=provenance(checked.file),
-        rules=rules(plan, records),
+        rules=rules(plan, data.columns),
         comparison=compare_models(results),
         comparison_figure=models_figure(results),
         standard_deviations=standard_deviations(models[0].columns),
-        derived=with_counts(records.derived, models[0]),
+        derived=data.derived(models[0]),
     )
     return study, tuple(fitted)
 
@@ -94,31 +86,6 @@ def _column(column: Column) -> AdjustmentColumn:
     )
 
 
-def _rows_kept(checked: CheckedPlan, prepared: Prepared, exposures: tuple[str, ...]) -> NDArray[np.bool_]:
-    """Records of the model's study population that have the outcome and the exposures named, complete or not."""
-    keep = conditions(checked.file.plan, prepared.section)
-    return account(checked.records, checked.outcome, keep=keep, exposures=exposures, adjustment=()).included
-
-
-def _kept(checked: CheckedPlan, rows: NDArray[np.bool_]) -> KeptRecords:
-    records = checked.records
-    counts = None if records.counts is None else np.asarray(records.counts, dtype=np.float64)[rows]
-    return KeptRecords(records.frame.loc[rows].reset_index(drop=True), checked.outcome.event[rows], counts)
-
-
-def _characteristics(checked: CheckedPlan, main: Prepared) -> Table:
-    rows = _rows_kept(checked, main, main.exposures)
-    table = study_characteristics(
-        checked.file.plan.study.design,
-        _kept(checked, rows),
-        checked.records.columns,
-        main.exposures,
-        main.adjustment,
-        main.accounting.included[rows],
-    )
-    return with_groups_told(table, main, checked.file.plan.records.grouped_by)
-
-
 def _records_differ(
     checked: CheckedPlan, fitted: tuple[Fitted, ...], results: tuple[ModelResult, ...]
 ) -> tuple[Finding, ...]:
@@ -128,7 +95,7 @@ def _records_differ(
     for prepared, fit, result in zip(checked.models, fitted, results, strict=True):
         if prepared.section.same_records or not sharing or fit.model is None:
             continue
-        again = on_records_of(prepared, sharing[0], checked.records)
+        again = checked.data.on_records_of(prepared, sharing[0])
         other = fit_model(again, checked.file.plan).model if again is not None else None
         if other is None or other.records == fit.model.records:
             continue

@@ -12,4 +12,5 @@ from oddsmodel.study.prepare import Prepared
 
 def with_counts(derived: Sequence[DerivedColumn], main: Prepared) -> tuple[DerivedColumn, ...]:
     """Each derived column with its tables, among the records that a model analyses."""
-    return tuple(replace(one, tables=derived_counts(one, main.frame, main.columns, main.counts)) for one in derived)
+    held = main.in_memory
+    return tuple(replace(one, tables=derived_counts(one, held.frame, main.columns, held.counts)) for one in derived)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import replace
 
 import numpy as np
@@ -10,16 +11,17 @@ from oddsmodel.checks import run_checks
 from oddsmodel.findings import Finding
 from oddsmodel.inference import profile
 from oddsmodel.measures.coefficients import coefficients
-from oddsmodel.measures.crude import KeptRecords, crude
+from oddsmodel.measures.crude import crude
 from oddsmodel.measures.crude_to_adjusted import adjustment_findings, crude_to_adjusted_table
 from oddsmodel.measures.levels import common_outcome, levels
 from oddsmodel.measures.network_average import network_average
 from oddsmodel.measures.trend import trend_table, trends
 from oddsmodel.measures.two_by_two_table import two_by_two_tables
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.kept import People
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.progress import Progress
-from oddsmodel.records.types import Records
+from oddsmodel.records.types import Column
 from oddsmodel.results.figures import Figure
 from oddsmodel.results.lead import in_answer
 from oddsmodel.results.study import CertificateResult, CoefficientResult, ModelResult
@@ -35,12 +37,12 @@ LIKELIHOODS = ("log_likelihood", "null_log_likelihood")
 
 
 def estimate(
-    prepared: Prepared, fitted: Fitted, plan: StudyPlan, records: Records, kept: KeptRecords, progress: Progress
+    prepared: Prepared, fitted: Fitted, plan: StudyPlan, columns: Mapping[str, Column], kept: People, progress: Progress
 ) -> ModelResult:
     """Everything the report says of one model; for one that could not be estimated, who was counted and why not."""
     model, certificate = fitted.model, fitted.certificate
     if model is None or certificate is None:
-        return _result(prepared, fitted, plan, records)
+        return _result(prepared, fitted, plan, columns)
     p = model.fit.coefficients.size
     progress.stage("profiling", 2 * p)
     independent = model.grouping is None
@@ -48,7 +50,7 @@ def estimate(
     found = coefficients(model, limits, crude(model, kept))
     tests = term_tests(model)
     progress.stage("checking")
-    checks = run_checks(model, progress, flow=prepared.accounting.flow)
+    checks = run_checks(model, progress, flow=prepared.flow)
     adjusted = bool(model.adjustment) or len(model.exposures) > 1
     findings = (
         *fitted.findings,
@@ -67,7 +69,7 @@ def estimate(
         *(trend_table(model, one, found) for one in over_levels),
     )
     figures = (flow_figure(prepared), estimates_figure(model, in_answer(found, averages), prepared.id))
-    result = _result(prepared, fitted, plan, records, found, findings, tables, figures)
+    result = _result(prepared, fitted, plan, columns, found, findings, tables, figures)
     return replace(
         result,
         log_likelihood=model.fit.log_likelihood if independent else None,
@@ -101,15 +103,15 @@ def _result(
     prepared: Prepared,
     fitted: Fitted,
     plan: StudyPlan,
-    records: Records,
+    columns: Mapping[str, Column],
     found: tuple[CoefficientResult, ...] = (),
     findings: tuple[Finding, ...] | None = None,
     tables: tuple[Table, ...] = (),
     figures: tuple[Figure, ...] | None = None,
 ) -> ModelResult:
-    section, flow = prepared.section, prepared.accounting.flow
+    section, flow = prepared.section, prepared.flow
     covariance = "model" if plan.records.grouped_by is None else "cluster-robust"
-    label = {name: records.columns[name].label for name in (*prepared.exposures, *prepared.adjustment)}
+    label = {name: columns[name].label for name in (*prepared.exposures, *prepared.adjustment)}
     return ModelResult(
         id=prepared.id,
         name=section.name,
@@ -128,7 +130,7 @@ def _result(
         flow=flow,
         records=flow.analysed,
         events=flow.events,
-        patterns=None if fitted.patterns is None else len(fitted.patterns.trials),
+        patterns=fitted.rows,
         parameters=0 if prepared.design is None else len(prepared.design.columns),
         log_likelihood=None,
         null_log_likelihood=None,

@@ -32,7 +32,7 @@ def with_groups_told(table: Table, main: Prepared, grouped_by: str | None) -> Ta
     """The table of who they were, its note beginning with how many groups the records analysed are of."""
     if grouped_by is None:
         return table
-    _, number = group_codes(main.frame[grouped_by])
+    _, number = group_codes(main.in_memory.frame[grouped_by])
     label = main.columns[grouped_by].label
-    told = say("records-analysed-of-groups", records=main.accounting.flow.analysed, groups=number, column=label)
+    told = say("records-analysed-of-groups", records=main.flow.analysed, groups=number, column=label)
     return replace(table, note=f"{told} {table.note}".rstrip())

@@ -15,7 +15,7 @@ from oddsmodel.wording import say
 
 def flow_figure(prepared: Prepared) -> FlowFigure:
     """Records read, left out by reason, analysed."""
-    flow = prepared.accounting.flow
+    flow = prepared.flow
     left_out = tuple((one.reason, one.records) for one in flow.left_out)
     return FlowFigure(
         id=f"{prepared.id}-flow",

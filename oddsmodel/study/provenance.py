@@ -10,7 +10,7 @@ from oddsmodel.plan.read import PlanFile
 from oddsmodel.results.study import Provenance
 from oddsmodel.study.plan_facts import plan_facts
 
-PACKAGES = ("oddsmodel", "numpy", "scipy", "pandas", "pyarrow", "patsy", "statsmodels", "matplotlib")
+PACKAGES = ("oddsmodel", "numpy", "scipy", "pandas", "pyarrow", "patsy", "statsmodels")
 
 
 def provenance(plan: PlanFile) -> Provenance:

@@ -12,7 +12,7 @@ from oddsmodel.export.results_json import results_text
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.results.study import StudyResults
 from oddsmodel.study.answer import answer
-from oddsmodel.study.check import check_plan
+from oddsmodel.study.check import opened_plan
 
 
 @dataclass(frozen=True)
@@ -26,19 +26,24 @@ class RunOutcome:
 
 
 def run_plan(
-    plan_path: Path, *, into: Path | None = None, records: Path | None = None, progress: Progress | None = None
+    plan_path: Path,
+    *,
+    into: Path | None = None,
+    records: Path | None = None,
+    workers: str | None = None,
+    progress: Progress | None = None,
 ) -> RunOutcome:
     """Read, vet, fit, check, disclose, write. InputFault where the plan, records or formula is at fault.
 
-    Nothing is written before everything is there to be written.
+    Nothing is written before everything is there to be written. workers: the address of a scheduler, or "local".
     """
     from oddsmodel.report.document import render_report
 
     progress = progress or Silent()
     folder = into if into is not None else plan_path.parent / f"{plan_path.stem}-report"
     check_folder(folder)
-    checked = check_plan(plan_path, progress, records=records)
-    study, _ = answer(checked, progress)
+    with opened_plan(plan_path, progress, records=records, workers=workers) as checked:
+        study, _ = answer(checked, progress)
     plan = checked.file.plan
     disclosed = disclose(study, audience=plan.report.audience, hide_counts_below=plan.report.hide_counts_below)
     files = {

@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import log
 
 import numpy as np
+from scipy.special import xlogy
 
+from oddsmodel.checks.nearby import PART_FROM, Known, Nearby, maxima_near
 from oddsmodel.design.constant import indicators_of_all_levels
 from oddsmodel.design.marginality import restricted_columns
-from oddsmodel.inference import Fit, Problem, likelihood_ratio, maximise_all
+from oddsmodel.inference import Problem, maximise_all
+from oddsmodel.inference.tests import chi_square_p
 from oddsmodel.measures.wald_f import contrasts_without, wald_f
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import TermTest
@@ -24,6 +28,14 @@ class TermTests:
 
     tests: tuple[TermTest, ...]
     null_log_likelihood: float | None
+
+
+@dataclass(frozen=True)
+class Maximum:
+    """The log-likelihood at the maximum over a space, None where it was not settled, and the space's dimension."""
+
+    log_likelihood: float | None
+    dimension: int
 
 
 def term_tests(model: FittedModel) -> TermTests:
@@ -50,16 +62,46 @@ def term_tests(model: FittedModel) -> TermTests:
 
     if model.grouping is not None:
         return TermTests(tuple(_wald(model, name, larger, smaller, ones) for name, larger, smaller in pairs), None)
-    spaces = sorted({columns for _, larger, smaller in pairs for columns in (larger, smaller)} - {everything})
-    problems = [Problem(_basis(p, columns, ones)) for columns in spaces]
-    fits = maximise_all(model.likelihood, problems, near=model.fit)
-    found: dict[tuple[int, ...], Fit] = {everything: model.fit, **dict(zip(spaces, fits, strict=True))}
+    null = _null(model, bool(intercept or ones))
+    found = {everything: Maximum(model.fit.log_likelihood, model.fit.dimension), intercept: null}
+    spaces = sorted({columns for _, larger, smaller in pairs for columns in (larger, smaller)} - set(found))
+    maxima = _maxima(model, [_basis(p, columns, ones) for columns in spaces])
+    found.update(zip(spaces, maxima, strict=True))
     tests = tuple(
         _test(name, found[larger], found[smaller])
         for name, larger, smaller in pairs
         if found[larger].dimension > found[smaller].dimension
     )
-    return TermTests(tests, found[intercept].log_likelihood)
+    return TermTests(tests, null.log_likelihood)
+
+
+def _null(model: FittedModel, constant: bool) -> Maximum:
+    """All odds equal, or all 1 where the model does not hold the constant."""
+    records, events = float(model.records), float(model.events)
+    if not constant:
+        return Maximum(-records * log(2.0), 0)
+    rest = records - events
+    return Maximum(float(xlogy(events, events / records) + xlogy(rest, rest / records)), 1)
+
+
+def _maxima(model: FittedModel, spaces: list[Array]) -> list[Maximum]:
+    """The maximum over each space: near the full fit where rows are many, by full Newton steps where that is not so."""
+    fit = model.fit
+    near: list[Nearby | None] = [None] * len(spaces)
+    if model.rows.number > PART_FROM and spaces:
+        known = Known(fit.working, np.zeros_like(fit.working), fit.working_information)
+        near = maxima_near(fit.space.working, known, [fit.space.gamma(space.T).T for space in spaces])
+    far = [Problem(space) for space, one in zip(spaces, near, strict=True) if one is None]
+    whole = iter(maximise_all(model.likelihood, far, near=fit) if far else ())
+    found: list[Maximum] = []
+    for one, space in zip(near, spaces, strict=True):
+        if one is not None:
+            found.append(Maximum(one.log_likelihood, space.shape[1]))
+            continue
+        other = next(whole)
+        settled = other.status in ("converged", "no finite maximum")
+        found.append(Maximum(other.log_likelihood if settled else None, other.dimension))
+    return found
 
 
 def _wald(
@@ -89,10 +131,9 @@ def _basis(parameters: int, columns: tuple[int, ...], ones: tuple[int, ...]) -> 
     return np.hstack([basis, total])
 
 
-def _test(name: str, larger: Fit, smaller: Fit) -> TermTest:
-    settled = {"converged", "no finite maximum"}
-    if larger.status not in settled or smaller.status not in settled:
-        df = larger.dimension - smaller.dimension
+def _test(name: str, larger: Maximum, smaller: Maximum) -> TermTest:
+    df = larger.dimension - smaller.dimension
+    if larger.log_likelihood is None or smaller.log_likelihood is None:
         return TermTest(name, df, None, None, say("term-test-not-settled"))
-    statistic, df, p = likelihood_ratio(larger, smaller)
-    return TermTest(name, df, statistic, p)
+    statistic = max(0.0, 2.0 * (larger.log_likelihood - smaller.log_likelihood))
+    return TermTest(name, df, statistic, chi_square_p(statistic, df))

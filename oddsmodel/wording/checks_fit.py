@@ -128,8 +128,18 @@ def _roc_no_overlap(facts: Facts) -> str:
     )
 
 
-def _patterns(number: int) -> str:
-    return "the covariate pattern" if number == 1 else f"the {number} covariate patterns"
+def _unit(facts: Facts) -> str:
+    """What is left out one by one: covariate patterns, or rows where these are too many."""
+    return "row" if facts.get("single") else "covariate pattern"
+
+
+def _short(facts: Facts) -> str:
+    return _unit(facts).split()[-1]
+
+
+def _patterns(facts: Facts) -> str:
+    number = facts["patterns"]
+    return f"the {_unit(facts)}" if number == 1 else f"the {number} {_unit(facts)}s"
 
 
 def _moves(facts: Facts) -> str:
@@ -145,15 +155,12 @@ def _moves(facts: Facts) -> str:
 
 
 def _influence_little(facts: Facts) -> str:
-    return (
-        f"Leaving out {_patterns(facts['patterns'])} with most influence {_moves(facts)}: no more than that "
-        "usually does."
-    )
+    return f"Leaving out {_patterns(facts)} with most influence {_moves(facts)}: no more than that usually does."
 
 
 def _influence_much(facts: Facts) -> str:
     return (
-        f"Leaving out {_patterns(facts['patterns'])} with most influence {_moves(facts)}: check those records for "
+        f"Leaving out {_patterns(facts)} with most influence {_moves(facts)}: check those records for "
         "mistakes, and report the result with and without them."
     )
 
@@ -167,11 +174,27 @@ def _influence_coarse(facts: Facts) -> str:
 
 def _influence_alt(facts: Facts) -> str:
     number = count(facts["patterns"])
-    which = f"{count(facts['drawn'])} of {number} covariate patterns" if facts["sampled"] else f"{number} patterns"
+    which = f"{count(facts['drawn'])} of {number} {_unit(facts)}s" if facts["sampled"] else f"{number} {_short(facts)}s"
     extra = ", those with most influence and a random sample of the others" if facts["sampled"] else ""
     return (
-        f"Fall in deviance without a pattern against its fitted probability, for {which}{extra}. Larger marks move "
-        "the coefficients more."
+        f"Fall in deviance without a {_short(facts)} against its fitted probability, for {which}{extra}. "
+        "Larger marks move the coefficients more."
+    )
+
+
+def _influence_explanation(facts: Facts) -> str:
+    short, what = _short(facts), "Records with equal values of all columns form a covariate pattern."
+    if facts["single"]:
+        what = f"The records have more than {count(facts['most'])} covariate patterns and are taken row by row."
+    return (
+        f"{what} Leverage, the falls in Pearson chi-square and deviance, and the shift of the coefficients without a "
+        f"{short} are taken to one step of the fit (Pregibon, 1981); {short}s are put in order by how far the "
+        f"exposure's coefficients shift. The odds ratios without the 1, 5 and 10 {short}s of most influence are exact: "
+        "the model is fitted again. Leaving out the records of most influence always moves an estimate: ten of a "
+        "thousand ordinary records by half a standard error to two, the more the fewer events the exposed have. It is "
+        f"a caution where one {short} (at most 5% of the records) moves a coefficient by a standard error, or k "
+        f"{short}s (at most 2%) by the square root of k standard errors, and the odds ratio by 10%; worth a look from "
+        "three quarters of that on. Odd records are to be checked for mistakes, not left out because they are odd."
     )
 
 
@@ -217,6 +240,10 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "residual-tests-line": _residual_tests_line,
     "residual-tests-misfit": _residual_tests_line,
     "residual-tests-small-expected": _residual_tests_small,
+    "residual-tests-uncounted": lambda facts: (
+        f"The records have more than {count(facts['most'])} covariate patterns, which are not counted one by one, so "
+        "the Pearson and deviance tests are left out."
+    ),
     "residual-tests-saturated": (
         "The model has as many coefficients as there are covariate patterns and fits each of them exactly: nothing "
         "is left to test."
@@ -253,6 +280,10 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "roc-one-record": "No interval: it needs at least two records with the event and two without.",
     "roc-no-overlap": _roc_no_overlap,
     "roc-no-spread": "No interval: all records that count have the same place among the fitted probabilities.",
+    "roc-classes": lambda facts: (
+        f"The records were counted in {count(facts['classes'])} classes of the fitted probability; the area is right "
+        f"to within {facts['bound']:.1g}."
+    ),
     "roc-explanation": (
         "The area is the share of pairs, a record with the event beside a record without it, in which the former has "
         "the higher fitted probability; ties count one half. The standard error is that of DeLong, DeLong & "
@@ -269,7 +300,11 @@ FIT_SENTENCES: dict[str, Sentence] = {
         "which the model takes away (Steyerberg et al., 2010). Measured on the records that the model was fitted to, "
         "it flatters."
     ),
-    "influence-title": "Influence of single covariate patterns",
+    "influence-title": lambda facts: f"Influence of single {_unit(facts)}s",
+    "influence-one-by-one": lambda facts: (
+        f"The records have more than {count(facts['most'])} covariate patterns, which are not counted; they are taken "
+        "row by row."
+    ),
     "influence-little": _influence_little,
     "influence-coarse": _influence_coarse,
     "influence-coarse-carried": (
@@ -278,7 +313,7 @@ FIT_SENTENCES: dict[str, Sentence] = {
     ),
     "few-patterns-move-the-exposure": _influence_much,
     "few-patterns-carry-the-exposure": lambda facts: (
-        f"Without {_patterns(facts['patterns'])} with most influence there is no usable estimate of the "
+        f"Without {_patterns(facts)} with most influence there is no usable estimate of the "
         "exposure's odds ratio: few records decide it."
     ),
     "influence-no-columns": "The model has no column besides the intercept that a record could influence.",
@@ -290,22 +325,21 @@ FIT_SENTENCES: dict[str, Sentence] = {
     "influence-no-estimate": (
         "Without these records the exposure's odds ratio has no finite estimate, or one beyond a million."
     ),
-    "influence-deletions-title": "The exposure's odds ratio without the patterns of most influence",
-    "influence-patterns-title": "Covariate patterns that move the exposure's coefficients most",
+    "influence-deletions-title": lambda facts: (
+        f"The exposure's odds ratio without the {_short(facts)}s of most influence"
+    ),
+    "influence-patterns-title": lambda facts: (
+        f"{_unit(facts).capitalize()}s that move the exposure's coefficients most"
+    ),
+    "influence-left-out": lambda facts: f"{_unit(facts).capitalize()}s left out",
+    "influence-several-values": "several values",
+    "influence-fall": lambda facts: f"Fall in deviance without the {_short(facts)}",
     "influence-one-step-heading": "Odds ratio without it, to one step: {label}",
-    "influence-alone": "A pattern whose leverage is 1 fixes a coefficient by itself; the rest of its row is empty.",
+    "influence-alone": lambda facts: (
+        f"A {_short(facts)} whose leverage is 1 fixes a coefficient by itself; the rest of its row is empty."
+    ),
     "influence-axis": "Fitted probability",
     "influence-axis-cases": "Fitted probability of being a case among these records",
     "influence-alt": _influence_alt,
-    "influence-explanation": (
-        "Records with equal values of all columns form a covariate pattern. Leverage, the falls in Pearson chi-square "
-        "and deviance, and the shift of the coefficients without a pattern are taken to one step of the fit "
-        "(Pregibon, 1981); patterns are put in order by how far the exposure's coefficients shift. The odds ratios "
-        "without the 1, 5 and 10 patterns of most influence are exact: the model is fitted again. Leaving out the "
-        "records of most influence always moves an estimate: ten of a thousand ordinary records by half a standard "
-        "error to two, the more the fewer events the exposed have. It is a caution where one pattern (at most 5% of "
-        "the records) moves a coefficient by a standard error, or k patterns (at most 2%) by the square root of k "
-        "standard errors, and the odds ratio by 10%; worth a look from three quarters of that on. Odd records are to "
-        "be checked for mistakes, not left out because they are odd."
-    ),
+    "influence-explanation": _influence_explanation,
 }

@@ -299,6 +299,10 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "independence-unchecked": (
         "The records are taken to be independent; no identifier shows that each is of another person."
     ),
+    "independence-not-looked-at": (
+        "The records are taken to be independent; they are more than were held in memory, so nobody has looked whether "
+        "an identifier repeats among them."
+    ),
     "independence-grouped": "The records are grouped counts, each record taken to be a different, independent person.",
     "independence-matched": (
         "The design is matched but the records are analysed as single ones: odds ratios then tend to lie too near 1, "

@@ -55,6 +55,7 @@ SENTENCES: dict[str, Sentence] = {
     ),
     # Progress
     "stage-reading": "Reading the records",
+    "stage-gathering": "Gathering the columns of the models",
     "stage-fitting": "Fitting the models",
     "stage-profiling": "Profiling the likelihood",
     "stage-checking": "Checking the models",

@@ -19,9 +19,10 @@ def plain(text: str, longest: int | None = None) -> str:
     """
     if longest is not None:
         text = text[: 4 * longest + _LONGEST_ADDRESS]
-    text = _CREDENTIALS.sub("://…@", text)
-    spaced = "".join(" " if unicodedata.category(c) in ("Zl", "Zp") or c in "\n\r\t\v\f" else c for c in text)
-    kept = "".join(c for c in spaced if unicodedata.category(c) not in _STRIPPED)
+    kept = _CREDENTIALS.sub("://…@", text)
+    if not kept.isprintable():
+        spaced = "".join(" " if unicodedata.category(c) in ("Zl", "Zp") or c in "\n\r\t\v\f" else c for c in kept)
+        kept = "".join(c for c in spaced if unicodedata.category(c) not in _STRIPPED)
     if longest is not None and len(kept) > longest:
         return kept[: longest - 1].rstrip() + "…"
     return kept

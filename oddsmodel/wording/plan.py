@@ -167,9 +167,17 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "This version does not compare a report with earlier ones yet.",
         "Until then, take the line out and check by hand that the two reports together give no small count away.",
     ),
-    "later-memory": (
-        "This version holds all records in memory, as yet.",
-        "Until then, take the line out; some millions of records fit on an ordinary machine.",
+    "not-a-size": (
+        "{found} is not a size of memory of 200 MB or more.",
+        'Write a number with MB, GB or TB in quotes, such as memory = "2 GB".',
+    ),
+    "database-not-on-workers": (
+        "Records in a database cannot be read by workers.",
+        "Leave --workers out, or write the records to Parquet files that every worker can read.",
+    ),
+    "needs-memory": (
+        "This needs all records in memory at once, and they do not fit into the memory that the run may use.",
+        "Raise [run] memory if the machine has more, or take the line out.",
     ),
     # The plan against itself.
     "no-models": ("The plan has no model.", "Add [[models]] with name, formula and exposures."),

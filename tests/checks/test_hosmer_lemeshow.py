@@ -13,7 +13,8 @@ from hypothesis import strategies as st
 from scipy.stats import chi2
 
 from oddsmodel.checks.hosmer_lemeshow import check, groups_wanted
-from oddsmodel.checks.probability_groups import OrderedRecords, grouped, ordered_records
+from oddsmodel.checks.one_pass import one_pass
+from oddsmodel.checks.probability_groups import OrderedRecords, grouped
 
 sys.path.insert(0, str(Path(__file__).parent))
 from fit_models import grouped_model, record_model, simulated, vaso
@@ -95,7 +96,7 @@ def test_counts_are_records() -> None:
 def test_probabilities_equal_but_for_rounding_are_tied() -> None:
     X = np.array([[1, 0.1 + 0.2, 0.0], [1, 0.3, 0.0], [1, 1.0, 1.0], [1, 2.0, 1.0]])
     model = grouped_model(X, [3, 4, 5, 6], [10, 10, 10, 10])
-    assert ordered_records(model).records.tolist() == [20, 10, 10]
+    assert one_pass(model).ordered.records.tolist() == [20, 10, 10]
 
 
 def test_few_patterns_withhold_the_test() -> None:

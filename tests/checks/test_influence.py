@@ -3,20 +3,25 @@
 from __future__ import annotations
 
 import sys
-from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pandas as pd
 import pytest
 import statsmodels.api as sm
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from oddsmodel.checks.deletion import without
 from oddsmodel.checks.influence import check
-from oddsmodel.checks.one_step import one_step, ranked
+from oddsmodel.checks.one_step import AtTheFit, OneStep, one_step, ranked
+from oddsmodel.checks.residuals import pattern_residuals
+from oddsmodel.likelihood import BinomialLikelihood
+from oddsmodel.model.fitted import FittedModel
 
 sys.path.insert(0, str(Path(__file__).parent))
 from fit_models import grouped_model, record_model, simulated, vaso
+from form_models import fitted
 
 
 def counted(m: int = 30, seed: int = 8) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -27,10 +32,16 @@ def counted(m: int = 30, seed: int = 8) -> tuple[np.ndarray, np.ndarray, np.ndar
     return X, events, trials
 
 
+def steps_of(model: FittedModel, targets: tuple[int, ...]) -> OneStep:
+    rows = model.rows.passes.arrays
+    residuals = pattern_residuals(rows, model.fit.coefficients)
+    return one_step(rows["X"], residuals, AtTheFit.of(model, targets))
+
+
 def test_patterns_4_and_18_of_pregibon_1981() -> None:
     # Pregibon 1981, section 5: observations 4 and 18 stand out in chi-square, deviance and coefficients
     X, y = vaso()
-    steps = one_step(grouped_model(X, y), (1, 2))
+    steps = steps_of(grouped_model(X, y), (1, 2))
     for diagnostic in (steps.delta_chi_square, steps.delta_deviance, steps.distance, steps.target_distance):
         assert set(np.argsort(diagnostic)[-2:]) == {3, 17}
 
@@ -38,7 +49,7 @@ def test_patterns_4_and_18_of_pregibon_1981() -> None:
 def test_statsmodels_agrees() -> None:
     X, events, trials = counted()
     model = grouped_model(X, events, trials)
-    steps = one_step(model, (0, 1, 2))
+    steps = steps_of(model, (0, 1, 2))
     reference = sm.GLM(np.column_stack([events, trials - events]), X, family=sm.families.Binomial()).fit(tol=1e-14)
     influence = reference.get_influence(observed=False)
     leverage = influence.hat_matrix_diag
@@ -54,7 +65,7 @@ def test_statsmodels_agrees() -> None:
 def test_one_step_is_newtons_first_step_without_the_pattern() -> None:
     X, events, trials = counted()
     model = grouped_model(X, events, trials)
-    steps = one_step(model, (1, 2))
+    steps = steps_of(model, (1, 2))
     p = 1 / (1 + np.exp(-X @ model.fit.coefficients))
     for j in (0, 7, 29):
         keep = np.arange(30) != j
@@ -68,7 +79,7 @@ def test_exact_fits_against_statsmodels() -> None:
     X, events, trials = counted()
     model = grouped_model(X, events, trials)
     result = check(model)
-    order = ranked(one_step(model, (1,)).target_distance, 10)
+    order = ranked(steps_of(model, (1,)).target_distance, 10)
     table = result.tables[0]
     assert [row[0] for row in table.rows] == ["none", "1", "5", "10"]
     for row, k in zip(table.rows[1:], (1, 5, 10), strict=True):
@@ -142,7 +153,7 @@ def test_a_pattern_that_alone_holds_the_exposure() -> None:
     X = np.vstack([X, [1.0, 1.0, 0.2]])
     events, trials = np.append(y, 1.0), np.append(np.ones(60), 2.0)
     model = grouped_model(X, events, trials)
-    steps = one_step(model, (1,))
+    steps = steps_of(model, (1,))
     assert steps.alone.tolist() == [False] * 60 + [True]
     assert steps.essential[-1]
     result = check(model)
@@ -151,7 +162,7 @@ def test_a_pattern_that_alone_holds_the_exposure() -> None:
     assert result.tables[0].rows[1][2] is None
     assert result.tables[0].note
     # the same pattern is nothing to an exposure in the other column
-    other = one_step(model, (2,))
+    other = steps_of(model, (2,))
     assert other.alone[-1]
     assert not other.essential[-1]
 
@@ -161,23 +172,32 @@ def test_an_adjustment_level_that_vanishes_does_not_stop_the_exposure() -> None:
     rare = (np.arange(80) < 2).astype(float)
     y[:2] = [0.0, 1.0]
     model = grouped_model(np.column_stack([X, rare]), y)
-    deletion = without(model, np.array([0, 1]), (1,))
+    deletion = without(model, [np.array([0, 1])], (1,))[0]
     reference = sm.Logit(y[2:], X[2:]).fit(disp=0, tol=1e-12)
     assert deletion.coefficients is not None
     assert deletion.coefficients[1] == pytest.approx(reference.params[1], rel=1e-8)
-    assert without(model, np.array([0, 1]), (2,)).coefficients is None
+    assert without(model, [np.array([0, 1])], (2,))[0].coefficients is None
 
 
 def test_patterns_are_put_in_words_without_anybodys_own_value() -> None:
-    X, events, trials = counted(12)
-    model = grouped_model(X, events, trials)
-    frame = model.frame.copy()
-    frame["x2"] = pd.Categorical(np.where(np.arange(24) < 12, "a", "b"))
-    result = check(replace(model, frame=frame))
-    words = result.tables[1].rows[0][0]
-    assert words.startswith("X1: ")
-    assert words.endswith("X2: several values")
-    assert all(column.hidden_with or column.kind == "count" for column in result.tables[1].columns)
+    rng = np.random.default_rng(4)
+    frame = pd.DataFrame(
+        {
+            "age": rng.integers(20, 80, 60).astype(float),
+            "sex": pd.Categorical(rng.choice(["female", "male"], 60)),
+            "dose": rng.integers(0, 12, 60).astype(float),
+        }
+    )
+    model = fitted("cut(age, [50]) + sex + I(dose ** 2)", frame, rng.random(60) < 0.4, ["sex"])
+    table = check(model).tables[1]
+    # Squares tell the doses apart, bands do not tell the ages apart; a band may hold one person alone
+    expected = set()
+    for (_, sex, dose), own in frame.groupby([frame["age"] < 50, "sex", "dose"], observed=True):
+        age = f"{own['age'].iloc[0]:g}" if own["age"].nunique() == 1 else "several values"
+        expected.add((f"Age: {age}, Sex: {sex}, Dose: {dose:g}", len(own)))
+    assert {(row[0], row[1]) for row in table.rows} <= expected
+    assert {"several" in row[0] for row in table.rows} == {True, False}
+    assert all(column.hidden_with or column.kind == "count" for column in table.columns)
 
 
 def test_case_control_shows_no_expected_share() -> None:
@@ -193,8 +213,8 @@ def test_nearly_collinear_columns_do_no_harm() -> None:
     year = rng.integers(1990, 2021, 400).astype(float)
     X, c = np.column_stack([np.ones(400), year, year**2]), (year - 2005) / 10
     y = (rng.random(400) < 1 / (1 + np.exp(-(0.2 + 0.5 * c - 0.4 * c**2)))).astype(float)
-    raw = one_step(record_model(X, y), (1, 2))
-    centred = one_step(record_model(np.column_stack([np.ones(400), c, c**2]), y), (1, 2))
+    raw = steps_of(record_model(X, y), (1, 2))
+    centred = steps_of(record_model(np.column_stack([np.ones(400), c, c**2]), y), (1, 2))
     assert raw.leverage == pytest.approx(centred.leverage, rel=1e-5)
     assert raw.distance == pytest.approx(centred.distance, rel=1e-5)
 
@@ -202,3 +222,51 @@ def test_nearly_collinear_columns_do_no_harm() -> None:
 def test_ranking_keeps_the_order_of_equals() -> None:
     assert ranked(np.array([1.0, 3.0, 3.0 + 1e-13, 2.0]), 3).tolist() == [1, 2, 3]
     assert ranked(np.zeros(4), 2).tolist() == [0, 1]
+
+
+@settings(deadline=None, derandomize=True, max_examples=60)
+@given(
+    st.lists(st.sampled_from([0.0, 1e-20, 0.5, 0.5 + 1e-13, 2.0, np.inf]), min_size=1, max_size=40), st.integers(1, 9)
+)
+def test_the_largest_of_all_are_among_the_largest_of_the_parts(scores: list[float], most: int) -> None:
+    score = np.array(scores)
+    parts = [np.arange(first, min(first + 7, score.size)) for first in range(0, score.size, 7)]
+    kept = np.sort(np.concatenate([part[ranked(score[part], most)] for part in parts]))
+    assert kept[ranked(score[kept], most)].tolist() == ranked(score, most).tolist()
+
+
+def test_many_records_are_fitted_again_in_few_passes(monkeypatch: pytest.MonkeyPatch) -> None:
+    X, y = simulated(20_000, [-1.0, 0.5, 0.3])
+    model = grouped_model(X, y)
+    sets = [ranked(steps_of(model, (1,)).target_distance, k) for k in (1, 5, 10)]
+    evaluate, calls = BinomialLikelihood.evaluate, []
+
+    def counting(self: BinomialLikelihood, *given: object, **how: object) -> object:
+        calls.append(self.rows)
+        return evaluate(self, *given, **how)
+
+    monkeypatch.setattr(BinomialLikelihood, "evaluate", counting)
+    deletions = without(model, sets, (1,))
+    assert calls.count(20_000) <= 3
+    for deletion, positions in zip(deletions, sets, strict=True):
+        keep = np.ones(20_000, dtype=bool)
+        keep[positions] = False
+        reference = sm.GLM(y[keep], X[keep], family=sm.families.Binomial()).fit(tol=1e-14)
+        assert deletion.coefficients == pytest.approx(reference.params, abs=1e-8 * reference.bse.max())
+
+
+@pytest.mark.parametrize("n", [300, 30_000])
+def test_records_without_which_the_rest_are_separated(n: int) -> None:
+    # one of forty exposed has the event: without it there is no finite maximum for the exposure
+    X, y = simulated(n, [-0.5, 0.6])
+    exposed = (np.arange(n) < 40).astype(float)
+    y[:40] = 0.0
+    y[17] = 1.0
+    model = grouped_model(np.column_stack([X[:, 0], exposed, X[:, 1]]), y)
+    lost, other = without(model, [np.array([17]), np.array([3])], (1,))
+    assert lost.coefficients is None
+    assert other.coefficients is not None
+    result = check(model)
+    assert result.verdict == "caution"
+    assert result.tables[1].rows[0][1:3] == (1, 1)
+    assert result.tables[0].rows[1][2] is None

@@ -15,6 +15,7 @@ import statsmodels.api as sm
 
 from oddsmodel.checks import linearity
 from oddsmodel.checks.curves import choose_knots, fit_curves, straight_lines
+from oddsmodel.checks.spread import Spread
 
 sys.path.insert(0, str(Path(__file__).parent))
 from form_models import birth_weights, fitted
@@ -54,7 +55,7 @@ def test_likelihood_ratios_agree_with_patsy_and_statsmodels() -> None:
         assert curve.p == pytest.approx(scipy.stats.chi2.sf(statistic, 2), abs=1e-7)
         smoke = next(i for i, column in enumerate(model.design.columns) if column.role == "exposure")
         place = smoke - 1 - (curve.line.position < smoke)
-        assert curve.fit.coefficients[smoke] == pytest.approx(params[place], abs=1e-6)
+        assert curve.coefficients[smoke] == pytest.approx(params[place], abs=1e-6)
 
 
 def test_result_holds_curves_figures_and_a_table() -> None:
@@ -150,11 +151,10 @@ def test_splines_powers_and_interactions_are_not_straight_lines_but_a_log_is() -
 
 
 def test_few_values_and_piled_up_values() -> None:
-    ones = np.ones(400)
-    assert choose_knots(np.repeat([0.0, 1.0, 2.0, 3.0], 100), ones) == "linearity-few-values"
-    assert choose_knots(np.r_[np.zeros(394), 1:7], ones) == "linearity-values-pile-up"
+    assert choose_knots(Spread.of(np.repeat([0.0, 1.0, 2.0, 3.0], 100))) == "linearity-few-values"
+    assert choose_knots(Spread.of(np.r_[np.zeros(394), 1:7])) == "linearity-values-pile-up"
     zeros = np.r_[np.zeros(250), np.tile([1.0, 2.0, 3.0, 5.0, 8.0], 30)]
-    assert choose_knots(zeros, ones) == pytest.approx([0, 3, 8])
+    assert choose_knots(Spread.of(zeros)) == pytest.approx([0, 3, 8])
     frame = birth_weights()
     model = fitted("smoke + ptl + age", frame, frame["low"] == 1, ["smoke"])
     result = linearity.check(model)

@@ -89,7 +89,7 @@ def test_records_with_one_group_only_are_told() -> None:
     # Without ward c the model is that of the other wards
     rest = frame[ward != "c"].copy()
     X = np.column_stack([np.ones(len(rest)), rest["exposed"] == "yes", rest["ward"] == "b"]).astype(float)
-    expected = sm.Logit(model.event[ward != "c"].astype(float), X).fit(disp=0).params[1]
+    expected = sm.Logit(model.held.event[ward != "c"].astype(float), X).fit(disp=0).params[1]
     assert np.log(result.statistics["exposure_odds_ratio_within_overlap"]) == pytest.approx(expected, abs=1e-6)
 
 

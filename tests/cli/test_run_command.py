@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from contextlib import nullcontext
 from pathlib import Path
 from types import SimpleNamespace
 from typing import Any
@@ -100,8 +101,10 @@ def study(*models: ModelResult) -> StudyResults:
 def standing_in(monkeypatch: pytest.MonkeyPatch, *models: ModelResult) -> list[dict[str, Any]]:
     calls: list[dict[str, Any]] = []
 
-    def run_plan(plan_path: Path, *, into: Path | None, records: Path | None, progress: Progress) -> RunOutcome:
-        calls.append({"plan": plan_path, "into": into, "records": records, "progress": progress})
+    def run_plan(
+        plan_path: Path, *, into: Path | None, records: Path | None, workers: str | None, progress: Progress
+    ) -> RunOutcome:
+        calls.append({"plan": plan_path, "into": into, "records": records, "workers": workers, "progress": progress})
         files = (Path("out/report.html"), Path("out/results.json"))
         not_estimated = any(one.status != "converged" for one in models)
         return RunOutcome(Path("out"), files, study(*models), not_estimated)
@@ -174,10 +177,11 @@ def test_a_plan_that_is_not_there(command: Command, tmp_path: Path) -> None:
 
 def checked(design: object, *findings: Finding) -> Any:
     section = SimpleNamespace(name="main", formula="died ~ smoker")
-    prepared = SimpleNamespace(section=section, accounting=SimpleNamespace(flow=FLOW), design=design)
+    prepared = SimpleNamespace(section=section, flow=FLOW, design=design)
+    plan = SimpleNamespace(outcome=SimpleNamespace(column_name="died"))
     return SimpleNamespace(
-        records=SimpleNamespace(source="records.csv", read=100),
-        outcome=SimpleNamespace(column="died", event_label="yes", other_label="no"),
+        file=SimpleNamespace(plan=plan),
+        data=SimpleNamespace(source="records.csv", read=100, event_label="yes", other_label="no"),
         models=(prepared,),
         findings=findings,
     )
@@ -186,7 +190,7 @@ def checked(design: object, *findings: Finding) -> Any:
 def test_check_tells_what_it_found(command: Command, monkeypatch: pytest.MonkeyPatch) -> None:
     design = SimpleNamespace(columns=(1, 2, 3))
     note = Finding("note", "n", "Age was taken as a number.")
-    monkeypatch.setattr(oddsmodel.study.check, "check_plan", lambda *_, **__: checked(design, note))
+    monkeypatch.setattr(oddsmodel.study.check, "opened_plan", lambda *_, **__: nullcontext(checked(design, note)))
     ended = command("check", "plan.toml")
     assert ended.status == 0
     for told in (
@@ -203,7 +207,7 @@ def test_check_tells_what_it_found(command: Command, monkeypatch: pytest.MonkeyP
 
 
 def test_check_says_what_cannot_be_fitted(command: Command, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(oddsmodel.study.check, "check_plan", lambda *_, **__: checked(None))
+    monkeypatch.setattr(oddsmodel.study.check, "opened_plan", lambda *_, **__: nullcontext(checked(None)))
     ended = command("check", "plan.toml")
     assert ended.status == 3
     assert "cannot be estimated as it stands" in ended.out

@@ -17,4 +17,4 @@ def test_the_plan_holds_and_its_models_are_written_out() -> None:
     assert emergencies.section.keep == "(admission == 'emergency') and (age >= 65)"
     assert not emergencies.section.same_records
     assert main.columns["age"].deviation == emergencies.columns["age"].deviation
-    assert models["with living alone"].accounting.flow.analysed < main.accounting.flow.analysed
+    assert models["with living alone"].flow.analysed < main.flow.analysed

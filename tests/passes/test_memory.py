@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from oddsmodel.likelihood import BinomialLikelihood
-from oddsmodel.passes import MemoryPasses, memory
+from oddsmodel.passes import MemoryPasses, local
 
 
 class Sum:
@@ -28,7 +28,7 @@ def test_same_bits_with_and_without_threads(monkeypatch: pytest.MonkeyPatch) -> 
     likelihood = BinomialLikelihood(X, (rng.random(150_000) < 0.4).astype(float))
     beta = rng.normal(size=(6, 5))
     threaded = likelihood.evaluate(beta)
-    monkeypatch.setattr(memory, "_workers", lambda: None)
+    monkeypatch.setattr(local, "_workers", lambda: None)
     alone = likelihood.evaluate(beta)
     assert np.array_equal(threaded.log_likelihood, alone.log_likelihood)
     assert np.array_equal(threaded.score, alone.score)

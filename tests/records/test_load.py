@@ -14,7 +14,8 @@ from hypothesis import strategies as st
 from oddsmodel.errors import Fault, InputFault
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.progress import Silent
-from oddsmodel.records.load import columns_used, load_records, records_from_frame
+from oddsmodel.records.load import load_records, records_from_frame
+from oddsmodel.records.plan_use import columns_used
 from oddsmodel.records.types import Records
 from oddsmodel.records.usable import unusable_in_formula
 

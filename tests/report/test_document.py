@@ -231,19 +231,11 @@ def test_the_same_results_give_the_same_bytes(sample: ModuleType, page: str) -> 
     assert render_report(sample.disclosed()) == page
 
 
-def test_settings_of_the_caller_do_not_show(sample: ModuleType, page: str) -> None:
-    import matplotlib
-
-    with matplotlib.rc_context({"font.size": 30, "axes.grid": True, "svg.fonttype": "path", "lines.linewidth": 9}):
-        assert render_report(sample.disclosed()) == page
-        assert matplotlib.rcParams["font.size"] == 30
-
-
 def test_it_is_small_and_quick(sample: ModuleType, page: str) -> None:
     assert len(page.encode()) < 1_500_000
     start = time.perf_counter()
     render_report(sample.disclosed())
-    assert time.perf_counter() - start < 3.0
+    assert time.perf_counter() - start < 1.0
 
 
 def test_progress_is_told_of_each_figure(sample: ModuleType) -> None:

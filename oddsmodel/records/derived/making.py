@@ -16,6 +16,7 @@ from oddsmodel.plan.schema import DerivedSection
 from oddsmodel.records.coding import CodedColumn
 from oddsmodel.records.faults import fault
 from oddsmodel.records.plausible import within_plausible
+from oddsmodel.records.rows import Rows
 from oddsmodel.records.types import Column
 from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
@@ -27,11 +28,11 @@ Codes = NDArray[np.intp]
 
 @dataclass(frozen=True, slots=True)
 class Source:
-    """A column that another is made from. where: its place in the file; first_row: what its first row is called."""
+    """A column that another is made from. where: its place in the file; rows: those behind its values."""
 
     coded: CodedColumn
     where: str
-    first_row: int
+    rows: Rows
 
     @property
     def column(self) -> Column:

@@ -23,15 +23,7 @@ def points(making: Making) -> Made:
 
     Raises: InputFault for a part with values other than yes and no in any of their spellings.
     """
-    parts: list[tuple[Mask, Mask]] = []
-    faults: list[Fault] = []
-    for source in making.sources:
-        try:
-            parts.append(_yes(making, source))
-        except InputFault as found:
-            faults.extend(found.faults)
-    if faults:
-        raise InputFault(faults)
+    parts = parts_of_score(making)
     worth = list((making.section.points or {}).values())
     score = np.zeros(len(making.weights))
     missing = np.zeros(len(score), dtype=np.bool_)
@@ -41,6 +33,20 @@ def points(making: Making) -> Made:
     if making.section.if_part_missing == "not recorded":
         score[missing] = np.nan
     return Made(of_numbers(making, score))
+
+
+def parts_of_score(making: Making) -> list[tuple[Mask, Mask]]:
+    """For each part the rows (n,) that say yes, and those in which it is recorded. Raises: InputFault as `points`."""
+    parts: list[tuple[Mask, Mask]] = []
+    faults: list[Fault] = []
+    for source in making.sources:
+        try:
+            parts.append(_yes(making, source))
+        except InputFault as found:
+            faults.extend(found.faults)
+    if faults:
+        raise InputFault(faults)
+    return parts
 
 
 def _yes(making: Making, source: Source) -> tuple[Mask, Mask]:

@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 
 from oddsmodel.errors import Fault, InputFault
+from oddsmodel.findings import Finding
 from oddsmodel.records.dates import parse_dates
 from oddsmodel.records.derived.making import Array, Made, Making, Source, of_numbers
 from oddsmodel.records.faults import fault
@@ -25,6 +26,22 @@ def years(making: Making) -> Made:
 
     Raises: InputFault where a source is not of kind date, and as `parse_dates` does.
     """
+    start, end = days_of_sources(making)
+    coded = of_numbers(making, (end - start) / DAYS_IN_A_YEAR)
+    backwards = making.number(coded.values.to_numpy(dtype=np.float64) < 0)
+    return Made(replace(coded, findings=(*coded.findings, *told_of_years(making, backwards))))
+
+
+def told_of_years(making: Making, backwards: int) -> tuple[Finding, ...]:
+    """What is said of records whose second date is before the first."""
+    if not backwards:
+        return ()
+    first, second = (source.column.name for source in making.sources)
+    return (finding("caution", "years-negative", column=making.name, first=first, second=second, records=backwards),)
+
+
+def days_of_sources(making: Making) -> list[Array]:
+    """The days (n,) of each source. Raises: InputFault as `years` does, for all sources together."""
     days: list[Array] = []
     faults: list[Fault] = []
     for source in making.sources:
@@ -34,17 +51,7 @@ def years(making: Making) -> Made:
             faults.extend(found.faults)
     if faults:
         raise InputFault(faults)
-    start, end = days
-    coded = of_numbers(making, (end - start) / DAYS_IN_A_YEAR)
-    numbers = coded.values.to_numpy(dtype=np.float64)
-    backwards = making.number(numbers < 0)
-    if backwards:
-        names = [source.column.name for source in making.sources]
-        told = finding(
-            "caution", "years-negative", column=making.name, first=names[0], second=names[1], records=backwards
-        )
-        coded = replace(coded, findings=(*coded.findings, told))
-    return Made(coded)
+    return days
 
 
 def _days(making: Making, source: Source) -> Array:
@@ -52,4 +59,4 @@ def _days(making: Making, source: Source) -> Array:
     if column.kind != "date":
         told: Fault = fault("derived-needs-date", making.where, source=quoted(column.name), kind=column.kind)
         raise InputFault(told)
-    return parse_dates(source.coded.values, where=source.where, first_row=source.first_row)
+    return parse_dates(source.coded.values, where=source.where, rows=source.rows, day_first=source.coded.day_first)

@@ -3,8 +3,7 @@
 from __future__ import annotations
 
 from oddsmodel.report.figures import calibration, curve, estimates, flow, histogram, roc, scatter
-from oddsmodel.report.figures.canvas import Sheet, drawing_settings
-from oddsmodel.report.figures.inline import inline_svg
+from oddsmodel.report.figures.canvas import Sheet
 from oddsmodel.results import figures as values
 
 __all__ = ["svg"]
@@ -12,9 +11,7 @@ __all__ = ["svg"]
 
 def svg(figure: values.Figure, prefix: str) -> str:
     """The figure as an inline SVG element whose ids all begin with `prefix`."""
-    with drawing_settings():
-        source = _sheet(figure).source()
-    return inline_svg(source, prefix=prefix, title=figure.title, alt=figure.alt)
+    return _sheet(figure).svg(prefix, figure.title, figure.alt)
 
 
 def _sheet(figure: values.Figure) -> Sheet:

@@ -2,56 +2,45 @@
 
 from __future__ import annotations
 
-from typing import Any
-
-from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, PAPER, RULE, SECOND, SMALL, Sheet
+from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, PAPER, RING, SECOND, SMALL, KeyEntry, Sheet
+from oddsmodel.report.figures.plot import Plot
 from oddsmodel.report.figures.scales import percent_labels, plain_ticks
+from oddsmodel.report.figures.strokes import marker
 from oddsmodel.results.figures import CalibrationFigure
 from oddsmodel.wording import say
 
 _LEFT, _SIDE = 48.0, 318.0
+_AGREEMENT = (4.0, 3.0)
+_THIN, _EDGE = 1.2, 1.8
 
 
 def draw(figure: CalibrationFigure) -> Sheet:
-    entries: list[tuple[str, str, dict[str, Any]]] = [
-        (say("figure-agreement"), MUTED, {"linewidth": 1.2, "linestyle": (0, (4, 3))})
-    ]
+    entries = [KeyEntry(say("figure-agreement"), MUTED, _AGREEMENT, stroke=_THIN)]
     if figure.groups:
-        ring = {"linestyle": "", "marker": "o", "markerfacecolor": PAPER, "markeredgewidth": 1.8}
-        entries.append((say("figure-groups"), SECOND, ring))
+        entries.append(KeyEntry(say("figure-groups"), SECOND, ring=True, stroke=_EDGE))
     if figure.smooth:
-        entries.append((say("figure-smooth"), FIRST, {}))
+        entries.append(KeyEntry(say("figure-smooth"), FIRST))
     top = Sheet.key_height(entries) + 30.0
     sheet = Sheet(top + _SIDE + 50.0)
     sheet.key(entries)
+    sheet.text(0, top - 10, say("figure-observed-share"), size=SMALL, colour=INK)
 
     highest = _highest(figure)
-    axes = sheet.plot(_LEFT, top, _SIDE, _SIDE)
-    axes.set_xlim(0, highest)
-    axes.set_ylim(0, highest)
+    plot = Plot(sheet, _LEFT, top, _SIDE, _SIDE, x=(0.0, highest), y=(0.0, highest))
     ticks = plain_ticks(0.0, highest)
-    axes.set_xticks(ticks, labels=percent_labels(ticks))
-    axes.set_yticks(ticks, labels=percent_labels(ticks))
-    axes.plot([0, highest], [0, highest], color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
-    for group in figure.groups:
-        axes.plot([group.predicted] * 2, [group.lower, group.upper], color=SECOND, linewidth=1.6, zorder=3)
-    axes.plot(
-        [group.predicted for group in figure.groups],
-        [group.observed for group in figure.groups],
-        linestyle="",
-        marker="o",
-        markersize=7,
-        markerfacecolor=PAPER,
-        markeredgecolor=SECOND,
-        markeredgewidth=1.8,
-        zorder=4,
-    )
+    plot.bottom_axis(ticks, percent_labels(ticks), grid=True)
+    plot.left_axis(ticks, percent_labels(ticks))
+    plot.line([0, highest], [0, highest], MUTED, width=_THIN, dashes=_AGREEMENT)
     if figure.smooth:
-        axes.plot(*zip(*figure.smooth, strict=True), color=FIRST, linewidth=2.2, zorder=2)
-    sheet.text(0, top - 10, say("figure-observed-share"), size=SMALL, colour=INK)
-    sheet.text(_LEFT + _SIDE, top + _SIDE + 42, say("figure-predicted-risk"), size=SMALL, colour=INK, ha="right")
-    axes.grid(color=RULE, linewidth=0.6)
-    axes.set_axisbelow(True)
+        predicted, observed = zip(*figure.smooth, strict=True)
+        plot.line(predicted, observed, FIRST, width=2.2)
+    for group in figure.groups:
+        plot.line([group.predicted] * 2, [group.lower, group.upper], SECOND, width=1.6)
+    across = plot.x.at([group.predicted for group in figure.groups]).tolist()
+    up = plot.y.at([group.observed for group in figure.groups]).tolist()
+    for x, y in zip(across, up, strict=True):
+        plot.put(marker(x, y, "circle", RING, SECOND, PAPER, _EDGE))
+    sheet.text(_LEFT + _SIDE, top + _SIDE + 42, say("figure-predicted-risk"), size=SMALL, colour=INK, anchor="end")
     return sheet
 
 

@@ -1,150 +1,149 @@
-"""The sheet every figure is drawn on: matplotlib in plain units, one point a CSS pixel.
+"""The sheet every figure is drawn on: an SVG in plain units, one unit a CSS pixel, positions from the top left.
 
-Colours are drawn as stand-ins and become CSS variables of the page, so that a figure follows light and dark.
+Colours are CSS variables of the page, so that a figure follows light and dark.
 """
 
 from __future__ import annotations
 
-import io
-import warnings
-from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
-from typing import TYPE_CHECKING, Any
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from html import escape
+from typing import Literal
 
 from oddsmodel.report.figures.lettering import width_of
+from oddsmodel.report.figures.strokes import Dashes, marker, number, path, stroke
 from oddsmodel.wording.plain import plain
-
-if TYPE_CHECKING:
-    from matplotlib.axes import Axes
-    from matplotlib.figure import Figure as Drawing
 
 WIDTH = 380.0
 TEXT = 13.5
 SMALL = 12.75
 LINE = 17.0
 
-INK = "#010101"
-MUTED = "#010102"
-RULE = "#010103"
-FIRST = "#010104"
-SECOND = "#010105"
-THIRD = "#010106"
-FOURTH = "#010107"
-PAPER = "#010108"
+INK = "var(--ink)"
+MUTED = "var(--muted)"
+RULE = "var(--rule)"
+FIRST = "var(--first)"
+SECOND = "var(--second)"
+THIRD = "var(--third)"
+FOURTH = "var(--fourth)"
+PAPER = "var(--paper)"
 SERIES = (FIRST, SECOND, THIRD, FOURTH)
-MARKERS = ("o", "s", "D", "^")
-VARIABLES = {
-    INK: "var(--ink)",
-    MUTED: "var(--muted)",
-    RULE: "var(--rule)",
-    FIRST: "var(--first)",
-    SECOND: "var(--second)",
-    THIRD: "var(--third)",
-    FOURTH: "var(--fourth)",
-    PAPER: "var(--paper)",
-}
 
-_SETTINGS: dict[str, Any] = {
-    "svg.hashsalt": "oddsmodel",
-    "svg.fonttype": "none",
-    "svg.image_inline": True,
-    "text.parse_math": False,
-    "text.usetex": False,
-    "axes.unicode_minus": True,
-    "font.family": "sans-serif",
-    "font.size": SMALL,
-    "path.simplify": True,
-}
+Anchor = Literal["start", "middle", "end"]
+
+RING = 7.0
 _KEY_GAP = 14.0
 
 
-def _key_width(words: str) -> float:
-    return 24.0 + width_of(plain(words), SMALL) + _KEY_GAP
+@dataclass(frozen=True, slots=True)
+class KeyEntry:
+    """Words of a key beside a sample: a stretch of line, or a ring; `stroke` is how wide it is drawn."""
+
+    words: str
+    colour: str
+    dashes: Dashes = ()
+    ring: bool = False
+    stroke: float = 2.0
+
+    @property
+    def width(self) -> float:
+        return 24.0 + width_of(plain(self.words), SMALL) + _KEY_GAP
+
+
+@dataclass(frozen=True, slots=True)
+class Window:
+    """A rectangle of a sheet whose elements are cut at its edges."""
+
+    left: float
+    top: float
+    width: float
+    height: float
+    elements: list[str] = field(default_factory=list)
+
+    def svg(self, id_: str) -> str:
+        sides = (("x", self.left), ("y", self.top), ("width", self.width), ("height", self.height))
+        rectangle = " ".join(f'{name}="{number(value)}"' for name, value in sides)
+        clip = f'<clipPath id="{id_}"><rect {rectangle}/></clipPath>'
+        return f'{clip}<g clip-path="url(#{id_})">{"".join(self.elements)}</g>'
 
 
 class Sheet:
-    """A drawing of `width` by `height` units. Positions are from the top left, as on a page."""
+    """A drawing of `WIDTH` by `height` units, painted in the order of the calls."""
 
-    def __init__(self, height: float, width: float = WIDTH) -> None:
-        from matplotlib.backends.backend_svg import FigureCanvasSVG
-        from matplotlib.figure import Figure as Drawing
-
-        self.width = width
+    def __init__(self, height: float) -> None:
         self.height = height
-        self.drawing: Drawing = Drawing(figsize=(width / 72, height / 72), dpi=72)
-        self.drawing.patch.set_visible(False)
-        FigureCanvasSVG(self.drawing)
-        self._page: Axes | None = None
+        self._painted: list[str | Window] = []
 
-    @property
-    def page(self) -> Axes:
-        """Axes over the whole sheet in its own units, y growing downwards, nothing drawn of themselves."""
-        if self._page is None:
-            self._page = self.drawing.add_axes((0, 0, 1, 1))
-            self._page.set_axis_off()
-            self._page.set_xlim(0, self.width)
-            self._page.set_ylim(self.height, 0)
-        return self._page
+    def paint(self, element: str | Window) -> None:
+        """An SVG element as it stands, every text in it escaped, or a window that may be filled later."""
+        self._painted.append(element)
 
-    def plot(self, left: float, top: float, width: float, height: float) -> Axes:
-        """Axes with ticks in a rectangle of the sheet: a bare frame of two quiet rules."""
-        axes = self.drawing.add_axes(
-            (left / self.width, 1 - (top + height) / self.height, width / self.width, height / self.height)
-        )
-        axes.patch.set_visible(False)
-        for side in ("top", "right"):
-            axes.spines[side].set_visible(False)
-        for side in ("left", "bottom"):
-            axes.spines[side].set_color(RULE)
-        axes.tick_params(colors=MUTED, labelcolor=MUTED, labelsize=SMALL, length=4, width=0.8)
-        return axes
+    def text(
+        self,
+        x: float,
+        y: float,
+        text: str,
+        *,
+        size: float = TEXT,
+        colour: str = INK,
+        anchor: Anchor = "start",
+        bold: bool = False,
+    ) -> None:
+        """Text whose baseline begins (or is centred, or ends: `anchor`) at a position of the sheet."""
+        weight = "font-weight:700;" if bold else ""
+        place = "" if anchor == "start" else f"text-anchor:{anchor};"
+        style = f"{weight}font-size:{size:g}px;{place}fill:{colour}"
+        self.paint(f'<text x="{number(x)}" y="{number(y)}" style="{style}">{escape(plain(text), quote=False)}</text>')
 
-    def text(self, x: float, y: float, text: str, *, size: float = TEXT, colour: str = INK, **style: Any) -> None:
-        """Text whose baseline begins (or ends, or is centred: `ha`) at a position of the sheet."""
-        self.page.text(x, y, plain(text), fontsize=size, color=colour, va=style.pop("va", "baseline"), **style)
+    def line(
+        self,
+        x: Sequence[float],
+        y: Sequence[float],
+        colour: str = INK,
+        *,
+        width: float = 1.2,
+        dashes: Dashes = (),
+        butt: bool = False,
+    ) -> None:
+        self.paint(stroke(path(x, y), colour, width, dashes, butt=butt))
 
-    def line(self, x: Sequence[float], y: Sequence[float], colour: str = INK, **style: Any) -> None:
-        self.page.plot(x, y, color=colour, linewidth=style.pop("linewidth", 1.2), **style)
-
-    def key(self, entries: Sequence[tuple[str, str, dict[str, Any]]]) -> None:
-        """A key in one or more rows at the top: (words, colour, how its sample is drawn)."""
+    def key(self, entries: Sequence[KeyEntry]) -> None:
+        """A key in one or more rows at the top."""
         x, baseline = 0.0, 14.0
-        for words, colour, style in entries:
-            need = _key_width(words)
-            if x > 0 and x + need > self.width + _KEY_GAP:
+        for entry in entries:
+            if x > 0 and x + entry.width > WIDTH + _KEY_GAP:
                 x, baseline = 0.0, baseline + LINE
-            drawn = {"linewidth": 2.0, **style}
-            xs = [x + 9] if drawn.get("marker") and drawn.get("linestyle") == "" else [x, x + 18]
-            self.page.plot(xs, [baseline - 4] * len(xs), color=colour, **drawn)
-            self.text(x + 24, baseline, words, size=SMALL, colour=MUTED)
-            x += need
+            if entry.ring:
+                self.paint(marker(x + 9, baseline - 4, "circle", RING, entry.colour, PAPER, entry.stroke))
+            else:
+                self.line([x, x + 18], [baseline - 4] * 2, entry.colour, width=entry.stroke, dashes=entry.dashes)
+            self.text(x + 24, baseline, entry.words, size=SMALL, colour=MUTED)
+            x += entry.width
 
     @staticmethod
-    def key_height(entries: Sequence[tuple[str, str, dict[str, Any]]]) -> float:
+    def key_height(entries: Sequence[KeyEntry]) -> float:
         """The height of a key over the whole width of a sheet."""
         rows, x = 1, 0.0
-        for words, _, _ in entries:
-            need = _key_width(words)
-            if x > 0 and x + need > WIDTH + _KEY_GAP:
+        for entry in entries:
+            if x > 0 and x + entry.width > WIDTH + _KEY_GAP:
                 rows, x = rows + 1, 0.0
-            x += need
+            x += entry.width
         return LINE * rows
 
-    def source(self) -> str:
-        """The SVG as matplotlib writes it."""
-        written = io.StringIO()
-        self.drawing.savefig(written, format="svg", metadata={"Date": None, "Creator": None}, transparent=True)
-        return written.getvalue()
+    def svg(self, prefix: str, title: str, alt: str) -> str:
+        """The sheet as an inline element of a page.
 
-
-@contextmanager
-def drawing_settings() -> Iterator[None]:
-    """Own settings for a drawing, whatever a caller has set; a glyph that is not in matplotlib's own font is no fault,
-    since the reader's browser draws the text."""
-    from matplotlib import rc_context, rcParamsDefault
-
-    kept = ("backend", "toolbar", "interactive", "figure.hooks")
-    settings: Any = {name: value for name, value in rcParamsDefault.items() if not name.startswith(kept)} | _SETTINGS
-    with warnings.catch_warnings(), rc_context(settings):
-        warnings.simplefilter("ignore")
-        yield
+        `prefix` makes every id of the drawing unique in the page. `title` and `alt` become its name and description.
+        """
+        named = "".join(
+            f'<{name} id="{prefix}-{name}">{escape(plain(words), quote=False)}</{name}>'
+            for name, words in (("title", title), ("desc", alt))
+        )
+        painted = "".join(
+            element.svg(f"{prefix}-{place}") if isinstance(element, Window) else element
+            for place, element in enumerate(self._painted)
+        )
+        return (
+            f'<svg viewBox="0 0 {number(WIDTH)} {number(self.height)}" role="img" '
+            f'aria-labelledby="{prefix}-title {prefix}-desc" class="drawing" focusable="false">{named}{painted}</svg>'
+        )

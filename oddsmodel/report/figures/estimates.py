@@ -10,7 +10,6 @@ from oddsmodel.report.figures.canvas import (
     FIRST,
     INK,
     LINE,
-    MARKERS,
     MUTED,
     PAPER,
     RULE,
@@ -22,6 +21,7 @@ from oddsmodel.report.figures.canvas import (
 )
 from oddsmodel.report.figures.lettering import fold, width_of
 from oddsmodel.report.figures.scales import ratio_label, ratio_range, ratio_ticks
+from oddsmodel.report.figures.strokes import SHAPES, marker
 from oddsmodel.results.figures import EstimateMark, EstimatesFigure
 from oddsmodel.wording import numbers, say
 
@@ -84,7 +84,7 @@ def draw(figure: EstimatesFigure) -> Sheet:
     top = _TOP
     for label, rows in blocks:
         for line in label:
-            sheet.text(0, top + 12, line, weight="bold")
+            sheet.text(0, top + 12, line, bold=True)
             top += LINE
         top += _UNDER_LABEL
         for row in rows:
@@ -129,8 +129,8 @@ def _axis(marks: tuple[EstimateMark, ...], left: float, right: float) -> _Axis:
 def _grid(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], top: float, bottom: float) -> None:
     """Quiet rules behind one row, the line at 1 stronger."""
     for tick in ticks:
-        sheet.line([axis.at(tick)] * 2, [top, bottom], RULE, linewidth=0.8, zorder=0)
-    sheet.line([axis.at(1.0)] * 2, [top - 1, bottom + 1], MUTED, linewidth=1.4, zorder=1)
+        sheet.line([axis.at(tick)] * 2, [top, bottom], RULE, width=0.8)
+    sheet.line([axis.at(1.0)] * 2, [top - 1, bottom + 1], MUTED, width=1.4)
 
 
 def _scale(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], bottom: float, title: str) -> None:
@@ -138,10 +138,10 @@ def _scale(sheet: Sheet, axis: _Axis, ticks: tuple[float, ...], bottom: float, t
     for tick in ticks:
         x = axis.at(tick)
         sheet.line([x, x], [bottom, bottom + 4], RULE)
-        sheet.text(x, bottom + 17, ratio_label(tick), size=SMALL, colour=MUTED, ha="center")
+        sheet.text(x, bottom + 17, ratio_label(tick), size=SMALL, colour=MUTED, anchor="middle")
     one = axis.at(1.0)
     if one - axis.left > 78:
-        sheet.text(one - 8, bottom + 35, say("figure-lower-odds"), size=SMALL, colour=MUTED, ha="right")
+        sheet.text(one - 8, bottom + 35, say("figure-lower-odds"), size=SMALL, colour=MUTED, anchor="end")
     if axis.right - one > 50:
         sheet.text(one + 8, bottom + 35, say("figure-higher-odds"), size=SMALL, colour=MUTED)
     sheet.text(axis.left, bottom + 53, title, size=SMALL, colour=MUTED)
@@ -159,17 +159,9 @@ def _estimate(sheet: Sheet, row: _Row, axis: _Axis, top: float, series: int) -> 
     if mark.estimate is not None:
         _interval(sheet, mark, axis, middle, colour)
         hollow = series % len(SERIES) != 0
-        sheet.page.plot(
-            [axis.at(mark.estimate)],
-            [middle],
-            marker=MARKERS[series % len(MARKERS)],
-            markersize=8.0 if series == 0 else 7.0,
-            markerfacecolor=PAPER if hollow else FIRST,
-            markeredgecolor=colour,
-            markeredgewidth=1.8,
-            linestyle="",
-            zorder=4,
-        )
+        shape, size = SHAPES[series % len(SHAPES)], 8.0 if series == 0 else 7.0
+        fill = PAPER if hollow else FIRST
+        sheet.paint(marker(axis.at(mark.estimate), middle, shape, size, colour, fill, 1.8))
     bottom = top + row.height - row.note_height
     for number, words in enumerate(row.note):
         sheet.text(0, bottom + 12 + 16.0 * number, words, size=SMALL, colour=MUTED)
@@ -181,10 +173,10 @@ def _interval(sheet: Sheet, mark: EstimateMark, axis: _Axis, middle: float, colo
     beyond_right = mark.upper is None or mark.upper > axis.high
     start = axis.left if beyond_left else axis.at(mark.lower or axis.low)
     stop = axis.right if beyond_right else axis.at(mark.upper or axis.high)
-    sheet.line([start, stop], [middle, middle], colour, linewidth=2.2, zorder=3, solid_capstyle="butt")
+    sheet.line([start, stop], [middle, middle], colour, width=2.2, butt=True)
     for end, beyond, away in ((start, beyond_left, -1.0), (stop, beyond_right, 1.0)):
         if beyond:
             tip = [end - 6.0 * away, end, end - 6.0 * away]
-            sheet.line(tip, [middle - 4.5, middle, middle + 4.5], colour, linewidth=2.0, zorder=3)
+            sheet.line(tip, [middle - 4.5, middle, middle + 4.5], colour, width=2.0)
         else:
-            sheet.line([end, end], [middle - 4.0, middle + 4.0], colour, linewidth=1.8, zorder=3)
+            sheet.line([end, end], [middle - 4.0, middle + 4.0], colour, width=1.8)

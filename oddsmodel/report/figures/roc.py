@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
-from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, RULE, SMALL, TEXT, Sheet
+from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, SMALL, TEXT, Sheet
+from oddsmodel.report.figures.plot import Plot
 from oddsmodel.report.figures.scales import percent_labels, plain_ticks
 from oddsmodel.results.figures import StepFigure
 from oddsmodel.wording import numbers, say
@@ -15,22 +16,22 @@ _MOST_POINTS = 400
 
 def draw(figure: StepFigure) -> Sheet:
     sheet = Sheet(_TOP + _SIDE + 52.0)
-    axes = sheet.plot(_LEFT, _TOP, _SIDE, _SIDE)
-    axes.set_xlim(0, 1)
-    axes.set_ylim(0, 1)
+    sheet.text(0, 14, say("figure-true-positive"), size=SMALL, colour=INK)
+    plot = Plot(sheet, _LEFT, _TOP, _SIDE, _SIDE, x=(0.0, 1.0), y=(0.0, 1.0))
     ticks = plain_ticks(0.0, 1.0)
-    axes.set_xticks(ticks, labels=percent_labels(ticks))
-    axes.set_yticks(ticks, labels=percent_labels(ticks))
-    axes.grid(color=RULE, linewidth=0.6)
-    axes.set_axisbelow(True)
-    axes.plot([0, 1], [0, 1], color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
+    plot.bottom_axis(ticks, percent_labels(ticks), grid=True)
+    plot.left_axis(ticks, percent_labels(ticks))
     points = np.asarray(figure.points, dtype=float).reshape(-1, 2)
     if len(points) > _MOST_POINTS:
         points = points[np.unique(np.linspace(0, len(points) - 1, _MOST_POINTS).round().astype(int))]
-    axes.fill_between(points[:, 0], points[:, 1], color=FIRST, alpha=0.12, linewidth=0)
-    axes.plot(points[:, 0], points[:, 1], color=FIRST, linewidth=2.2, clip_on=False)
+    x, y = points.T
+    if len(points):
+        plot.between(x, np.zeros(len(x)), y, FIRST, 0.12)
+    plot.line([0, 1], [0, 1], MUTED, width=1.2, dashes=(4.0, 3.0))
+    if len(points):
+        sheet.line(plot.x.at(x).tolist(), plot.y.at(y).tolist(), FIRST, width=2.2)
     words = say("figure-area", area=numbers.decimal(figure.area, 3))
-    sheet.text(_LEFT + _SIDE - 14, _TOP + _SIDE - 20, words, size=TEXT, ha="right", weight="bold")
-    sheet.text(0, 14, say("figure-true-positive"), size=SMALL, colour=INK)
-    sheet.text(_LEFT + _SIDE, _TOP + _SIDE + 42, say("figure-false-positive"), size=SMALL, colour=INK, ha="right")
+    sheet.text(_LEFT + _SIDE - 14, _TOP + _SIDE - 20, words, size=TEXT, anchor="end", bold=True)
+    words = say("figure-false-positive")
+    sheet.text(_LEFT + _SIDE, _TOP + _SIDE + 42, words, size=SMALL, colour=INK, anchor="end")
     return sheet

@@ -2,18 +2,15 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
 from numpy.typing import NDArray
 
-from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, RULE, SMALL, Sheet
+from oddsmodel.report.figures.canvas import FIRST, INK, MUTED, SMALL, WIDTH, Sheet
 from oddsmodel.report.figures.lettering import fold
+from oddsmodel.report.figures.plot import Plot
 from oddsmodel.report.figures.scales import plain_labels, plain_ticks
+from oddsmodel.report.figures.strokes import number
 from oddsmodel.results.figures import ScatterFigure
-
-if TYPE_CHECKING:
-    from matplotlib.axes import Axes
 
 _LEFT, _TOP, _WIDTH, _HEIGHT = 48.0, 30.0, 322.0, 250.0
 _SIZES = (3.0, 5.0, 7.5, 10.5, 14.0)
@@ -26,45 +23,32 @@ Array = NDArray[np.float64]
 def draw(figure: ScatterFigure) -> Sheet:
     title = fold(figure.x_label, SMALL, _WIDTH)
     sheet = Sheet(_TOP + _HEIGHT + 28.0 + 16.0 * len(title))
-    axes = sheet.plot(_LEFT, _TOP, _WIDTH, _HEIGHT)
+    sheet.text(0, 14, fold(figure.y_label, SMALL, WIDTH, lines=1)[0], size=SMALL, colour=INK)
     x, y, size = (np.asarray(values, dtype=float) for values in (figure.x, figure.y, figure.size))
-    x_low, x_high = _range(x, ())
-    y_low, y_high = _range(y, figure.lines)
-    unit = np.array([(x_high - x_low) / _WIDTH, (y_high - y_low) / _HEIGHT])
+    across, up = _range(x, ()), _range(y, figure.lines)
+    plot = Plot(sheet, _LEFT, _TOP, _WIDTH, _HEIGHT, x=across, y=up)
+    ticks = plain_ticks(*across)
+    plot.bottom_axis(ticks, plain_labels(ticks), grid=True)
+    ticks = plain_ticks(*up)
+    plot.left_axis(ticks, plain_labels(ticks))
+    points = np.column_stack([plot.x.at(x), plot.y.at(y)])
     grade = _grades(size)
-    for number, diameter in enumerate(_SIZES):
-        chosen = grade == number
-        _dots(axes, _thinned(x[chosen], y[chosen], unit * max(_SPOT, diameter / 3)), diameter)
+    for place, diameter in enumerate(_SIZES):
+        _dots(plot, _thinned(points[grade == place], max(_SPOT, diameter / 3)), diameter)
     for level in figure.lines:
-        axes.axhline(level, color=MUTED, linewidth=1.2, linestyle=(0, (4, 3)))
-    axes.set_xlim(x_low, x_high)
-    axes.set_ylim(y_low, y_high)
-    ticks = plain_ticks(x_low, x_high)
-    axes.set_xticks(ticks, labels=plain_labels(ticks))
-    ticks = plain_ticks(y_low, y_high)
-    axes.set_yticks(ticks, labels=plain_labels(ticks))
-    axes.grid(color=RULE, linewidth=0.6)
-    axes.set_axisbelow(True)
-    sheet.text(0, 14, fold(figure.y_label, SMALL, sheet.width, lines=1)[0], size=SMALL, colour=INK)
-    for number, words in enumerate(title):
-        sheet.text(_LEFT + _WIDTH, _TOP + _HEIGHT + 36 + 16 * number, words, size=SMALL, ha="right")
+        plot.level(level, MUTED, width=1.2, dashes=(4.0, 3.0))
+    for place, words in enumerate(title):
+        sheet.text(_LEFT + _WIDTH, _TOP + _HEIGHT + 36 + 16 * place, words, size=SMALL, anchor="end")
     return sheet
 
 
-def _dots(axes: Axes, points: Array, diameter: float) -> None:
+def _dots(plot: Plot, points: Array, diameter: float) -> None:
     """All dots of one size as one path of strokes without length and with round ends: few bytes a dot."""
-    from matplotlib.patches import PathPatch
-    from matplotlib.path import Path
-
     if not len(points):
         return
-    strokes = Path(np.repeat(points, 2, axis=0), np.tile([Path.MOVETO, Path.LINETO], len(points)))
-    strokes.should_simplify = False
-    axes.add_patch(
-        PathPatch(
-            strokes, edgecolor=FIRST, facecolor="none", linewidth=diameter, capstyle="round", alpha=0.45, zorder=2
-        )
-    )
+    data = "".join([f"M{number(x)} {number(y)}h0" for x, y in points.tolist()])
+    style = f"fill:none;stroke:{FIRST};stroke-width:{diameter:g};stroke-linecap:round;opacity:0.45"
+    plot.put(f'<path d="{data}" style="{style}"/>')
 
 
 def _range(values: Array, also: tuple[float, ...]) -> tuple[float, float]:
@@ -81,10 +65,8 @@ def _grades(size: Array) -> NDArray[np.intp]:
     return np.minimum((share * len(_SIZES)).astype(np.intp), len(_SIZES) - 1)
 
 
-def _thinned(x: Array, y: Array, spot: Array) -> Array:
-    """One point (k, 2) for all that fall on the same spot of the drawing: what is hidden beneath is left out."""
-    points = np.column_stack([x, y])
-    if not len(points):
-        return points
-    _, first = np.unique(np.floor(points / spot).astype(np.int64), axis=0, return_index=True)
-    return points[np.sort(first)] if len(first) <= _MOST_DOTS else _thinned(x, y, 1.5 * spot)
+def _thinned(points: Array, spot: float) -> Array:
+    """One point (k, 2) for all (n, 2) on the same spot of the drawing: what is hidden beneath is left out."""
+    across, down = np.floor(points / spot).astype(np.int64).T
+    _, first = np.unique(across * (1 << 32) + down, return_index=True)
+    return points[np.sort(first)] if len(first) <= _MOST_DOTS else _thinned(points, 1.5 * spot)

@@ -1,0 +1,164 @@
+"""What a pass costs, how much of the machine it uses, and how many passes a model takes.
+
+Run: python tests/benchmarks/costs.py [--quick] [--records 1000000]     (about two minutes)
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+import time
+from collections.abc import Callable, Sequence
+from concurrent.futures import ThreadPoolExecutor
+from typing import Any
+
+import numpy as np
+from made import records
+from threadpoolctl import threadpool_limits
+from timing import machine
+
+from oddsmodel.inference import certify, maximise, profile_intervals
+from oddsmodel.likelihood import BinomialLikelihood
+from oddsmodel.passes import MemoryPasses
+
+LEAF = 4096
+"""Rows of a leaf."""
+
+
+def fastest(work: Callable[[], Any], runs: int) -> float:
+    """Least time of several runs in seconds: what the machine can do when nothing else is in the way."""
+    times = []
+    for _ in range(runs):
+        start = time.perf_counter()
+        work()
+        times.append(time.perf_counter() - start)
+    return min(times)
+
+
+def on_all(cores: int, work: Callable[[int], Any]) -> None:
+    with ThreadPoolExecutor(cores) as pool:
+        list(pool.map(work, range(cores)))
+
+
+class Machine:
+    """Rates of all cores together: matrix products in Gflop/s, memory in Gbyte/s."""
+
+    def __init__(self, cores: int, runs: int, size: int) -> None:
+        rng = np.random.default_rng(0)
+        squares = [rng.normal(size=(size, size)) for _ in range(cores)]
+        with threadpool_limits(1, "blas"):
+            seconds = fastest(lambda: on_all(cores, lambda core: squares[core] @ squares[core]), runs)
+        self.products = cores * 2 * size**3 / seconds / 1e9
+        long = [np.ones(size * size * 8) for _ in range(cores)]
+        other = [np.empty_like(array) for array in long]
+        self.reading = (
+            cores * long[0].nbytes / fastest(lambda: on_all(cores, lambda core: long[core].sum()), runs) / 1e9
+        )
+        seconds = fastest(lambda: on_all(cores, lambda core: np.copyto(other[core], long[core])), runs)
+        self.copying = cores * 2 * long[0].nbytes / seconds / 1e9
+
+
+class Leaf:
+    """Nanoseconds a row of what a leaf needs, on one core: matrix products of its shapes, and the rest of a value."""
+
+    def __init__(self, p: int, k: int, runs: int) -> None:
+        rng = np.random.default_rng(0)
+        X, beta, risk = rng.normal(size=(LEAF, p)), rng.normal(size=(k, p)), rng.normal(size=(k, LEAF))
+        one, root, rooted = beta[:1], rng.random((LEAF, 1)), np.empty((LEAF, p))
+        couples = rng.normal(size=(p * (p + 1) // 2, 512))
+        with threadpool_limits(1, "blas"):
+
+            def each(work: Callable[[], Any], rows: int = LEAF) -> float:
+                return fastest(work, 20 * runs) / rows * 1e9
+
+            self.linear_and_score = each(lambda: (beta @ X.T, risk @ X))
+            self.linear_and_score_of_one = each(lambda: (one @ X.T, risk[:1] @ X))
+            self.square = each(lambda: (np.multiply(X, root, out=rooted), rooted.T @ rooted))
+            self.shared = each(lambda: risk[:, :512] @ couples.T, 512)
+            small = BinomialLikelihood(X[:, :1], (risk[0] > 0).astype(float))
+            self.value = each(lambda: small.evaluate(beta[:, :1], information=False)) / k
+            self.forming = each(lambda: np.multiply(couples, couples[:1]), 512)
+
+
+def passes_of(likelihood: BinomialLikelihood, p: int, runs: int, rates: Machine, cores: int) -> list[str]:
+    """A line a kind of pass: nanoseconds a row, the model's, and shares of the machine."""
+    k = 2 * p
+    leaf = Leaf(p, k, runs)
+    rng = np.random.default_rng(1)
+    beta = rng.normal(size=(k, p)) * 0.02
+    square = p * (p + 1)
+    kinds = (
+        ("score, 1 vector", 1, False, leaf.value + leaf.linear_and_score_of_one, 4 * p),
+        ("information, 1 vector", 1, True, leaf.value + leaf.linear_and_score_of_one + leaf.square, 4 * p + p + square),
+        (f"score, {k} vectors", k, False, k * leaf.value + leaf.linear_and_score, 4 * p * k),
+        (
+            f"information, {k} vectors",
+            k,
+            True,
+            k * leaf.value + leaf.linear_and_score + leaf.forming + leaf.shared,
+            4 * p * k + square // 2 + square * k,
+        ),
+    )
+    lines = []
+    for name, vectors, information, model, flops in kinds:
+        seconds = fastest(lambda: likelihood.evaluate(beta[:vectors], information=information), runs)
+        row = seconds / likelihood.rows * 1e9
+        lines.append(
+            f"  {name:26}{row:10.1f}{model / cores:10.1f}{flops:12,}{flops / row / rates.products:10.0%}"
+            f"{8 * p:10,}{8 * p / row / rates.reading:10.0%}"
+        )
+    return lines
+
+
+class Counting(MemoryPasses):
+    """Passes over rows in memory that are counted."""
+
+    counted = 0
+
+    def reduce(self, kernels: Any, state: Any) -> Any:
+        self.counted += 1
+        return super().reduce(kernels, state)
+
+
+def counts(number: int, p: int) -> str:
+    """The passes over all rows of a fit, of all its profile limits and of its certificate."""
+    X, y = records("mixed", number, p)
+    passes = Counting({"X": X, "events": y})
+    fit = maximise(BinomialLikelihood.over(passes, p))
+    after_fit = passes.counted
+    profile_intervals(fit)
+    after_limits = passes.counted
+    certify(fit)
+    return (
+        f"{number:>12,}{p:>9}{after_fit:>14}{after_limits - after_fit:>9}{passes.counted - after_limits:>13}"
+        f"{passes.counted:>8}"
+    )
+
+
+def main(arguments: Sequence[str] | None = None) -> None:
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("--quick", action="store_true")
+    parser.add_argument("--records", type=int, default=1_000_000)
+    asked = parser.parse_args(arguments)
+    number, runs, size = (20_000, 1, 100) if asked.quick else (asked.records, 7, 1500)
+    widths = (5,) if asked.quick else (17, 60)
+    cores = len(os.sched_getaffinity(0))
+    print(machine())
+    rates = Machine(cores, runs, size)
+    print(
+        f"matrix products {rates.products:.0f} Gflop/s, reading {rates.reading:.0f} and copying {rates.copying:.0f} Gbyte/s"
+    )
+    for p in widths:
+        X, y = records("mixed", number, p)
+        print(f"{number:,} records, {p} columns; nanoseconds, flops and bytes a row")
+        print(f"  {'pass':26}{'measured':>10}{'model':>10}{'flops':>12}{'of rate':>10}{'bytes':>10}{'of rate':>10}")
+        print("\n".join(passes_of(BinomialLikelihood(X, y), p, runs, rates, cores)), flush=True)
+    print("Passes over all rows")
+    print(f"{'records':>12}{'columns':>9}{'fit with gram':>14}{'limits':>9}{'certificate':>13}{'all':>8}")
+    for p in widths:
+        for rows in (number,) if asked.quick else (10_000, 100_000, number):
+            print(counts(rows, p), flush=True)
+
+
+if __name__ == "__main__":
+    main()
