@@ -7,6 +7,7 @@ from dataclasses import replace
 from importlib import import_module
 from typing import TYPE_CHECKING, get_args
 
+from oddsmodel.plan.asked_checks import ASKED_CHECKS, FOR_PREDICTION
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.results.study import CheckResult, Family, Flow, Verdict
 from oddsmodel.wording import say
@@ -19,7 +20,7 @@ __all__ = ["run_checks", "speaking"]
 FAMILIES: tuple[Family, ...] = get_args(Family)
 """The seven families, in the order in which they are read."""
 
-CHECKS = (
+CHECKS: tuple[str, ...] = (
     "events_per_parameter",
     "sparse_cells",
     "overlap",
@@ -46,10 +47,12 @@ def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | Non
     """All checks of a fit, by family. flow: the model's accounting, for the share of records left out."""
     from oddsmodel.checks import counting
 
-    progress.stage("checking", len(CHECKS) + 1)
+    asked = set(model.also) | (set(FOR_PREDICTION) if model.aim == "prediction" else set())
+    names = (*CHECKS, *(name for name in ASKED_CHECKS if name in asked))
+    progress.stage("checking", len(names) + 1)
     results = [counting.check(model, flow)]
     progress.advance()
-    for name in CHECKS:
+    for name in names:
         result = import_module(f"oddsmodel.checks.{name}").check(model)
         if model.grouping is not None and name in AS_IF_INDEPENDENT and result.verdict != "not applicable":
             result = replace(result, explanation=f"{result.explanation}\n{say('check-as-if-independent')}")

@@ -140,7 +140,7 @@ class _Search:
         scale = float(np.abs(v).max()) / float(np.abs(interior).max())
         share = 0.5 * abs(here) / (abs(here) + abs(there) * scale)
         mixed = (1.0 - share) * v + share * scale * interior
-        unit = [Fraction(2) ** round(float(np.log2(cone.working.scale[j]))) for j in cone.kept.free]
+        unit = [cone.working.power(j) for j in cone.kept.free]
         wanted = [float(mixed[j]) * float(one) for j, one in zip(cone.kept.free, unit, strict=True)]
         size = max(abs(one) for one in wanted)
         if not size > 0.0:

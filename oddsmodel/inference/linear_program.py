@@ -24,14 +24,16 @@ class Extreme:
 
 
 def extreme(objective: Array, rows: Array, equal: Array) -> Extreme | None:
-    """The v in -1..1 with rows v >= 0 and equal v = 0 that makes objective'v largest (Konis 2007, section 4.2).
+    """The v in -1..1 with rows v >= 0 and equal v = 0 that makes objective'v largest (Konis 2007).
 
     objective (p,), rows (m, p) and equal (e, p) are best of size about one. The weights y >= 0 and z are those of
-    the dual: objective + y'rows + z'equal = 0 where the best is zero. None where HiGHS gives up.
+    the dual: objective + y'rows + z'equal = 0 where the best is zero. None where HiGHS gives up or a number is not finite.
     """
     from scipy.optimize import linprog
 
     p = objective.size
+    if not all(np.isfinite(part).all() for part in (objective, rows, equal)):
+        return None
     for presolve in (True, False):
         solved = linprog(
             -objective,

@@ -69,7 +69,7 @@ def _maximise(
 def _distance(one: Fit, other: Fit) -> float:
     """How far apart two fits are, in standard errors of the first."""
     apart = other.working - one.working
-    return float(np.sqrt(max(0.0, apart @ one.working_information @ apart)))
+    return float(np.sqrt(np.maximum(0.0, apart @ one.working_information @ apart)))
 
 
 def _with_expected_covariance(fit: Fit, basis: Array | None) -> Fit:

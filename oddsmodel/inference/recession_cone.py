@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Literal
@@ -28,9 +29,10 @@ from oddsmodel.inference.row_space import RowSpace, solved
 from oddsmodel.inference.working_rows import UnitRows, WorkingRows, independent, null_space
 from oddsmodel.likelihood.base import Array
 from oddsmodel.passes import TASK_ROWS, Passes
+from oddsmodel.passes.work import products
 
 Index = NDArray[np.intp]
-Inexact = Literal["within rounding", "too many columns"]
+Inexact = Literal["within rounding", "too many columns", "too many steps"]
 
 NO_GAIN = 1e-8
 """Size of x'v, for a row and a direction of largest entry one, that a linear program may leave of nothing."""
@@ -65,6 +67,14 @@ class Overlap:
 
     numbers: tuple[int, ...]
     multipliers: tuple[int, ...]
+
+
+@contextmanager
+def single_threaded() -> Iterator[None]:
+    """Small matrix products on one thread, without words about numbers at the end of the range: these are settled in
+    whole numbers."""
+    with products().limit(limits=1, user_api="blas"), np.errstate(over="ignore", invalid="ignore"):
+        yield
 
 
 class RecessionCone:
@@ -144,6 +154,8 @@ class RecessionCone:
                     return
             elif not self.against([found]):
                 self.direction = self._sum(self.direction, found)
+        self.inexact = "too many steps"
+        self._basis = self._null_basis()
 
     def _step(self) -> Direction | None:
         """A direction in the cone of the working rows that separates more of them, or None where they overlap."""
@@ -222,7 +234,7 @@ class RecessionCone:
     def _near(self, space: RowSpace, v: Array, clear: Index) -> Whole | None:
         """The direction orthogonal to a space, near v in its free entries, that has the clear rows on their side."""
         free = space.free
-        scale = [Fraction(2) ** round(float(np.log2(self.working.scale[j]))) for j in free]
+        scale = [self.working.power(j) for j in free]
         wanted = np.array([float(v[j]) * float(one) for j, one in zip(free, scale, strict=True)])
         size = float(np.abs(wanted).max())
         if not (size > 0.0 and np.isfinite(size)):

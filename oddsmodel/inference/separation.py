@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
 from oddsmodel.inference.cone_rows import ExactDirection, moved
 from oddsmodel.inference.contrast_signs import ContrastSign, Kind, contrast_signs
-from oddsmodel.inference.recession_cone import Inexact, Overlap, RecessionCone
+from oddsmodel.inference.recession_cone import Inexact, Overlap, RecessionCone, single_threaded
 from oddsmodel.likelihood.base import Array, Likelihood
 from oddsmodel.passes import MemoryPasses, Passes
 
@@ -28,7 +28,7 @@ class Separation:
     prove that no direction separates a row kept. verified: whether both were checked, and coefficients_verified the
     same for each coefficient. inexact says why not: "within rounding" where the verdict holds only if numbers that
     differ by no more than rounding are taken as equal, "too many columns" where whole numbers would have become too
-    long.
+    long, "too many steps" where the search was broken off.
     """
 
     separated: bool
@@ -41,11 +41,12 @@ class Separation:
     witness: tuple[int, ...] | None
     overlap: Overlap | None
     coefficients_verified: tuple[bool, ...]
-    cone: RecessionCone
+    cone: RecessionCone = field(repr=False, compare=False)
 
     def contrasts(self, contrasts: Array) -> list[ContrastSign]:
         """What separation does to the contrasts c'beta, the rows of `contrasts` (k, p)."""
-        return contrast_signs(self.cone, contrasts)
+        with single_threaded():
+            return contrast_signs(self.cone, contrasts)
 
 
 def separation(X: Array, events: Array, trials: Array) -> Separation:
@@ -80,8 +81,9 @@ def separation_of(likelihood: Likelihood) -> Separation:
 
 def separation_of_rows(passes: Passes, parameters: int) -> Separation:
     """Decide separation of rows that a pass holds: X, events and, unless all are 1, trials; or differences X alone."""
-    cone = RecessionCone(passes, parameters)
-    signs = contrast_signs(cone, np.eye(parameters))
+    with single_threaded():
+        cone = RecessionCone(passes, parameters)
+        signs = contrast_signs(cone, np.eye(parameters))
     direction = cone.direction
     rows, complete = np.zeros(passes.rows, dtype=bool), False
     if cone.separated:
@@ -104,7 +106,8 @@ def separation_of_rows(passes: Passes, parameters: int) -> Separation:
 
 def separating_direction(likelihood: Likelihood) -> Array | None:
     """A direction (p,) that separates rows of a likelihood within rounding, where there is one; nothing is proved."""
-    cone = RecessionCone(passes_of(likelihood), likelihood.parameters, exactly=False)
+    with single_threaded():
+        cone = RecessionCone(passes_of(likelihood), likelihood.parameters, exactly=False)
     return cone.direction.floats if cone.separated else None
 
 

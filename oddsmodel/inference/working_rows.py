@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from math import frexp
 
 import numpy as np
 from numpy.typing import NDArray
@@ -60,6 +61,10 @@ class WorkingRows:
         largest = np.abs(self.X).max(axis=0, initial=0.0)
         return np.where(largest > 0.0, largest, 1.0)
 
+    def power(self, j: int) -> Fraction:
+        """A power of two of about the scale of column j."""
+        return Fraction(2) ** min(max(frexp(self.scale[j])[1], -1000), 1000)
+
 
 class UnitRows:
     """Working rows turned to their sides, in coordinates and lengths that suit floating point.
@@ -80,9 +85,10 @@ class UnitRows:
         self.rows = np.asarray(rows / self.length[:, None], dtype=np.float64)
 
     def direction(self, point: Array) -> Array:
-        """The direction of the coefficients (p,) of a point (q,)."""
+        """The direction of the coefficients (p,) of a point (q,), infinite where floats do not reach so far."""
         turned = point if self.turn is None else self.turn @ point
-        return np.asarray(turned / self.scale)
+        with np.errstate(over="ignore"):
+            return np.asarray(turned / self.scale)
 
 
 def _turn(rows: Array) -> Array | None:

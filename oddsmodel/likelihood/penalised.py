@@ -90,7 +90,7 @@ class JeffreysPenalisedLikelihood:
             return Evaluation(value, score, None)
         curvature = plain.information.copy()
         if change.hessian is not None and change.products is not None:
-            for k in np.flatnonzero(regular):
+            for k in np.flatnonzero(regular).tolist():
                 added = self.power * (change.hessian[k] - change.products[k])
                 curvature[k] = _raised(plain.information[k] - added, plain.information[k], roots[k])
         return Evaluation(value, score, self._both(curvature))

@@ -27,7 +27,7 @@ from oddsmodel.passes.base import (
 )
 from oddsmodel.passes.work import answers_of, made_of, products
 
-AHEAD = 4
+AHEAD = 2
 """Tasks in progress or waiting to be taken up, a core: what they hold bounds the memory."""
 
 

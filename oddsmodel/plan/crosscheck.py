@@ -8,10 +8,11 @@ from dataclasses import dataclass
 from typing import Any
 
 from oddsmodel.errors import Fault
+from oddsmodel.plan.asked_checks import ASKED_CHECKS
 from oddsmodel.plan.database import faults_of_database
 from oddsmodel.plan.derived_checks import check_derived, check_renamed
 from oddsmodel.plan.faults import fault, key_path
-from oddsmodel.plan.later import LATER_CHECKS, LATER_DESIGN
+from oddsmodel.plan.later import LATER_DESIGN
 from oddsmodel.plan.model_checks import check_column, check_models
 from oddsmodel.plan.outcome_checks import check_outcome, check_repeats
 from oddsmodel.plan.schema import (
@@ -273,5 +274,6 @@ def _model_names(parts: Parts) -> Iterator[Fault]:
 
 def _checks(parts: Parts) -> Iterator[Fault]:
     for position, check in enumerate(parts.checks.also if parts.checks else ()):
-        code = "check-not-yet" if check in LATER_CHECKS else "check-unknown"
-        yield fault(code, parts.at("checks", "also", position), check=quoted(check))
+        if check not in ASKED_CHECKS:
+            where = parts.at("checks", "also", position)
+            yield fault("check-unknown", where, check=quoted(check), **offer(check, ASKED_CHECKS))

@@ -40,7 +40,6 @@ LATER_KEYS: dict[str, dict[str, str]] = {
 """Section → key → the code of its sentence."""
 
 LATER_DESIGN = {"matched case-control": "later-matched"}
-LATER_CHECKS = ("box_tidwell",)
 
 
 def later(location: Sequence[str | int]) -> str | None:

@@ -6,8 +6,8 @@ import re
 
 SIZE = re.compile(r"([0-9]+(?:\.[0-9]+)?) ?(MB|GB|TB)")
 UNITS = {"MB": 10**6, "GB": 10**9, "TB": 10**12}
-LEAST = 200 * 10**6
-"""The program itself takes more than half of this."""
+LEAST = 10**9
+"""The program and its working tables take about two thirds of this, however many the records."""
 
 
 def bytes_of(size: str) -> int | None:

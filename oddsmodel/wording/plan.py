@@ -168,7 +168,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "Until then, take the line out and check by hand that the two reports together give no small count away.",
     ),
     "not-a-size": (
-        "{found} is not a size of memory of 200 MB or more.",
+        "{found} is not a size of memory of 1 GB or more.",
         'Write a number with MB, GB or TB in quotes, such as memory = "2 GB".',
     ),
     "database-not-on-workers": (
@@ -261,11 +261,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "check-unknown": (
         "There is no check called {check} to ask for.",
-        "Take it out of the list: the usual checks are always done.",
-    ),
-    "check-not-yet": (
-        "This version cannot do the check {check} yet.",
-        "Until then, take it out of the list: the linearity of each number column is always checked in another way.",
+        _nearest_or_all,
     ),
 }
 

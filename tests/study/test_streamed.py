@@ -59,7 +59,7 @@ based_on = "main"
 keep = "age < 50"
 role = "subgroup"
 [run]
-memory = "300 MB"
+memory = "1 GB"
 """
 
 
