@@ -35,6 +35,9 @@ CHECKS: tuple[str, ...] = (
     "independence",
 )
 
+OF_ANY_METHOD = ("events_per_parameter", "sparse_cells", "overlap", "independence")
+"""Checks that do not rest on the fit by maximum likelihood."""
+
 AS_IF_INDEPENDENT = ("calibration", "influence")
 """Checks that describe, whose intervals and standard errors take records as independent even where they are not."""
 
@@ -48,7 +51,9 @@ def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | Non
     from oddsmodel.checks import counting
 
     asked = set(model.also) | (set(FOR_PREDICTION) if model.aim == "prediction" else set())
-    names = (*CHECKS, *(name for name in ASKED_CHECKS if name in asked))
+    names = [*CHECKS, *(name for name in ASKED_CHECKS if name in asked)]
+    if model.method != "maximum likelihood":
+        names = [name for name in names if name in OF_ANY_METHOD]
     progress.stage("checking", len(names) + 1)
     results = [counting.check(model, flow)]
     progress.advance()

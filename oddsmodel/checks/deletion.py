@@ -49,7 +49,7 @@ class Deletion:
 
 def without(model: FittedModel, left_out: Sequence[Index], targets: tuple[int, ...]) -> list[Deletion]:
     """The model fitted again without the rows at each of some sets of positions; `targets` are those of interest."""
-    likelihoods = [WithoutRows(model.likelihood, positions) for positions in left_out]
+    likelihoods = [WithoutRows(model.binomial, positions) for positions in left_out]
     deletions = []
     for likelihood, found in zip(likelihoods, _nearby(model, likelihoods), strict=True):
         coefficients = _refitted(model, likelihood, targets) if found is None else found

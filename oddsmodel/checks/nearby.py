@@ -135,6 +135,7 @@ class _Search:
         self.begun = self.h
         self.information = known.information
         self.value = self.length = np.inf
+        self.last: tuple[Array, Array] | None = None
         self.settled = self.lost = False
 
     @property
@@ -164,6 +165,7 @@ class _Search:
         left = np.sqrt(length / before) if length < before else 1.0
         self.settled = length * left <= SETTLED
         self.lost = not (self.settled or length <= SLOW * before)
+        self.last = (self.h, self.space.T @ score)
         self.h = self.h + step
         self.value, self.length, self.information = value + 0.5 * length, length, information
 
@@ -172,8 +174,20 @@ class _Search:
         within, pull = self._within(information), self.space.T @ score
         if not (np.isfinite(pull).all() and well_conditioned(within)):
             return np.zeros_like(self.h), np.inf
+        if self.last is not None:
+            within = _along(within, self.h - self.last[0], self.last[1] - pull)
         step = solve(within, pull)
         return step, float(pull @ step)
 
     def nearby(self) -> Nearby:
         return Nearby(self.point, self.value, self.information, self._distance())
+
+
+def _along(within: Array, way: Array, fall: Array) -> Array:
+    """Information (r, r) that explains by how much the score fell along the last way (Broyden 1970, J Inst Maths
+    Applics 6:76-90, and others of that year)."""
+    through = within @ way
+    told, held = float(fall @ way), float(through @ way)
+    if not (told > 0.0 and held > 0.0):
+        return within
+    return np.asarray(within - np.outer(through, through) / held + np.outer(fall, fall) / told)

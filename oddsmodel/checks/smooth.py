@@ -29,8 +29,7 @@ def smooth_share(probability: Array, records: Array, events: Array) -> tuple[tup
     74:829-836, without the robust steps, which make no sense for a binary outcome), cut off at 0 and 1. More than
     2,000 values are first put into 2,000 bins of about equal numbers of records.
     """
-    total = float(records.sum())
-    if probability.size < FEWEST_VALUES or total < FEWEST_RECORDS:
+    if too_few(probability, records):
         return ()
     if probability.size > MOST_BINS:
         starts = group_starts(records, MOST_BINS)
@@ -38,18 +37,27 @@ def smooth_share(probability: Array, records: Array, events: Array) -> tuple[tup
             np.add.reduceat(values, starts) for values in (probability * records, records, events)
         )
         probability = expected / records
-    reached = np.cumsum(records)
-    first, last = np.searchsorted(reached, [TAIL * total, (1.0 - TAIL) * total])
-    low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])
-    if not high > low:
-        return ()
-    grid = np.linspace(low, high, POINTS)
-    fitted = _local_lines(grid, probability, records, events / records)
+    grid = drawn_at(probability, records)
+    fitted = local_lines(grid, probability, records) @ (events / records)
     return tuple(zip(grid.tolist(), np.clip(fitted, 0.0, 1.0).tolist(), strict=True))
 
 
-def _local_lines(grid: Array, x: Array, weight: Array, y: Array) -> Array:
-    """The value at each grid point (g,) of a weighted straight line through the nearest records."""
+def too_few(probability: Array, records: Array) -> bool:
+    """Whether there are too few different probabilities (j,), or records (j,) at them, for a smooth curve."""
+    return probability.size < FEWEST_VALUES or float(records.sum()) < FEWEST_RECORDS
+
+
+def drawn_at(probability: Array, records: Array) -> Array:
+    """Where the curve is drawn (g,), for records (j,) at rising probabilities; nowhere where all are nearly one heap."""
+    total = float(records.sum())
+    first, last = np.searchsorted(np.cumsum(records), [TAIL * total, (1.0 - TAIL) * total])
+    low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])
+    return np.linspace(low, high, POINTS) if high > low else np.empty(0)
+
+
+def local_lines(grid: Array, x: Array, weight: Array) -> Array:
+    """What each y at x (j,) counts (g, j) for the value at a grid point (g,) of a straight line through the nearest
+    records, of which `weight` (j,) are at each x."""
     offset = x[None, :] - grid[:, None]
     distance = np.abs(offset)
     order = np.argsort(distance, axis=1, kind="stable")
@@ -62,10 +70,8 @@ def _local_lines(grid: Array, x: Array, weight: Array, y: Array) -> Array:
     tricube = weight * np.clip(1.0 - (distance / width) ** 3, 0.0, 1.0) ** 3
     s0 = tricube.sum(axis=1)
     centre = (tricube * offset).sum(axis=1) / s0
-    level = (tricube * y).sum(axis=1) / s0
     apart = offset - centre[:, None]
     spread = (tricube * apart**2).sum(axis=1)
-    slope = np.divide(
-        (tricube * apart * y).sum(axis=1), spread, out=np.zeros_like(s0), where=spread > 1e-12 * s0 * width[:, 0] ** 2
-    )
-    return np.asarray(level - slope * centre)
+    # No slope where the records near a point are nearly at one value.
+    pull = np.divide(centre, spread, out=np.zeros_like(s0), where=spread > 1e-12 * s0 * width[:, 0] ** 2)
+    return np.asarray(tricube * (1.0 / s0[:, None] - pull[:, None] * apart))

@@ -35,16 +35,17 @@ def merge_groups(
 
 
 def coarsen_calibration(figure: CalibrationFigure, threshold: int, level: float) -> CalibrationFigure | None:
-    """The figure with merged groups and a smooth curve that ends at the outermost ones; None where nothing is left."""
+    """The figure with merged groups and a smooth curve, with its band, that ends at the outermost ones; None where nothing is left."""
     groups = merge_groups(figure.groups, threshold, level)
     if not groups:
         return None
     lowest, highest = groups[0].predicted, groups[-1].predicted
     smooth = tuple(point for point in figure.smooth if lowest <= point[0] <= highest)
+    band = tuple(point for point in figure.band if lowest <= point[0] <= highest)
     alt = figure.alt
     if groups != figure.groups:
         alt = f"{alt} {say('groups-merged', threshold=threshold, groups=len(groups))}".strip()
-    return replace(figure, alt=alt, groups=groups, smooth=smooth)
+    return replace(figure, alt=alt, groups=groups, smooth=smooth, band=band)
 
 
 def _is_safe(groups: Sequence[CalibrationGroup], threshold: int) -> bool:

@@ -12,6 +12,7 @@ from oddsmodel.disclosure.flow import disclosed_flow, disclosed_flow_figure
 from oddsmodel.disclosure.gather import analysed_and_events
 from oddsmodel.disclosure.hiding import Hiding
 from oddsmodel.disclosure.histogram import coarsen_histogram
+from oddsmodel.disclosure.precision import coarsen_precision
 from oddsmodel.disclosure.scatter import coarsen_scatter
 from oddsmodel.disclosure.steps import coarsen_steps
 from oddsmodel.disclosure.table_counts import row_blocks, row_text
@@ -23,6 +24,7 @@ from oddsmodel.results.figures import (
     Figure,
     FlowFigure,
     HistogramFigure,
+    PrecisionFigure,
     ScatterFigure,
     StepFigure,
 )
@@ -89,7 +91,10 @@ def crude_numbers(crude: CrudeEstimate | None) -> Iterator[float]:
 
 def estimate_numbers(one: CoefficientResult) -> Iterator[float]:
     """The numbers of an estimate on the odds-ratio scale."""
-    limits = (one.wald.lower, one.wald.upper, one.profile.lower, one.profile.upper)
+    limits = [one.wald.lower, one.wald.upper, one.profile.lower, one.profile.upper]
+    if one.exact is not None:
+        exact = one.exact
+        limits += [exact.lower, exact.upper, exact.mid_p_lower, exact.mid_p_upper, exact.median_unbiased]
     yield from (value for value in (one.odds_ratio, *limits) if value is not None and value != 0.0)
 
 
@@ -168,6 +173,7 @@ def _coefficient(
             odds_ratio=None,
             wald=WaldResult(None, None, None, None),
             profile=ProfileResult(None, None),
+            exact=None,
         )
     crude, everyone = one.crude, one.crude_all_records
     records = say("why-count-hidden", threshold=hiding.threshold)
@@ -257,6 +263,11 @@ def _figure(model: ModelResult, figure: Figure, hiding: Hiding, flow: Flow) -> F
             if records is None or events is None:
                 return None
             return coarsen_steps(figure, hiding.marks, events, records - events)
+        case PrecisionFigure():
+            records, events = analysed_and_events(model)
+            if records is None or events is None:
+                return None
+            return coarsen_precision(figure, hiding.marks, events, records - events)
         case CurveFigure():
             return coarsen_curve(figure, hiding.marks)
         case ScatterFigure():

@@ -8,7 +8,7 @@ from collections.abc import Iterable, Sequence
 from itertools import chain
 
 from oddsmodel.findings import Finding
-from oddsmodel.results.study import CoefficientResult, CrudeEstimate, DisclosedResults, ModelResult
+from oddsmodel.results.study import CoefficientResult, CrudeEstimate, DisclosedResults, ExactResult, ModelResult
 from oddsmodel.results.tables import Cell, Hidden, Interval, Table
 
 HIDDEN = "hidden"
@@ -83,7 +83,8 @@ _ESTIMATES = (
     *("model", "term", "level", "reference", "role", "label", "log_odds_ratio", "standard_error", "odds_ratio"),
     *("wald_lower", "wald_upper", "wald_p", "wald_df", "profile_lower", "profile_upper"),
     *(f"crude_{name}" for name in _CRUDE),
-    *("crude_all_records", "crude_all_records_odds_ratio", "reasons"),
+    *("crude_all_records", "crude_all_records_odds_ratio"),
+    *("exact_lower", "exact_upper", "mid_p_lower", "mid_p_upper", "exact_p", "median_unbiased", "reasons"),
 )
 
 
@@ -114,8 +115,15 @@ def _estimates(model: ModelResult) -> Iterable[Row]:
             *_crude(one.crude),
             everyone.records if everyone else None,
             everyone.odds_ratio if everyone else None,
+            *_exact(one.exact),
             _reasons(one),
         )
+
+
+def _exact(one: ExactResult | None) -> Row:
+    if one is None:
+        return (None,) * 6
+    return (one.lower, one.upper, one.mid_p_lower, one.mid_p_upper, one.p_doubled, one.median_unbiased)
 
 
 def _steps(model: ModelResult) -> Iterable[CoefficientResult]:

@@ -25,7 +25,7 @@ from oddsmodel.results.study import (
 from oddsmodel.results.tables import Hidden, Table
 from oddsmodel.wording import say
 
-SCHEMA_VERSION = "1.1"
+SCHEMA_VERSION = "1.2"
 ESTIMATES = ("log_odds_ratio", "standard_error", "odds_ratio")
 
 
@@ -244,11 +244,13 @@ def _coefficient(one: CoefficientResult) -> dict[str, Any]:
         if one.crude_all_records is None
         else {"records": _plain(one.crude_all_records.records), "odds_ratio": _plain(one.crude_all_records.odds_ratio)},
     }
+    if one.exact is not None:
+        document["exact"] = {name: _plain(value) for name, value in asdict(one.exact).items()}
     missing = [name for name in ESTIMATES if document[name] is None]
     missing += [
         f"{part}.{name}"
-        for part in ("wald", "profile", "crude", "crude_all_records")
-        for name, value in (document[part] or {}).items()
+        for part in ("wald", "profile", "crude", "crude_all_records", "exact")
+        for name, value in (document.get(part) or {}).items()
         if value is None and name != "df"
     ]
     document["reasons"] = _complete(reasons, missing)

@@ -8,8 +8,8 @@ from typing import Literal
 
 import numpy as np
 
-from oddsmodel.inference.cone_rows import Direction
 from oddsmodel.inference.conditioning import coordinates
+from oddsmodel.inference.cone_rows import Direction
 from oddsmodel.inference.maximise import Fit, Status, maximise
 from oddsmodel.inference.recession_cone import RecessionCone
 from oddsmodel.inference.separation import Separation
@@ -90,9 +90,7 @@ def kept_rows(likelihood: BinomialLikelihood, cone: RecessionCone) -> tuple[Bino
     return kept_likelihood(likelihood, cone.direction, columns), tuple(columns)
 
 
-def kept_likelihood(
-    likelihood: BinomialLikelihood, direction: Direction, columns: Sequence[int]
-) -> BinomialLikelihood:
+def kept_likelihood(likelihood: BinomialLikelihood, direction: Direction, columns: Sequence[int]) -> BinomialLikelihood:
     """The likelihood of the rows that a direction leaves at zero, in some of the columns."""
     make = Kept(direction, tuple(columns))
     passes = likelihood.passes

@@ -27,7 +27,8 @@ def extreme(objective: Array, rows: Array, equal: Array) -> Extreme | None:
     """The v in -1..1 with rows v >= 0 and equal v = 0 that makes objective'v largest (Konis 2007).
 
     objective (p,), rows (m, p) and equal (e, p) are best of size about one. The weights y >= 0 and z are those of
-    the dual: objective + y'rows + z'equal = 0 where the best is zero. None where HiGHS gives up or a number is not finite.
+    the dual: objective + y'rows + z'equal = 0 where the best is zero. None where HiGHS gives
+    up or a number is not finite.
     """
     from scipy.optimize import linprog
 

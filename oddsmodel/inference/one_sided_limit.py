@@ -54,7 +54,7 @@ def one_sided_limits(
     At a fixed theta, rows are again separated by the directions of the cone with c'v = 0. They rise to zero for every
     theta, so that the profile is that of the other rows, on which c'beta is identified (else there were directions of
     the cone either way) and the maximum at fixed theta is attained. It is concave and increasing: Newton's steps from
-    the left, with its slope from the score, never pass the limit.
+    the left of the limit, with the slope from the score, never pass it.
 
     Raises ValueError where level is not between 0 and 1.
     """
@@ -88,22 +88,27 @@ def _limit(likelihood: BinomialLikelihood, verdict: Separation, c: Array, height
     kept, columns = kept_rows(likelihood, cone)
     profile = _Profile(kept, c[list(columns)])
     theta, step = 0.0, 0.0
+    right: float | None = None
     for _ in range(MOST_STEPS):
         there = profile.at(theta)
         if there is None:
-            return None
+            if right is None:
+                return None
+            # too far to the left for a refit from here
+            theta = 0.5 * (theta + right)
+            continue
         value, slope, spread = there
         short = height - value
-        if short < 0.0:
-            # right of the limit: away from where the profile is level
-            step = 2.0 * step or 2.0 * spread
-            theta -= step
+        if abs(short) <= SETTLED and slope > 0.0:
+            return theta + short / slope
+        if short > 0.0:
+            if not slope > 0.0:
+                return None
+            theta += short / slope
             continue
-        if not slope > 0.0:
-            return None
-        theta += short / slope
-        if short <= SETTLED:
-            return theta
+        # right of the limit, where the profile may be level: the tangent leads to its left, or too far
+        right, step = theta, 2.0 * step or spread
+        theta -= min(step, -short / slope) if slope > 0.0 else step
     return None
 
 
@@ -128,5 +133,5 @@ class _Profile:
         self.warm = fit.coefficients
         score = self.likelihood.evaluate(self.warm[None, :], information=False).score[0]
         solved = np.linalg.lstsq(fit.information, self.c, rcond=None)[0]
-        spread = float(np.sqrt(max(self.c @ solved, 0.0)))
+        spread = float(np.sqrt(max(float(self.c @ solved), 0.0)))
         return fit.log_likelihood, float(score @ self.along), spread or 1.0

@@ -103,9 +103,7 @@ class _Slices:
             path = [end.coefficients for end in _maximised(weaker, bases, near, path)]
         starts = [near, least, path]
         if begin is not None:
-            starts.append(
-                [_moved(begin, c, value, np.eye(c.size)) for c, value in zip(contrasts, theta, strict=True)]
-            )
+            starts.append([_moved(begin, c, value, np.eye(c.size)) for c, value in zip(contrasts, theta, strict=True)])
         number = len(starts)
         fits = _maximised(self.likelihood, bases * number, near * number, [one for each in starts for one in each])
         best = []

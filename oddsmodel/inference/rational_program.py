@@ -25,9 +25,7 @@ def combination(vectors: Sequence[Whole], target: Sequence[int]) -> tuple[list[F
     basis = [-1 - i for i in range(size)]
     values = [Fraction(abs(one)) for one in target]
     for _ in range(MOST_PIVOTS):
-        price = [
-            sum((inverse[i][k] for i in range(size) if basis[i] < 0), Fraction(0)) for k in range(size)
-        ]
+        price = [sum((inverse[i][k] for i in range(size) if basis[i] < 0), Fraction(0)) for k in range(size)]
         whole = coprime(price)
         entering = next((j for j, column in enumerate(columns) if product(column, whole) > 0), -1)
         if entering < 0:

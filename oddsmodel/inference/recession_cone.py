@@ -168,11 +168,6 @@ class RecessionCone:
             return None
         equal = np.flatnonzero(sides == 0)
         equal = equal[independent(unit.rows[equal])]
-        clear = self._clearest(unit.rows, counted, equal)
-        if clear is not None and self.inexact is None:
-            found = self._realised(unit.direction(clear), unit, unit.rows @ clear, counted)
-            if found is not None:
-                return found
         best = extreme(unit.rows[counted].sum(axis=0) / counted.size, unit.rows[sides != 0], unit.rows[equal])
         gains = np.zeros(sides.size) if best is None else unit.rows @ best.point
         gained = bool((gains[counted] > NO_GAIN).any())
@@ -182,9 +177,10 @@ class RecessionCone:
             v = unit.direction(best.point)
             return RoundedDirection(v, NO_GAIN * float(self.working.scale @ np.abs(v)))
         if best is not None and gained:
-            found = self._realised(unit.direction(best.point), unit, gains, counted)
-            if found is not None:
-                return found
+            for point in (self._clearest(unit.rows, counted, equal), best.point):
+                found = None if point is None else self._realised(point, unit, counted)
+                if found is not None:
+                    return found
         elif best is not None:
             weights = np.zeros(sides.size)
             weights[sides != 0] = best.weights
@@ -210,9 +206,10 @@ class RecessionCone:
         best = extreme(objective, lifted[sides != 0], lifted[equal])
         return best.point[:-1] if best is not None and best.value > CLEARLY[0] else None
 
-    def _realised(self, v: Array, unit: UnitRows, gains: Array, counted: Index) -> ExactDirection | None:
-        """The exact direction near v that is orthogonal to the working rows v leaves at zero, where there is one."""
-        sides = self.working.sides
+    def _realised(self, point: Array, unit: UnitRows, counted: Index) -> ExactDirection | None:
+        """The exact direction near that of a point, orthogonal to the working rows it leaves at zero, where there is
+        one."""
+        sides, v, gains = self.working.sides, unit.direction(point), unit.rows @ point
         for least in CLEARLY:
             active = np.flatnonzero((gains <= least) | (sides == 0))
             clear = np.flatnonzero((gains > least) & (sides != 0))

@@ -2,6 +2,7 @@
 
 from oddsmodel.likelihood.base import Evaluation, Likelihood
 from oddsmodel.likelihood.binomial import BinomialLikelihood
+from oddsmodel.likelihood.log_f import LogFLikelihood
 from oddsmodel.likelihood.penalised import JeffreysPenalisedLikelihood
 
-__all__ = ["BinomialLikelihood", "Evaluation", "JeffreysPenalisedLikelihood", "Likelihood"]
+__all__ = ["BinomialLikelihood", "Evaluation", "JeffreysPenalisedLikelihood", "Likelihood", "LogFLikelihood"]

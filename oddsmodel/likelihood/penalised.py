@@ -6,7 +6,6 @@ from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.linalg import solve_triangular
 
 from oddsmodel.likelihood.base import Array, Evaluation, InformationLikelihood
 
@@ -73,12 +72,8 @@ class JeffreysPenalisedLikelihood:
         plain = self.likelihood.evaluate(points, member=member)
         if plain.information is None:
             raise TypeError("the penalty needs the information")
-        least = VANISHED * np.diag(self.likelihood.gram())
-        roots = np.zeros_like(plain.information)
-        determinant = np.full(len(points), -np.inf)
-        for k, one in enumerate(plain.information):
-            if np.isfinite(plain.log_likelihood[k]):
-                determinant[k] = _inverse_root(one, least, roots[k])
+        roots, determinant = _inverse_roots(plain.information, VANISHED * np.diag(self.likelihood.gram()))
+        determinant = np.where(np.isfinite(plain.log_likelihood), determinant, -np.inf)
         regular = np.isfinite(determinant)
         change = self.likelihood.trace_derivatives(points, roots, member=member, second=information)
         value = np.full(len(points), -np.inf)
@@ -88,11 +83,10 @@ class JeffreysPenalisedLikelihood:
             score = score @ self.within
         if not information:
             return Evaluation(value, score, None)
-        curvature = plain.information.copy()
+        curvature = plain.information
         if change.hessian is not None and change.products is not None:
-            for k in np.flatnonzero(regular).tolist():
-                added = self.power * (change.hessian[k] - change.products[k])
-                curvature[k] = _raised(plain.information[k] - added, plain.information[k], roots[k])
+            added = self.power * (change.hessian - change.products)
+            curvature = np.where(regular[:, None, None], _raised(curvature, added, roots), curvature)
         return Evaluation(value, score, self._both(curvature))
 
     def _points(self, beta: Array) -> Array:
@@ -145,26 +139,37 @@ class JeffreysPenalisedLikelihood:
         raise TypeError("a penalised fit has no certificate: its score is not computed in extended precision")
 
 
-def _inverse_root(information: Array, least: Array, root: Array) -> float:
-    """log|I|, or minus infinity where I is singular; R with I^-1 = R R' is written into `root`."""
-    diagonal = np.diag(information)
-    if not (np.isfinite(diagonal).all() and (diagonal > least).all()):
-        return -np.inf
-    size = np.sqrt(diagonal)
+def _inverse_roots(information: Array, least: Array) -> tuple[Array, Array]:
+    """R with I^-1 = R R' (k, p, p), and log|I| (k,), for each I of information (k, p, p).
+
+    Zeros and minus infinity where I is singular, or a diagonal element not above `least` (p,).
+    """
+    k = len(information)
+    roots, determinant = np.zeros_like(information), np.full(k, -np.inf)
+    diagonal = np.diagonal(information, axis1=1, axis2=2)
+    some = np.flatnonzero((np.isfinite(diagonal) & (diagonal > least)).all(axis=1))
+    size = np.sqrt(diagonal[some])
+    scaled = information[some] / (size[:, :, None] * size[:, None, :])
     try:
-        factor = np.linalg.cholesky(information / np.outer(size, size))
+        factors = np.linalg.cholesky(scaled)
     except np.linalg.LinAlgError:
-        return -np.inf
-    root[:] = solve_triangular(factor, np.eye(size.size), lower=True).T / size[:, None]
-    return 2.0 * float(np.log(np.diag(factor)).sum() + np.log(size).sum())
+        if k == 1:
+            return roots, determinant
+        each = [_inverse_roots(information[one : one + 1], least) for one in range(k)]
+        return np.concatenate([one for one, _ in each]), np.concatenate([one for _, one in each])
+    roots[some] = np.linalg.inv(factors).transpose(0, 2, 1) / size[:, :, None]
+    determinant[some] = 2.0 * (np.log(np.diagonal(factors, axis1=1, axis2=2)) + np.log(size)).sum(axis=1)
+    return roots, determinant
 
 
-def _raised(curvature: Array, information: Array, root: Array) -> Array:
-    """The curvature with its eigenvalues relative to the information at least `LEAST_CURVATURE`."""
-    values, vectors = np.linalg.eigh(root.T @ curvature @ root)
-    if values.size == 0 or values[0] >= LEAST_CURVATURE:
-        return curvature
-    low = values < LEAST_CURVATURE
-    # in whitened coordinates V (raised - values) V' is added; R'^-1 = I R brings it back
-    back = information @ (root @ vectors[:, low])
-    return np.asarray(curvature + (back * (LEAST_CURVATURE - values[low])) @ back.T)
+def _raised(information: Array, added: Array, roots: Array) -> Array:
+    """information - added (k, p, p), its eigenvalues relative to the information at least `LEAST_CURVATURE`."""
+    p = information.shape[1]
+    values, vectors = np.linalg.eigh(np.eye(p) - roots.transpose(0, 2, 1) @ added @ roots)
+    lacking = np.maximum(LEAST_CURVATURE - values, 0.0)
+    curvature = information - added
+    for k in np.flatnonzero(lacking.any(axis=1)).tolist():
+        # with I^-1 = R R', whitened vectors V come back as I R V
+        back = information[k] @ (roots[k] @ vectors[k])
+        curvature[k] += (back * lacking[k]) @ back.T
+    return curvature

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.measures.intervals import interval_of
 from oddsmodel.results.figures import EstimateMark, EstimatesFigure
 from oddsmodel.results.lead import exposures_shown
 from oddsmodel.results.study import CoefficientResult, ModelResult
@@ -37,7 +37,7 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
             rows.append((*start, model.records, model.events, None, None))
             notes[_why_missing(model, exposures, key)] = None
         else:
-            limits = lead_interval(coefficient.profile, coefficient.wald)
+            limits = interval_of(coefficient)
             rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
     levels = sorted({round(100 * model.level, 1) for model in models})
     text = " and ".join(f"{level:g}%" for level in levels)
@@ -75,7 +75,7 @@ def models_figure(models: Sequence[ModelResult]) -> EstimatesFigure | None:
             coefficient = _keyed(model).get(key)
             if coefficient is None or coefficient.odds_ratio is None:
                 continue
-            limits = lead_interval(coefficient.profile, coefficient.wald)
+            limits = interval_of(coefficient)
             lower, upper = (limits.lower, limits.upper) if isinstance(limits, Interval) else (None, None)
             marks.append(EstimateMark(label, model.name, coefficient.odds_ratio, lower, upper))
     if not marks:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from oddsmodel.results.study import ProfileResult, WaldResult
+from oddsmodel.results.study import CoefficientResult, ProfileResult, WaldResult
 from oddsmodel.results.tables import Cell, Interval
 
 
@@ -12,3 +12,10 @@ def lead_interval(profile: ProfileResult | None, wald: WaldResult | None) -> Cel
         if limits is not None and not (limits.lower is None and limits.upper is None):
             return Interval(limits.lower, limits.upper)
     return None
+
+
+def interval_of(one: CoefficientResult) -> Cell:
+    """The interval of a coefficient that leads: its exact limits where it has them."""
+    if one.exact is not None:
+        return Interval(one.exact.lower, one.exact.upper)
+    return lead_interval(one.profile, one.wald)

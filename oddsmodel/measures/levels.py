@@ -9,7 +9,7 @@ from oddsmodel.findings import Finding
 from oddsmodel.measures.counts import exposure_counts
 from oddsmodel.measures.crude import plain_exposures
 from oddsmodel.measures.designs import CASE_CONTROL
-from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.measures.intervals import interval_of, lead_interval
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.study import CoefficientResult
@@ -52,7 +52,7 @@ class ExposureRow:
 
     @property
     def adjusted_interval(self) -> Cell:
-        return lead_interval(self.coefficient.profile, self.coefficient.wald) if self.coefficient else None
+        return interval_of(self.coefficient) if self.coefficient else None
 
 
 def levels(

@@ -12,10 +12,12 @@ from numpy.typing import NDArray
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.patterns import Patterns
 from oddsmodel.inference.maximise import Fit
+from oddsmodel.likelihood.base import Likelihood
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.model.grouped import Grouping
 from oddsmodel.model.kept import People
 from oddsmodel.model.rows import ModelRows
+from oddsmodel.plan.schema import Method
 from oddsmodel.records.types import Column
 
 Array = NDArray[np.float64]
@@ -43,6 +45,7 @@ class FittedModel:
     held: the records in memory; None where they are not in memory.
     study_design, aim: as the plan says them ("cohort", "case-control", ...; "association", "prediction").
     exposures, adjustment: the record columns in either role. also: the checks the plan asks for.
+    likelihood: what was maximised; by another method than maximum likelihood with a penalty or a prior.
     grouping: the groups that the records belong to, where they are not independent; there is then no likelihood of the
         records, and no test, limit or criterion that rests on one.
     """
@@ -57,7 +60,7 @@ class FittedModel:
     people: People
     records: int
     events: int
-    likelihood: BinomialLikelihood
+    likelihood: Likelihood
     fit: Fit
     exposures: tuple[str, ...]
     adjustment: tuple[str, ...]
@@ -65,6 +68,12 @@ class FittedModel:
     seed: int = 20260101
     grouping: Grouping | None = None
     held: Held | None = None
+    method: Method = "maximum likelihood"
+
+    @property
+    def binomial(self) -> BinomialLikelihood:
+        """The binomial likelihood of the rows, without any penalty or prior."""
+        return BinomialLikelihood.over(self.rows.passes, len(self.design.columns))
 
     @property
     def exposure_indices(self) -> tuple[int, ...]:

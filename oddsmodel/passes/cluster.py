@@ -31,8 +31,9 @@ TOGETHER_HEIGHT = 4
 TOGETHER = 1 << TOGETHER_HEIGHT
 """The answers of so many partitions are combined on a worker."""
 
-AHEAD = 2
-"""Tasks whose results are fetched together, a thread; as many again are at work meanwhile."""
+AHEAD = 4
+MOST_FETCHED = 16
+"""Tasks in progress, a thread, and those whose results are fetched in one round trip."""
 
 LOOK = 5.0
 PATIENCE = 120.0
@@ -163,13 +164,14 @@ class ClusterPasses:
     def each(self, work: Work, state: Any = None) -> Iterator[Any]:
         sent = self._sent(on_worker.Worked(self.makers, work, state))
         spans = self._spans(TASK_ROWS)
-        together = AHEAD * self.threads
+        together = min(AHEAD * self.threads, MOST_FETCHED)
+        most = max(2, AHEAD * self.threads // together)
         waiting: deque[list[Future[Any]]] = deque()
         try:
             for start in range(0, len(spans), together):
                 some = spans[start : start + together]
                 waiting.append(self._tasks(on_worker.worked, some, sent, [first for first, _ in some]))
-                if len(waiting) > 1:
+                if len(waiting) >= most:
                     yield from fetched(self.client, waiting.popleft())
             while waiting:
                 yield from fetched(self.client, waiting.popleft())

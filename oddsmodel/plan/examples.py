@@ -82,6 +82,8 @@ EXAMPLES: dict[str, dict[str, str]] = {
         "role": 'role = "sensitivity"',
         "why": 'why = "reverse causation"',
         "planned": "planned = true",
+        "method": 'method = "penalised"',
+        "prior": 'prior = {m = 2, columns = ["smoker"]}',
         "trend": 'trend = ["age_band"]',
     },
     "report": {"audience": 'audience = "shareable"', "hide_counts_below": "hide_counts_below = 5"},

@@ -25,8 +25,6 @@ LATER_KEYS: dict[str, dict[str, str]] = {
     },
     "models": {
         "modifiers": "later-modifiers",
-        "method": "later-method",
-        "prior": "later-method",
         "compare_with": "later-compare-with",
         "smallest_important": "later-smallest-important",
     },

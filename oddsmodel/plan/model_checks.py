@@ -37,8 +37,19 @@ def check_models(models: Mapping[int, ModelSection], written: Sequence[Any], at:
         for key, terms in (("add", model.add), ("leave_out", model.leave_out)):
             yield from _repeated(terms, at("models", position, key), "change-repeated", "term")
         yield from _repeated(model.trend, at("models", position, "trend"), "trend-repeated", "column")
+        yield from _method(position, model, at)
         if position == 0 and model.role is not None:
             yield fault("role-of-the-first", at("models", position, "role"))
+
+
+def _method(position: int, model: ModelSection, at: At) -> Iterator[Fault]:
+    """A prior and the method that uses it belong together."""
+    if model.method == "log-F" and model.prior is None and model.based_on is None:
+        yield fault("log-f-without-prior", at("models", position, "method"))
+    if model.prior is not None:
+        if model.method not in (None, "log-F") or (model.method is None and model.based_on is None):
+            yield fault("prior-without-log-f", at("models", position, "prior"))
+        yield from _repeated(model.prior.columns, at("models", position, "prior"), "trend-repeated", "column")
 
 
 def _alone(position: int, given: Mapping[str, Any], at: At) -> Iterator[Fault]:

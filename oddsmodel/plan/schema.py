@@ -208,6 +208,16 @@ class Outcome(Section):
         return tuple(name for name in (self.start, self.event_date, self.followed_to) if name is not None)
 
 
+Method = Literal["maximum likelihood", "penalised", "log-F", "exact"]
+
+
+class Prior(Section):
+    """A log-F(m, m) prior for the odds ratios of some columns, per the plan's unit and against its reference."""
+
+    m: Annotated[float, Field(ge=0.01, le=1000, allow_inf_nan=False)]
+    columns: Names
+
+
 class ModelSection(Section):
     """One model: its formula, and which of its columns the question is about.
 
@@ -230,6 +240,8 @@ class ModelSection(Section):
     why: str = ""
     planned: bool | None = None
     trend: Names = ()
+    method: Method | None = None
+    prior: Prior | None = None
 
 
 class ReportSection(Section):

@@ -11,12 +11,15 @@ from oddsmodel.plan.examples import example
 from oddsmodel.plan.faults import NAMED_SECTIONS, described, fault, heading, key_path, shown_key
 from oddsmodel.plan.later import later
 from oddsmodel.plan.nearest import nearest
-from oddsmodel.plan.schema import LARGEST_SEED, LONGEST_WINDOW, SECTIONS, Repeats, keys_of
+from oddsmodel.plan.schema import LARGEST_SEED, LONGEST_WINDOW, SECTIONS, Prior, Repeats, Section, keys_of
 from oddsmodel.wording.plain import as_code, plain, quoted
 
 Location = tuple[str | int, ...]
-REPEATS = ("records", "repeats")
-ALL_OF_REPEATS = tuple(Repeats.model_fields)
+WITHIN: dict[tuple[str, str], tuple[type[Section], str]] = {
+    ("records", "repeats"): (Repeats, "a person and an order"),
+    ("models", "prior"): (Prior, "m and columns"),
+}
+"""Keys of a section that hold keys of their own: their type, and what they need in words."""
 
 _WANTED = {
     "string_type": "a text in quotes",
@@ -31,6 +34,7 @@ _RANGES: dict[str, tuple[str, str]] = {
     "seed": ("0", str(LARGEST_SEED)),
     "within_days": ("1", str(LONGEST_WINDOW)),
     "from_day": ("0", str(LONGEST_WINDOW)),
+    "m": ("0.01", "1000"),
 }
 
 
@@ -83,6 +87,12 @@ def _offer_keys(word: str, valid: Iterable[str], choice: str) -> dict[str, Any]:
     return {"nearest": nearest(word, words), "valid": words, "choice": choice, "last": "and"}
 
 
+def _within(location: Location) -> tuple[type[Section], str] | None:
+    """The section of its own that a key of a section is; items of lists and names left aside."""
+    words = tuple(str(part) for part in location if isinstance(part, str))
+    return WITHIN.get((words[0], words[-1])) if len(words) == 2 else None
+
+
 def _missing(error: Error) -> Fault | None:
     if _follows_from_later(error):
         return None
@@ -111,10 +121,10 @@ def _unknown_key(error: Error) -> Fault:
         in_full = f"[{section}.{as_code(f'{column}.{key}')}]"
         return fault("dotted-column-name", error.where, key=shown, column=shown_key(column), example=in_full)
 
-    if error.location[:2] == REPEATS:
-        return fault(
-            "unknown-key", error.where, heading="repeats", key=shown, **_offer_keys(key, ALL_OF_REPEATS, "Its keys are")
-        )
+    within = _within(error.location[:-1])
+    if within is not None:
+        facts = _offer_keys(key, within[0].model_fields, "Its keys are")
+        return fault("unknown-key", error.where, heading=str(error.location[-2]), key=shown, **facts)
 
     known = keys_of(SECTIONS[section])
     opening = heading(section, column)
@@ -146,9 +156,10 @@ def _not_a_section(error: Error) -> Fault:
     found = described(error.value)
     if error.location in (("columns",), ("derived",)):
         return fault("not-a-section-per-column", error.where, found=found, section=error.section)
-    if error.location == REPEATS:
+    within = _within(error.location)
+    if within is not None:
         line = example(error.location)
-        return fault("wrong-kind-of-value", error.where, found=found, wanted="a person and an order", example=line)
+        return fault("wrong-kind-of-value", error.where, found=found, wanted=within[1], example=line)
     if error.kind == "dict_type":
         line = f"{error.key} = {{diabetes = 1, cancer = 2}}"
         return fault("wrong-kind-of-value", error.where, found=found, wanted="a number for each column", example=line)
@@ -162,7 +173,8 @@ def _not_one_of(error: Error) -> Fault:
 
 
 def _valid_values(error: Error) -> tuple[str, ...]:
-    section = Repeats if error.location[:2] == REPEATS else SECTIONS[error.section]
+    within = _within(error.location[:-1])
+    section = within[0] if within is not None else SECTIONS[error.section]
     field = keys_of(section)[error.key]
     return _literals(field.annotation)
 

@@ -62,7 +62,7 @@ def code_levels(
         levels = _levels_met(texts, keys, counts, not_recorded, keep_order)
     position = {same_value_key(level): number for number, level in enumerate(levels)}
     said = {yes_or_no(level): number for number, level in enumerate(levels)} if kind == "yes-no" else {}
-    if None in said:
+    if None in said or len(said) < len(levels):
         said = {}
     to_level = np.full(len(texts) + 1, OUTSIDE, dtype=np.intp)
     to_level[-1] = -1
@@ -71,8 +71,8 @@ def code_levels(
             to_level[number] = -1
         elif key in position:
             to_level[number] = position[key]
-        elif said and yes_or_no(text) is not None:
-            to_level[number] = said[yes_or_no(text)]
+        elif (answer := yes_or_no(text)) in said:
+            to_level[number] = said[answer]
     coded = to_level[codes]
     by_level = occurrences(coded, len(levels), weights)
     outside = [(texts[at], int(counts[at])) for at in np.flatnonzero(to_level[:-1] == OUTSIDE) if counts[at]]

@@ -57,13 +57,17 @@ class CalibrationGroup:
 
 @dataclass(frozen=True, slots=True)
 class CalibrationFigure:
-    """Observed share against predicted risk: groups, and a smooth curve with its band where there is one."""
+    """Observed share against predicted risk: groups, and a smooth curve with its band where there is one.
+
+    smooth: points (predicted, observed); band: (predicted, lower limit, upper limit) of the curve.
+    """
 
     id: str
     title: str
     alt: str
     groups: tuple[CalibrationGroup, ...]
     smooth: tuple[tuple[float, float], ...] = ()
+    band: tuple[tuple[float, float, float], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -75,6 +79,18 @@ class StepFigure:
     alt: str
     points: tuple[tuple[float, float], ...]
     area: float
+
+
+@dataclass(frozen=True, slots=True)
+class PrecisionFigure:
+    """Precision against recall: points (recall, precision), the average precision, and the share of events."""
+
+    id: str
+    title: str
+    alt: str
+    points: tuple[tuple[float, float], ...]
+    average: float
+    share: float
 
 
 @dataclass(frozen=True, slots=True)
@@ -127,4 +143,13 @@ class ScatterFigure:
     kind: Literal["scatter"] = "scatter"
 
 
-Figure = EstimatesFigure | FlowFigure | CalibrationFigure | StepFigure | CurveFigure | HistogramFigure | ScatterFigure
+Figure = (
+    EstimatesFigure
+    | FlowFigure
+    | CalibrationFigure
+    | StepFigure
+    | PrecisionFigure
+    | CurveFigure
+    | HistogramFigure
+    | ScatterFigure
+)

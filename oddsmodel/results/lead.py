@@ -8,6 +8,7 @@ from oddsmodel.results.study import CoefficientResult, CrudeEstimate, ModelResul
 from oddsmodel.results.tables import Interval
 
 CONVERGED = "converged"
+EXACT = "exact"
 
 
 def lead_model(study: StudyResults) -> ModelResult | None:
@@ -22,7 +23,7 @@ def is_estimated(model: ModelResult) -> bool:
 
 def has_profile(model: ModelResult) -> bool:
     """Whether the model has a likelihood whose profile gives limits; taken to be so where every limit is withheld."""
-    if model.variant.get("covariance", "model") != "model":
+    if model.variant.get("covariance", "model") != "model" or model.method == EXACT:
         return False
     profile = any(limit is not None for one in model.coefficients for limit in (one.profile.lower, one.profile.upper))
     wald = any(limit is not None for one in model.coefficients for limit in (one.wald.lower, one.wald.upper))
@@ -30,7 +31,10 @@ def has_profile(model: ModelResult) -> bool:
 
 
 def lead_interval(model: ModelResult, estimate: CoefficientResult | CrudeEstimate) -> Interval:
-    """The profile limits where the model has them, one-sided ones included, else the Wald limits."""
+    """The exact limits where there are any, else the profile limits where the model has them, one-sided ones included,
+    else the Wald limits."""
+    if isinstance(estimate, CoefficientResult) and estimate.exact is not None:
+        return Interval(estimate.exact.lower, estimate.exact.upper)
     limits = estimate.profile if has_profile(model) else estimate.wald
     return Interval(limits.lower, limits.upper) if limits is not None else Interval(None, None)
 

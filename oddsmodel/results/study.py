@@ -45,6 +45,23 @@ class CrudeEstimate:
 
 
 @dataclass(frozen=True, slots=True)
+class ExactResult:
+    """Exact conditional limits on the odds-ratio scale and p-values; None with a reason where none exists.
+
+    p_doubled: twice the smaller tail. p_by_probability: of all outcomes no more probable than the one observed.
+    """
+
+    median_unbiased: float | None
+    lower: float | None
+    upper: float | None
+    mid_p_lower: float | None
+    mid_p_upper: float | None
+    p_doubled: float | None
+    p_by_probability: float | None
+    p_mid: float | None
+
+
+@dataclass(frozen=True, slots=True)
 class CoefficientResult:
     """One coefficient. `label` is its wording ("Smoking: current against never", "Age, per 10 years")."""
 
@@ -64,6 +81,8 @@ class CoefficientResult:
     crude: CrudeEstimate | None = None
     crude_all_records: CrudeEstimate | None = None
     reasons: Mapping[str, str] = field(default_factory=dict)
+    exact: ExactResult | None = None
+    """Where the method is exact: its limits then lead."""
 
 
 @dataclass(frozen=True, slots=True)

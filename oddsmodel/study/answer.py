@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from oddsmodel.findings import Finding
@@ -17,9 +19,9 @@ from oddsmodel.study.deviations import standard_deviations
 from oddsmodel.study.estimate import estimate
 from oddsmodel.study.fitting import Fitted, fit_model
 from oddsmodel.study.follow_up import rules, with_losses
-from oddsmodel.study.prepare import conditions
+from oddsmodel.study.prepare import Prepared, conditions
 from oddsmodel.study.provenance import provenance
-from oddsmodel.wording import finding
+from oddsmodel.wording import finding, say
 from oddsmodel.wording.numbers import ratio
 
 
@@ -28,9 +30,17 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
     progress = progress or Silent()
     plan, data, models = checked.file.plan, checked.data, checked.models
     progress.stage("fitting", len(models))
-    fitted = []
-    for prepared in models:
-        fitted.append(fit_model(prepared, plan))
+    fitted: list[Fitted] = []
+    asked, models = models, ()
+    for prepared in asked:
+        found = fit_model(prepared, plan)
+        companion = _penalised_beside(prepared, found)
+        if companion is None:
+            models, fitted = (*models, prepared), [*fitted, found]
+        else:
+            told = finding("caution", "penalised-added", name=companion.section.name)
+            models = (*models, prepared, companion)
+            fitted += [replace(found, findings=(*found.findings, told)), fit_model(companion, plan)]
         progress.advance()
     results = []
     populations: dict[tuple[str, ...], People] = {}
@@ -40,7 +50,7 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
             populations[who] = data.kept(prepared)
         result = estimate(prepared, fit, plan, data.columns, populations[who], progress)
         results.append(with_losses(result, prepared, plan, data))
-    differing = _records_differ(checked, tuple(fitted), tuple(results))
+    differing = _records_differ(checked, models, tuple(fitted), tuple(results))
     main = results[0]
     used = dict.fromkeys(column for prepared in models for column in (*prepared.exposures, *prepared.adjustment))
     outcome = data.columns[plan.outcome.column_name]
@@ -72,6 +82,21 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
     return study, tuple(fitted)
 
 
+def _penalised_beside(prepared: Prepared, found: Fitted) -> Prepared | None:
+    """The same model by penalised likelihood, where the plan named no method and maximum likelihood has no answer."""
+    if found.status != "no finite maximum" or prepared.section.method is not None:
+        return None
+    name = say("penalised-name", name=prepared.section.name)
+    changes = {"name": name, "method": "penalised", "based_on": prepared.section.name, "trend": ()}
+    return replace(
+        prepared,
+        section=prepared.section.model_copy(update=changes),
+        id=f"{prepared.id}-penalised",
+        differs=say("differs-penalised"),
+        added=True,
+    )
+
+
 def _column(column: Column) -> AdjustmentColumn:
     return AdjustmentColumn(
         column.name,
@@ -87,13 +112,13 @@ def _column(column: Column) -> AdjustmentColumn:
 
 
 def _records_differ(
-    checked: CheckedPlan, fitted: tuple[Fitted, ...], results: tuple[ModelResult, ...]
+    checked: CheckedPlan, models: tuple[Prepared, ...], fitted: tuple[Fitted, ...], results: tuple[ModelResult, ...]
 ) -> tuple[Finding, ...]:
     """For a model on its own records: what its exposure's odds ratio is on the records the others share."""
     sharing = [prepared for prepared in checked.models if prepared.section.same_records]
     found: list[Finding] = []
-    for prepared, fit, result in zip(checked.models, fitted, results, strict=True):
-        if prepared.section.same_records or not sharing or fit.model is None:
+    for prepared, fit, result in zip(models, fitted, results, strict=True):
+        if prepared.added or prepared.section.same_records or not sharing or fit.model is None:
             continue
         again = checked.data.on_records_of(prepared, sharing[0])
         other = fit_model(again, checked.file.plan).model if again is not None else None

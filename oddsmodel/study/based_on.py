@@ -15,7 +15,7 @@ from oddsmodel.wording import say
 from oddsmodel.wording.plain import quoted
 
 ON_THEIR_OWN_RECORDS = ("sensitivity", "subgroup")
-INHERITED = ("exposures", "level", "same_records")
+INHERITED = ("exposures", "level", "same_records", "method", "prior")
 
 Terms = dict[frozenset[str], str]
 """The terms of a formula in order: their factors, and the term in the formula's own words."""

@@ -9,7 +9,8 @@ import numpy as np
 
 from oddsmodel.checks import run_checks
 from oddsmodel.findings import Finding
-from oddsmodel.inference import profile
+from oddsmodel.inference import ProfileLimits, profile
+from oddsmodel.inference.penalised_profile import profile_penalised
 from oddsmodel.measures.coefficients import coefficients
 from oddsmodel.measures.crude import crude
 from oddsmodel.measures.crude_to_adjusted import adjustment_findings, crude_to_adjusted_table
@@ -26,9 +27,13 @@ from oddsmodel.results.figures import Figure
 from oddsmodel.results.lead import in_answer
 from oddsmodel.results.study import CertificateResult, CoefficientResult, ModelResult
 from oddsmodel.results.tables import Table
+from oddsmodel.study.corrected_intercepts import corrected_intercepts
+from oddsmodel.study.exact import exact_coefficients
 from oddsmodel.study.fitting import Fitted
+from oddsmodel.study.near_the_edge import near_the_edge, of_method
 from oddsmodel.study.pictures import estimates_figure, flow_figure
 from oddsmodel.study.prepare import Prepared
+from oddsmodel.study.separated import separated_coefficients
 from oddsmodel.study.term_tests import term_tests
 from oddsmodel.wording import finding, say
 
@@ -40,13 +45,15 @@ def estimate(
     prepared: Prepared, fitted: Fitted, plan: StudyPlan, columns: Mapping[str, Column], kept: People, progress: Progress
 ) -> ModelResult:
     """Everything the report says of one model; for one that could not be estimated, who was counted and why not."""
+    if fitted.separated is not None or (fitted.model is not None and fitted.model.method == "exact"):
+        return without_maximum(prepared, fitted, plan, columns, kept, progress)
     model, certificate = fitted.model, fitted.certificate
-    if model is None or certificate is None:
-        return _result(prepared, fitted, plan, columns)
+    if model is None:
+        return model_result(prepared, fitted, plan, columns)
     p = model.fit.coefficients.size
     progress.stage("profiling", 2 * p)
     independent = model.grouping is None
-    limits = profile(model.fit, np.eye(p), model.level, told=progress.advance) if independent else None
+    limits = _limits(model, fitted, progress) if independent else None
     found = coefficients(model, limits, crude(model, kept))
     tests = term_tests(model)
     progress.stage("checking")
@@ -54,6 +61,8 @@ def estimate(
     adjusted = bool(model.adjustment) or len(model.exposures) > 1
     findings = (
         *fitted.findings,
+        *of_method(model, prepared),
+        *near_the_edge(model, found, tests.tests),
         *common_outcome(model),
         *adjustment_findings(plan.study.design, adjusted),
     )
@@ -67,22 +76,80 @@ def estimate(
         *changed,
         *(two_by_two_tables(model) if independent else ()),
         *(trend_table(model, one, found) for one in over_levels),
+        *corrected_intercepts(model),
     )
     figures = (flow_figure(prepared), estimates_figure(model, in_answer(found, averages), prepared.id))
-    result = _result(prepared, fitted, plan, columns, found, findings, tables, figures)
+    result = model_result(prepared, fitted, plan, columns, found, findings, tables, figures)
+    certified = CertificateResult(None, None)
+    reasons = {} if independent else dict.fromkeys(LIKELIHOODS, say("no-log-likelihood-of-grouped-records"))
+    if certificate is not None:
+        certified = CertificateResult(float(certificate.digits.min()), certificate.condition_number)
+    else:
+        reasons["certificate"] = say("no-certificate-of-method")
     return replace(
         result,
-        log_likelihood=model.fit.log_likelihood if independent else None,
+        log_likelihood=_log_likelihood(model) if independent else None,
         null_log_likelihood=tests.null_log_likelihood,
-        reasons={} if independent else dict.fromkeys(LIKELIHOODS, say("no-log-likelihood-of-grouped-records")),
+        reasons=reasons,
         groups=None if model.grouping is None else model.grouping.number,
         grouped_by=None if model.grouping is None else model.grouping.label,
         terms=tests.tests,
         checks=checks,
-        certificate=CertificateResult(float(certificate.digits.min()), certificate.condition_number),
+        certificate=certified,
         trends=over_levels,
         averages=averages,
     )
+
+
+def without_maximum(
+    prepared: Prepared,
+    fitted: Fitted,
+    plan: StudyPlan,
+    columns: Mapping[str, Column],
+    kept: People,
+    progress: Progress,
+) -> ModelResult:
+    """A model whose records are separated, or one by exact inference: estimates and counts, no tests and no checks."""
+    model = fitted.described
+    assert model is not None
+    alone = crude(model, kept)
+    findings, status = fitted.findings, fitted.status
+    reasons = dict.fromkeys(LIKELIHOODS, say("exact-no-likelihood"))
+    if fitted.separated is not None and model.method != "exact":
+        found = separated_coefficients(model, fitted.separated, alone)
+        supremum = fitted.separated.part.log_likelihood
+        reasons = {"null_log_likelihood": say("term-test-not-settled")}
+    else:
+        exact = exact_coefficients(model, alone, progress)
+        found, supremum = exact.coefficients, None
+        status = "converged" if exact.refused is None else "not estimated"
+        findings = prepared.findings if exact.refused is None else (*prepared.findings, exact.refused)
+    figures: tuple[Figure, ...] = (flow_figure(prepared),)
+    tables: tuple[Table, ...] = ()
+    if found:
+        figures = (*figures, estimates_figure(model, in_answer(found, ()), prepared.id))
+        tables = (levels(model, found), *two_by_two_tables(model))
+        if bool(model.adjustment) or len(model.exposures) > 1:
+            tables = (tables[0], crude_to_adjusted_table(model, found), *tables[1:])
+        findings = (*findings, *common_outcome(model))
+    result = model_result(prepared, fitted, plan, columns, found, findings, tables, figures)
+    reasons["certificate"] = say("no-certificate-of-method")
+    return replace(result, status=status, log_likelihood=supremum, reasons=reasons)
+
+
+def _limits(model: FittedModel, fitted: Fitted, progress: Progress) -> ProfileLimits:
+    """The profile limits of every coefficient."""
+    contrasts = np.eye(model.fit.coefficients.size)
+    if fitted.penalised is not None:
+        return profile_penalised(fitted.penalised, contrasts, model.level)
+    return profile(model.fit, contrasts, model.level, told=progress.advance)
+
+
+def _log_likelihood(model: FittedModel) -> float:
+    """At the estimates, without the penalty or the prior."""
+    if model.method == "maximum likelihood":
+        return model.fit.log_likelihood
+    return float(model.binomial.evaluate(model.fit.coefficients[None, :], information=False).log_likelihood[0])
 
 
 def _averages(model: FittedModel, plan: StudyPlan) -> tuple[tuple[CoefficientResult, ...], tuple[Finding, ...]]:
@@ -99,7 +166,7 @@ def _averages(model: FittedModel, plan: StudyPlan) -> tuple[tuple[CoefficientRes
     return tuple(found), tuple(told)
 
 
-def _result(
+def model_result(
     prepared: Prepared,
     fitted: Fitted,
     plan: StudyPlan,
@@ -116,8 +183,8 @@ def _result(
         id=prepared.id,
         name=section.name,
         formula=prepared.formula.text,
-        method="maximum likelihood",
-        added_by_program=False,
+        method=section.method or "maximum likelihood",
+        added_by_program=prepared.added,
         variant={"outcome": plan.outcome.column_name, "missing": COMPLETE, "covariance": covariance},
         role=section.role or ("main" if prepared.id == "model-1" else "secondary"),
         why=section.why,

@@ -2,34 +2,59 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
+from numpy.typing import NDArray
 
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.types import DesignColumn
 from oddsmodel.findings import Finding
-from oddsmodel.inference import Certificate, Fit, certify, maximise, separation
-from oddsmodel.likelihood import BinomialLikelihood
+from oddsmodel.inference import (
+    Certificate,
+    FinitePart,
+    Fit,
+    Separation,
+    certify,
+    finite_part,
+    maximise,
+    separation_of,
+)
+from oddsmodel.inference.penalised import PenalisedFit, maximise_penalised
+from oddsmodel.likelihood import BinomialLikelihood, JeffreysPenalisedLikelihood, Likelihood
 from oddsmodel.model.counted import CountedPeople
 from oddsmodel.model.fitted import FittedModel, Held
 from oddsmodel.model.grouped import grouping
 from oddsmodel.model.in_memory import rows_in_memory, rows_with_index
 from oddsmodel.model.kept import KeptRecords, People
 from oddsmodel.model.rows import ModelRows, rows_of
+from oddsmodel.passes import Leaf
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.study.groups import findings_of_groups
 from oddsmodel.study.prepare import Prepared
+from oddsmodel.study.priors import with_prior
 from oddsmodel.wording import finding
 
 FEW_DIGITS = 6.0
 
 
 @dataclass(frozen=True)
+class Separated:
+    """Records that are separated: the proof, and what is left to estimate."""
+
+    verdict: Separation
+    part: FinitePart
+
+
+@dataclass(frozen=True)
 class Fitted:
     """A model with its certificate, or None for both where it could not be estimated.
 
-    rows: of the model matrix, None where there is no matrix.
+    rows: of the model matrix, None where there is no matrix. described: the model with whatever fit there is, for what
+    is counted among its records; separated: why it has no finite maximum. penalised: the penalised fit of a model
+    whose method that is.
     """
 
     status: str
@@ -37,6 +62,9 @@ class Fitted:
     model: FittedModel | None
     certificate: Certificate | None
     findings: tuple[Finding, ...]
+    described: FittedModel | None = None
+    separated: Separated | None = None
+    penalised: PenalisedFit | None = None
 
 
 def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
@@ -45,10 +73,38 @@ def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
     if design is None:
         return Fitted("not estimated", None, None, None, prepared.findings)
     rows, people, held = _rows(prepared, plan, design)
-    likelihood = BinomialLikelihood.over(rows.passes, len(design.columns))
-    fit = maximise(likelihood)
+    binomial = BinomialLikelihood.over(rows.passes, len(design.columns))
+    method = prepared.section.method or "maximum likelihood"
+    base = partial(
+        FittedModel,
+        name=prepared.section.name,
+        study_design=plan.study.design,
+        aim=plan.study.aim,
+        level=prepared.section.level,
+        design=design,
+        columns=prepared.columns,
+        rows=rows,
+        people=people,
+        records=prepared.flow.analysed or 0,
+        events=prepared.flow.events or 0,
+        exposures=prepared.exposures,
+        adjustment=prepared.adjustment,
+        also=plan.checks.also,
+        seed=plan.run.seed,
+        held=held,
+        method=method,
+    )
+    if method in ("penalised", "log-F"):
+        return _by_penalty(prepared, base, design, rows)
+    fit = maximise(binomial)
+    described = base(likelihood=binomial, fit=fit)
     if fit.status != "converged":
-        return Fitted(fit.status, rows.number, None, None, (*prepared.findings, _why_not(fit, design.columns, rows)))
+        separated = None
+        if fit.status == "no finite maximum":
+            verdict = fit.separation or separation_of(binomial)
+            separated = Separated(verdict, finite_part(binomial, verdict))
+        findings = (*prepared.findings, _why_not(fit, design.columns, rows, separated))
+        return Fitted(fit.status, rows.number, None, None, findings, described, separated)
     certificate = certify(fit)
     findings = prepared.findings
     digits = float(certificate.digits.min())
@@ -62,27 +118,30 @@ def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
             name, label, held.frame[name], held.event, held.counts, design, held.patterns, certificate.fit
         )
         findings = (*findings, *findings_of_groups(grouped, prepared.flow))
-    model = FittedModel(
-        name=prepared.section.name,
-        study_design=plan.study.design,
-        aim=plan.study.aim,
-        level=prepared.section.level,
-        design=design,
-        columns=prepared.columns,
-        rows=rows,
-        people=people,
-        records=prepared.flow.analysed or 0,
-        events=prepared.flow.events or 0,
-        likelihood=likelihood,
-        fit=certificate.fit,
-        exposures=prepared.exposures,
-        adjustment=prepared.adjustment,
-        also=plan.checks.also,
-        seed=plan.run.seed,
-        grouping=grouped,
-        held=held,
-    )
-    return Fitted("converged", rows.number, model, certificate, findings)
+    model = base(likelihood=binomial, fit=certificate.fit, grouping=grouped)
+    return Fitted("converged", rows.number, model, certificate, findings, model)
+
+
+def _by_penalty(prepared: Prepared, base: Callable[..., FittedModel], design: Design, rows: ModelRows) -> Fitted:
+    """By Jeffreys' penalty or by log-F priors."""
+    binomial = BinomialLikelihood.over(rows.passes, len(design.columns))
+    likelihood: Likelihood
+    penalised = None
+    if prepared.section.prior is None:
+        likelihood = jeffreys = JeffreysPenalisedLikelihood(binomial)
+        penalised = maximise_penalised(jeffreys)
+        fit = penalised.fit
+    else:
+        likelihood = with_prior(binomial, prepared.section.prior, design)
+        fit = maximise(likelihood)
+    if fit.status != "converged":
+        findings = (*prepared.findings, _why_not(fit, design.columns, rows, None))
+        return Fitted(fit.status, rows.number, None, None, findings, base(likelihood=likelihood, fit=fit))
+    findings = prepared.findings
+    if penalised is not None and penalised.lower_maximum is not None:
+        findings = (*findings, finding("caution", "penalised-second-maximum"))
+    model = base(likelihood=likelihood, fit=fit)
+    return Fitted("converged", rows.number, model, None, findings, model, None, penalised)
 
 
 def _rows(prepared: Prepared, plan: StudyPlan, design: Design) -> tuple[ModelRows, People, Held | None]:
@@ -98,7 +157,7 @@ def _rows(prepared: Prepared, plan: StudyPlan, design: Design) -> tuple[ModelRow
     return rows, KeptRecords(*data), Held(*data, patterns)
 
 
-def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows) -> Finding:
+def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows, separated: Separated | None) -> Finding:
     labels = [column.label for column in columns]
     if fit.status == "aliased":
         if len(columns) > rows.number:
@@ -107,8 +166,8 @@ def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows) -> Fi
             [labels[one.column], [[weight, labels[kept]] for kept, weight in one.weights]] for one in fit.aliased
         ]
         return finding("stop", "aliased", relations=relations)
-    if fit.status == "no finite maximum":
-        verdict = fit.separation or separation(*fit.likelihood.rows_apart())
+    if separated is not None:
+        verdict = separated.verdict
         told = {
             kind: [label for label, found in zip(labels, verdict.coefficients, strict=True) if found == kind]
             for kind in ("plus infinity", "minus infinity", "undetermined")
@@ -120,6 +179,19 @@ def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows) -> Fi
             falling=told["minus infinity"],
             undetermined=told["undetermined"],
             complete=verdict.complete,
-            separated_records=int(np.sum(fit.likelihood.rows_apart()[2][verdict.rows])),
+            separated_records=_records_among(rows, verdict.rows),
         )
     return finding("stop", "not-converged", steps=fit.steps)
+
+
+def _records_among(rows: ModelRows, chosen: NDArray[np.bool_]) -> int:
+    """How many records stand behind some of the rows; chosen (m,)."""
+    total, first = 0.0, 0
+    for trials in rows.passes.each(_trials):
+        total += float(trials[chosen[first : first + trials.size]].sum())
+        first += trials.size
+    return round(total)
+
+
+def _trials(rows: Leaf, first: int, state: None) -> NDArray[np.float64]:
+    return rows.get("trials", np.ones(len(rows["events"])))

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from oddsmodel.measures.intervals import lead_interval
+from oddsmodel.measures.intervals import interval_of, lead_interval
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.results.figures import EstimateMark, EstimatesFigure, FlowFigure
 from oddsmodel.results.study import CoefficientResult
@@ -39,7 +39,7 @@ def estimates_figure(model: FittedModel, found: Sequence[CoefficientResult], ide
             limits = lead_interval(one.crude.profile, one.crude.wald)
             marks.append(_mark(one.label, "crude", one.crude.odds_ratio, limits))
         series = "adjusted" if adjusted else "crude"
-        marks.append(_mark(one.label, series, one.odds_ratio, lead_interval(one.profile, one.wald)))
+        marks.append(_mark(one.label, series, one.odds_ratio, interval_of(one)))
     told = [(mark.label, mark.series, mark.estimate, mark.lower, mark.upper) for mark in marks]
     return EstimatesFigure(
         id=f"{identity}-estimates",

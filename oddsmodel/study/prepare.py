@@ -55,9 +55,9 @@ class Prepared:
 
     section: with everything that it takes from the model it builds upon; differs: what sets it apart, in words.
     flow: who was counted. held: the analysed records, where they are in memory; else people: a pass over them, with the
-    levels of their columns. shared: whether its records are those complete for all models
-    that share theirs. needed: the columns that must be recorded. columns: what is known of the records' columns,
-    with the main model's standard deviations.
+    levels of their columns. added: whether it is the program's and not the plan's. shared: whether its records are
+    those complete for all models that share theirs. needed: the columns that must be recorded. columns: what is known
+    of the records' columns, with the main model's standard deviations.
     """
 
     section: ModelSection
@@ -75,6 +75,7 @@ class Prepared:
     held: HeldRecords | None = None
     people: Passes | None = None
     levels: Levels = field(default_factory=dict)
+    added: bool = False
 
     @property
     def in_memory(self) -> HeldRecords:

@@ -62,8 +62,9 @@ def term_tests(model: FittedModel) -> TermTests:
 
     if model.grouping is not None:
         return TermTests(tuple(_wald(model, name, larger, smaller, ones) for name, larger, smaller in pairs), None)
-    null = _null(model, bool(intercept or ones))
-    found = {everything: Maximum(model.fit.log_likelihood, model.fit.dimension), intercept: null}
+    found = {everything: Maximum(model.fit.log_likelihood, model.fit.dimension)}
+    if model.method == "maximum likelihood":
+        found[intercept] = _null(model, bool(intercept or ones))
     spaces = sorted({columns for _, larger, smaller in pairs for columns in (larger, smaller)} - set(found))
     maxima = _maxima(model, [_basis(p, columns, ones) for columns in spaces])
     found.update(zip(spaces, maxima, strict=True))
@@ -72,7 +73,7 @@ def term_tests(model: FittedModel) -> TermTests:
         for name, larger, smaller in pairs
         if found[larger].dimension > found[smaller].dimension
     )
-    return TermTests(tests, null.log_likelihood)
+    return TermTests(tests, _null(model, bool(intercept or ones)).log_likelihood)
 
 
 def _null(model: FittedModel, constant: bool) -> Maximum:
@@ -88,7 +89,7 @@ def _maxima(model: FittedModel, spaces: list[Array]) -> list[Maximum]:
     """The maximum over each space: near the full fit where rows are many, by full Newton steps where that is not so."""
     fit = model.fit
     near: list[Nearby | None] = [None] * len(spaces)
-    if model.rows.number > PART_FROM and spaces:
+    if model.rows.number > PART_FROM and spaces and model.method == "maximum likelihood":
         known = Known(fit.working, np.zeros_like(fit.working), fit.working_information)
         near = maxima_near(fit.space.working, known, [fit.space.gamma(space.T).T for space in spaces])
     far = [Problem(space) for space, one in zip(spaces, near, strict=True) if one is None]

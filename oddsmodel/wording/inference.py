@@ -59,8 +59,9 @@ def _separated(facts: Mapping[str, Any]) -> str:
     kind = "Every record is" if facts["complete"] else "Some records are"
     return (
         f"No finite estimate exists. {kind} predicted perfectly by the columns of this model (separation), so that "
-        f"{'; '.join(told)}. No odds ratio is shown for this model. Join rare levels, or leave the column out, for "
-        "reasons that can be defended without looking at the outcome."
+        f"{'; '.join(told)}. Where an odds ratio has no finite estimate none is shown, only the limit on the side "
+        "where it has one. Join rare levels, or leave the column out, for reasons that can be defended without "
+        "looking at the outcome."
     )
 
 

@@ -158,7 +158,6 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "This version gives no odds ratios by stratum yet.",
         "Until then, take the line out; a product such as smoker:sex may stand in the formula.",
     ),
-    "later-method": ("This version fits by maximum likelihood only, as yet.", "Until then, take it out of the plan."),
     "later-hiding": (
         "This version hides small counts under one threshold only, as yet.",
         "Until then, take the line out and use hide_counts_below.",

@@ -45,6 +45,27 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "The first model is the one that answers the question, so it has no other role.",
         "Take the line out, or put another model first.",
     ),
+    "log-f-without-prior": (
+        "The method log-F needs a prior: how strong it is, and for which columns.",
+        'Add a line such as prior = {m = 2, columns = ["smoker"]}.',
+    ),
+    "prior-without-log-f": (
+        "A prior is used by the method log-F alone.",
+        'Add method = "log-F", or take the prior out.',
+    ),
+    "prior-not-in-formula": ("The prior names {column}, which is not in the formula.", _choose),
+    "prior-no-odds-ratio": (
+        "{column} has no odds ratio of its own in this model, so a prior cannot be stated for it.",
+        "Take it out of the prior: a column in a spline, a power or a product has none.",
+    ),
+    "method-of-grouped-records": (
+        "Records that belong to groups have no likelihood, and this method needs one.",
+        "Take the method out of the model, or grouped_by out of [records].",
+    ),
+    "method-needs-memory": (
+        "This method needs the records in memory, and they do not fit into the memory that the run may use.",
+        "Raise [run] memory if the machine has more; so many records hardly need it.",
+    ),
     "trend-repeated": ("{column} is listed twice.", "List it once."),
     "scores-not-rising": (
         "Scores must be finite numbers that rise from level to level.",

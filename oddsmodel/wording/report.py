@@ -133,6 +133,31 @@ SENTENCES: dict[str, Sentence] = {
         "The interval that leads, in pictures and in words, is the profile-likelihood interval; the Wald interval "
         "stands beside it."
     ),
+    "lead-exact": (
+        "The limits that lead are exact: each comes from a one-sided test of the conditional distribution, so that the "
+        "interval covers at least as often as it says, and usually more often. The mid-P limits beside them do so on "
+        "average only. Exact inference has neither a standard error nor Wald or profile limits."
+    ),
+    "lead-penalised": (
+        "The interval that leads is the profile interval of the penalised likelihood; the Wald interval stands beside "
+        "it."
+    ),
+    "lead-log-f": (
+        "The interval that leads is the profile interval of the likelihood with its prior; the Wald interval stands "
+        "beside it."
+    ),
+    "column-conditional": "Odds ratio, conditional maximum likelihood",
+    "column-exact": "{level} exact interval",
+    "column-mid-p": "{level} mid-P interval",
+    "column-median-unbiased": "Odds ratio, median unbiased",
+    "column-exact-p": "p-value, exact, twice the smaller tail",
+    "column-mid-p-p": "p-value, mid-P",
+    "table-exposure-exact": "Odds ratios of the exposures by exact conditional inference",
+    "exact-note": "All other columns of the model are conditioned upon, and so are the numbers of events.",
+    "partly-estimated": (
+        "The likelihood of this model has no maximum ({status}): odds ratios without a finite estimate show none, and "
+        "the others come from the records that are not separated."
+    ),
     "lead-wald": "The interval shown is the Wald interval, since this way of fitting has no likelihood to profile.",
     "p-caution": (
         "A p-value says how surprising the records would be if the odds ratio were exactly 1 and the model right. It "

@@ -36,9 +36,26 @@ REFERENCES: dict[str, str] = {
         "DeLong ER, DeLong DM, Clarke-Pearson DL. Comparing the areas under two or more correlated receiver operating "
         "characteristic curves: a nonparametric approach. Biometrics 1988; 44: 837–845."
     ),
+    "firth-1993": "Firth D. Bias reduction of maximum likelihood estimates. Biometrika 1993; 80: 27–38.",
     "fox-monette-1992": (
         "Fox J, Monette G. Generalized collinearity diagnostics. Journal of the American Statistical Association 1992; "
         "87: 178–183."
+    ),
+    "greenland-mansournia-2015": (
+        "Greenland S, Mansournia MA. Penalization, bias reduction, and default priors in logistic and related "
+        "categorical and survival regressions. Statistics in Medicine 2015; 34: 3133–3143."
+    ),
+    "heinze-schemper-2002": (
+        "Heinze G, Schemper M. A solution to the problem of separation in logistic regression. Statistics in Medicine "
+        "2002; 21: 2409–2419."
+    ),
+    "hirji-1987": (
+        "Hirji KF, Mehta CR, Patel NR. Computing distributions for exact logistic regression. Journal of the American "
+        "Statistical Association 1987; 82: 1110–1117."
+    ),
+    "mehta-patel-1995": (
+        "Mehta CR, Patel NR. Exact logistic regression: theory and examples. Statistics in Medicine 1995; 14: "
+        "2143–2160."
     ),
     "greenland-1999": (
         "Greenland S, Robins JM, Pearl J. Confounding and collapsibility in causal inference. Statistical Science "
@@ -101,11 +118,26 @@ def _records(facts: Mapping[str, Any]) -> str:
     return f"{words}."
 
 
+METHODS = {
+    "maximum likelihood": "maximum likelihood",
+    "penalised": "penalised likelihood with Jeffreys' penalty (Firth, 1993; Heinze & Schemper, 2002)",
+    "log-F": "maximum likelihood with log-F priors (Greenland & Mansournia, 2015)",
+    "exact": "exact conditional inference (Hirji, Mehta & Patel, 1987; Mehta & Patel, 1995)",
+}
+"""How each method is told, by its name in the plan."""
+
+METHOD_REFERENCES: dict[str, tuple[str, ...]] = {
+    "penalised": ("firth-1993", "heinze-schemper-2002"),
+    "log-F": ("greenland-mansournia-2015",),
+    "exact": ("hirji-1987", "mehta-patel-1995"),
+}
+
+
 def _model(facts: Mapping[str, Any]) -> str:
     role = "exposure" if len(facts["exposures"]) == 1 else "exposures"
     words = (
         f"The odds of {facts['outcome']} were modelled by logistic regression (Cox, 1958), fitted by "
-        f"{facts['method']}, with {listed(facts['exposures'])} as {role}"
+        f"{METHODS[facts['method']]}, with {listed(facts['exposures'])} as {role}"
     )
     return f"{words}, adjusted for {listed(facts['adjustment'])}." if facts["adjustment"] else f"{words}."
 
@@ -128,6 +160,10 @@ SENTENCES: dict[str, Sentence] = {
     "methods-profile": (
         "Intervals at {level} were taken from the profile likelihood (Venzon & Moolgavkar, 1988), with Wald intervals "
         "(Wald, 1943) beside them."
+    ),
+    "methods-exact": (
+        "Limits at {level} are exact: each is that of a one-sided test of the conditional distribution, with mid-P "
+        "limits beside them."
     ),
     "methods-wald": "Intervals at {level} are Wald intervals (Wald, 1943).",
     "methods-terms": (

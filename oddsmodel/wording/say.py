@@ -24,6 +24,7 @@ MODULES = (
     "checks",
     "disclosure",
     "study",
+    "study_methods",
     "grouped",
     "report",
     "cli",

@@ -103,9 +103,10 @@ def passes_of(likelihood: BinomialLikelihood, p: int, runs: int, rates: Machine)
 
         row = fastest(evaluate, runs) / likelihood.rows * 1e9
         at_once = row * likelihood.rows / 1e9 / (rates.cores * fastest(evaluate, runs, time.perf_counter))
+        model += 8 * p / rates.reading
         lines.append(
-            f"  {name:26}{row:10.1f}{model:10.1f}{flops:12,}{flops / row / rates.products:10.0%}"
-            f"{8 * p:10,}{8 * p / row / rates.reading:10.0%}{at_once:12.0%}"
+            f"  {name:26}{row:12.1f}{model:12.1f}{flops:12,}{flops / row / rates.products:12.0%}"
+            f"{8 * p:12,}{8 * p / row / rates.reading:12.0%}{at_once:12.0%}"
         )
     return lines
 
@@ -146,14 +147,14 @@ def main(arguments: Sequence[str] | None = None) -> None:
     print(machine())
     rates = Machine(cores, runs, size)
     print(
-        f"matrix products {rates.products:.0f} Gflop/s, reading {rates.reading:.0f} and copying {rates.copying:.0f} Gbyte/s"
+        f"A core, all of them at it: matrix products {rates.products:.0f} Gflop/s, "
+        f"reading {rates.reading:.0f} and copying {rates.copying:.0f} Gbyte/s"
     )
     for p in widths:
         X, y = records("mixed", number, p)
         print(f"{number:,} records, {p} columns; nanoseconds of a core, flops and bytes a row")
-        print(
-            f"  {'pass':26}{'measured':>10}{'model':>10}{'flops':>12}{'of rate':>10}{'bytes':>10}{'of rate':>10}{'cores busy':>12}"
-        )
+        heads = ("measured", "model", "flops", "of rate", "bytes", "of rate", "cores busy")
+        print(f"  {'pass':26}" + "".join(f"{head:>12}" for head in heads))
         print("\n".join(passes_of(BinomialLikelihood(X, y), p, runs, rates)), flush=True)
     print("Passes over all rows")
     print(f"{'records':>12}{'columns':>9}{'fit with gram':>14}{'limits':>9}{'certificate':>13}{'all':>8}")

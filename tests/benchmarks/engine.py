@@ -76,7 +76,8 @@ def _refit(X: np.ndarray, y: np.ndarray, fit: Fit) -> np.ndarray:
 
 def heading() -> str:
     others = "".join(f"{name.removeprefix('scikit-learn ').removeprefix('statsmodels '):>24}" for name in FITS)
-    return f"{'records':>9}  {'columns':24}{'our fit':>10}{others}{'all limits':>12}{'of a Logit fit':>16}{'refitting':>20}"
+    last = f"{'all limits':>12}{'of a Logit fit':>16}{'refitting':>20}"
+    return f"{'records':>9}  {'columns':24}{'our fit':>10}{others}{last}"
 
 
 def line(row: Row) -> str:

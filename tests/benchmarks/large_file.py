@@ -84,7 +84,13 @@ def run(plan: Path) -> tuple[float, float]:
     """Seconds of the command, and its peak resident memory in GB."""
     before = resource.getrusage(resource.RUSAGE_CHILDREN).ru_maxrss
     start = time.perf_counter()
-    command = [str(Path(sys.executable).with_name("oddsmodel")), "run", str(plan), "--into", str(plan.parent / "report")]
+    command = [
+        str(Path(sys.executable).with_name("oddsmodel")),
+        "run",
+        str(plan),
+        "--into",
+        str(plan.parent / "report"),
+    ]
     subprocess.run(command, check=True, capture_output=True)
     peak = resource.getrusage(resource.RUSAGE_CHILDREN).ru_maxrss
     if peak <= before:

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+from scipy.special import expit
 
 from oddsmodel.inference import maximise, separation, separation_of_differences
 from oddsmodel.likelihood import BinomialLikelihood
@@ -20,7 +21,7 @@ def test_no_separated_data_set_slips_past(largest: int) -> None:
     # against enumeration of the cone's extreme rays: fits, verdicts, rows and coefficients; proofs in fractions
     rng = np.random.default_rng(70 + largest)
     seen: dict[object, int] = {}
-    for case in range(800):
+    for case in range(700):
         p, n = int(rng.integers(1, 5)), int(rng.integers(4, 15))
         X = rng.integers(0 if largest == 1 else -largest, largest + 1, size=(n, p)).astype(float)
         if case % 4:
@@ -41,7 +42,7 @@ def test_no_separated_data_set_slips_past(largest: int) -> None:
         assert_proved(verdict, X, events, trials)
         for kind in (expected.separated, *set(expected.coefficients)):
             seen[kind] = seen.get(kind, 0) + 1
-    assert sum(seen[one] for one in (True, False)) > 700
+    assert sum(seen[one] for one in (True, False)) > 600
     assert min(seen.values()) > 100
 
 
@@ -96,7 +97,7 @@ def test_every_kind_of_number_is_proved() -> None:
         ][case % 5]
         X[:, 0] = 1.0
         linear = (X - X.mean(axis=0)) / np.maximum(X.std(axis=0), 1e-9) @ rng.normal(size=X.shape[1])
-        y = (rng.random(n) < 1 / (1 + np.exp(-linear * rng.choice([0.5, 5.0, 1e3])))).astype(float)
+        y = (rng.random(n) < expit(linear * rng.choice([0.5, 5.0, 1e3]))).astype(float)
         verdict = separation(X, y, np.ones(n))
         seen[verdict.separated] += 1
         assert_proved(verdict, X, y, np.ones(n))
@@ -204,7 +205,7 @@ def test_columns_that_are_combinations_of_others_are_undetermined() -> None:
         ([[1, 0], [1, 1], [0, 1], [0, -1]], True, ("plus infinity", "finite")),
         # neither column alone, but their sum is never smaller in the case
         ([[2, -1], [-1, 2], [1, -1], [-1, 1]], True, ("plus infinity", "plus infinity")),
-        ([[2, -1], [-1, 2], [1, -2]], True, ("plus infinity", "undetermined")),
+        ([[1, 2], [1, -2]], True, ("plus infinity", "undetermined")),
         ([[2, -1], [-1, 2], [-1, -1]], False, ("finite", "finite")),
     ],
 )

@@ -110,7 +110,9 @@ class DelimitedSource:
             if numbers and has_leading_zeros(text.content, text.delimiter):
                 again = text.parse(text_columns=numbers, only=numbers)
                 zeros = [name for name in numbers if starts_with_zero(again[name])]
-            yield Piece(table, {*refused, *zeros, *(name for name in numbers if _is_beyond_numbers(table[name]))})
+            whole = [name for name in numbers if pa.types.is_integer(table[name].type)]
+            words = [name for name in numbers if name not in whole and not _are_finite(table[name])]
+            yield Piece(table, {*refused, *zeros, *words}, [name for name in whole if beyond_whole_bound(table[name])])
         self._refuse_what_is_broken()
 
     def tables(self, columns: Sequence[str], first: int = 0, end: int | None = None) -> Iterator[pa.Table]:
@@ -197,9 +199,6 @@ def _parses(text: DelimitedText, name: str, kind: pa.DataType) -> bool:
     return True
 
 
-def _is_beyond_numbers(column: pa.ChunkedArray) -> bool:
-    """Whether numbers were met that are none as written: words that a parser takes for one, or whole numbers too large
-    to be told apart."""
-    if pa.types.is_floating(column.type):
-        return not pc.all(pc.is_finite(column), min_count=0).as_py()
-    return beyond_whole_bound(column)
+def _are_finite(column: pa.ChunkedArray) -> bool:
+    """Whether no word was met that a parser takes for a number."""
+    return bool(pc.all(pc.is_finite(column), min_count=0).as_py())

@@ -74,7 +74,8 @@ class DerivingInSmall(Deriving):
 
     def _met(self, source: str) -> tuple[CodedColumn, Array]:
         met = self.together.met.get(source) or Met(self.columns[source].column)
-        return met.in_small()
+        values = self.columns[source].values
+        return met.in_small(list(values.cat.categories) if isinstance(values.dtype, pd.CategoricalDtype) else [])
 
     def _keep_is_sound(self) -> bool:
         """Whether no column in the plan's condition is at fault. Raises: InputFault where it does not fit them."""

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 import pandas as pd
 from numpy.typing import NDArray
@@ -38,14 +40,17 @@ class Met:
             rows, number = self.values.get(values[at], (0, 0.0))
             self.values[values[at]] = rows + int(rows_of[at]), number + float(records_of[at])
 
-    def in_small(self) -> tuple[CodedColumn, Array]:
-        """The column with every value once, those of levels and numbers in their order, and the records of each."""
+    def in_small(self, texts: Sequence[str] = ()) -> tuple[CodedColumn, Array]:
+        """The column with every value once and the records of each, levels and numbers in their order.
+
+        texts: the order of those of a column without levels.
+        """
         met = [value for value in self.values if value is not None]
-        order = {level: at for at, level in enumerate(self.column.levels)}
+        order = {level: at for at, level in enumerate(self.column.levels or texts)}
         if order or self.column.kind == "number":
-            met.sort(key=lambda value: order.get(str(value), 0) if order else float(value))
+            met.sort(key=lambda value: order[str(value)] if order else float(value))
         records = [self.values[value][1] for value in met]
-        codes = [order.get(str(value), at) for at, value in enumerate(met)]
+        codes = [order[str(value)] if order else at for at, value in enumerate(met)]
         outside = np.zeros(len(met), dtype=np.bool_)
         for there, number, is_outside in (
             (None in self.values, self.values.get(None, (0, 0.0))[1], False),
@@ -58,7 +63,7 @@ class Met:
         if self.column.kind == "number":
             values = pd.Series(np.asarray([*met, *[np.nan] * (len(codes) - len(met))], dtype=np.float64))
         else:
-            categories = pd.Index(list(self.column.levels or met), dtype=object)
+            categories = pd.Index(list(order or met), dtype=object)
             ordered = self.column.kind == "ordered"
             values = pd.Series(pd.Categorical.from_codes(np.asarray(codes, np.intp), categories, ordered))
         coded = CodedColumn(values, self.column, outside if outside.any() else None)

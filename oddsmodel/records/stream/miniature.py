@@ -20,9 +20,9 @@ from oddsmodel.records.arrow import (
     what_it_holds,
 )
 from oddsmodel.records.raw import RawColumn, RawType
-from oddsmodel.records.rows import ROWS_NAMED, Positions, Rows, Weights
+from oddsmodel.records.rows import ROWS_NAMED, Positions, Weights
 from oddsmodel.records.stream.source import Source
-from oddsmodel.records.stream.tally import NumberTally, Tally, TextTally, WrittenNumberTally
+from oddsmodel.records.stream.tally import NumberTally, Tally, TextTally, WrittenNumberTally, one_spelling
 from oddsmodel.records.texts import text_column
 
 
@@ -37,7 +37,7 @@ class Miniature:
     """
 
     raw: RawColumn
-    rows: Rows
+    rows: FoundRows
     different: int | None = None
     days_only: bool = False
     incomplete: bool = False
@@ -52,13 +52,15 @@ def miniature(source: Source, column: str, tally: Tally, kind: pa.DataType | Non
         return Miniature(RawColumn(pd.Series(values), "number"), rows, tally.different)
     if isinstance(tally, WrittenNumberTally):
         texts, counts = tally.different()
-        return _of_texts(source, column, texts, counts, tally.missing, "text", False, tally.numbers.different)
+        found = _of_texts(source, column, texts, counts, tally.missing, "text", False)
+        rows = replace(found.rows, numbers_in_one_spelling=True)
+        return replace(found, rows=rows, different=tally.numbers.different)
     if isinstance(tally, TextTally):
         texts, counts = tally.different()
         holds = "texts" if kind is None else what_it_holds(kind)
         days_only = holds == "dates" and has_midnights_only(texts)
         raw_type = RAW_TYPES.get(holds, "text")
-        found = _of_texts(source, column, texts, counts, tally.missing, raw_type, days_only, None)
+        found = _of_texts(source, column, texts, counts, tally.missing, raw_type, days_only)
         return replace(found, days_only=days_only)
     rows = FoundRows(source, column, np.empty(0), np.arange(1), np.asarray([tally.rows]))
     return Miniature(RawColumn(pd.Series([np.nan]), "empty"), rows, incomplete=kind is not None)
@@ -72,7 +74,6 @@ def _of_texts(
     missing: int,
     raw_type: RawType,
     days_only: bool,
-    different: int | None,
 ) -> Miniature:
     at = np.flatnonzero(counts)
     weights = counts[at]
@@ -80,7 +81,7 @@ def _of_texts(
     if missing:
         codes, weights = np.append(at, -1), np.append(weights, missing)
     raw = text_column(as_texts(values, days_only=days_only), codes, raw_type, weights)
-    return Miniature(raw, FoundRows(source, column, values, codes, weights), different)
+    return Miniature(raw, FoundRows(source, column, values, codes, weights))
 
 
 def _with_missing(values: NDArray[np.float64], counts: Weights, missing: int) -> tuple[NDArray[np.float64], Weights]:
@@ -94,7 +95,7 @@ class FoundRows:
     """The rows behind the values of a miniature, looked for in the source when they are to be named.
 
     values (k,): those of the source; codes (m,): which of them each value of the miniature is, out of range for an
-    empty cell.
+    empty cell. numbers_in_one_spelling: plainly written numbers among the values have one spelling each.
     """
 
     source: Source
@@ -102,6 +103,7 @@ class FoundRows:
     values: pa.Array | NDArray[np.float64]
     codes: Positions
     weights: Weights
+    numbers_in_one_spelling: bool = False
 
     def total(self, at: Positions) -> int:
         return int(self.weights[at].sum())
@@ -133,5 +135,6 @@ class FoundRows:
             same = np.append(self.values, np.nan)[at] == numbers
             return np.where(np.isnan(numbers), none, np.where(same, at, none + 1))
         dictionary, codes = different_values(column)
-        found = pc.index_in(dictionary, self.values.cast(dictionary.type)).fill_null(none + 1)
+        sought = one_spelling(dictionary) if self.numbers_in_one_spelling else dictionary
+        found = pc.index_in(sought, self.values.cast(sought.type)).fill_null(none + 1)
         return np.append(found.to_numpy().astype(np.intp), none)[codes]

@@ -90,7 +90,7 @@ class ParquetSource:
             if name not in self.as_texts and what_it_holds(_plain_type(self._field(name).type)) == "whole numbers"
         ]
         for table in self.tables(columns):
-            yield Piece(table, [name for name in whole if beyond_whole_bound(table[name])])
+            yield Piece(table, large=[name for name in whole if beyond_whole_bound(table[name])])
 
     def tables(self, columns: Sequence[str], first: int = 0, end: int | None = None) -> Iterator[pa.Table]:
         last = self.rows if end is None else min(self.rows, end * self.block_rows)

@@ -258,7 +258,9 @@ class Settling:
     def _dates_in_small(self) -> Table:
         columns = {name: self.coded[name].column for name in self.plan.outcome.dates}
         texts = {name: self.coded[name].values for name in columns}
-        return _DatesInSmall(pd.DataFrame(), columns, {}, None, self.where, RowsInOrder(), texts=texts, small=self.in_small)
+        return _DatesInSmall(
+            pd.DataFrame(), columns, {}, None, self.where, RowsInOrder(), texts=texts, small=self.in_small
+        )
 
     def _outcome(self) -> CodedOutcome | None:
         """The two values of the outcome, with no rows; None where it is at fault."""
@@ -268,7 +270,9 @@ class Settling:
         if name not in self.coded or self.coded[name].faults:
             return None
         if name in self.together.met:
-            coded, records = self.together.met[name].in_small()
+            values = self.coded[name].values
+            texts = list(values.cat.categories) if isinstance(values.dtype, pd.CategoricalDtype) else []
+            coded, records = self.together.met[name].in_small(texts)
         else:
             coded, records = self.coded[name], np.asarray(self.rows_of(name).weights, dtype=np.float64)
         frame = pd.DataFrame({name: coded.values})

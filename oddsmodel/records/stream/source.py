@@ -17,10 +17,12 @@ LEAF = 4096
 
 @dataclass(frozen=True, slots=True)
 class Piece:
-    """A block as it is surveyed. doubtful: columns that must be read as texts, for what was met in them here."""
+    """A block as it is surveyed. doubtful: columns that must be read as texts, for what was met in them here; large:
+    columns with whole numbers too large to be told apart, which must be so if all their blocks hold whole numbers."""
 
     table: pa.Table
     doubtful: Collection[str] = ()
+    large: Collection[str] = ()
 
 
 class Source(Protocol):

@@ -36,13 +36,15 @@ class Wanted:
 
 @dataclass
 class _Column:
-    """What a pass meets in a column. types: of the blocks, those without any value left aside."""
+    """What a pass meets in a column. types: of the blocks, those without any value left aside. doubtful, large: see
+    `Piece`."""
 
     wanted: Wanted
     types: list[pa.DataType] = field(default_factory=list)
     tally: Tally | None = None
     nothing: RowTally = field(default_factory=RowTally)
     doubtful: bool = False
+    large: bool = False
 
 
 def take_survey(
@@ -95,6 +97,7 @@ def _one_pass(
     for piece in source.pieces(list(columns)):
         for name, one in columns.items():
             one.doubtful = one.doubtful or name in piece.doubtful
+            one.large = one.large or name in piece.large
             if not one.doubtful:
                 _add(one, plain_values(piece.table[name]), source, name)
         _keep_to(memory, {**known, **columns}, source)
@@ -108,7 +111,7 @@ def _add(one: _Column, values: pa.ChunkedArray, source: Source, name: str) -> No
         return
     if values.type not in one.types:
         one.types.append(values.type)
-    if len(one.types) > 1:
+    if len(one.types) > 1 or one.large:  # to be read again otherwise
         return
     if one.tally is None:
         one.tally = _tally_for(values.type, one.wanted, source, name)
@@ -125,7 +128,9 @@ def _tally_for(kind: pa.DataType, wanted: Wanted, source: Source, name: str) -> 
 
 
 def _are_no_numbers(one: _Column, source: Source) -> bool:
-    """Whether numbers read from texts are whole and too large to be told apart, so that the texts are kept."""
+    """Whether numbers are whole and too large to be told apart, so that texts are kept."""
+    if one.large and len(one.types) == 1:
+        return True
     tally = one.tally
     if not source.reads_numbers_from_texts or not isinstance(tally, NumberTally) or one.types != [pa.float64()]:
         return False

@@ -249,14 +249,8 @@ class WrittenNumberTally:
     def add(self, column: pa.ChunkedArray) -> None:
         dictionary, codes = different_values(column)
         counts = occurrences(codes, len(dictionary))
-        texts = as_texts(dictionary, days_only=False)
-        written = pc.match_substring_regex(texts, f"^(?:{PLAIN_NUMBER.pattern})$")
-        plain = np.asarray(written.to_numpy(zero_copy_only=False), dtype=np.bool_)
-        plain &= pc.binary_length(texts).to_numpy(zero_copy_only=False) <= LONGEST_NUMBER
-        parsed = np.full(len(texts), np.nan)
-        unsigned = pc.replace_substring_regex(texts.filter(pa.array(plain)), r"^\+", "")
-        parsed[plain] = unsigned.cast(pa.float64()).to_numpy(zero_copy_only=False)
-        plain &= np.abs(parsed) < WHOLE_BOUND
+        parsed = plainly_written(dictionary)
+        plain = ~np.isnan(parsed)
         self.numbers.add_counted(parsed[plain & (counts > 0)], counts[plain & (counts > 0)])
         others = codes[np.append(~plain, True)[codes]]
         self.texts.add_counted(dictionary, np.where(plain, 0, counts), len(others), others)
@@ -268,5 +262,28 @@ class WrittenNumberTally:
         """The different texts (k,), of numbers one spelling each and only those that are kept, and the rows of each."""
         texts, counts = self.texts.different()
         numbers, of_numbers = self.numbers.all()
-        written = pa.array([same_value_key(float(number)) for number in numbers], pa.string())
-        return pa.concat_arrays([texts.cast(pa.string()), written]), np.concatenate([counts, of_numbers])
+        return pa.concat_arrays([texts.cast(pa.string()), _spelt(numbers)]), np.concatenate([counts, of_numbers])
+
+
+def one_spelling(texts: pa.Array) -> pa.Array:
+    """The texts, plainly written numbers as `WrittenNumberTally` spells them."""
+    numbers = plainly_written(texts)
+    plain = ~np.isnan(numbers)
+    return pc.replace_with_mask(as_texts(texts, days_only=False), pa.array(plain), _spelt(numbers[plain]))
+
+
+def _spelt(numbers: NDArray[np.float64]) -> pa.Array:
+    return pa.array([same_value_key(float(number)) for number in numbers], pa.string())
+
+
+def plainly_written(texts: pa.Array) -> NDArray[np.float64]:
+    """The numbers (k,) that texts are in plain spelling, below 2^53; NaN for any other text."""
+    texts = as_texts(texts, days_only=False)
+    written = pc.match_substring_regex(texts, f"^(?:{PLAIN_NUMBER.pattern})$")
+    plain = np.asarray(written.to_numpy(zero_copy_only=False), dtype=np.bool_)
+    plain &= pc.binary_length(texts).to_numpy(zero_copy_only=False) <= LONGEST_NUMBER
+    parsed = np.full(len(texts), np.nan)
+    unsigned = pc.replace_substring_regex(texts.filter(pa.array(plain)), r"^\+", "")
+    parsed[plain] = unsigned.cast(pa.float64()).to_numpy(zero_copy_only=False)
+    parsed[np.abs(parsed) >= WHOLE_BOUND] = np.nan
+    return parsed

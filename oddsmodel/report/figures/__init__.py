@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from oddsmodel.report.figures import calibration, curve, estimates, flow, histogram, roc, scatter
+from oddsmodel.report.figures import calibration, curve, estimates, flow, histogram, precision, roc, scatter
 from oddsmodel.report.figures.canvas import Sheet
 from oddsmodel.results import figures as values
 
@@ -24,6 +24,8 @@ def _sheet(figure: values.Figure) -> Sheet:
             return calibration.draw(figure)
         case values.StepFigure():
             return roc.draw(figure)
+        case values.PrecisionFigure():
+            return precision.draw(figure)
         case values.CurveFigure():
             return curve.draw(figure)
         case values.HistogramFigure():

@@ -19,7 +19,7 @@ def draw(figure: CalibrationFigure) -> Sheet:
     if figure.groups:
         entries.append(KeyEntry(say("figure-groups"), SECOND, ring=True, stroke=_EDGE))
     if figure.smooth:
-        entries.append(KeyEntry(say("figure-smooth"), FIRST))
+        entries.append(KeyEntry(say("figure-smooth-band" if figure.band else "figure-smooth"), FIRST))
     top = Sheet.key_height(entries) + 30.0
     sheet = Sheet(top + _SIDE + 50.0)
     sheet.key(entries)
@@ -31,6 +31,9 @@ def draw(figure: CalibrationFigure) -> Sheet:
     plot.bottom_axis(ticks, percent_labels(ticks), grid=True)
     plot.left_axis(ticks, percent_labels(ticks))
     plot.line([0, highest], [0, highest], MUTED, width=_THIN, dashes=_AGREEMENT)
+    if figure.band:
+        predicted, lower, upper = zip(*figure.band, strict=True)
+        plot.between(predicted, lower, upper, FIRST, 0.16)
     if figure.smooth:
         predicted, observed = zip(*figure.smooth, strict=True)
         plot.line(predicted, observed, FIRST, width=2.2)

@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from oddsmodel.results.lead import exposures_shown, has_profile, is_estimated
+from oddsmodel.results.lead import EXACT, exposures_shown, has_profile, is_estimated
 from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
 from oddsmodel.wording import numbers, say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
-from oddsmodel.wording.report_methods import REFERENCES, WAYS
+from oddsmodel.wording.report_methods import METHOD_REFERENCES, REFERENCES, WAYS
 
 Told = tuple[str, tuple[str, ...]]
 """A sentence and the references it cites."""
@@ -50,7 +50,7 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
         "exposures": list(lead.exposure_labels),
         "adjustment": list(lead.adjustment_labels),
     }
-    yield say("methods-model", **facts), ("cox-1958",)
+    yield say("methods-model", **facts), ("cox-1958", *METHOD_REFERENCES.get(lead.method, ()))
     if study.design in CASE_CONTROL:
         yield say("methods-case-control"), ("prentice-pyke-1979",)
     level = say("level", level=lead.level)
@@ -58,6 +58,8 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
         groups, column = lead.groups, lead.grouped_by
         told = say("methods-grouped", groups=groups, df=groups - 1, column=column, level=level)
         yield told, ("cameron-miller-2015", "liang-zeger-1986", "wald-1943")
+    elif lead.method == EXACT:
+        yield say("methods-exact", level=level), ()
     elif has_profile(lead):
         yield say("methods-profile", level=level), ("venzon-moolgavkar-1988", "wald-1943")
     else:

@@ -11,7 +11,7 @@ from oddsmodel.report.view.counted import ABOUT_ADJUSTMENT
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import EstimatesFigure, FlowFigure
-from oddsmodel.results.lead import exposures_shown, has_profile, is_estimated
+from oddsmodel.results.lead import EXACT, exposures_shown, has_profile, is_estimated
 from oddsmodel.results.study import ModelResult, Role, StudyResults
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 from oddsmodel.wording import numbers, say
@@ -76,7 +76,8 @@ def crude(model: ModelResult, sheets: Sheets) -> CrudeView:
 
 
 def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
-    exposures, adjustment = exposures_table(model), _coefficients(model, "adjustment")
+    exposures = exposures_table(model)
+    adjustment = None if model.method == EXACT else _coefficients(model, "adjustment")
     figures = [one for one in model.figures if not isinstance(one, EstimatesFigure | FlowFigure)]
     # In the order of the page, which gives figures and tables their numbers.
     return EstimatesView(
@@ -87,22 +88,37 @@ def estimates(model: ModelResult, sheets: Sheets) -> EstimatesView:
         adjustment=sheets.table(adjustment) if adjustment is not None else None,
         terms=sheets.table(_terms(model)) if model.terms else None,
         reasons=tuple(
-            say("no-value-reason", label=one.label, reason=reason)
-            for one in exposures_shown(model)
-            for key, reason in one.reasons.items()
-            if not key.startswith("crude") and not (key == "profile" and model.groups is not None)
+            dict.fromkeys(
+                say("no-value-reason", label=one.label, reason=reason)
+                for one in exposures_shown(model)
+                for key, reason in one.reasons.items()
+                if not key.startswith("crude") and key not in _told_once(model)
+            )
         ),
     )
+
+
+def _told_once(model: ModelResult) -> tuple[str, ...]:
+    """Parts of an estimate that this kind of model has none of, as the line on intervals says once for all."""
+    if model.method == EXACT:
+        return ("standard_error", "wald", "profile")
+    return ("profile",) if model.groups is not None else ()
 
 
 def _lead(model: ModelResult) -> str:
     if model.groups is not None:
         return "lead-grouped"
+    if model.method == EXACT:
+        return "lead-exact"
+    if model.method in ("penalised", "log-F"):
+        return f"lead-{model.method.lower()}"
     return "lead-profile" if has_profile(model) else "lead-wald"
 
 
 def exposures_table(model: ModelResult) -> Table | None:
     """The exposure's odds ratios with their intervals and p-values; None where none has an odds ratio of its own."""
+    if model.method == EXACT:
+        return _exact(model)
     return _coefficients(model, "exposure")
 
 
@@ -124,13 +140,52 @@ def _coefficients(model: ModelResult, role: Role) -> Table | None:
     for one in shown:
         intervals: list[Cell] = [Interval(one.profile.lower, one.profile.upper)] if profile else []
         intervals.append(Interval(one.wald.lower, one.wald.upper))
-        intervals = [None] * len(intervals) if one.odds_ratio is None else intervals
+        if one.odds_ratio is None:
+            intervals = [_one_sided(interval) for interval in intervals]
         rows.append((one.label, one.odds_ratio, *intervals, one.wald.p))
     together = list(dict.fromkeys(one.term for one in of_role if not one.shown))
     note = say("columns-not-shown", terms=numbers.listed(together)) if together else ""
     adjusted = bool(model.adjustment) or len(model.exposures) > 1
     title = f"table-{role}" if role == "adjustment" or adjusted else "table-exposure-unadjusted"
     return Table(role, say(title), tuple(columns), tuple(rows), note)
+
+
+def _one_sided(cell: Cell) -> Cell:
+    """A limit on one side stands without an estimate; where there is neither limit the cell is empty."""
+    return cell if isinstance(cell, Interval) and (cell.lower, cell.upper) != (None, None) else None
+
+
+def _exact(model: ModelResult) -> Table | None:
+    """The exposure's coefficients by exact conditional inference."""
+    shown = [one for one in exposures_shown(model) if one.exact is not None]
+    if not shown:
+        return None
+    percent = say("level", level=model.level)
+    columns = (
+        TableColumn("label", say("column-exposure")),
+        TableColumn("odds_ratio", say("column-conditional"), "odds_ratio"),
+        TableColumn("exact", say("column-exact", level=percent), "interval"),
+        TableColumn("mid_p", say("column-mid-p", level=percent), "interval"),
+        TableColumn("median_unbiased", say("column-median-unbiased"), "odds_ratio"),
+        TableColumn("p", say("column-exact-p"), "p"),
+        TableColumn("p_mid", say("column-mid-p-p"), "p"),
+    )
+    rows: list[tuple[Cell, ...]] = []
+    for one in shown:
+        exact = one.exact
+        assert exact is not None
+        rows.append(
+            (
+                one.label,
+                one.odds_ratio,
+                _one_sided(Interval(exact.lower, exact.upper)),
+                _one_sided(Interval(exact.mid_p_lower, exact.mid_p_upper)),
+                exact.median_unbiased,
+                exact.p_doubled,
+                exact.p_mid,
+            )
+        )
+    return Table("exposure", say("table-exposure-exact"), columns, tuple(rows), say("exact-note"))
 
 
 def _terms(model: ModelResult) -> Table:
@@ -197,10 +252,10 @@ def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
         added=say("added-by-program") if model.added_by_program else "",
         formula=model.formula,
         picture=sheets.figure(picture) if estimated and picture is not None and picture.marks else None,
-        estimates=estimates(model, sheets) if estimated else None,
+        estimates=estimates(model, sheets) if estimated or model.coefficients else None,
         checks=checks(model, sheets) if estimated else None,
         findings=model.findings,
-        status=say("not-estimated", status=model.status),
+        status=say("partly-estimated" if model.coefficients else "not-estimated", status=model.status),
     )
 
 

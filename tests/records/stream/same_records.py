@@ -33,6 +33,7 @@ def assert_same(path: Path, plan: StudyPlan, memory: int = MEMORY) -> RecordStre
         stream = streamed(path, plan, memory)
     except InputFault as found:
         assert not isinstance(expected, Records), f"only the stream refuses: {found}"
+        assert [str(one) for one in found.faults] == [str(one) for one in expected]
         assert list(found.faults) == list(expected)
         return None
     assert isinstance(expected, Records), f"the stream takes what is refused in memory: {expected}"
@@ -45,6 +46,7 @@ def assert_equal(stream: RecordStream, expected: Records, plan: StudyPlan) -> No
     assert list(stream.columns) == [name for name in expected.columns if name in stream.columns]
     assert (stream.read, stream.source, stream.sha256) == (expected.read, expected.source, expected.sha256)
     assert stream.derived == expected.derived
+    assert [one.message for one in told(stream.findings)] == [one.message for one in told(expected.findings)]
     assert told(stream.findings) == told(expected.findings)
     blocks = list(stream.blocks())
     assert len(blocks) == stream.blocks_number
