@@ -22,6 +22,7 @@ MOST_VALUES = 1 << 20
 """Of more distinct values than this, those rounded to `BITS` binary digits are taken."""
 
 BITS = 12
+FEW_LEVELS = 16
 
 
 class Training(Protocol):
@@ -63,10 +64,18 @@ class FrameTraining:
         return self._known[expression]
 
     def at_levels(self, source: LevelSource, levels: tuple[str, ...]) -> NDArray[np.float64]:
-        return np.bincount(source.codes(self.reader, levels), minlength=len(levels)).astype(np.float64)
+        return rows_at(source.codes(self.reader, levels), len(levels))
 
     def check(self, expression: Expression) -> None:
         evaluate(expression, self.reader)
+
+
+def rows_at(codes: NDArray[np.integer], levels: int) -> NDArray[np.float64]:
+    """How many of the codes (n,), 0 to levels − 1, are each of these."""
+    if codes.dtype.itemsize == 1 and levels <= FEW_LEVELS:
+        # Short codes are compared many at a time; to be counted in one go they would have to be widened.
+        return np.array([np.count_nonzero(codes == code) for code in range(levels)], dtype=np.float64)
+    return np.bincount(codes, minlength=levels).astype(np.float64)
 
 
 class ValueSums:

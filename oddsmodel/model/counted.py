@@ -15,7 +15,7 @@ from oddsmodel.design.coded import CodedRows
 from oddsmodel.design.evaluate import evaluate
 from oddsmodel.design.levels import LevelSource
 from oddsmodel.design.reading import Reader
-from oddsmodel.design.training import MOST_VALUES, ValueSums, merged_values, rounded
+from oddsmodel.design.training import MOST_VALUES, ValueSums, merged_values, rounded, rows_at
 from oddsmodel.model.kept import KeptRecords
 from oddsmodel.model.rows import COLUMN, Array, Levels, columns_among, frame_of
 from oddsmodel.passes import Leaf, Passes
@@ -197,7 +197,7 @@ class _AtLevels:
 
     def __call__(self, rows: Leaf, first: int, state: None) -> Array:
         codes = self.source.codes(reader_of(rows, self.levels, first, self.where), self.wanted)
-        return np.bincount(codes, minlength=len(self.wanted)).astype(np.float64)
+        return rows_at(codes, len(self.wanted))
 
 
 def reader_of(rows: Leaf, levels: Levels, first: int, where: str) -> Reader:
