@@ -21,7 +21,8 @@ from oddsmodel.plan.faults import fault
 from oddsmodel.plan.read import PlanFile, plan_from_values
 from oddsmodel.records.load import records_from_frame
 from oddsmodel.records.outcome import code_outcome
-from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
+from oddsmodel.results.lead import EXACT, companion
+from oddsmodel.results.study import CoefficientResult, DisclosedResults, ModelResult, StudyResults
 from oddsmodel.study.answer import answer
 from oddsmodel.study.check import CheckedPlan
 from oddsmodel.study.data import RecordsInMemory
@@ -43,23 +44,23 @@ class Model:
         return self.results.models[0]
 
     @property
+    def beside(self) -> ModelResult | None:
+        """The model by penalised likelihood that was added because maximum likelihood has no finite answer."""
+        return companion(self.results, self.result)
+
+    @property
     def findings(self) -> tuple[Finding, ...]:
         """What the analyst should know: of the records, then of the model."""
         return (*self.results.findings, *self.result.findings)
 
     def odds_ratios(self) -> pd.DataFrame:
-        """A row a coefficient: odds ratio, Wald limits and p, profile limits; empty where there is no number."""
+        """A row a coefficient: odds ratio, Wald limits and p, profile limits; empty where there is no number.
+
+        By the method "exact" there are exact and mid-P limits, the exact p-value and the median-unbiased odds ratio
+        instead. An odds ratio without a finite estimate has the limit that its profile has on one side.
+        """
         rows = [
-            {
-                "coefficient": one.label,
-                "role": one.role,
-                "odds_ratio": one.odds_ratio,
-                "wald_lower": one.wald.lower,
-                "wald_upper": one.wald.upper,
-                "wald_p": one.wald.p,
-                "profile_lower": one.profile.lower,
-                "profile_upper": one.profile.upper,
-            }
+            {"coefficient": one.label, "role": one.role, "odds_ratio": one.odds_ratio, **_limits(self.result, one)}
             for one in self.result.coefficients
         ]
         return pd.DataFrame(rows).set_index("coefficient") if rows else pd.DataFrame(rows)
@@ -71,6 +72,7 @@ class Model:
             if one.role != "exposure":
                 continue
             crude, everyone = one.crude, one.crude_all_records
+            limits = one.exact or one.profile
             rows.append(
                 {
                     "coefficient": one.label,
@@ -78,8 +80,8 @@ class Model:
                     "crude_lower": crude.profile.lower if crude and crude.profile else None,
                     "crude_upper": crude.profile.upper if crude and crude.profile else None,
                     "adjusted_odds_ratio": one.odds_ratio,
-                    "adjusted_lower": one.profile.lower,
-                    "adjusted_upper": one.profile.upper,
+                    "adjusted_lower": limits.lower,
+                    "adjusted_upper": limits.upper,
                     "records": self.result.records,
                     "crude_on_all_records": everyone.odds_ratio if everyone else None,
                     "all_records": everyone.records if everyone else None,
@@ -137,16 +139,20 @@ def fit(
     grouped_by: str | None = None,
     not_measured: Sequence[str] = (),
     level: float = 0.95,
+    method: str | None = None,
+    prior: Mapping[str, Any] | None = None,
     hide_counts_below: int = 5,
 ) -> Model:
     """Fit one logistic model to a data frame.
 
     formula: "outcome ~ exposure + adjustment", in the vetted formula language. event: the outcome's value that
     means the event happened. exposures: the columns the question is about. columns: per column what a plan would
-    say in its section ({"age": {"per": 10, "units": "years"}}). The rest is as in a plan.
+    say in its section ({"age": {"per": 10, "units": "years"}}). method: "maximum likelihood", "penalised", "log-F" with
+    a prior ({"m": 2, "columns": ["smoker"]}), or "exact". The rest is as in a plan.
 
     Raises InputFault with every fault found. A model without a finite, unique estimate has `result.status` other
-    than "converged" and the reason among its findings.
+    than "converged" and the reason among its findings. Where maximum likelihood has no finite answer and no method is
+    given, `beside` is the same model by penalised likelihood.
 
     >>> import oddsmodel, pandas
     >>> frame = pandas.DataFrame({"died": [1, 0, 1, 0, 0, 1, 0, 1], "smoker": ["yes", "no"] * 4})
@@ -154,6 +160,7 @@ def fit(
     'converged'
     """
     outcome = _outcome(formula, frame, exposures, not_measured, columns)
+    way = {"method": method, "prior": dict(prior) if isinstance(prior, Mapping) else prior}
     file: PlanFile = plan_from_values(
         {
             "study": {
@@ -177,7 +184,15 @@ def fit(
                 "column": outcome,
                 **({} if event is None else {"event": event.item() if isinstance(event, np.generic) else event}),
             },
-            "models": [{"name": "main", "formula": formula, "exposures": list(exposures), "level": level}],
+            "models": [
+                {
+                    "name": "main",
+                    "formula": formula,
+                    "exposures": list(exposures),
+                    "level": level,
+                    **{key: value for key, value in way.items() if value is not None},
+                }
+            ],
             "report": {"hide_counts_below": hide_counts_below},
         }
     )
@@ -187,6 +202,28 @@ def fit(
     checked = CheckedPlan(file, data, prepare(file.plan, records, coded))
     results, fitted = answer(checked)
     return Model(results, fitted[0].model, hide_counts_below)
+
+
+def _limits(model: ModelResult, one: CoefficientResult) -> dict[str, float | None]:
+    """The limits and p-values of a coefficient by their columns: those that the model's method has."""
+    if model.method != EXACT:
+        return {
+            "wald_lower": one.wald.lower,
+            "wald_upper": one.wald.upper,
+            "wald_p": one.wald.p,
+            "profile_lower": one.profile.lower,
+            "profile_upper": one.profile.upper,
+        }
+    exact = one.exact
+    return {
+        "exact_lower": exact.lower if exact else None,
+        "exact_upper": exact.upper if exact else None,
+        "exact_p": exact.p_doubled if exact else None,
+        "mid_p_lower": exact.mid_p_lower if exact else None,
+        "mid_p_upper": exact.mid_p_upper if exact else None,
+        "mid_p_p": exact.p_mid if exact else None,
+        "median_unbiased": exact.median_unbiased if exact else None,
+    }
 
 
 def _outcome(formula: object, frame: object, exposures: object, not_measured: object, columns: object) -> str:

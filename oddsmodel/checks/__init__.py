@@ -35,11 +35,14 @@ CHECKS: tuple[str, ...] = (
     "independence",
 )
 
-OF_ANY_METHOD = ("events_per_parameter", "sparse_cells", "overlap", "independence")
+OF_ANY_METHOD = ("sparse_cells", "overlap", "independence")
 """Checks that do not rest on the fit by maximum likelihood."""
 
-AS_IF_INDEPENDENT = ("calibration", "influence")
+AS_IF_INDEPENDENT = ("calibration", "influence", "calibration_error")
 """Checks that describe, whose intervals and standard errors take records as independent even where they are not."""
+
+LONG = ("internal_validation",)
+"""Checks that take so long that they tell of steps of their own; they are done last."""
 
 WORST: tuple[Verdict, ...] = ("caution", "look", "fine", "not applicable")
 
@@ -52,17 +55,20 @@ def run_checks(model: FittedModel, progress: Progress = SILENT, flow: Flow | Non
 
     asked = set(model.also) | (set(FOR_PREDICTION) if model.aim == "prediction" else set())
     names = [*CHECKS, *(name for name in ASKED_CHECKS if name in asked)]
-    if model.method != "maximum likelihood":
+    if not model.at_maximum_likelihood:
         names = [name for name in names if name in OF_ANY_METHOD]
-    progress.stage("checking", len(names) + 1)
+    names.sort(key=lambda name: name in LONG)
+    progress.stage("checking", len(names) + 1 - sum(name in LONG for name in names))
     results = [counting.check(model, flow)]
     progress.advance()
     for name in names:
-        result = import_module(f"oddsmodel.checks.{name}").check(model)
+        module = import_module(f"oddsmodel.checks.{name}")
+        result = module.check(model, progress) if name in LONG else module.check(model)
         if model.grouping is not None and name in AS_IF_INDEPENDENT and result.verdict != "not applicable":
             result = replace(result, explanation=f"{result.explanation}\n{say('check-as-if-independent')}")
         results.append(result)
-        progress.advance()
+        if name not in LONG:
+            progress.advance()
     return tuple(sorted(results, key=lambda result: FAMILIES.index(result.family)))
 
 

@@ -59,7 +59,8 @@ def check(model: FittedModel) -> CheckResult:
         )
     ordered = one_pass(model).ordered
     groups = ordered.tenths
-    lower, upper = wilson(groups.events, groups.records, model.level)
+    marks = calibration_groups(groups, model.level)
+    lower, upper = np.array([(one.lower, one.upper) for one in marks]).T
     gap = np.abs(groups.events / groups.records - groups.probability)
     # Where every record has its own probability of 0 or 1 to within rounding, rounding alone is no departure.
     outside = int(((groups.probability < lower - 1e-9) | (groups.probability > upper + 1e-9)).sum())
@@ -80,15 +81,15 @@ def check(model: FittedModel) -> CheckResult:
         line=say("calibration-line", looks=looks, level=model.level, **facts),
         statistics=facts,
         findings=(finding("note", "calibration-departs", level=model.level, **facts),) if looks else (),
-        figures=(_figure(ordered, groups, lower, upper, title),),
+        figures=(_figure(ordered, marks, title),),
         explanation=explanation,
     )
 
 
-def _figure(
-    ordered: OrderedRecords, groups: OrderedRecords, lower: Array, upper: Array, title: str
-) -> CalibrationFigure:
-    marks = tuple(
+def calibration_groups(groups: OrderedRecords, level: float) -> tuple[CalibrationGroup, ...]:
+    """Observed shares with Wilson's limits beside mean fitted probabilities."""
+    lower, upper = wilson(groups.events, groups.records, level)
+    return tuple(
         CalibrationGroup(
             predicted=float(groups.probability[number]),
             observed=float(groups.events[number] / groups.records[number]),
@@ -99,5 +100,8 @@ def _figure(
         )
         for number in range(groups.records.size)
     )
+
+
+def _figure(ordered: OrderedRecords, marks: tuple[CalibrationGroup, ...], title: str) -> CalibrationFigure:
     smooth = smooth_share(ordered.probability, ordered.records, ordered.events)
     return CalibrationFigure("calibration", title, say("calibration-alt", groups=len(marks)), marks, smooth)

@@ -52,18 +52,29 @@ def column_fits(
 ) -> list[ColumnFit | None]:
     """The maximum over each set of columns, sought from a known point (q,) that is near all of them.
 
-    The matrix as a whole may be singular; the columns of one set must be independent. What cannot be found in the
-    shared passes is maximised alone, which also decides whether its maximum is finite. None where that does not settle.
+    The matrix as a whole may be singular; the columns of one set must be independent. What is not found from there is
+    sought from the best maximum that was, and what cannot be found in the shared passes is maximised alone, which also
+    decides whether its maximum is finite. None where that does not settle.
     """
+    found = _near(likelihood, known, wanted)
+    best = max((one for one in found if one is not None), key=lambda one: one.log_likelihood, default=None)
+    if best is not None and any(one is None for one in found):
+        lost = [columns for columns, one in zip(wanted, found, strict=True) if one is None]
+        again = iter(_near(likelihood, known_at(likelihood, best.coefficients), lost))
+        found = [next(again) if one is None else one for one in found]
+    return [
+        _alone(likelihood, known.point, tuple(columns)) if one is None else one
+        for columns, one in zip(wanted, found, strict=True)
+    ]
+
+
+def _near(likelihood: BinomialLikelihood, known: Known, wanted: Sequence[Sequence[int]]) -> list[ColumnFit | None]:
     everything = np.eye(likelihood.parameters)
     near = maxima_near(likelihood, known, [everything[:, list(columns)] for columns in wanted]) if wanted else []
-    fits: list[ColumnFit | None] = []
-    for columns, one in zip(wanted, near, strict=True):
-        if one is None:
-            fits.append(_alone(likelihood, known.point, tuple(columns)))
-        else:
-            fits.append(ColumnFit(tuple(columns), one.point, one.log_likelihood))
-    return fits
+    return [
+        None if one is None else ColumnFit(tuple(columns), one.point, one.log_likelihood)
+        for columns, one in zip(wanted, near, strict=True)
+    ]
 
 
 def with_covariances(likelihood: BinomialLikelihood, fits: Sequence[ColumnFit]) -> list[ColumnFit]:

@@ -77,9 +77,9 @@ def check(model: FittedModel) -> CheckResult:
             explanation=explanation,
         )
     ordered = one_pass(model).ordered
+    average, share = average_precision(ordered.events, ordered.records), model.events / model.records
     statistics: dict[str, float | int | None] = dict.fromkeys(STATISTICS)
-    statistics["average_precision"] = average_precision(ordered.events, ordered.records)
-    statistics["event_share"] = model.events / model.records
+    statistics |= {"average_precision": average, "event_share": share}
     statistics["tjur"] = coefficient_of_discrimination(ordered)
     if model.grouping is None:
         known = gain(model)
@@ -94,7 +94,7 @@ def check(model: FittedModel) -> CheckResult:
         statistics=statistics,
         reasons=reasons,
         tables=(_table(statistics),),
-        figures=(_figure(ordered, statistics["average_precision"], statistics["event_share"]),),
+        figures=(_figure(ordered, average, share),),
         explanation=explanation,
     )
 

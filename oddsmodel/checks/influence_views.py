@@ -19,6 +19,7 @@ from oddsmodel.results.tables import Cell, Table, TableColumn
 from oddsmodel.wording import say
 
 BOTH = ("records", "events")
+MOST_RATIOS = 4
 
 
 def deletions_table(model: FittedModel, deletions: Sequence[Deletion]) -> Table:
@@ -48,11 +49,19 @@ def _odds_ratios(model: FittedModel, coefficients: NDArray[np.float64], shown: S
 
 
 def patterns_table(model: FittedModel, top: KeptRows, targets: tuple[int, ...]) -> Table:
-    """The patterns that move the exposure most, one a row; everything in a row hides with its counts."""
+    """The patterns that move the exposure most, one a row; everything in a row hides with its counts.
+
+    Leverage, residuals, one-step falls of either statistic, standardised shift and the odds ratios of the exposure's
+    columns (of those that move most if there are more than `MOST_RATIOS`) are those of Pregibon 1981.
+    """
     steps, single = top.steps, model.rows.single
     shown = [(place, i) for place, i in enumerate(targets) if model.design.columns[i].shown]
-    leading = max(shown, key=lambda pair: float(np.abs(steps.change[:, pair[0]]).max()), default=None)
+    furthest = [
+        float(np.abs(steps.change[:, place]).max(initial=0.0)) * model.design.columns[i].per for place, i in shown
+    ]
+    kept = sorted(sorted(range(len(shown)), key=lambda one: -furthest[one])[:MOST_RATIOS])
     risk = model.study_design in QUANTITY
+    pearson, deviance = _residuals(top)
     columns = [
         TableColumn("pattern", "Values" if single else "Covariate pattern", hidden_with=BOTH),
         TableColumn("records", "Records", "count"),
@@ -60,6 +69,8 @@ def patterns_table(model: FittedModel, top: KeptRows, targets: tuple[int, ...]) 
     ]
     numbers = {
         "leverage": ("Leverage", steps.leverage),
+        "pearson": ("Pearson residual", pearson),
+        "deviance": ("Deviance residual", deviance),
         "delta_chi_square": ("Fall in Pearson chi-square without it", steps.delta_chi_square),
         "delta_deviance": ("Fall in deviance without it", steps.delta_deviance),
         "distance": ("Standardised shift of all coefficients", steps.distance),
@@ -67,10 +78,10 @@ def patterns_table(model: FittedModel, top: KeptRows, targets: tuple[int, ...]) 
     if risk:
         numbers = {"expected_per_100": ("Expected per 100", 100.0 * steps.probability), **numbers}
     columns += [TableColumn(key, heading, "number", hidden_with=BOTH) for key, (heading, _) in numbers.items()]
-    if leading is not None:
-        label = model.design.columns[leading[1]].label
-        heading = say("influence-one-step-heading", label=label)
-        columns.append(TableColumn("odds_ratio", heading, "odds_ratio", hidden_with=BOTH))
+    for one in kept:
+        position = shown[one][1]
+        heading = say("influence-one-step-heading", label=model.design.columns[position].label)
+        columns.append(TableColumn(f"odds_ratio_{position}", heading, "odds_ratio", hidden_with=BOTH))
     rows: list[tuple[Cell, ...]] = []
     for j, word in enumerate(in_words(model, top.position)):
         alone = bool(steps.alone[j])
@@ -79,14 +90,25 @@ def patterns_table(model: FittedModel, top: KeptRows, targets: tuple[int, ...]) 
             None if alone and key not in ("leverage", "expected_per_100") else float(values[j])
             for key, (_, values) in numbers.items()
         ]
-        if leading is not None:
-            place, i = leading
+        for place, i in (shown[one] for one in kept):
             moved = float(model.fit.coefficients[i] + steps.change[j, place]) * model.design.columns[i].per
             row.append(None if alone else exponential(moved))
         rows.append(tuple(row))
     note = say("influence-alone", single=single) if bool(steps.alone.any()) else ""
     title = say("influence-patterns-title", single=single)
     return Table("influential_patterns", title, tuple(columns), tuple(rows), note)
+
+
+def _residuals(kept: KeptRows) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Pearson and deviance residuals (k,), with the sign of what was seen less what was expected.
+
+    From r² = delta chi-square (1 − h) and d² = delta deviance − delta chi-square h.
+    """
+    steps = kept.steps
+    sign = np.where(kept.events >= kept.trials * steps.probability, 1.0, -1.0)
+    share = steps.delta_deviance - steps.delta_chi_square * steps.leverage
+    pearson = sign * np.sqrt(steps.delta_chi_square * (1.0 - steps.leverage))
+    return pearson, sign * np.sqrt(np.maximum(share, 0.0))
 
 
 def scatter(model: FittedModel, seen: OnePass) -> ScatterFigure:

@@ -2,13 +2,11 @@
 
 from __future__ import annotations
 
-import numpy as np
-from numpy.typing import NDArray
-
+from oddsmodel.checks.performance import Scores
 from oddsmodel.checks.probability_groups import MOST_SORTED
 from oddsmodel.checks.pseudo_r2 import expected_shrinkage, gain
-from oddsmodel.checks.refits import learning_formula, refits_of
-from oddsmodel.checks.resamples import MOST_RECORDS, population_of
+from oddsmodel.checks.refits import ColumnsAnew, refits_of
+from oddsmodel.checks.resamples import MOST_RECORDS
 from oddsmodel.checks.severity import severity
 from oddsmodel.checks.validation import (
     CrossValidated,
@@ -21,13 +19,10 @@ from oddsmodel.checks.validation import (
 from oddsmodel.inference.recession_cone import single_threaded
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
-from oddsmodel.passes import Leaf
 from oddsmodel.progress import Progress, Silent
 from oddsmodel.results.study import CheckResult, Verdict
 from oddsmodel.results.tables import Cell, Table, TableColumn
 from oddsmodel.wording import finding, say
-
-Array = NDArray[np.float64]
 
 NAME = "internal_validation"
 
@@ -60,20 +55,23 @@ def check(model: FittedModel, progress: Progress = SILENT) -> CheckResult:
     intercept is left out where the design fixes the share of cases. A slope below 0.9 is worth a look, below 0.8 a
     caution: predictions for other records would be that much too far from the middle.
     """
-    resamples = _affordable(model)
-    reason = _withheld(model, resamples)
+    reason = _withheld(model)
     if reason is not None:
         return _not_applicable(reason)
+    population, refits = refits_of(model)
+    resamples = _affordable(model, population.rows, isinstance(refits, ColumnsAnew))
+    if resamples < FEWEST_RESAMPLES:
+        return _not_applicable(_too_large(model))
     with single_threaded():
         validation = Validation(
-            population=population_of(model),
-            refits=refits_of(model),
+            population=population,
+            refits=refits,
             absolute=model.study_design in QUANTITY,
             balanced=any(column.kind == "intercept" for column in model.design.columns),
             seed=model.seed,
             name=model.name,
         )
-        apparent = _apparent(model, validation)
+        apparent = _apparent(validation)
         if apparent is None:
             return _not_applicable(say("prediction-one-risk"))
         folds = FOLDS if model.grouping is None else min(FOLDS, model.grouping.number)
@@ -84,21 +82,20 @@ def check(model: FittedModel, progress: Progress = SILENT) -> CheckResult:
     return _result(model, apparent, optimism, crossed)
 
 
-def _affordable(model: FittedModel) -> int:
+def _affordable(model: FittedModel, rows: int, anew: bool) -> int:
     """How many resamples the rows and columns allow: 200, or fewer where they would take minutes.
 
     A fit of p columns costs about rows × (p²/2 + 200), and more where its columns are made anew.
     """
     p = model.fit.coefficients.size
-    each = p * p / 2.0 + 200.0 + (COLUMNS_ANEW * p if learning_formula(model) is not None else 0.0)
-    return min(MOST_RESAMPLES, int(WORK / (each * model.rows.number)))
+    each = p * p / 2.0 + 200.0 + (COLUMNS_ANEW * p if anew else 0.0)
+    return min(MOST_RESAMPLES, int(WORK / (each * rows)))
 
 
-def _withheld(model: FittedModel, resamples: int) -> str | None:
+def _withheld(model: FittedModel) -> str | None:
     """Why nothing is resampled, or None."""
-    parameters = sum(column.kind != "intercept" for column in model.design.columns)
     rarer = min(model.events, model.records - model.events)
-    if not parameters:
+    if not _parameters(model):
         return say("prediction-no-columns")
     if model.study_design == "matched case-control":
         return say("validation-matched")
@@ -106,10 +103,18 @@ def _withheld(model: FittedModel, resamples: int) -> str | None:
         return say("validation-few-events", fewest=FEWEST_OF_AN_OUTCOME)
     if model.grouping is not None and model.grouping.number < FEWEST_GROUPS:
         return say("validation-few-groups", groups=model.grouping.number, fewest=FEWEST_GROUPS)
-    if model.rows.number > MOST_SORTED or model.records >= MOST_RECORDS or resamples < FEWEST_RESAMPLES:
-        expected = None if model.grouping is not None else expected_shrinkage(gain(model).likelihood_ratio, parameters)
-        return say("validation-too-large", expected=expected)
-    return None
+    return _too_large(model) if model.rows.number > MOST_SORTED or model.records >= MOST_RECORDS else None
+
+
+def _parameters(model: FittedModel) -> int:
+    return sum(column.kind != "intercept" for column in model.design.columns)
+
+
+def _too_large(model: FittedModel) -> str:
+    expected = None
+    if model.grouping is None:
+        expected = expected_shrinkage(gain(model).likelihood_ratio, _parameters(model))
+    return say("validation-too-large", expected=expected)
 
 
 def _not_applicable(reason: str) -> CheckResult:
@@ -128,15 +133,15 @@ def _not_applicable(reason: str) -> CheckResult:
     )
 
 
-def _apparent(model: FittedModel, validation: Validation) -> Measures | None:
-    """The measures on the records that the model was fitted to."""
-    rows = model.fit.space.working.passes.each(_linear, model.fit.working)
+def _apparent(validation: Validation) -> Measures | None:
+    """The measures on the records that the model was fitted to; None where all have one linear predictor."""
     events, trials = validation.population.counted(validation.population.cells)
-    return validation.own(np.concatenate(list(rows)), events, trials)
-
-
-def _linear(rows: Leaf, first: int, coefficients: Array) -> Array:
-    return np.asarray(rows["X"] @ coefficients)
+    linear = validation.refits.linear(events[None], trials[None])[0]
+    if linear is None:
+        return None
+    pairs = Scores.of(linear).pairs(events, trials)
+    measured = validation.measured(linear, events, trials, pairs)
+    return None if measured is None else validation.own(linear, events, trials, pairs)
 
 
 def _result(model: FittedModel, apparent: Measures, optimism: Optimism, crossed: CrossValidated) -> CheckResult:
@@ -181,7 +186,7 @@ def _result(model: FittedModel, apparent: Measures, optimism: Optimism, crossed:
         line=say("validation-line", **facts),
         statistics=statistics,
         reasons=reasons,
-        findings=() if verdict == "fine" else (finding(severity(verdict), "validation-line", **facts),),
+        findings=() if verdict == "fine" else (finding(severity(verdict), "predictions-too-extreme", **facts),),
         tables=(_table(apparent, corrected, optimism, crossed, held),),
         explanation=say("validation-explanation"),
     )

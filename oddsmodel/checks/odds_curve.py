@@ -48,7 +48,7 @@ def odds_curve(
     if not np.abs(drawn).max() <= LARGEST_DRAWN_LOG:
         return None
     ratios = [tuple(row) for row in np.exp(drawn).tolist()]
-    edges = _edges(lower, upper, whole=whole)
+    edges = bin_edges(lower, upper, whole=whole)
     records = np.rint(spread.in_bins(edges)).astype(int)
     return CurveFigure(
         id=identity,
@@ -89,7 +89,7 @@ def _entered(model: FittedModel, line: Line, own: Array) -> Array | None:
         return None
 
 
-def _edges(lower: float, upper: float, *, whole: bool) -> Array:
+def bin_edges(lower: float, upper: float, *, whole: bool) -> Array:
     """About `BINS` bins of a round width over lower..upper, around whole numbers where the values are whole."""
     rough = (upper - lower) / BINS
     power = 10.0 ** math.floor(math.log10(rough))

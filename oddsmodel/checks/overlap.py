@@ -117,7 +117,7 @@ def _category(model: FittedModel, exposure: str, gathered: _Gathered) -> None:
         gathered.told.append(("not applicable", "overlap-not-fitted", {}))
         return
     outside = any(one.outside_records for one in comparisons)
-    inside = _refitted(model, exposure, comparisons) if outside else None
+    inside = _refitted(model, exposure, comparisons) if outside and model.at_maximum_likelihood else None
     worst = max(comparisons, key=lambda one: one.share)
     facts = {
         "group": f"{label}: {worst.level}",

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -12,7 +12,7 @@ from oddsmodel.checks.probability_groups import TIE
 from oddsmodel.likelihood.logistic import logistic
 
 Array = NDArray[np.float64]
-Counts = NDArray[np.int64]
+Counts = NDArray[np.signedinteger[Any]]
 
 MOST_STEPS, MOST_HALVINGS = 50, 30
 DECREMENT, FLAT = 1e-10, 1e-9
@@ -72,14 +72,13 @@ def calibration_line(linear: Array, events: Counts, trials: Counts) -> Line | No
     1 is that of predictions too far from the middle. None where there is no such line: equal linear predictors, or
     outcomes that they separate.
     """
-    used = trials > 0
-    linear, events, trials = linear[used], events[used].astype(np.float64), trials[used].astype(np.float64)
-    middle = float(np.average(linear, weights=trials))
-    spread = float(np.sqrt(np.average((linear - middle) ** 2, weights=trials)))
+    linear, happened, counted = _used(linear, events, trials)
+    middle = float(np.average(linear, weights=counted))
+    spread = float(np.sqrt(np.average((linear - middle) ** 2, weights=counted)))
     if not spread > TIE * max(1.0, abs(middle)):
         return None
     apart = (linear - middle) / spread
-    found = _newton(np.stack([np.ones_like(apart), apart]), events, trials, np.array([middle, spread]), 0.0)
+    found = _newton(np.stack([np.ones_like(apart), apart]), happened, counted, np.array([middle, spread]), 0.0)
     if found is None:
         return None
     slope = float(found[1]) / spread
@@ -93,10 +92,15 @@ def calibration_in_the_large(linear: Array, events: Counts, trials: Counts) -> f
     """
     if not 0 < events.sum() < trials.sum():
         return None
-    used = trials > 0
-    linear, events, trials = linear[used], events[used].astype(np.float64), trials[used].astype(np.float64)
-    found = _newton(np.ones((1, linear.size)), events, trials, np.zeros(1), linear)
+    linear, happened, counted = _used(linear, events, trials)
+    found = _newton(np.ones((1, linear.size)), happened, counted, np.zeros(1), linear)
     return None if found is None else float(found[0])
+
+
+def _used(linear: Array, events: Counts, trials: Counts) -> tuple[Array, Array, Array]:
+    """The rows that stand for records."""
+    used = np.flatnonzero(trials)
+    return linear[used], events[used].astype(np.float64), trials[used].astype(np.float64)
 
 
 def _newton(rows: Array, events: Array, trials: Array, start: Array, offset: Array | float) -> Array | None:

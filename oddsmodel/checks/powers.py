@@ -23,8 +23,14 @@ PAIRS = tuple(combinations_with_replacement(range(len(POWERS)), 2))
 
 LINE = POWERS.index(1.0)
 
+COUNTS = 100.0
+"""Whole numbers whose middle nine tenths range no further than this are raised by whole units of 1."""
+
 ALIKE = 1e-6
 """A function of which less than this part is its own, beside another one and the constant, is none to be fitted."""
+
+MOST_VALUES = 4096
+"""Of more values than this, so many quantiles serve to standardise the functions, on which no fit depends."""
 
 WIDEST = 1e15
 """Largest value by the smallest, beyond which powers cannot be worked with."""
@@ -35,10 +41,10 @@ class Origin:
     """z = (x + shift) / scale, positive for every record.
 
     shift: 0 where all values are positive; else it brings the smallest value to between half of a unit and one and a
-    half, the unit being 1, 2 or 5 times a power of ten, at least a tenth of the range of the middle nine tenths of the
-    records, and at least 1 where all values are whole. Royston & Altman 1994, section 4.2, shift by a first difference
-    of the values; a round unit tells less of the record with the smallest. scale: a power of ten, which changes no fit.
-    least: half of the smallest z.
+    half. The unit is 1, 2 or 5 times a power of ten, at least a tenth of the range of the middle nine tenths of the
+    records; for whole numbers it is 1 up to a range of 100, so that counts from 0 on are raised by 1. (Royston & Altman
+    1994 raise by the smallest difference of two values, which for measurements can be next to nothing and lets the
+    smallest value rule the fit.) scale: a power of ten, which changes no fit. least: half of the smallest z.
     """
 
     shift: float
@@ -58,7 +64,7 @@ def origin(spread: Spread) -> Origin | None:
     if values[0] <= 0.0:
         unit = _unit((upper - lower) / 10.0 or (values[-1] - values[0]) / 10.0)
         if (values == np.rint(values)).all():
-            unit = max(1.0, unit)
+            unit = 1.0 if upper - lower <= COUNTS else max(1.0, unit)
         shift = float(f"{unit * math.ceil(0.5 - values[0] / unit):.12g}")
     if (values[-1] + shift) / (values[0] + shift) > WIDEST:
         return None
@@ -109,12 +115,14 @@ class PowerColumns:
 
 
 def power_columns(spread: Spread) -> PowerColumns | None:
-    """The functions of a column, standardised over the records; None where its values are no place for powers."""
+    """The functions of a column, about standardised over the records; None where its values are no place for powers."""
     where = origin(spread)
     if where is None:
         return None
-    share = spread.counts / spread.ends[-1]
-    functions = _functions(where.of(spread.values))
+    some = spread.values.size > MOST_VALUES
+    values = spread.quantiles(np.linspace(0.0, 1.0, MOST_VALUES)) if some else spread.values
+    share = np.full(MOST_VALUES, 1.0 / MOST_VALUES) if some else spread.counts / spread.ends[-1]
+    functions = _functions(where.of(values))
     means = share @ functions
     centred = functions - means
     lengths = np.sqrt(share @ centred**2)

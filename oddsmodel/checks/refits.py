@@ -6,9 +6,11 @@ from collections.abc import Callable, Iterator, Sequence
 from typing import Any, Protocol
 
 import numpy as np
+import pandas as pd
 from numpy.typing import NDArray
 from scipy.linalg import LinAlgError, eigh
 
+from oddsmodel.checks.resamples import Counts, Population, population_of_records, population_of_rows
 from oddsmodel.design.arithmetic import Expression, Function, Operation, Total
 from oddsmodel.design.encoder import design_of
 from oddsmodel.design.factors import BasisSpline, Computed, CubicSpline, Factor, RestrictedCubicSpline
@@ -25,7 +27,6 @@ from oddsmodel.passes.base import TASK_ROWS
 from oddsmodel.passes.local import in_order
 
 Array = NDArray[np.float64]
-Counts = NDArray[np.int64]
 
 DECREMENT, FLAT = 1e-10, 1e-9
 """Newton decrement squared at which a step is the last, and curvature relative to the largest there could be below
@@ -44,10 +45,14 @@ class Refits(Protocol):
         """The linear predictor (m,) of all rows by each fit; None where the data set has no finite, unique maximum."""
 
 
-def refits_of(model: FittedModel) -> Refits:
-    """How a model is fitted again: with its columns as they are, or made anew where they learn from the records."""
+def refits_of(model: FittedModel) -> tuple[Population, Refits]:
+    """What is drawn from, and how the model is fitted again: with its columns as they are, or made anew where they
+    learn from the records."""
     formula = learning_formula(model)
-    return SameColumns(model) if formula is None else ColumnsAnew(model, formula)
+    if formula is None:
+        return population_of_rows(model), SameColumns(model)
+    population, frame = population_of_records(model, formula.columns)
+    return population, ColumnsAnew(formula, frame, model)
 
 
 def maxima(likelihood: ResampledLikelihood, start: Array) -> list[Array | None]:
@@ -103,9 +108,9 @@ class SameColumns:
     """Fits with the columns of the model matrix as they are, many at once."""
 
     def __init__(self, model: FittedModel) -> None:
-        space = model.fit.space.working
-        assert isinstance(space, BinomialLikelihood)
-        self.passes, self.parameters, self.start = space.passes, space.parameters, model.fit.working
+        working = model.fit.space.working
+        assert isinstance(working, BinomialLikelihood)
+        self.passes, self.parameters, self.start = working.passes, working.parameters, model.fit.working
 
     def linear(self, events: Counts, trials: Counts) -> list[Array | None]:
         likelihood = ResampledLikelihood(self.passes, self.parameters, events, trials)
@@ -122,9 +127,10 @@ class SameColumns:
 class ColumnsAnew:
     """Fits whose knots, means and deviations are those of each data set."""
 
-    def __init__(self, model: FittedModel, formula: VettedFormula) -> None:
-        self.formula, self.columns, self.exposures = formula, model.columns, model.exposures
-        self.frame = model.rows.columns_at(np.arange(model.rows.number, dtype=np.int64))
+    def __init__(self, formula: VettedFormula, frame: pd.DataFrame, model: FittedModel) -> None:
+        """frame: the record columns of m rows."""
+        self.formula, self.frame = formula, frame
+        self.columns, self.exposures = model.columns, model.exposures
 
     def linear(self, events: Counts, trials: Counts) -> list[Array | None]:
         def fitted(one: int) -> Array | None:

@@ -1,15 +1,20 @@
-"""Records drawn again, or dealt into folds, as their design demands: one by one, by groups, cases and controls apart."""
+"""Records drawn again, or dealt into folds, as the design demands: single ones, groups, cases and controls apart."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
+import pandas as pd
 from numpy.typing import NDArray
 
 from oddsmodel.measures.risks import QUANTITY
+from oddsmodel.model.counted import CountedPeople
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.passes import Leaf
 
 Array = NDArray[np.float64]
@@ -31,6 +36,21 @@ class Groups:
     group: Index
     cell: Index
     count: Counts
+
+
+@dataclass(frozen=True)
+class Cells:
+    """counts (q,): how many of the records are in each cell. written_out: the cell of every record, unless too many."""
+
+    counts: Counts
+    records: int
+    written_out: Index | None
+
+    @classmethod
+    def of(cls, counts: Counts) -> Cells:
+        records = int(counts.sum())
+        few = records <= WRITTEN_OUT * counts.size
+        return cls(counts, records, np.repeat(np.arange(counts.size), counts) if few else None)
 
 
 @dataclass(frozen=True)
@@ -59,9 +79,7 @@ class Population:
         if self.groups is not None:
             times = np.bincount(rng.integers(0, self.groups.number, self.groups.number), minlength=self.groups.number)
             return self._of_groups(times)
-        if not self.apart:
-            return _with_replacement(self.cells, rng)
-        return np.concatenate([_with_replacement(part, rng) for part in self._by_outcome()])
+        return np.concatenate([_with_replacement(part, rng) for part in self._strata])
 
     def dealt(self, folds: int, rng: np.random.Generator) -> Counts:
         """All records dealt into folds of about equal size, each with about its share of the events (folds, 2m).
@@ -71,10 +89,16 @@ class Population:
         if self.groups is not None:
             fold = rng.permutation(self.groups.number) % folds
             return np.stack([self._of_groups(fold == one) for one in range(folds)])
-        return np.concatenate([_dealt(part, folds, rng) for part in self._by_outcome()], axis=1)
+        return np.concatenate([_dealt(part, folds, rng) for part in self._by_outcome], axis=1)
 
-    def _by_outcome(self) -> tuple[Counts, Counts]:
-        return self.cells[: self.rows], self.cells[self.rows :]
+    @cached_property
+    def _by_outcome(self) -> tuple[Cells, ...]:
+        return Cells.of(self.cells[: self.rows]), Cells.of(self.cells[self.rows :])
+
+    @cached_property
+    def _strata(self) -> tuple[Cells, ...]:
+        """What is drawn from separately."""
+        return self._by_outcome if self.apart else (Cells.of(self.cells),)
 
     def _of_groups(self, times: NDArray[np.integer] | NDArray[np.bool_]) -> Counts:
         assert self.groups is not None
@@ -82,16 +106,34 @@ class Population:
         return np.bincount(self.groups.cell, weights=weights, minlength=self.cells.size).astype(np.int64)
 
 
-def population_of(model: FittedModel) -> Population:
-    """What is drawn from for a model, its rows being few enough to hold a few numbers for each."""
+def population_of_rows(model: FittedModel) -> Population:
+    """The rows of a model as what is drawn from; they are few enough to hold a few numbers for each."""
     parts = list(model.rows.passes.each(_counts))
-    events, trials = (np.concatenate([part[k] for part in parts]).round().astype(np.int64) for k in (0, 1))
-    cells = np.concatenate([events, trials - events])
+    events, trials = (np.concatenate([part[k] for part in parts]) for k in (0, 1))
+    return _population(model, events, trials, None if model.grouping is None else model.grouped[1].index)
+
+
+def population_of_records(model: FittedModel, names: Sequence[str]) -> tuple[Population, pd.DataFrame]:
+    """Records as what is drawn from, and a row for each with these record columns: equal ones of one outcome together,
+    in the order of their values, unless they belong to groups."""
+    if model.grouping is not None:
+        held, _ = model.grouped
+        records, index = KeptRecords(held.frame[list(names)], held.event, held.counts), np.arange(held.event.size)
+    else:
+        records, index = CountedPeople(model.rows.people, model.rows.levels).of(*names), None
+    trials = np.ones(records.event.size) if records.counts is None else records.counts
+    return _population(model, trials * records.event, trials, index), records.frame
+
+
+def _population(model: FittedModel, events: Array, trials: Array, index: NDArray[np.intp] | None) -> Population:
+    """index (n,): the row of each record, where records belong to groups."""
+    happened, counted = events.round().astype(np.int64), trials.round().astype(np.int64)
+    cells = np.concatenate([happened, counted - happened])
     apart = model.study_design not in QUANTITY
-    if model.grouping is None:
+    if model.grouping is None or index is None:
         return Population(cells, apart)
-    held, patterns = model.grouped
-    cell = patterns.index + np.where(held.event, 0, events.size)
+    held, _ = model.grouped
+    cell = index + np.where(held.event, 0, events.size)
     count = np.ones(cell.size, dtype=np.int64) if held.counts is None else held.counts.round().astype(np.int64)
     return Population(cells, apart, Groups(model.grouping.number, model.grouping.codes, cell, count))
 
@@ -101,30 +143,25 @@ def _counts(rows: Leaf, first: int, state: None) -> tuple[Array, Array]:
     return events, rows.get("trials", np.ones_like(events))
 
 
-def _written_out(cells: Counts) -> Index:
-    return np.repeat(np.arange(cells.size), cells)
+def _with_replacement(cells: Cells, rng: np.random.Generator) -> Counts:
+    if cells.written_out is not None:
+        drawn = cells.written_out[rng.integers(0, cells.records, cells.records)]
+        return np.bincount(drawn, minlength=cells.counts.size)
+    filled = np.flatnonzero(cells.counts)
+    number = np.zeros_like(cells.counts)
+    number[filled] = rng.multinomial(cells.records, cells.counts[filled] / cells.records)
+    return number
 
 
-def _with_replacement(cells: Counts, rng: np.random.Generator) -> Counts:
-    records = int(cells.sum())
-    if records <= WRITTEN_OUT * cells.size:
-        return np.bincount(_written_out(cells)[rng.integers(0, records, records)], minlength=cells.size)
-    filled = np.flatnonzero(cells)
-    drawn = np.zeros_like(cells)
-    drawn[filled] = rng.multinomial(records, cells[filled] / records)
-    return drawn
-
-
-def _dealt(cells: Counts, folds: int, rng: np.random.Generator) -> Counts:
-    records = int(cells.sum())
-    if records <= WRITTEN_OUT * cells.size:
-        order = rng.permutation(_written_out(cells))
-        place = (np.arange(records) % folds) * cells.size + order
-        return np.bincount(place, minlength=folds * cells.size).reshape(folds, cells.size)
-    left = cells.copy()
-    dealt = np.zeros((folds, cells.size), dtype=np.int64)
+def _dealt(cells: Cells, folds: int, rng: np.random.Generator) -> Counts:
+    size = cells.counts.size
+    if cells.written_out is not None:
+        place = (np.arange(cells.records) % folds) * size + rng.permutation(cells.written_out)
+        return np.bincount(place, minlength=folds * size).reshape(folds, size)
+    left = cells.counts.copy()
+    dealt = np.zeros((folds, size), dtype=np.int64)
     for fold in range(folds - 1):
-        share = -(-(records - fold) // folds)
+        share = -(-(cells.records - fold) // folds)
         dealt[fold] = rng.multivariate_hypergeometric(left, share, method="marginals")
         left -= dealt[fold]
     dealt[-1] = left

@@ -129,7 +129,7 @@ def check(model: FittedModel) -> CheckResult:
         line=say("prediction-size-line", **facts),
         statistics=statistics,
         reasons=reasons,
-        findings=() if verdict == "fine" else (finding(severity(verdict), "prediction-size-line", **facts),),
+        findings=() if verdict == "fine" else (finding(severity(verdict), "too-few-records-for-prediction", **facts),),
         tables=(_table(own, usual),),
         explanation=explanation,
     )

@@ -48,7 +48,7 @@ def too_few(probability: Array, records: Array) -> bool:
 
 
 def drawn_at(probability: Array, records: Array) -> Array:
-    """Where the curve is drawn (g,), for records (j,) at rising probabilities; nowhere where all are nearly one heap."""
+    """Where the curve is drawn (g,), for records (j,) at rising probabilities; nowhere where nearly all are equal."""
     total = float(records.sum())
     first, last = np.searchsorted(np.cumsum(records), [TAIL * total, (1.0 - TAIL) * total])
     low, high = float(probability[first]), float(probability[min(last, probability.size - 1)])

@@ -44,7 +44,10 @@ def check(model: FittedModel) -> CheckResult:
     verdict: Verdict = "caution" if exposure else "look" if adjustment else "fine"
     findings: list[Finding] = []
     if exposure:
-        findings.append(finding("caution", "sparse-exposure-levels", levels=exposure, few=FEW))
+        exact = model.method == "exact"
+        findings.append(
+            finding("note" if exact else "caution", "sparse-exposure-levels", levels=exposure, few=FEW, exact=exact)
+        )
     if adjustment:
         findings.append(finding("note", "sparse-adjustment-levels", levels=adjustment, few=FEW))
     return CheckResult(

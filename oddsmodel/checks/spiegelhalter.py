@@ -18,52 +18,50 @@ from oddsmodel.passes import Leaf
 Array = NDArray[np.float64]
 
 NOTHING_LEFT = 1e-9
-"""Share of the weights' variation outside the span of the columns below which there is nothing to test."""
+"""Share of the variation of 1 − 2p outside the span of the columns below which there is nothing to test."""
+
+LOPSIDED, PEAKED = 0.5, 1.0
+"""Skewness and excess kurtosis, either way, up to which the statistic counts as near normal."""
 
 
 @dataclass(frozen=True)
 class Spiegelhalter:
-    """z: standard normal where the model holds; p: two-sided. skewness, kurtosis: of the statistic under the model.
+    """z: standard normal where the model holds; p: two-sided. skewness, kurtosis: of the statistic under the model."""
 
-    All None where the columns leave nothing to test.
-    """
+    z: float
+    p: float
+    skewness: float
+    kurtosis: float
 
-    z: float | None
-    p: float | None
-    skewness: float | None
-    kurtosis: float | None
-
-
-NONE = Spiegelhalter(None, None, None, None)
+    @property
+    def near_normal(self) -> bool:
+        return abs(self.skewness) <= LOPSIDED and abs(self.kurtosis) <= PEAKED
 
 
-def spiegelhalter(fit: Fit) -> Spiegelhalter:
+def spiegelhalter(fit: Fit) -> Spiegelhalter | None:
     """Whether the squared distances of outcomes from their probabilities are as large as these say.
 
-    Spiegelhalter 1986, Statistics in Medicine 5:421-433, equation 6 (from memory), tests
-    sum (y − p)(1 − 2p) = sum ((y − p)² − p(1 − p)) by its variance sum p(1 − p)(1 − 2p)² for probabilities from
-    elsewhere. On the records fitted, the residuals obey sum (y − p) x = 0 for each column x, and only what of 1 − 2p
-    the columns do not explain is left to vary: with v = p(1 − p), b = sum v (1 − 2p) x, I = sum v x x' and
+    Spiegelhalter 1986, Statistics in Medicine 5:421-433 (equation 6, from memory), tests
+    sum (y − p)(1 − 2p) = sum ((y − p)² − p(1 − p)) by its variance sum p(1 − p)(1 − 2p)², for probabilities from
+    elsewhere. On the records fitted the residuals obey sum (y − p) x = 0 for each column x, so that only what of 1 − 2p
+    the columns do not explain is left to vary: to the first order, with v = p(1 − p), I = sum v x x' and
 
-        r = (1 − 2p) − x'I⁻¹b,    z = (sum (y − p) r − m) / sqrt(sum v r²).
+        r = (1 − 2p) − x'I⁻¹ sum v (1 − 2p) x,    z = sum (y − p) r / sqrt(sum v r²).
 
-    Its mean m is not 0, as p is taken where it suits the records: to the second order (with the bias of the
-    coefficients, Cordeiro & McCullagh 1991, Journal of the Royal Statistical Society B 53:629-643) it is
-
-        m = −1/2 sum h (1 − 2p) r,    h = v x'I⁻¹x the leverages.
+    The third and fourth cumulants of an outcome, v (1 − 2p) and v (1 − 6v), give skewness and kurtosis of the sum.
+    For single records this is the unweighted sum of squares on a scale of its own (Copas 1989, Applied Statistics
+    38:71-80). None where the columns explain all of 1 − 2p.
     """
     working = fit.space.working
     assert isinstance(working, BinomialLikelihood)
-    inverse = solve(fit.working_information, np.eye(fit.working.size))
     weighted, whole = working.passes.reduce([_Explained()], fit.working)[0]
-    slopes = inverse @ weighted
-    sums = working.passes.reduce([_Left()], (fit.working, slopes, inverse))[0][0]
-    statistic, variance, third, fourth, mean = sums.tolist()
+    slopes = solve(fit.working_information, weighted)
+    sums = working.passes.reduce([_Left()], (fit.working, slopes))[0][0]
+    statistic, variance, third, fourth = sums.tolist()
     if not variance > NOTHING_LEFT * float(whole):
-        return NONE
-    z = (statistic - mean) / math.sqrt(variance)
-    p = float(erfc(abs(z) / math.sqrt(2.0)))
-    return Spiegelhalter(z, p, third / variance**1.5, fourth / variance**2)
+        return None
+    z = statistic / math.sqrt(variance)
+    return Spiegelhalter(z, float(erfc(abs(z) / math.sqrt(2.0))), third / variance**1.5, fourth / variance**2)
 
 
 class _Explained:
@@ -75,16 +73,14 @@ class _Explained:
 
 
 class _Left:
-    """sum (y − p) r, v r², v (1 − 2p) r³, v (1 − 6 p (1 − p)) r⁴ and −h (1 − 2p) r / 2 (5,)."""
+    """sum (y − p) r, v r², v (1 − 2p) r³ and v (1 − 6 p (1 − p)) r⁴ (4,), at coefficients and slopes (p,)."""
 
-    def leaf(self, rows: Leaf, state: tuple[Array, Array, Array]) -> tuple[Array]:
-        coefficients, slopes, inverse = state
+    def leaf(self, rows: Leaf, state: tuple[Array, Array]) -> tuple[Array]:
+        coefficients, slopes = state
         residual, v, d = _parts(rows, coefficients)
-        X = rows["X"]
-        r = d - X @ slopes
-        leverage = v * np.einsum("ij,ij->i", X @ inverse, X)
+        r = d - rows["X"] @ slopes
         # 1 − 6p(1 − p) = (3 (1 − 2p)² − 1) / 2
-        sums = (residual @ r, v @ r**2, v @ (d * r**3), v @ ((3.0 * d**2 - 1.0) / 2.0 * r**4), -0.5 * leverage @ (d * r))
+        sums = (residual @ r, v @ r**2, v @ (d * r**3), v @ ((3.0 * d**2 - 1.0) / 2.0 * r**4))
         return (np.array(sums),)
 
 

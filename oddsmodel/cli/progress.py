@@ -14,7 +14,7 @@ if TYPE_CHECKING:
     from rich.progress import Progress as Bars
     from rich.progress import TaskID
 
-STAGES = ("reading", "gathering", "fitting", "profiling", "checking", "drawing")
+STAGES = ("reading", "gathering", "fitting", "counting outcomes", "profiling", "checking", "validating", "drawing")
 
 
 class Drawn:

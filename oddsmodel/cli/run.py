@@ -48,6 +48,8 @@ def write_answer(study: StudyResults) -> None:
         write(answer.sentence)
         if answer.compatible:
             write(answer.compatible)
+        if answer.beside:
+            write(answer.beside)
     for more in (view.more, view.basis, view.sampling):
         if more:
             write(more)

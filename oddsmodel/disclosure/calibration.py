@@ -35,7 +35,7 @@ def merge_groups(
 
 
 def coarsen_calibration(figure: CalibrationFigure, threshold: int, level: float) -> CalibrationFigure | None:
-    """The figure with merged groups and a smooth curve, with its band, that ends at the outermost ones; None where nothing is left."""
+    """The figure with merged groups, and a smooth curve and band that end at the outermost; None if nothing is left."""
     groups = merge_groups(figure.groups, threshold, level)
     if not groups:
         return None

@@ -14,9 +14,10 @@ def coarsen_curve(figure: CurveFigure, threshold: int) -> CurveFigure | None:
 
     At least `threshold` records lie beyond either end. Edges of bins are rounded, so that the extremes cannot be worked
     out from evenly spaced ones. Where no bins tell where the records lie, a twentieth of the range is cut off at either
-    end. None where nothing is left.
+    end. Points of groups of fewer records are left out. None where nothing is left.
     """
     bins = _inner_bins(figure.density, threshold)
+    unit: float | None = None
     if figure.density:
         if not bins:
             return None
@@ -31,7 +32,15 @@ def coarsen_curve(figure: CurveFigure, threshold: int) -> CurveFigure | None:
         return None
 
     def cut(values: Sequence[float]) -> tuple[float, ...]:
-        return tuple(values[k] for k in kept)
+        return tuple(values[k] for k in kept) if values else ()
+
+    points = tuple(
+        point if unit is None or point.x == figure.reference else replace(point, x=_rounded(point.x, unit))
+        for point in figure.points
+        if low <= point.x <= high and point.records >= threshold
+    )
+    if figure.points and not points:
+        return None
 
     return replace(
         figure,
@@ -41,6 +50,7 @@ def coarsen_curve(figure: CurveFigure, threshold: int) -> CurveFigure | None:
         upper=cut(figure.upper),
         straight=cut(figure.straight),
         density=tuple(bins),
+        points=points,
     )
 
 

@@ -14,6 +14,7 @@ from oddsmodel.disclosure.model import (
     disclosed_estimates_figure,
     disclosed_model,
     estimate_numbers,
+    finding_numbers,
     gives_all_away,
     hidden_averages,
     hidden_crude,
@@ -96,8 +97,12 @@ def _estimates(study: StudyResults, hiding: Hiding) -> Iterator[float]:
                 yield from crude_numbers(coefficient.crude)
             if c in crude or closed or hiding.hides("crude all", m, c):
                 yield from crude_numbers(coefficient.crude_all_records)
-            if closed and coefficient.odds_ratio is not None:
-                yield coefficient.odds_ratio
+            if closed:
+                yield from estimate_numbers(coefficient)
+        # with nothing adjusted for, an estimate says of its level what the crude one does
+        alone = crude if not model.adjustment else frozenset()
+        told = {one.label for c, one in enumerate(model.coefficients) if closed or c in alone}
+        yield from finding_numbers(model, told)
         for c, one in enumerate(model.averages):
             if c in hidden_averages(model, m, hiding) or closed:
                 yield from crude_numbers(one.crude)

@@ -11,7 +11,8 @@ from oddsmodel.disclosure.calibration import merge_groups
 from oddsmodel.disclosure.system import EVENTS, READ, RECORDS, SIDE, Counts, CountSystem, Place
 from oddsmodel.disclosure.table_counts import Sighting, Sightings, TableCounts, count_cells, row_text, whole_number
 from oddsmodel.results.figures import CalibrationFigure
-from oddsmodel.results.study import ModelResult, StudyResults
+from oddsmodel.results.lead import SEPARATED
+from oddsmodel.results.study import CoefficientResult, ModelResult, StudyResults
 from oddsmodel.results.tables import Table
 
 Key = tuple[str, str, str]
@@ -60,10 +61,34 @@ def gather(study: StudyResults, threshold: int) -> Counts:
             same = everywhere.get(found.system.value(number))
             if same is not None:
                 found.system.merge(number, same)
+    _lock_told(found, study)
     _enter_nested(found)
     _enter_ordered(found)
     _recognise(found)
     return found.system.freeze()
+
+
+def _lock_told(found: _Gathered, study: StudyResults) -> None:
+    """Zeros that a model without a finite estimate tells: nobody, or everybody, of a level had the event.
+
+    Its report says which way the odds ratio goes, so such a zero protects nothing and is not hidden.
+    """
+    for model in study.models:
+        separated = model.status == SEPARATED
+        shown = [one for one in model.coefficients if one.shown and one.log_odds_ratio is None]
+        infinite = [one for one in shown if separated or one.exact is not None]
+        for signature, tables in found.sightings.by_signature.items():
+            if signature[0] == "row" and len(signature) == 3 and signature[2] == 0:
+                words = str(signature[1])
+                if any(one.label.startswith(words) or _reference_of(one, words) for one in infinite):
+                    for number in (number for numbers in tables.values() for number in numbers):
+                        found.system.lock(number)
+
+
+def _reference_of(one: CoefficientResult, words: str) -> bool:
+    """Whether the words of a row ("Smoking: never") name the level that a coefficient is against."""
+    start, _, level = words.rpartition(": ")
+    return one.reference is not None and level == one.reference and one.label.startswith(f"{start}: ")
 
 
 def _enter_flows(found: _Gathered, study: StudyResults) -> dict[int, int]:

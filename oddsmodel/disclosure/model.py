@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Container, Iterator
 from dataclasses import replace
 
 from oddsmodel.disclosure.calibration import coarsen_calibration
 from oddsmodel.disclosure.curve import coarsen_curve
+from oddsmodel.disclosure.envelope import coarsen_envelope
 from oddsmodel.disclosure.findings import COUNTS, disclosed_finding, ends_with
 from oddsmodel.disclosure.flow import disclosed_flow, disclosed_flow_figure
 from oddsmodel.disclosure.gather import analysed_and_events
@@ -14,18 +15,21 @@ from oddsmodel.disclosure.hiding import Hiding
 from oddsmodel.disclosure.histogram import coarsen_histogram
 from oddsmodel.disclosure.precision import coarsen_precision
 from oddsmodel.disclosure.scatter import coarsen_scatter
+from oddsmodel.disclosure.spread import disclosed_spread
 from oddsmodel.disclosure.steps import coarsen_steps
 from oddsmodel.disclosure.table_counts import row_blocks, row_text
 from oddsmodel.disclosure.tables import disclosed_table
 from oddsmodel.results.figures import (
     CalibrationFigure,
     CurveFigure,
+    EnvelopeFigure,
     EstimatesFigure,
     Figure,
     FlowFigure,
     HistogramFigure,
     PrecisionFigure,
     ScatterFigure,
+    SpreadFigure,
     StepFigure,
 )
 from oddsmodel.results.study import (
@@ -42,8 +46,14 @@ from oddsmodel.results.study import (
 from oddsmodel.wording import say
 
 CELLS = (*COUNTS, "cell", "cells", "count", "counts")
-TREND_TABLE = "trend_"
+OF_ESTIMATES = ("trend_", "corrected_intercept")
+"""How the identities of tables begin that hold nothing but estimates of the whole model."""
+
 NUMBERS = ("log_odds_ratio", "standard_error", "odds_ratio", "wald", "profile")
+
+
+TELL_ESTIMATES = ("sparse-data-bias", "limits-disagree")
+"""Codes of findings whose numbers follow from the estimate of the coefficient that they name."""
 
 
 def gives_all_away(model: ModelResult, m: int, hiding: Hiding) -> bool:
@@ -98,6 +108,13 @@ def estimate_numbers(one: CoefficientResult) -> Iterator[float]:
     yield from (value for value in (one.odds_ratio, *limits) if value is not None and value != 0.0)
 
 
+def finding_numbers(model: ModelResult, labels: Container[str]) -> Iterator[float]:
+    """The numbers that findings tell of estimates with one of these labels."""
+    for one in model.findings:
+        if one.code in TELL_ESTIMATES and one.facts.get("label") in labels:
+            yield from (value for value in one.facts.values() if isinstance(value, float))
+
+
 def disclosed_model(model: ModelResult, m: int, hiding: Hiding) -> ModelResult:
     """The model with hidden counts, and the estimates that would give them away, as None with a reason."""
     flow = disclosed_flow(model.flow, m, hiding)
@@ -130,7 +147,7 @@ def disclosed_model(model: ModelResult, m: int, hiding: Hiding) -> ModelResult:
         tables=tuple(
             disclosed_table(table, ("model", m, t), hiding)
             for t, table in enumerate(model.tables)
-            if not (closed and table.id.startswith(TREND_TABLE))
+            if not (closed and table.id.startswith(OF_ESTIMATES))
         ),
         figures=_figures(model, model.figures, hiding, flow),
         reasons={key: text(reason) for key, reason in reasons.items()},
@@ -163,7 +180,7 @@ def _coefficient(
     estimates = hiding.withheld.estimates
     reason = say("why-estimate-hidden")
     reasons: dict[str, str] = dict(one.reasons)
-    if closed or one.odds_ratio in estimates:
+    if closed or any(value in estimates for value in estimate_numbers(one)):
         hiding.taken += len(NUMBERS)
         reasons |= dict.fromkeys(NUMBERS, reason)
         one = replace(
@@ -270,8 +287,12 @@ def _figure(model: ModelResult, figure: Figure, hiding: Hiding, flow: Flow) -> F
             return coarsen_precision(figure, hiding.marks, events, records - events)
         case CurveFigure():
             return coarsen_curve(figure, hiding.marks)
+        case SpreadFigure():
+            return disclosed_spread(figure, hiding.withheld.estimates)
         case ScatterFigure():
             return coarsen_scatter(figure, hiding.marks)
+        case EnvelopeFigure():
+            return coarsen_envelope(figure, hiding.marks)
         case HistogramFigure():
             made = coarsen_histogram(figure, hiding.marks)
             if made is None or _sizes(figure) & hiding.withheld.counts:

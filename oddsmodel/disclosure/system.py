@@ -106,6 +106,10 @@ class CountSystem:
             raise ValueError("two different counts cannot be the same")
         self._parent[max(first, second)] = min(first, second)
 
+    def lock(self, number: int) -> None:
+        """The count stays, whatever happens: a reader knows it."""
+        self._shown[number] = self._locked[number] = True
+
     def relate(self, parts: Sequence[int], whole: int) -> None:
         """The parts add up to the whole."""
         if sum(self._values[part] for part in parts) != self._values[whole]:

@@ -61,7 +61,10 @@ def results_document(disclosed: DisclosedResults) -> dict[str, Any]:
             "outcome": study.outcome,
             "event": study.event,
             "rules": list(study.rules),
-            "answer": [{"label": one.label, "sentence": one.sentence} for one in answers(study, lead_model(study))],
+            "answer": [
+                {"label": one.label, "sentence": f"{one.sentence} {one.beside}".strip()}
+                for one in answers(study, lead_model(study))
+            ],
         },
         "disclosure": {
             "audience": disclosed.audience,

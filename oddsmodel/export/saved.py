@@ -73,6 +73,7 @@ class SavedCoefficient(Saved):
     odds_ratio: Ratio | None
     wald: SavedLimits
     profile: SavedLimits
+    exact: SavedLimits | None = None
     reasons: dict[str, Text] = {}
 
 

@@ -9,14 +9,15 @@ from oddsmodel.inference.symmetric import solve
 from oddsmodel.likelihood.base import Array
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.likelihood.logistic import logistic
+from oddsmodel.passes import Leaf
 
 
 def flic(likelihood: BinomialLikelihood, coefficients: Array, constant: int) -> float | None:
     """The intercept by maximum likelihood with all other coefficients (p,) kept as the penalised ones.
 
     The average predicted risk is then the share of events observed ("FLIC": Puhr, Heinze, Nold, Lusa & Geroldinger
-    2017, Statistics in Medicine 36:2302-2317, section 3.2). constant: the place of the intercept. None where it does
-    not settle.
+    2017, Statistics in Medicine 36:2302-2317). constant: the place of the intercept. None where all
+    records or none have the event, so that no intercept gives their share.
     """
     basis = np.zeros((coefficients.size, 1))
     basis[constant] = 1.0
@@ -30,20 +31,38 @@ def flac(likelihood: BinomialLikelihood, penalised: Fit) -> Array | None:
 
     Every row gets h/2 events and h/2 others more among pseudo-records, h its hat value at the penalised estimates
     (with which the penalised score equations are those of maximum likelihood), and an added column, 1 for pseudo-
-    records and 0 else, takes up what they say of the average risk ("FLAC": the same paper, section 3.3). Rows in
-    memory. None where it does not settle.
+    records and 0 else, takes up what they say of the average risk ("FLAC": the same paper). Where the
+    model has an intercept, the average predicted risk of the records is then the share of events observed.
+
+    likelihood: of the same rows without the penalty, in memory; penalised: its penalised fit, converged. None where
+    all records or none have the event.
     """
-    X, events, trials = likelihood.rows_apart()
-    small, whole, _ = logistic(X @ penalised.coefficients)
-    plain = likelihood.evaluate(penalised.coefficients[None, :])
-    if plain.information is None:
+    space = penalised.space
+    plain = likelihood if space.to_beta is None else likelihood.transformed(space.to_beta)
+    information = plain.evaluate(penalised.working[None, :]).information
+    if information is None:
         raise TypeError("hat values need the information")
-    reach = np.einsum("ij,ji->i", X, solve(plain.information[0], X.T))
-    hat = trials * small / (whole * whole) * reach
-    n, p = X.shape
-    augmented = np.zeros((2 * n, p + 1))
-    augmented[:n, :p] = augmented[n:, :p] = X
-    augmented[n:, p] = 1.0
-    both = BinomialLikelihood(augmented, np.concatenate([events, hat / 2.0]), trials=np.concatenate([trials, hat]))
+    inverse = solve(information[0], np.eye(len(information[0])))
+    X, events, trials = plain.rows_apart()
+    hat = np.concatenate(list(plain.passes.each(_hat_values, (penalised.working, inverse))))
+    twice = np.zeros((2 * len(X), X.shape[1] + 1))
+    twice[: len(X), :-1] = twice[len(X) :, :-1] = X
+    twice[len(X) :, -1] = 1.0
+    offsets = list(plain.passes.each(_offsets))
+    offset = None if offsets[0] is None else np.tile(np.concatenate(offsets), 2)
+    both = BinomialLikelihood(twice, np.concatenate([events, hat / 2.0]), np.concatenate([trials, hat]), offset)
     fit = maximise(both)
-    return fit.coefficients[:p] if fit.status == "converged" else None
+    return space.beta(fit.coefficients[:-1]) if fit.status == "converged" else None
+
+
+def _hat_values(rows: Leaf, first: int, state: tuple[Array, Array]) -> Array:
+    """n mu (1 - mu) x'I^-1 x of each row, from the coefficients and the inverse information."""
+    beta, inverse = state
+    X = rows["X"]
+    small, whole, _ = logistic(X @ beta + rows.get("offset", 0.0))
+    weight = small / (whole * whole) * rows.get("trials", 1.0)
+    return np.asarray(weight * np.einsum("ij,ij->i", X @ inverse, X))
+
+
+def _offsets(rows: Leaf, first: int, state: None) -> Array | None:
+    return rows.get("offset")

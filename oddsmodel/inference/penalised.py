@@ -1,29 +1,46 @@
-"""Maximum penalised likelihood: the highest maximum that two searches from opposite ends find."""
+"""Maximum penalised likelihood: the highest of the maxima that searches from several sides find."""
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
+from oddsmodel.inference.conditioning import coordinates
 from oddsmodel.inference.maximise import Fit, Problem, maximise_all
 from oddsmodel.inference.symmetric import solve
-from oddsmodel.likelihood.base import Array
+from oddsmodel.likelihood.base import Array, Likelihood
 from oddsmodel.likelihood.penalised import JeffreysPenalisedLikelihood
 
 WEAKER = (1.0 / 16.0, 1.0 / 4.0)
-"""Shares of the penalty's power with which the second search begins."""
+"""Shares of the penalty's power from which a search comes from the likelihood's side."""
+
+SLIGHT = 0.01
+"""Change of the curvature by the penalty, relative to the information, below which one search is enough."""
 
 SAME_PLACE = 1e-4
 """Distance, in standard errors, within which two searches have ended at one maximum."""
 
+NEARBY = 4.0
+"""A maximum lower than the highest by more, in units of log-likelihood, bears on no interval below 99.5 %."""
+
 
 @dataclass(frozen=True)
 class PenalisedFit:
-    """fit: at the highest maximum found. lower_maximum: another one, where the other search ended there."""
+    """fit: at the highest maximum found. lower_maximum: another one little lower, where a search ended there.
+
+    bend: the largest change of the curvature at the maximum by the penalty, relative to the expected information.
+    """
 
     fit: Fit
     lower_maximum: Fit | None
+    bend: float = 0.0
+
+    @property
+    def slight(self) -> bool:
+        """Whether the penalty changes so little that its value is taken to have one maximum."""
+        return self.bend < SLIGHT
 
 
 def maximise_penalised(
@@ -32,38 +49,75 @@ def maximise_penalised(
     """The maximum of a penalised likelihood over beta = origin + basis h (all of beta where both are None).
 
     The value is not concave, so a point where Newton's method settles is a local maximum and perhaps not the only one.
-    Two searches set out from opposite ends. The penalty alone is largest at beta = 0; the likelihood alone is largest
-    at its own maximum, finite or not. One search begins at zero. The other begins with a sixteenth, then a quarter of
-    the penalty, each from the maximum before, and so comes from the likelihood's side. The higher end is taken; where
-    the ends differ, the lower one is given too, because limits and tests around the higher one may then mislead.
+    A first search begins at beta = 0, where the penalty alone is largest. Where the penalty changes the curvature by
+    less than one per cent at its end, that end is taken: among simulated data none was then seen to be missed. Else
+    the searches of `highest_maxima` follow, and the highest end is taken; another end that is little lower is given
+    too, because limits and tests around the higher one may then mislead.
 
     The fit's `covariance` is the inverse of the expected information at the maximum (Heinze & Schemper 2002, section
     2), its `working_information` minus the Hessian of the penalised value, as profile limits need it. A fit that has
     not settled comes back with its status, as from `maximise`.
     """
-    from_zero, start = _maximise(likelihood, basis, origin, None), None
-    if from_zero.status == "aliased":
-        return PenalisedFit(from_zero, None)
+    first = maximise_all(likelihood, [Problem(basis, origin)])[0]
+    if first.status == "aliased":
+        return PenalisedFit(first, None)
+    if first.status == "converged":
+        fit, bend = _with_expected_covariance(first, basis)
+        if bend < SLIGHT:
+            return PenalisedFit(fit, None, bend)
+    ends = highest_maxima(likelihood, [Problem(basis, origin, first.coefficients)])[0]
+    if not ends:
+        return PenalisedFit(first, None)
+    best = ends[0]
+    others = (end for end in ends[1:] if best.log_likelihood - end.log_likelihood <= NEARBY)
+    lower = next((end for end in others if _distance(best, end) > SAME_PLACE), None)
+    fit, bend = _with_expected_covariance(best, basis)
+    return PenalisedFit(fit, None if lower is None else _with_expected_covariance(lower, basis)[0], bend)
+
+
+def highest_maxima(
+    likelihood: JeffreysPenalisedLikelihood, problems: Sequence[Problem], begin: Sequence[Array] = ()
+) -> list[list[Fit]]:
+    """For each problem the ends of the searches that settled, the highest first; all begin side by side.
+
+    They begin at the problem's start; at the point of its space with the smallest linear predictors, where the penalty
+    alone is about largest; at the end of a path from a sixteenth and a quarter of the penalty, which comes from the
+    side of the likelihood; halfway between the last two; and at `begin`, one point for each problem, if given. Together
+    they miss the highest maximum known in one of 130 problems with long-tailed columns of 6 to 40 records (a single
+    search: one of 12), and in none with columns of 0 and 1. That is as much as searches can do: they prove no maximum
+    to be the highest.
+    """
+    least = [_smallest(likelihood, problem) for problem in problems]
+    path: list[Array] = [point if one.start is None else one.start for one, point in zip(problems, least, strict=True)]
+    starts = [path, least]
     for share in WEAKER:
-        weaker = _maximise(likelihood.with_power(share * likelihood.power), basis, origin, start)
-        start = weaker.coefficients
-    ends = [from_zero, _maximise(likelihood, basis, origin, start)]
-    settled = sorted((end for end in ends if end.status == "converged"), key=lambda end: -end.log_likelihood)
-    if not settled:
-        return PenalisedFit(from_zero, None)
-    best = settled[0]
-    lower = next((end for end in settled[1:] if _distance(best, end) > SAME_PLACE), None)
-    if lower is None and from_zero.status == "converged":
-        best = from_zero
-    return PenalisedFit(
-        _with_expected_covariance(best, basis), None if lower is None else _with_expected_covariance(lower, basis)
-    )
+        weaker = likelihood.with_power(share * likelihood.power)
+        path = [end.coefficients for end in _maximised(weaker, problems, path)]
+    starts += [path, [(one + other) / 2.0 for one, other in zip(least, path, strict=True)]]
+    if begin:
+        starts.append(list(begin))
+    ends = _maximised(likelihood, list(problems) * len(starts), [start for each in starts for start in each])
+    settled = [
+        [end for end in ends[k :: len(problems)] if end.status == "converged" and np.isfinite(end.log_likelihood)]
+        for k in range(len(problems))
+    ]
+    return [sorted(each, key=lambda end: -end.log_likelihood) for each in settled]
 
 
-def _maximise(
-    likelihood: JeffreysPenalisedLikelihood, basis: Array | None, origin: Array | None, start: Array | None
-) -> Fit:
-    return maximise_all(likelihood, [Problem(basis, origin, start)])[0]
+def _maximised(likelihood: Likelihood, problems: Sequence[Problem], starts: Sequence[Array]) -> list[Fit]:
+    begun = [replace(problem, start=start) for problem, start in zip(problems, starts, strict=True)]
+    return maximise_all(likelihood, begun)
+
+
+def _smallest(likelihood: Likelihood, problem: Problem) -> Array:
+    """The beta (p,) of the problem's space that makes the sum of squares of the linear predictors smallest."""
+    space = coordinates(likelihood)
+    if problem.origin is None or problem.basis is None:
+        return np.zeros(likelihood.parameters)
+    origin = space.gamma(np.asarray(problem.origin, dtype=np.float64))
+    basis = space.gamma(np.asarray(problem.basis, dtype=np.float64).T).T
+    h = solve(basis.T @ space.gram @ basis, basis.T @ (space.gram @ origin))
+    return np.asarray(space.beta(origin - basis @ h))
 
 
 def _distance(one: Fit, other: Fit) -> float:
@@ -72,19 +126,24 @@ def _distance(one: Fit, other: Fit) -> float:
     return float(np.sqrt(np.maximum(0.0, apart @ one.working_information @ apart)))
 
 
-def _with_expected_covariance(fit: Fit, basis: Array | None) -> Fit:
-    """The fit with the inverse of the likelihood's expected information, on the space of the basis, as covariance."""
+def _with_expected_covariance(fit: Fit, basis: Array | None) -> tuple[Fit, float]:
+    """The fit with the inverse of the likelihood's expected information, on the space of the basis, as covariance.
+
+    With it, the largest change of the curvature by the penalty in that space, relative to that information.
+    """
     space, working = fit.space, fit.space.working
     if not isinstance(working, JeffreysPenalisedLikelihood):
         raise TypeError("a fit of a penalised likelihood is needed")
     information = working.expected_information(fit.working)
-    if basis is None:
-        covariance = solve(information, np.eye(information.shape[0]))
-    else:
-        moved = space.gamma(np.asarray(basis, dtype=np.float64).T).T
-        reduced = moved.T @ information @ moved
-        covariance = moved @ solve(reduced, np.eye(reduced.shape[0])) @ moved.T
+    moved = np.eye(len(information)) if basis is None else space.gamma(np.asarray(basis, dtype=np.float64).T).T
+    reduced = moved.T @ information @ moved
+    inverse = solve(reduced, np.eye(len(reduced)))
+    values, vectors = np.linalg.eigh(inverse)
+    root = vectors * np.sqrt(np.maximum(values, 0.0))
+    change = root.T @ (moved.T @ fit.working_information @ moved - reduced) @ root
+    bend = float(np.abs(np.linalg.eigvalsh(change)).max(initial=0.0))
+    covariance = moved @ inverse @ moved.T
     if space.to_beta is not None and space.from_beta is not None:
         covariance = space.to_beta @ covariance @ space.to_beta.T
         information = space.from_beta.T @ information @ space.from_beta
-    return replace(fit, information=information, covariance=(covariance + covariance.T) / 2.0)
+    return replace(fit, information=information, covariance=(covariance + covariance.T) / 2.0), bend

@@ -14,6 +14,7 @@ from oddsmodel.inference.maximise import Fit
 from oddsmodel.inference.profile_search import search_limit
 from oddsmodel.inference.profile_surface import Surface, ThinSurface, WholeSurface, thin_surface, whitening_root
 from oddsmodel.likelihood.base import Array, Evaluation
+from oddsmodel.passes.work import products
 
 LimitStatus = Literal["found", "no finite limit", "not found"]
 
@@ -28,6 +29,9 @@ SLOW = 0.1
 
 UNLIKE = 0.5
 """Informations from a part of the rows serve where they differ by no more from that at the maximum."""
+
+WIDE = 30
+"""With more columns two passes for the score cost less than the information at one of two bounds."""
 
 FAR = 8.0
 """A point whose log-likelihood is below the maximum by so many quantiles is no place to take a step from."""
@@ -76,7 +80,9 @@ def profile(
     if not 0.0 < level < 1.0:
         raise ValueError("level must lie between 0 and 1")
     search = _Search(fit, np.atleast_2d(np.asarray(contrasts, dtype=np.float64)), float(chdtri(1, 1.0 - level)))
-    search.run(told)
+    with products().limit(limits=1, user_api="blas"):
+        # many small matrices: threads would cost more than they do, and could change the last bits
+        search.run(told)
     return search.limits()
 
 
@@ -92,13 +98,14 @@ class _Search:
     r e^2. So the information is worked out once, at the quadratic approximations, and later passes ask for the
     score alone. Where rows are many that first step is taken on an approximate surface from a part of the rows
     (`ThinSurface`). The information of a lower bound is that of the upper one mirrored, 2 - I(u) for I(-u), which is
-    right to the third derivatives of the log-likelihood.
+    right to the third derivatives of the log-likelihood. Where columns are many an information costs more than
+    several scores, and that of the maximum serves as long as steps shrink fast.
 
     *The last step.* The length of a step is the error e of the point it leaves, and r is at most about the ratio of
     that length to the length of the step before. A bound is settled when 2 r e^2 is at most 1e-12 standard errors,
     or what rounding of the log-likelihood leaves of them. Before any step of the whole rows, r is e over half the
-    way from the maximum, since a part that misses the score at the end of the way by e misses the information
-    there by 2 e over its length.
+    way from the maximum, since an information that misses the score at the end of the way by e is itself off there
+    by 2 e over its length.
     """
 
     def __init__(self, fit: Fit, contrasts: Array, quantile: float) -> None:
@@ -117,7 +124,7 @@ class _Search:
         self.point = np.sqrt(quantile) * self.sign[:, None] * self.direction
         self.before = np.zeros_like(self.point)
         self.length = np.full(bounds, 0.5 * np.sqrt(quantile))
-        self.inverse = np.zeros((bounds, root.shape[1], root.shape[1]))
+        self.inverse = np.tile(np.eye(root.shape[1]), (bounds, 1, 1))
         self.informed = np.zeros(bounds, dtype=bool)
         self.left = np.full(bounds, MOST_STEPS)
         self.theta = np.full(bounds, np.nan)
@@ -126,7 +133,11 @@ class _Search:
     def run(self, told: Callable[[int], None] | None) -> None:
         """Step all bounds together; then search singly for those that did not settle."""
         if self.fit.space.working.curvature == "Hessian":
-            self._begin(thin_surface(self.fit, self.root))
+            thin = thin_surface(self.fit, self.root)
+            if thin is None and self.root.shape[1] > WIDE:
+                self.informed[:] = True
+            else:
+                self._begin(thin)
         active = np.arange(self.sign.size)
         while active.size:
             ready = self.informed[active]

@@ -15,8 +15,8 @@ from oddsmodel.passes import LEAF_ROWS
 THIN_FROM = 65_536
 """From so many rows on, profile limits start from an evenly spaced part of them."""
 
-FEWEST_LEAVES, MOST_LEAVES, SHARE = 3, 8, 8
-"""That part: an eighth of the leaves, within bounds."""
+FEWEST_LEAVES, MOST_LEAVES, SHARE = 3, 8, 16
+"""That part: one leaf in sixteen, within bounds."""
 
 ALIKE = 0.5
 """The part's information, scaled to the whole's, may differ from it by so much in any direction."""

@@ -19,4 +19,5 @@ def solve(matrix: Array, right: Array) -> Array:
         solved = cho_solve(cho_factor(scaled), scaled_right)
     except (LinAlgError, ValueError):
         solved = np.linalg.pinv(np.nan_to_num(scaled), rcond=1e-14, hermitian=True) @ scaled_right
-    return np.asarray((solved.T / scale).T)
+    with np.errstate(over="ignore"):
+        return np.asarray((solved.T / scale).T)

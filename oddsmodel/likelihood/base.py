@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal, Protocol
+from typing import Literal, Protocol, runtime_checkable
 
 import numpy as np
 from numpy.typing import NDArray
@@ -77,6 +77,7 @@ class Likelihood(Protocol):
         """X (n, p), events (n,) and trials (n,), for deciding whether the rows are separated."""
 
 
+@runtime_checkable
 class InformationLikelihood(Likelihood, Protocol):
     """A likelihood that can also say how its expected information changes with the coefficients."""
 

@@ -12,8 +12,14 @@ from oddsmodel.passes import Leaf
 BATCH, FEW = 4, 2
 """So many leaves are worked on together where coefficient vectors are few; with more, one leaf fills the cache."""
 
-BLOCK_BYTES = 1 << 18
-"""With many coefficient vectors a leaf is worked on in blocks of rows whose values take so many bytes."""
+BLOCK_BYTES = 1 << 20
+"""With many coefficient vectors a leaf is worked on in blocks of rows whose values take so many bytes.
+
+Blocks that fit a smaller cache would be a little faster on one core, but threads wait for one another at every call.
+"""
+
+ROOTED_BYTES = 1 << 22
+"""Columns weighed by the roots of weights are held for so many bytes of vectors at a time, at least for one."""
 
 PRODUCT_BYTES, PRODUCT_ROWS = 1 << 21, 256
 """Products of pairs of columns are formed for so many bytes at a time, but for no fewer rows than are worth a call."""
@@ -138,12 +144,13 @@ def weighted_products(X: Array, weight: Array) -> Array:
     if k < MANY or 3 * k < p:
         np.sqrt(weight, out=weight)
         products = np.empty((leaves, k, p, p))
-        rooted = np.empty((rows, p))
-        for leaf in range(leaves):
-            for one in range(k):
-                np.multiply(X[leaf], weight[leaf, one, :, None], out=rooted)
-                # a matrix times its own transpose: half the work of a general product
-                np.matmul(rooted.T, rooted, out=products[leaf, one])
+        step = max(1, min(k, ROOTED_BYTES // max(1, X.nbytes)))
+        rooted = np.empty((leaves, step, rows, p))
+        for start in range(0, k, step):
+            some = rooted[:, : k - start]
+            np.multiply(X[:, None], weight[:, start : start + step, :, None], out=some)
+            # a matrix times its own transpose: half the work of a general product
+            np.matmul(some.transpose(0, 1, 3, 2), some, out=products[:, start : start + step])
         return products
     couples = p * (p + 1) // 2
     step = max(1, min(rows, max(PRODUCT_ROWS, PRODUCT_BYTES // (8 * couples))))

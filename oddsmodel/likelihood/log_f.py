@@ -20,8 +20,12 @@ class LogFLikelihood:
     events and m/2 others among pseudo-records whose only column is the coefficient's, which so never reach any count
     or check. In other coordinates the prior stays on these log odds ratios. Concave.
 
+    Which columns are linear combinations of others is judged on the rows alone: a prior could give such a column an
+    estimate, but one that no record bears on.
+
     positions: of the coefficients; per: the unit of each (1 each where None).
-    Raises ValueError for m not above 0 or a position that does not exist.
+    Raises ValueError for m not above 0 and finite, a unit that is 0 or not finite, units that are not one for each
+    position, or a position that does not exist.
     """
 
     curvature: Literal["Hessian", "expected"] = "Hessian"
@@ -30,9 +34,11 @@ class LogFLikelihood:
     def __init__(
         self, likelihood: Likelihood, positions: Sequence[int], m: float, per: Sequence[float] | None = None
     ) -> None:
-        if not m > 0.0 or not all(0 <= position < likelihood.parameters for position in positions):
-            raise ValueError("m must be above 0, and positions must be those of coefficients")
+        if not (0.0 < m < np.inf) or not all(0 <= position < likelihood.parameters for position in positions):
+            raise ValueError("m must be above 0 and finite, and positions must be those of coefficients")
         units = np.ones(len(positions)) if per is None else np.asarray(per, dtype=np.float64)
+        if units.shape != (len(positions),) or not ((units != 0.0) & np.isfinite(units)).all():
+            raise ValueError("per must be one unit for each position, not 0 and finite")
         directions = np.zeros((len(positions), likelihood.parameters))
         directions[np.arange(len(positions)), list(positions)] = units
         self.likelihood, self.m, self.directions = likelihood, float(m), directions
@@ -65,7 +71,7 @@ class LogFLikelihood:
         return Evaluation(value, score, curvature)
 
     def gram(self) -> Array:
-        return self.likelihood.gram() + self.m * self.directions.T @ self.directions
+        return self.likelihood.gram()
 
     def transformed(self, basis: Array) -> LogFLikelihood:
         return self._with(self.likelihood.transformed(basis), self.directions @ basis)
@@ -74,8 +80,7 @@ class LogFLikelihood:
         return self._with(self.likelihood.thinned(leaves), self.directions)
 
     def triangle(self) -> Array:
-        both = np.vstack([self.likelihood.triangle(), np.sqrt(self.m) * self.directions])
-        return np.asarray(np.linalg.qr(both, mode="r"))
+        return self.likelihood.triangle()
 
     def rows_apart(self) -> tuple[Array, Array, Array]:
         """The rows, and one with both outcomes for each prior: no direction that moves its odds ratio separates."""
@@ -96,11 +101,18 @@ class LogFLikelihood:
 def prior_interval(m: float, level: float = 0.95) -> tuple[float, float]:
     """The odds ratios between which a log-F(m, m) prior lays the probability `level`: quantiles of F on m, m degrees.
 
-    >>> lower, upper = prior_interval(1.0)
-    >>> round(upper, 1), round(lower * upper, 12)
-    (647.8, 1.0)
-    """
-    from scipy.special import fdtri
+    Greenland & Mansournia 2015, section 2. Raises ValueError where m is not above 0, level not between 0 and 1, or m so
+    small that a quantile is beyond floating point.
 
-    upper = float(fdtri(m, m, 0.5 + level / 2.0))
-    return 1.0 / upper, upper
+    >>> lower, upper = prior_interval(2.0)
+    >>> round(1.0 / lower, 6), round(upper, 6)
+    (39.0, 39.0)
+    """
+    from scipy.special import betaincinv
+
+    if not (m > 0.0 and 0.0 < level < 1.0):
+        raise ValueError("m must be above 0 and level between 0 and 1")
+    share = float(betaincinv(m / 2.0, m / 2.0, 0.5 - level / 2.0))
+    if not share > 1e-300:
+        raise ValueError("a prior of so small an m has no interval that could be written")
+    return share / (1.0 - share), (1.0 - share) / share

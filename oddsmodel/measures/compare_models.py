@@ -33,12 +33,11 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
     for key, model in pairs:
         label, coefficient = exposures[key], _keyed(model).get(key)
         start = (model.name, _description(model), label) if described else (label, model.name)
-        if coefficient is None or coefficient.odds_ratio is None:
-            rows.append((*start, model.records, model.events, None, None))
+        limits = None if coefficient is None else interval_of(coefficient)
+        odds_ratio = None if coefficient is None else coefficient.odds_ratio
+        if odds_ratio is None:
             notes[_why_missing(model, exposures, key)] = None
-        else:
-            limits = interval_of(coefficient)
-            rows.append((*start, model.records, model.events, coefficient.odds_ratio, limits))
+        rows.append((*start, model.records, model.events, odds_ratio, limits))
     levels = sorted({round(100 * model.level, 1) for model in models})
     text = " and ".join(f"{level:g}%" for level in levels)
     if any(model.role == "subgroup" for model in models):
@@ -47,7 +46,8 @@ def compare_models(models: Sequence[ModelResult]) -> Table | None:
         notes[say("compare-models-not-planned")] = None
     if len({model.records for model in models}) > 1:
         notes[say("compare-models-different-records")] = None
-    note = " ".join([say("compare-models-note", levels=text), *notes])
+    exact = any(one.exact is not None for model in models for one in model.coefficients)
+    note = " ".join([say("compare-models-note", levels=text, exact=exact), *notes])
     size = len(exposures) if described else len(models)
     blocks = tuple(place // size for place in range(len(rows)))
     return Table("models", "The models side by side", _columns(described), tuple(rows), note, blocks)
@@ -73,10 +73,10 @@ def models_figure(models: Sequence[ModelResult]) -> EstimatesFigure | None:
     for key, label in _exposures(models).items():
         for model in models:
             coefficient = _keyed(model).get(key)
-            if coefficient is None or coefficient.odds_ratio is None:
-                continue
-            limits = interval_of(coefficient)
+            limits = None if coefficient is None else interval_of(coefficient)
             lower, upper = (limits.lower, limits.upper) if isinstance(limits, Interval) else (None, None)
+            if coefficient is None or (coefficient.odds_ratio, lower, upper) == (None, None, None):
+                continue
             marks.append(EstimateMark(label, model.name, coefficient.odds_ratio, lower, upper))
     if not marks:
         return None
@@ -93,6 +93,8 @@ def _is_described(model: ModelResult) -> bool:
 def _description(model: ModelResult) -> str:
     """The model's role, whether it was planned, and what sets it apart from the others."""
     parts = [say("model-role-said", role=model.role, planned=model.planned)]
+    if model.added_by_program:
+        parts = [say("model-added-said")]
     if model.based_on is None:
         parts.append(f"{say('model-adjusted-for', adjustment=list(model.adjustment_labels))}.")
     if model.differs:
@@ -114,6 +116,9 @@ def _why_missing(model: ModelResult, exposures: dict[Key, str], key: Key) -> str
     """Why the model's row is empty; of all the exposures that the model does not have, one sentence."""
     keyed = _keyed(model)
     label, coefficient = exposures[key], keyed.get(key)
+    if coefficient is not None and interval_of(coefficient) is not None:
+        # without its limit, which stands in the row and may be withheld there
+        return say("compare-models-one-sided", model=model.name, label=label)
     if coefficient is not None:
         reason = coefficient.reasons.get("odds_ratio", say("odds-ratio-out-of-range"))
         return say("compare-models-withheld", model=model.name, label=label, reason=reason)

@@ -12,6 +12,7 @@ from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.measures.coefficients import standard_error_of
 from oddsmodel.measures.counts import design_levels, exposure_counts, level_columns
 from oddsmodel.measures.crude import plain_exposures
+from oddsmodel.measures.limits import profile_limits
 from oddsmodel.measures.one_contrast import contrast_result
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import CoefficientResult, CrudeEstimate
@@ -40,7 +41,7 @@ def network_average(model: FittedModel, name: str) -> tuple[CoefficientResult, .
         if level in own:
             places[row, own[level]] = 1.0
     contrasts = places - places.mean(axis=0)
-    limits = profile(model.fit, contrasts, model.level) if model.grouping is None else None
+    limits = profile_limits(model, contrasts)
     crude = _crude(model, name, order)
     term = model.design.columns[next(iter(own.values()))].term
     label = model.columns[name].label

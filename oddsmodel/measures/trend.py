@@ -10,6 +10,9 @@ import numpy as np
 from oddsmodel.design.words import number_text
 from oddsmodel.inference import Fit, Problem, likelihood_ratio, maximise_all, profile
 from oddsmodel.inference.clustered import clustered_covariance, small_sample_factor
+from oddsmodel.inference.penalised import maximise_penalised
+from oddsmodel.inference.penalised_profile import profile_penalised
+from oddsmodel.likelihood import JeffreysPenalisedLikelihood
 from oddsmodel.measures.counts import level_columns
 from oddsmodel.measures.intervals import lead_interval
 from oddsmodel.measures.levels import REFERENCE
@@ -109,14 +112,23 @@ def _step(
     if with_score.status != "converged":
         return None, say("trend-not-estimated", status=with_score.status)
     basis = spaces.with_score
-    start: Array = np.asarray(np.linalg.lstsq(basis, with_score.coefficients, rcond=None)[0], dtype=np.float64)
-    fit = maximise_all(model.likelihood.transformed(basis), [Problem(start=start)])[0]
+    within, penalised = model.likelihood.transformed(basis), None
+    if isinstance(within, JeffreysPenalisedLikelihood):
+        penalised = maximise_penalised(within)
+        fit = penalised.fit
+    else:
+        start: Array = np.asarray(np.linalg.lstsq(basis, with_score.coefficients, rcond=None)[0], dtype=np.float64)
+        fit = maximise_all(within, [Problem(start=start)])[0]
     # The same space in other coordinates, so the search can only differ by rounding.
     if fit.status != "converged":
         return None, say("trend-not-estimated", status=fit.status)
-    contrast = np.zeros(basis.shape[1])
-    contrast[-1] = 1.0
-    limits = profile(fit, contrast[None, :], model.level) if model.grouping is None else None
+    contrast = np.zeros((1, basis.shape[1]))
+    contrast[0, -1] = 1.0
+    limits = None
+    if penalised is not None:
+        limits = profile_penalised(penalised, contrast, model.level)
+    elif model.grouping is None:
+        limits = profile(fit, contrast, model.level)
     role: Role = "exposure" if spaces.column in model.exposures else "adjustment"
     estimate, error = float(fit.coefficients[-1]), _standard_error(model, fit)
     return contrast_result(estimate, error, limits, 0, model.level, term=spaces.term, role=role, label=label), None
@@ -142,11 +154,14 @@ def _test(name: str, larger: Fit, smaller: Fit, df: int) -> TermTest:
     return TermTest(name, df, statistic, p)
 
 
+def trends_withheld(model: FittedModel, columns: Sequence[str], reason: str) -> tuple[TrendResult, ...]:
+    """The trends of some columns without any number, for one reason."""
+    tests = TermTest(TREND, 1, None, None, reason), TermTest(DEPARTURE, 0, None, None, reason)
+    return tuple(TrendResult(name, model.columns[name].label, "", (), None, *tests, reason) for name in columns)
+
+
 def _not_in_levels(model: FittedModel, name: str) -> TrendResult:
-    label = model.columns[name].label
-    reason = say("trend-not-plain-levels", label=label)
-    none = (TermTest(TREND, 1, None, None, reason), TermTest(DEPARTURE, 0, None, None, reason))
-    return TrendResult(name, label, "", (), None, *none, reason)
+    return trends_withheld(model, (name,), say("trend-not-plain-levels", label=model.columns[name].label))[0]
 
 
 def trend_table(model: FittedModel, found: TrendResult, coefficients: Sequence[CoefficientResult]) -> Table:

@@ -90,7 +90,8 @@ def two_by_two(a: int, b: int, c: int, d: int, level: float = 0.95) -> TwoByTwo:
         return TwoByTwo(*cells, level, odds_ratio, standard_error, woolf, reasons=reasons)
 
     distribution = Conditional(*cells)
-    conditional = None if 0 in cells else math.exp(distribution.estimate())
+    estimate = distribution.estimate()
+    conditional = None if estimate is None else math.exp(estimate)
     if conditional is None:
         reasons["conditional"] = reasons["odds_ratio"]
     exact = _limits(distribution, "exact", 1.0, level, reasons)
@@ -103,9 +104,9 @@ def two_by_two(a: int, b: int, c: int, d: int, level: float = 0.95) -> TwoByTwo:
         woolf=woolf,
         conditional=conditional,
         exact=exact,
-        exact_p=distribution.p(1.0),
+        exact_p=distribution.p_doubled(1.0),
         mid_p=mid_p,
-        mid_p_p=distribution.p(0.5),
+        mid_p_p=distribution.p_doubled(0.5),
         reasons=reasons,
     )
 

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.patterns import Patterns
 from oddsmodel.inference.maximise import Fit
+from oddsmodel.inference.penalised import PenalisedFit
 from oddsmodel.likelihood.base import Likelihood
 from oddsmodel.likelihood.binomial import BinomialLikelihood
 from oddsmodel.model.grouped import Grouping
@@ -38,7 +39,7 @@ class Held:
 
 @dataclass(frozen=True)
 class FittedModel:
-    """A converged maximum-likelihood fit and everything it was made from.
+    """A fit, as a rule a converged one by maximum likelihood, and everything it was made from.
 
     rows: the rows of the model matrix, covariate patterns or single records, wherever they are.
     people: the records analysed, to be counted by the values of columns. records, events: how many they are.
@@ -46,6 +47,7 @@ class FittedModel:
     study_design, aim: as the plan says them ("cohort", "case-control", ...; "association", "prediction").
     exposures, adjustment: the record columns in either role. also: the checks the plan asks for.
     likelihood: what was maximised; by another method than maximum likelihood with a penalty or a prior.
+    penalised: the penalised fit, with another maximum if there is one, where that is the method.
     grouping: the groups that the records belong to, where they are not independent; there is then no likelihood of the
         records, and no test, limit or criterion that rests on one.
     """
@@ -69,11 +71,17 @@ class FittedModel:
     grouping: Grouping | None = None
     held: Held | None = None
     method: Method = "maximum likelihood"
+    penalised: PenalisedFit | None = None
 
     @property
     def binomial(self) -> BinomialLikelihood:
         """The binomial likelihood of the rows, without any penalty or prior."""
         return BinomialLikelihood.over(self.rows.passes, len(self.design.columns))
+
+    @property
+    def at_maximum_likelihood(self) -> bool:
+        """Whether the fit is a finite maximum of the likelihood, as checks of fit take it to be."""
+        return self.method == "maximum likelihood" and self.fit.status == "converged"
 
     @property
     def exposure_indices(self) -> tuple[int, ...]:

@@ -236,7 +236,10 @@ def _models(parts: Parts) -> Iterator[Fault]:
     yield from _model_names(parts)
     written = parts.data.get("models")
     yield from check_models(parts.models, written if isinstance(written, list | tuple) else (), parts.at)
+    grouped = parts.records is not None and parts.records.grouped_by is not None
     for position, model in parts.models.items():
+        if grouped and model.method not in (None, "maximum likelihood"):
+            yield fault("method-of-grouped-records", parts.at("models", position, "method"))
         where = parts.at("models", position, "exposures")
         if _is_empty_list(parts, position, "exposures"):
             yield fault("no-exposures", where)

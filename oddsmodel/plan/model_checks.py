@@ -11,7 +11,7 @@ from oddsmodel.errors import Fault
 from oddsmodel.plan.examples import example
 from oddsmodel.plan.faults import fault
 from oddsmodel.plan.nearest import nearest
-from oddsmodel.plan.schema import ColumnSection, ModelSection
+from oddsmodel.plan.schema import ColumnSection, Method, ModelSection, Prior
 from oddsmodel.wording.plain import quoted
 
 At = Any
@@ -24,6 +24,7 @@ CHANGES = ("add", "leave_out")
 def check_models(models: Mapping[int, ModelSection], written: Sequence[Any], at: At) -> Iterator[Fault]:
     """The faults of models that build upon others. written: all models as the plan has them, valid or not."""
     names = [model.get("name") if isinstance(model, dict) else None for model in written]
+    settled = methods(models)
     for position, model in models.items():
         given = written[position] if isinstance(written[position], dict) else {}
         if model.based_on is None:
@@ -37,19 +38,40 @@ def check_models(models: Mapping[int, ModelSection], written: Sequence[Any], at:
         for key, terms in (("add", model.add), ("leave_out", model.leave_out)):
             yield from _repeated(terms, at("models", position, key), "change-repeated", "term")
         yield from _repeated(model.trend, at("models", position, "trend"), "trend-repeated", "column")
-        yield from _method(position, model, at)
+        yield from _method(position, model, settled, at)
         if position == 0 and model.role is not None:
             yield fault("role-of-the-first", at("models", position, "role"))
 
 
-def _method(position: int, model: ModelSection, at: At) -> Iterator[Fault]:
+def methods(models: Mapping[int, ModelSection]) -> dict[int, tuple[Method | None, Prior | None]]:
+    """Each model's method and prior with what it takes from its base; a base that is no earlier model gives nothing.
+
+    A prior belongs to the method log-F and is inherited with it alone.
+    """
+    places = {model.name: position for position, model in sorted(models.items(), reverse=True)}
+    found: dict[int, tuple[Method | None, Prior | None]] = {}
+    for position, model in sorted(models.items()):
+        base = found.get(places.get(model.based_on, -1), (None, None)) if model.based_on else (None, None)
+        method = model.method or base[0]
+        prior = model.prior if model.prior is not None or method != "log-F" else base[1]
+        found[position] = method, prior
+    return found
+
+
+def _method(
+    position: int, model: ModelSection, settled: Mapping[int, tuple[Method | None, Prior | None]], at: At
+) -> Iterator[Fault]:
     """A prior and the method that uses it belong together."""
-    if model.method == "log-F" and model.prior is None and model.based_on is None:
+    method, prior = settled[position]
+    if model.method == "log-F" and prior is None:
         yield fault("log-f-without-prior", at("models", position, "method"))
     if model.prior is not None:
-        if model.method not in (None, "log-F") or (model.method is None and model.based_on is None):
-            yield fault("prior-without-log-f", at("models", position, "prior"))
-        yield from _repeated(model.prior.columns, at("models", position, "prior"), "trend-repeated", "column")
+        where = at("models", position, "prior")
+        if method != "log-F":
+            yield fault("prior-without-log-f", where)
+        if not model.prior.columns:
+            yield fault("prior-of-no-column", where)
+        yield from _repeated(model.prior.columns, where, "trend-repeated", "column")
 
 
 def _alone(position: int, given: Mapping[str, Any], at: At) -> Iterator[Fault]:

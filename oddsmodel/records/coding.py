@@ -273,10 +273,15 @@ def _texts(raw: RawValues, column: Column) -> CodedColumn:
     findings: tuple[Finding, ...] = ()
     if column.kind == "identifier":
         met = occurrences(np.asarray(values.cat.codes, dtype=np.intp), 0, raw.rows.weights)
-        if met.max(initial=0) > 1:
-            facts = {"records": int(met.sum()), "different": int((met > 0).sum())}
-            findings = (finding("stop", "identifier-repeats", column=column.name, **facts),)
+        findings = repeats_found(column.name, int(met.sum()), int((met > 0).sum()))
     return CodedColumn(values, column, None, findings)
+
+
+def repeats_found(name: str, records: int, different: int) -> tuple[Finding, ...]:
+    """What is to be said of an identifier that so many records have, and of which there are so many different ones."""
+    if different == records:
+        return ()
+    return (finding("stop", "identifier-repeats", column=name, records=records, different=different),)
 
 
 def _code_levels(raw: RawValues, kind: str, levels: Sequence[str] | None) -> CodedLevels:

@@ -18,6 +18,7 @@ from oddsmodel.records.delimiter import detect_delimiter
 from oddsmodel.records.encoding import to_utf8
 from oddsmodel.records.faults import fault, in_column
 from oddsmodel.records.header import header_end, header_names
+from oddsmodel.records.text_rows import blank_lines, row_ends, text_of_rows
 from oddsmodel.records.unreadable import LONGEST_FIELD, first_odd_line, why_unreadable
 from oddsmodel.wording import finding
 
@@ -99,7 +100,7 @@ def read_delimited(
     _refuse_open_quote(table, content, source)
     table = _with_numbers_as_written(table, text)
     refuse_long_fields(table, source)
-    return table, notes + delimiter_notes + comma_notes + _blank_lines(content)
+    return table, notes + delimiter_notes + comma_notes + _blank_lines(content, text.delimiter)
 
 
 def _layout(content: bytes, source: str, not_recorded: tuple[str, ...]) -> tuple[DelimitedText, tuple[Finding, ...]]:
@@ -223,12 +224,11 @@ def refuse_long_fields(table: pa.Table, source: str, first_row: int = 2) -> None
         raise InputFault(faults)
 
 
-def _blank_lines(content: bytes) -> tuple[Finding, ...]:
+def _blank_lines(content: bytes, delimiter: str) -> tuple[Finding, ...]:
     """A note where a blank line stands before another row, so that row numbers are not those of an editor."""
-    quotes = counted = 0
-    for blank in BLANK_LINE.finditer(content):
-        quotes += content.count(b'"', counted, blank.start())
-        counted = blank.start()
-        if quotes % 2 == 0:
-            return (finding("note", "blank-lines"),)
-    return ()
+    if BLANK_LINE.search(content) is None:
+        return ()
+    ends, _ = row_ends(content, ord(delimiter), final=True)
+    blank = blank_lines(content, ends)
+    rows = np.flatnonzero(text_of_rows(content, ends) > 0)
+    return (finding("note", "blank-lines"),) if blank[: rows[-1]].any() else ()

@@ -43,7 +43,13 @@ def kept_as_written(plan: StudyPlan) -> list[str]:
 
 def columns_used(plan: StudyPlan, names: Iterable[str]) -> set[str]:
     """The columns that the plan has a use for: named by a key, or met in a formula or in a condition."""
-    used = {plan.outcome.column, *plan.outcome.dates, *plan.columns}
+    names = list(names)
+    return columns_in_use(plan, names) | {name for name in names if name in plan.columns}
+
+
+def columns_in_use(plan: StudyPlan, names: Iterable[str]) -> set[str]:
+    """The columns that the plan does something with, beside saying what they are."""
+    used = {plan.outcome.column, *plan.outcome.dates}
     used.update(source for section in plan.derived.values() for source in section.sources)
     texts = [text for model in plan.models for text in (model.formula, *model.add)]
     if plan.outcome.event_when is not None:

@@ -47,8 +47,5 @@ class RowsInOrder:
 
 
 def occurrences(codes: Positions, size: int, weights: Weights | None = None) -> Weights:
-    """How many rows have each code from 0 up (size,). codes (n,): those below 0 are passed over; weights (n,)."""
-    known = codes >= 0
-    if weights is None:
-        return np.bincount(codes[known], minlength=size).astype(np.int64)
-    return np.bincount(codes[known], weights[known], minlength=size).astype(np.int64)
+    """How many rows have each code from 0 up (size,). codes (n,): -1 and -2 are passed over; weights (n,)."""
+    return np.bincount(codes + 2, weights, minlength=size + 2)[2:].astype(np.int64, copy=False)

@@ -23,6 +23,15 @@ def without_texts(values: pd.Series, absent: NDArray[np.bool_]) -> pd.Series:
     return pd.Series(pd.Categorical.from_codes(codes, categories=values.cat.categories[~absent]))
 
 
+def clean_texts(texts: pa.Array) -> tuple[pa.Array, NDArray[np.bool_], NDArray[np.bool_]]:
+    """Texts as `text_column` cleans them, which of them had spaces around, and which had characters not to be shown."""
+    trimmed = pc.utf8_trim_whitespace(texts)
+    shown = pc.utf8_trim_whitespace(pc.replace_substring_regex(trimmed, NOT_SHOWN, " "))
+    had_spaces = np.asarray(pc.not_equal(texts, trimmed).to_numpy(zero_copy_only=False), dtype=np.bool_)
+    had_unseen = np.asarray(pc.not_equal(trimmed, shown).to_numpy(zero_copy_only=False), dtype=np.bool_)
+    return pc.utf8_normalize(shown, form="NFC"), had_spaces, had_unseen
+
+
 def text_column(
     dictionary: pa.Array, codes: NDArray[np.intp], kind: RawType, weights: Weights | None = None
 ) -> RawColumn:
@@ -35,12 +44,9 @@ def text_column(
     remains is an empty cell; texts that come out alike, as of 1 and "1" in one column, are one.
     """
     texts = dictionary.cast(pa.string())
-    trimmed = pc.utf8_trim_whitespace(texts)
-    shown = pc.utf8_trim_whitespace(pc.replace_substring_regex(trimmed, NOT_SHOWN, " "))
-    clean = pc.utf8_normalize(shown, form="NFC")
+    clean, had_spaces, had_unseen = clean_texts(texts)
     counts = occurrences(codes, len(texts), weights)
-    stripped = int(counts[pc.not_equal(texts, trimmed).to_numpy(zero_copy_only=False)].sum())
-    cleaned = int(counts[pc.not_equal(trimmed, shown).to_numpy(zero_copy_only=False)].sum())
+    stripped, cleaned = int(counts[had_spaces].sum()), int(counts[had_unseen].sum())
     if not clean.equals(texts) or pc.any(pc.equal(clean, "")).as_py() or len(pc.unique(clean)) < len(clean):
         merged = clean.dictionary_encode()
         clean = merged.dictionary

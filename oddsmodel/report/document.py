@@ -13,7 +13,7 @@ from oddsmodel.report.view.methods import methods
 from oddsmodel.report.view.models import comparison, crude, estimates, not_estimated, other_models
 from oddsmodel.report.view.opening import opening
 from oddsmodel.report.view.sheet import Sheets
-from oddsmodel.results.lead import is_estimated, lead_model
+from oddsmodel.results.lead import is_told, lead_model
 from oddsmodel.results.study import DisclosedResults, StudyResults
 
 
@@ -24,7 +24,7 @@ def render_report(disclosed: DisclosedResults, progress: Progress | None = None)
     progress.stage("drawing", number_of_figures(study))
     sheets = Sheets(disclosed.hide_counts_below, progress)
     lead = lead_model(study)
-    answered = lead if lead is not None and is_estimated(lead) else None
+    answered = lead if lead is not None and is_told(lead) else None
 
     # In the order of the page: figures and tables take their numbers as they are asked for.
     view: dict[str, Any] = {
@@ -36,7 +36,7 @@ def render_report(disclosed: DisclosedResults, progress: Progress | None = None)
         "estimates": estimates(answered, sheets) if answered is not None else None,
         "comparison": comparison(study, sheets),
         "other_models": other_models(study, lead, sheets),
-        "not_estimated": not_estimated(study, sheets),
+        "not_estimated": not_estimated(study, lead, sheets),
         "checks": checks(answered, sheets) if answered is not None else None,
         "methods": methods(disclosed, lead),
         "cause": cause(study, lead, sheets),

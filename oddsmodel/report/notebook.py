@@ -8,7 +8,7 @@ from oddsmodel.report.environment import environment
 from oddsmodel.report.view.models import exposures_table
 from oddsmodel.report.view.opening import serious
 from oddsmodel.report.view.sheet import Sheets
-from oddsmodel.results.lead import is_estimated, lead_model
+from oddsmodel.results.lead import is_told, lead_model
 from oddsmodel.results.study import DisclosedResults
 
 
@@ -17,7 +17,7 @@ def notebook_summary(disclosed: DisclosedResults) -> str:
     study = disclosed.study
     lead = lead_model(study)
     sheets = Sheets(disclosed.hide_counts_below, Silent())
-    table = exposures_table(lead) if lead is not None and is_estimated(lead) else None
+    table = exposures_table(lead) if lead is not None and is_told(lead) else None
     view = {
         "title": study.title,
         "answers": answers(study, lead),

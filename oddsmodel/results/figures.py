@@ -94,11 +94,22 @@ class PrecisionFigure:
 
 
 @dataclass(frozen=True, slots=True)
+class CurvePoint:
+    """The odds ratio of a group of the column's values, at `x`, with its interval; the reference group has none."""
+
+    x: float
+    ratio: float
+    records: int
+    lower: float | None = None
+    upper: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
 class CurveFigure:
     """Odds ratio against the value of a number column, relative to `reference`, log axis.
 
     `straight` is the same relation from the model with a straight line. `density` holds (lower edge,
-    upper edge, records) of bins of the column.
+    upper edge, records) of bins of the column. `points`: of groups, in place of a curve, which is then empty.
     """
 
     id: str
@@ -112,6 +123,20 @@ class CurveFigure:
     straight: tuple[float, ...]
     reference: float
     density: tuple[tuple[float, float, int | None], ...] = ()
+    points: tuple[CurvePoint, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class SpreadFigure:
+    """One odds ratio under many choices of adjustment columns, rising, on a log axis: as `reported`, and `alone`, with
+    no adjustment, None where there is none or it is withheld."""
+
+    id: str
+    title: str
+    alt: str
+    estimates: tuple[float, ...]
+    reported: float
+    alone: float | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -143,6 +168,27 @@ class ScatterFigure:
     kind: Literal["scatter"] = "scatter"
 
 
+@dataclass(frozen=True, slots=True)
+class EnvelopeFigure:
+    """Ordered values against their expected order, with the smallest, mean and largest of simulated ones.
+
+    A point is the mean of a run of neighbours: `values` of them (of covariate patterns), which hold `records` records.
+    """
+
+    id: str
+    title: str
+    alt: str
+    x_label: str
+    y_label: str
+    x: tuple[float, ...]
+    observed: tuple[float, ...]
+    middle: tuple[float, ...]
+    lower: tuple[float, ...]
+    upper: tuple[float, ...]
+    values: tuple[int, ...]
+    records: tuple[int, ...]
+
+
 Figure = (
     EstimatesFigure
     | FlowFigure
@@ -150,6 +196,8 @@ Figure = (
     | StepFigure
     | PrecisionFigure
     | CurveFigure
+    | SpreadFigure
     | HistogramFigure
     | ScatterFigure
+    | EnvelopeFigure
 )

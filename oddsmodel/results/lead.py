@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from oddsmodel.results.study import CoefficientResult, CrudeEstimate, ModelResult, StudyResults
 from oddsmodel.results.tables import Interval
 
-CONVERGED = "converged"
+CONVERGED, SEPARATED = "converged", "no finite maximum"
 EXACT = "exact"
 
 
@@ -19,6 +19,17 @@ def lead_model(study: StudyResults) -> ModelResult | None:
 
 def is_estimated(model: ModelResult) -> bool:
     return model.status == CONVERGED
+
+
+def is_told(model: ModelResult) -> bool:
+    """Whether there is something to tell of a model's odds ratios: it is estimated, or separated with what is left."""
+    return is_estimated(model) or bool(model.coefficients)
+
+
+def companion(study: StudyResults, model: ModelResult) -> ModelResult | None:
+    """The model that the program added beside one without a finite answer, where it was estimated."""
+    beside = f"{model.id}-penalised"
+    return next((one for one in study.models if one.added_by_program and one.id == beside and is_estimated(one)), None)
 
 
 def has_profile(model: ModelResult) -> bool:

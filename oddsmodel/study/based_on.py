@@ -2,20 +2,21 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 from oddsmodel.design.formula import VettedFormula, vet_formula
 from oddsmodel.errors import Fault, InputFault
 from oddsmodel.plan.faults import fault
 from oddsmodel.plan.nearest import nearest
-from oddsmodel.plan.schema import ModelSection
+from oddsmodel.plan.schema import Method, ModelSection
 from oddsmodel.records.types import Column
 from oddsmodel.wording import say
 from oddsmodel.wording.plain import quoted
 
 ON_THEIR_OWN_RECORDS = ("sensitivity", "subgroup")
-INHERITED = ("exposures", "level", "same_records", "method", "prior")
+INHERITED = ("exposures", "level", "same_records", "method")
+LIKELIHOOD: Method = "maximum likelihood"
 
 Terms = dict[frozenset[str], str]
 """The terms of a formula in order: their factors, and the term in the formula's own words."""
@@ -65,6 +66,9 @@ def _inheriting(section: ModelSection, base: ModelSection | None, formula: str) 
     changes: dict[str, object] = {"formula": formula, "based_on": section.based_on, "add": (), "leave_out": ()}
     if base is not None:
         changes |= {key: getattr(base, key) for key in INHERITED if key not in given}
+        # a prior belongs to the method log-F alone
+        if "prior" not in given and "log-F" in (section.method, changes.get("method")):
+            changes["prior"] = base.prior
         if base.keep is not None:
             changes["keep"] = base.keep if section.keep is None else f"({base.keep}) and ({section.keep})"
     apart = section.role in ON_THEIR_OWN_RECORDS or (base is not None and section.keep is not None)
@@ -176,7 +180,17 @@ def _differs(
         exposures=named(whole.exposures) if base is not None and whole.exposures != base.exposures else [],
         formula=section.formula if base is not None else "",
         percent=f"{100 * whole.level:g}%" if base is not None and whole.level != base.level else "",
+        method=_way(whole) if base is not None and _way(whole) != _way(base) else "",
+        prior=_prior_named(whole, named) if base is not None and whole.prior != base.prior else None,
     )
+
+
+def _way(section: ModelSection) -> Method:
+    return section.method or LIKELIHOOD
+
+
+def _prior_named(section: ModelSection, named: Callable[[Sequence[str]], list[str]]) -> tuple[float, list[str]] | None:
+    return None if section.prior is None else (section.prior.m, named(section.prior.columns))
 
 
 def _where(section: ModelSection, key: str) -> str:

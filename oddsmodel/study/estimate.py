@@ -9,14 +9,13 @@ import numpy as np
 
 from oddsmodel.checks import run_checks
 from oddsmodel.findings import Finding
-from oddsmodel.inference import ProfileLimits, profile
-from oddsmodel.inference.penalised_profile import profile_penalised
 from oddsmodel.measures.coefficients import coefficients
 from oddsmodel.measures.crude import crude
 from oddsmodel.measures.crude_to_adjusted import adjustment_findings, crude_to_adjusted_table
 from oddsmodel.measures.levels import common_outcome, levels
+from oddsmodel.measures.limits import profile_limits
 from oddsmodel.measures.network_average import network_average
-from oddsmodel.measures.trend import trend_table, trends
+from oddsmodel.measures.trend import trend_table, trends, trends_withheld
 from oddsmodel.measures.two_by_two_table import two_by_two_tables
 from oddsmodel.model.fitted import FittedModel
 from oddsmodel.model.kept import People
@@ -34,7 +33,7 @@ from oddsmodel.study.near_the_edge import near_the_edge, of_method
 from oddsmodel.study.pictures import estimates_figure, flow_figure
 from oddsmodel.study.prepare import Prepared
 from oddsmodel.study.separated import separated_coefficients
-from oddsmodel.study.term_tests import term_tests
+from oddsmodel.study.term_tests import null_log_likelihood, term_tests
 from oddsmodel.wording import finding, say
 
 COMPLETE = "complete records"
@@ -53,7 +52,7 @@ def estimate(
     p = model.fit.coefficients.size
     progress.stage("profiling", 2 * p)
     independent = model.grouping is None
-    limits = _limits(model, fitted, progress) if independent else None
+    limits = profile_limits(model, np.eye(p), told=progress.advance)
     found = coefficients(model, limits, crude(model, kept))
     tests = term_tests(model)
     progress.stage("checking")
@@ -109,40 +108,49 @@ def without_maximum(
     kept: People,
     progress: Progress,
 ) -> ModelResult:
-    """A model whose records are separated, or one by exact inference: estimates and counts, no tests and no checks."""
+    """A model whose records are separated, or one by exact inference: estimates, counts and what is checked of any
+    model, but no tests of terms."""
     model = fitted.described
     assert model is not None
     alone = crude(model, kept)
-    findings, status = fitted.findings, fitted.status
-    reasons = dict.fromkeys(LIKELIHOODS, say("exact-no-likelihood"))
     if fitted.separated is not None and model.method != "exact":
         found = separated_coefficients(model, fitted.separated, alone)
-        supremum = fitted.separated.part.log_likelihood
-        reasons = {"null_log_likelihood": say("term-test-not-settled")}
+        status, findings = fitted.status, fitted.findings
+        heights = fitted.separated.part.log_likelihood, null_log_likelihood(model)
+        reasons = {"certificate": say("no-certificate-without-maximum")}
+        withheld = "separated-no-tests"
     else:
         exact = exact_coefficients(model, alone, progress)
-        found, supremum = exact.coefficients, None
-        status = "converged" if exact.refused is None else "not estimated"
-        findings = prepared.findings if exact.refused is None else (*prepared.findings, exact.refused)
-    figures: tuple[Figure, ...] = (flow_figure(prepared),)
-    tables: tuple[Table, ...] = ()
-    if found:
-        figures = (*figures, estimates_figure(model, in_answer(found, ()), prepared.id))
-        tables = (levels(model, found), *two_by_two_tables(model))
-        if bool(model.adjustment) or len(model.exposures) > 1:
-            tables = (tables[0], crude_to_adjusted_table(model, found), *tables[1:])
-        findings = (*findings, *common_outcome(model))
+        found, heights = exact.coefficients, (None, None)
+        reasons = dict.fromkeys(LIKELIHOODS, say("exact-no-likelihood"))
+        reasons["certificate"] = say("no-certificate-of-method")
+        withheld = "exact-no-tests"
+        if exact.refused is not None:
+            findings = (*prepared.findings, exact.refused)
+            result = model_result(prepared, fitted, plan, columns, findings=findings)
+            return replace(result, status="not estimated", reasons=reasons)
+        status, findings = "converged", (*prepared.findings, *of_method(model, prepared))
+    adjusted = bool(model.adjustment) or len(model.exposures) > 1
+    findings = (
+        *findings,
+        *common_outcome(model),
+        *adjustment_findings(plan.study.design, adjusted),
+        *_averages_withheld(model, plan, withheld),
+    )
+    changed = (crude_to_adjusted_table(model, found),) if adjusted else ()
+    tables = (levels(model, found), *changed, *two_by_two_tables(model))
+    figures = (flow_figure(prepared), estimates_figure(model, in_answer(found, ()), prepared.id))
     result = model_result(prepared, fitted, plan, columns, found, findings, tables, figures)
-    reasons["certificate"] = say("no-certificate-of-method")
-    return replace(result, status=status, log_likelihood=supremum, reasons=reasons)
-
-
-def _limits(model: FittedModel, fitted: Fitted, progress: Progress) -> ProfileLimits:
-    """The profile limits of every coefficient."""
-    contrasts = np.eye(model.fit.coefficients.size)
-    if fitted.penalised is not None:
-        return profile_penalised(fitted.penalised, contrasts, model.level)
-    return profile(model.fit, contrasts, model.level, told=progress.advance)
+    progress.stage("checking")
+    return replace(
+        result,
+        status=status,
+        log_likelihood=heights[0],
+        null_log_likelihood=heights[1],
+        reasons=reasons,
+        checks=run_checks(model, progress, flow=prepared.flow),
+        trends=trends_withheld(model, prepared.section.trend, say(withheld)),
+    )
 
 
 def _log_likelihood(model: FittedModel) -> float:
@@ -164,6 +172,16 @@ def _averages(model: FittedModel, plan: StudyPlan) -> tuple[tuple[CoefficientRes
             if not against:
                 told.append(finding("caution", "average-not-plain-levels", label=model.columns[name].label))
     return tuple(found), tuple(told)
+
+
+def _averages_withheld(model: FittedModel, plan: StudyPlan, code: str) -> tuple[Finding, ...]:
+    """A word where levels should have been compared with their average, but this model has no such contrast."""
+    asked = [name for name in model.exposures if name in plan.columns]
+    return tuple(
+        finding("caution", "average-without-contrast", label=model.columns[name].label, reason=say(code))
+        for name in asked
+        if plan.columns[name].compare_with == "network average"
+    )
 
 
 def model_result(

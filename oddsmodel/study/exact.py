@@ -14,6 +14,9 @@ from oddsmodel.progress import Progress
 from oddsmodel.results.study import CoefficientResult, ExactResult, ProfileResult, WaldResult
 from oddsmodel.wording import finding, say
 
+BUDGET = Budget(seconds=None)
+"""Of states and bytes, not of time: whether there is an answer depends on the records alone."""
+
 NUMBERS = ("log_odds_ratio", "standard_error", "odds_ratio", "wald", "profile")
 
 
@@ -28,7 +31,7 @@ class ExactEstimates:
 def exact_coefficients(model: FittedModel, crude: Mapping[int, Crude], progress: Progress) -> ExactEstimates:
     """The exposure's coefficients by exact conditional inference; all others are conditioned upon and have no number.
 
-    Whether it is refused depends on the records alone: the budget is one of states and bytes, not of time.
+    Refused beyond a budget of states and bytes, and where a column has so many values that nothing can be said.
     """
     X, events, trials = model.binomial.rows_apart()
     found: list[CoefficientResult] = []
@@ -39,7 +42,7 @@ def exact_coefficients(model: FittedModel, crude: Mapping[int, Crude], progress:
         if column.role == "exposure" and column.shown:
             try:
                 answer = exact_inference(
-                    X, events, trials, position, level=model.level, budget=Budget(seconds=None), progress=progress
+                    X, events, trials, position, level=model.level, budget=BUDGET, progress=progress
                 )
             except BeyondBudget as beyond:
                 return ExactEstimates((), _refused(beyond))
@@ -100,7 +103,8 @@ def _refused(beyond: BeyondBudget) -> Finding:
     return finding(
         "stop",
         "exact-beyond-budget",
-        limit=str(beyond.limit),
+        memory=beyond.limit == "bytes",
+        budget=BUDGET.bytes if beyond.limit == "bytes" else BUDGET.states,
         done=int(beyond.patterns_done),
         patterns=int(beyond.patterns),
         states=int(beyond.states),

@@ -6,9 +6,6 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from functools import partial
 
-import numpy as np
-from numpy.typing import NDArray
-
 from oddsmodel.design.encoder import Design
 from oddsmodel.design.types import DesignColumn
 from oddsmodel.findings import Finding
@@ -22,17 +19,18 @@ from oddsmodel.inference import (
     maximise,
     separation_of,
 )
-from oddsmodel.inference.penalised import PenalisedFit, maximise_penalised
-from oddsmodel.likelihood import BinomialLikelihood, JeffreysPenalisedLikelihood, Likelihood
+from oddsmodel.inference.penalised import maximise_penalised
+from oddsmodel.likelihood import BinomialLikelihood, JeffreysPenalisedLikelihood
+from oddsmodel.measures.designs import CASE_CONTROL
 from oddsmodel.model.counted import CountedPeople
 from oddsmodel.model.fitted import FittedModel, Held
 from oddsmodel.model.grouped import grouping
 from oddsmodel.model.in_memory import rows_in_memory, rows_with_index
 from oddsmodel.model.kept import KeptRecords, People
 from oddsmodel.model.rows import ModelRows, rows_of
-from oddsmodel.passes import Leaf
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.study.groups import findings_of_groups
+from oddsmodel.study.pattern import pattern_of
 from oddsmodel.study.prepare import Prepared
 from oddsmodel.study.priors import with_prior
 from oddsmodel.wording import finding
@@ -53,8 +51,7 @@ class Fitted:
     """A model with its certificate, or None for both where it could not be estimated.
 
     rows: of the model matrix, None where there is no matrix. described: the model with whatever fit there is, for what
-    is counted among its records; separated: why it has no finite maximum. penalised: the penalised fit of a model
-    whose method that is.
+    is counted among its records; separated: why it has no finite maximum.
     """
 
     status: str
@@ -64,7 +61,6 @@ class Fitted:
     findings: tuple[Finding, ...]
     described: FittedModel | None = None
     separated: Separated | None = None
-    penalised: PenalisedFit | None = None
 
 
 def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
@@ -98,18 +94,17 @@ def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
         return _by_penalty(prepared, base, design, rows)
     fit = maximise(binomial)
     described = base(likelihood=binomial, fit=fit)
+    if fit.status == "no finite maximum":
+        verdict = fit.separation or separation_of(binomial)
+        grouped_by = plan.records.grouped_by is not None
+        told = (*prepared.findings, _why_separated(described, verdict, limits=not grouped_by))
+        # records of groups have no likelihood, so that neither limits nor finite standard errors can be told
+        left = None if grouped_by else Separated(verdict, finite_part(binomial, verdict))
+        return Fitted(fit.status, rows.number, None, None, told, described, left)
     if fit.status != "converged":
-        separated = None
-        if fit.status == "no finite maximum":
-            verdict = fit.separation or separation_of(binomial)
-            separated = Separated(verdict, finite_part(binomial, verdict))
-        findings = (*prepared.findings, _why_not(fit, design.columns, rows, separated))
-        return Fitted(fit.status, rows.number, None, None, findings, described, separated)
+        return _not_fitted(prepared, fit, described)
     certificate = certify(fit)
-    findings = prepared.findings
-    digits = float(certificate.digits.min())
-    if digits < FEW_DIGITS:
-        findings = (*findings, finding("caution", "few-digits", digits=int(digits)))
+    findings = (*prepared.findings, *_few_digits(certificate))
     grouped = None
     if plan.records.grouped_by is not None and held is not None and held.patterns is not None:
         name = plan.records.grouped_by
@@ -125,23 +120,38 @@ def fit_model(prepared: Prepared, plan: StudyPlan) -> Fitted:
 def _by_penalty(prepared: Prepared, base: Callable[..., FittedModel], design: Design, rows: ModelRows) -> Fitted:
     """By Jeffreys' penalty or by log-F priors."""
     binomial = BinomialLikelihood.over(rows.passes, len(design.columns))
-    likelihood: Likelihood
-    penalised = None
-    if prepared.section.prior is None:
-        likelihood = jeffreys = JeffreysPenalisedLikelihood(binomial)
-        penalised = maximise_penalised(jeffreys)
-        fit = penalised.fit
-    else:
-        likelihood = with_prior(binomial, prepared.section.prior, design)
-        fit = maximise(likelihood)
-    if fit.status != "converged":
-        findings = (*prepared.findings, _why_not(fit, design.columns, rows, None))
-        return Fitted(fit.status, rows.number, None, None, findings, base(likelihood=likelihood, fit=fit))
+    if prepared.section.prior is not None:
+        prior = with_prior(binomial, prepared.section.prior, design)
+        fit = maximise(prior)
+        described = base(likelihood=prior, fit=fit)
+        if fit.status == "no finite maximum":
+            told = _why_separated(described, fit.separation or separation_of(prior), limits=False)
+            return Fitted(fit.status, rows.number, None, None, (*prepared.findings, told), described)
+        if fit.status != "converged":
+            return _not_fitted(prepared, fit, described)
+        certificate = certify(fit)
+        model = base(likelihood=prior, fit=certificate.fit)
+        findings = (*prepared.findings, *_few_digits(certificate))
+        return Fitted("converged", rows.number, model, certificate, findings, model)
+    penalty = JeffreysPenalisedLikelihood(binomial)
+    penalised = maximise_penalised(penalty)
+    model = base(likelihood=penalty, fit=penalised.fit, penalised=penalised)
+    if penalised.fit.status != "converged":
+        return _not_fitted(prepared, penalised.fit, model)
     findings = prepared.findings
-    if penalised is not None and penalised.lower_maximum is not None:
+    if penalised.lower_maximum is not None:
         findings = (*findings, finding("caution", "penalised-second-maximum"))
-    model = base(likelihood=likelihood, fit=fit)
-    return Fitted("converged", rows.number, model, None, findings, model, None, penalised)
+    return Fitted("converged", rows.number, model, None, findings, model)
+
+
+def _few_digits(certificate: Certificate) -> tuple[Finding, ...]:
+    digits = float(certificate.digits.min())
+    return (finding("caution", "few-digits", digits=int(digits)),) if digits < FEW_DIGITS else ()
+
+
+def _not_fitted(prepared: Prepared, fit: Fit, described: FittedModel) -> Fitted:
+    findings = (*prepared.findings, _why_not(fit, described.design.columns, described.rows))
+    return Fitted(fit.status, described.rows.number, None, None, findings, described)
 
 
 def _rows(prepared: Prepared, plan: StudyPlan, design: Design) -> tuple[ModelRows, People, Held | None]:
@@ -157,7 +167,7 @@ def _rows(prepared: Prepared, plan: StudyPlan, design: Design) -> tuple[ModelRow
     return rows, KeptRecords(*data), Held(*data, patterns)
 
 
-def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows, separated: Separated | None) -> Finding:
+def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows) -> Finding:
     labels = [column.label for column in columns]
     if fit.status == "aliased":
         if len(columns) > rows.number:
@@ -166,32 +176,29 @@ def _why_not(fit: Fit, columns: tuple[DesignColumn, ...], rows: ModelRows, separ
             [labels[one.column], [[weight, labels[kept]] for kept, weight in one.weights]] for one in fit.aliased
         ]
         return finding("stop", "aliased", relations=relations)
-    if separated is not None:
-        verdict = separated.verdict
-        told = {
-            kind: [label for label, found in zip(labels, verdict.coefficients, strict=True) if found == kind]
-            for kind in ("plus infinity", "minus infinity", "undetermined")
-        }
-        return finding(
-            "stop",
-            "separated",
-            rising=told["plus infinity"],
-            falling=told["minus infinity"],
-            undetermined=told["undetermined"],
-            complete=verdict.complete,
-            separated_records=_records_among(rows, verdict.rows),
-        )
     return finding("stop", "not-converged", steps=fit.steps)
 
 
-def _records_among(rows: ModelRows, chosen: NDArray[np.bool_]) -> int:
-    """How many records stand behind some of the rows; chosen (m,)."""
-    total, first = 0.0, 0
-    for trials in rows.passes.each(_trials):
-        total += float(trials[chosen[first : first + trials.size]].sum())
-        first += trials.size
-    return round(total)
-
-
-def _trials(rows: Leaf, first: int, state: None) -> NDArray[np.float64]:
-    return rows.get("trials", np.ones(len(rows["events"])))
+def _why_separated(model: FittedModel, verdict: Separation, *, limits: bool) -> Finding:
+    """limits: whether the limits of what has no finite estimate are told with it."""
+    labels = [column.label for column in model.design.columns]
+    told: dict[str, list[str]] = {
+        kind: [label for label, found in zip(labels, verdict.coefficients, strict=True) if found == kind]
+        for kind in ("plus infinity", "minus infinity", "undetermined")
+    }
+    pattern = pattern_of(model, verdict)
+    return finding(
+        "stop",
+        "separated",
+        rising=told["plus infinity"],
+        falling=told["minus infinity"],
+        undetermined=told["undetermined"],
+        without=list(pattern.without),
+        always=list(pattern.always),
+        higher=list(pattern.higher),
+        lower=list(pattern.lower),
+        complete=verdict.complete,
+        proof=verdict.inexact or "exact",
+        limits=limits,
+        case_control=model.study_design in CASE_CONTROL,
+    )

@@ -95,7 +95,7 @@ def _series(
 
 def _estimate(model: SavedModel, one: SavedCoefficient) -> _Estimate:
     why = "" if one.odds_ratio is not None else one.reasons.get("odds_ratio", say("series-no-reason"))
-    limits = one.profile if _has_profile(model) else one.wald
+    limits = one.exact or (one.profile if _has_profile(model) else one.wald)
     return _Estimate(plain(one.label), one.odds_ratio, limits if one.odds_ratio is not None else None, plain(why, 300))
 
 

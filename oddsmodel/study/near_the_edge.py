@@ -36,7 +36,7 @@ def of_method(model: FittedModel, prepared: Prepared) -> tuple[Finding, ...]:
     told = [finding("note", "checks-of-method")]
     prior = prepared.section.prior
     if prior is not None:
-        labels = [model.design.columns[position].label for position in prior_positions(prior, model.design)]
+        labels = [model.design.columns[position].label for position in prior_positions(prior.columns, model.design)]
         lower, upper = prior_interval(prior.m)
         told.append(finding("caution", "prior-in-words", m=prior.m, labels=labels, lower=lower, upper=upper))
     return tuple(told)

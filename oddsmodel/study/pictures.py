@@ -50,6 +50,6 @@ def estimates_figure(model: FittedModel, found: Sequence[CoefficientResult], ide
 
 
 def _mark(label: str, series: str, estimate: float | None, limits: object) -> EstimateMark:
-    if estimate is None or not isinstance(limits, Interval):
-        return EstimateMark(label, series, estimate, None, None, note="" if estimate is not None else "no estimate")
+    if not isinstance(limits, Interval):
+        return EstimateMark(label, series, estimate, None, None)
     return EstimateMark(label, series, estimate, limits.lower, limits.upper)

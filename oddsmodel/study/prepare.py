@@ -26,6 +26,7 @@ from oddsmodel.records.usable import unusable_in_formula
 from oddsmodel.results.study import Flow
 from oddsmodel.study.based_on import WrittenOut, write_out
 from oddsmodel.study.deviations import with_deviations
+from oddsmodel.study.priors import faults_of_prior, faults_of_prior_in_design
 from oddsmodel.wording import finding
 from oddsmodel.wording.plain import quoted
 
@@ -189,6 +190,7 @@ def _vet(written: WrittenOut, plan: StudyPlan, columns: Mapping[str, Column]) ->
             facts = {"exposure": quoted(exposure), "nearest": "" if near is None else quoted(near)}
             faults.append(fault("exposure-not-in-formula", f"{model} exposures", **facts))
     faults.extend(_faults_of_trends(section, formula, plan, columns, model))
+    faults.extend(faults_of_prior(section, formula.columns))
     if plan.records.grouped_by in formula.columns:
         faults.append(fault("grouped-by-in-formula", f"{model} formula", column=quoted(str(plan.records.grouped_by))))
     if faults:
@@ -272,6 +274,9 @@ def prepared_model(
     else:
         design = design_of(model.formula, training, columns, exposures)
         findings = tuple(design.findings)
+        faults = list(faults_of_prior_in_design(model.section, design))
+        if faults:
+            raise InputFault(faults)
     return Prepared(
         section=model.section,
         id=f"model-{number + 1}",

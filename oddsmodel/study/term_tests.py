@@ -12,7 +12,9 @@ from oddsmodel.checks.nearby import PART_FROM, Known, Nearby, maxima_near
 from oddsmodel.design.constant import indicators_of_all_levels
 from oddsmodel.design.marginality import restricted_columns
 from oddsmodel.inference import Problem, maximise_all
+from oddsmodel.inference.penalised import maximise_penalised
 from oddsmodel.inference.tests import chi_square_p
+from oddsmodel.likelihood import JeffreysPenalisedLikelihood
 from oddsmodel.measures.wald_f import contrasts_without, wald_f
 from oddsmodel.model.fitted import Array, FittedModel
 from oddsmodel.results.study import TermTest
@@ -73,7 +75,13 @@ def term_tests(model: FittedModel) -> TermTests:
         for name, larger, smaller in pairs
         if found[larger].dimension > found[smaller].dimension
     )
-    return TermTests(tests, _null(model, bool(intercept or ones)).log_likelihood)
+    return TermTests(tests, null_log_likelihood(model))
+
+
+def null_log_likelihood(model: FittedModel) -> float | None:
+    """Of the model without any column but the constant, where it holds that; without the penalty or the prior."""
+    constant = any(column.role == "intercept" for column in model.design.columns)
+    return _null(model, constant or bool(indicators_of_all_levels(model.design))).log_likelihood
 
 
 def _null(model: FittedModel, constant: bool) -> Maximum:
@@ -88,6 +96,8 @@ def _null(model: FittedModel, constant: bool) -> Maximum:
 def _maxima(model: FittedModel, spaces: list[Array]) -> list[Maximum]:
     """The maximum over each space: near the full fit where rows are many, by full Newton steps where that is not so."""
     fit = model.fit
+    if isinstance(model.likelihood, JeffreysPenalisedLikelihood):
+        return [_highest(model.likelihood, space) for space in spaces]
     near: list[Nearby | None] = [None] * len(spaces)
     if model.rows.number > PART_FROM and spaces and model.method == "maximum likelihood":
         known = Known(fit.working, np.zeros_like(fit.working), fit.working_information)
@@ -103,6 +113,15 @@ def _maxima(model: FittedModel, spaces: list[Array]) -> list[Maximum]:
         settled = other.status in ("converged", "no finite maximum")
         found.append(Maximum(other.log_likelihood if settled else None, other.dimension))
     return found
+
+
+def _highest(likelihood: JeffreysPenalisedLikelihood, space: Array) -> Maximum:
+    """The highest maximum over a space of a penalised likelihood, which keeps the penalty of the whole model."""
+    if space.shape[1] == 0:
+        value = float(likelihood.evaluate(np.zeros(space.shape[0]), information=False).log_likelihood[0])
+        return Maximum(value, 0)
+    fit = maximise_penalised(likelihood, basis=space).fit
+    return Maximum(fit.log_likelihood if fit.status == "converged" else None, fit.dimension)
 
 
 def _wald(

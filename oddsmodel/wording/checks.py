@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from oddsmodel.wording.checks_fit import FIT_SENTENCES
 from oddsmodel.wording.checks_form import FORM_SENTENCES
+from oddsmodel.wording.checks_goodness import SENTENCES as GOODNESS
 from oddsmodel.wording.say import Sentence
 
-SENTENCES: dict[str, Sentence] = {**FIT_SENTENCES, **FORM_SENTENCES}
+SENTENCES: dict[str, Sentence] = {**FIT_SENTENCES, **FORM_SENTENCES, **GOODNESS}

@@ -245,7 +245,11 @@ FORM_SENTENCES: dict[str, Sentence] = {
     "sparse-cells-line": _sparse_line,
     "sparse-exposure-levels": lambda facts: (
         f"Fewer than {facts['few']} events, or records without one, stand behind {_named(facts['levels'])}. "
-        "Read the profile limits rather than the Wald limits there, and do not lean on the estimate."
+        + (
+            "Exact limits hold there all the same; do not lean on the estimate."
+            if facts["exact"]
+            else "Read the profile limits rather than the Wald limits there, and do not lean on the estimate."
+        )
     ),
     "sparse-adjustment-levels": lambda facts: (
         f"Fewer than {facts['few']} events, or records without one, stand behind {_named(facts['levels'])}. The "

@@ -57,8 +57,10 @@ SENTENCES: dict[str, Sentence] = {
     "stage-reading": "Reading the records",
     "stage-gathering": "Gathering the columns of the models",
     "stage-fitting": "Fitting the models",
+    "stage-counting outcomes": "Counting outcomes for exact inference",
     "stage-profiling": "Profiling the likelihood",
     "stage-checking": "Checking the models",
+    "stage-validating": "Fitting the models again to resamples",
     "stage-drawing": "Drawing the report",
     # run, check, draft, demo
     "report-is-in": "The report is in {file}",

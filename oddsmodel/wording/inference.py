@@ -56,13 +56,55 @@ def _separated(facts: Mapping[str, Any]) -> str:
         told.append(f"the odds ratio of {_named(facts['falling'])} falls to zero")
     if facts["undetermined"]:
         told.append(f"the records do not settle which way {_named(facts['undetermined'])} would go")
-    kind = "Every record is" if facts["complete"] else "Some records are"
-    return (
-        f"No finite estimate exists. {kind} predicted perfectly by the columns of this model (separation), so that "
-        f"{'; '.join(told)}. Where an odds ratio has no finite estimate none is shown, only the limit on the side "
-        "where it has one. Join rare levels, or leave the column out, for reasons that can be defended without "
-        "looking at the outcome."
+    kind = "every record is" if facts["complete"] else "some records are"
+    shown = (
+        "Where an odds ratio has no finite estimate none is shown, only the limit on the side where it has one."
+        if facts["limits"]
+        else "No odds ratio of this model is shown."
     )
+    return (
+        f"No finite estimate exists: {kind} predicted perfectly by the columns of this model (separation). "
+        f"{' '.join(_pattern(facts))} So {'; '.join(told)}. {PROOFS[facts['proof']]} {shown} Join rare levels, or "
+        "leave a column out, only for reasons that can be defended without looking at the outcome."
+    )
+
+
+PROOFS = {
+    "exact": "This was proved by linear programming, and the proof checked in exact arithmetic.",
+    "within rounding": (
+        "This was found by linear programming; it holds where numbers that differ by no more than rounding are taken "
+        "as equal."
+    ),
+    "too many columns": (
+        "This was found by linear programming; with so many columns the proof was not checked in exact arithmetic."
+    ),
+    "too many steps": (
+        "This was found by linear programming; checking the proof in exact arithmetic was broken off as too long."
+    ),
+}
+"""How sure a separation is, by how far its proof was checked."""
+
+
+def _pattern(facts: Mapping[str, Any]) -> list[str]:
+    """Which records' pattern it is, as far as single columns tell it."""
+    event, of_event = ("is a case", "is one") if facts["case_control"] else ("has the event", "has it")
+    parts = []
+    if facts["without"]:
+        parts.append(f"None of the records with {_quoted(facts['without'])} {event}.")
+    if facts["always"]:
+        parts.append(f"Every record with {_quoted(facts['always'])} {event if not parts else of_event}.")
+    for side in ("higher", "lower"):
+        if facts[side]:
+            who = "cases" if facts["case_control"] else "records with the event"
+            parts.append(f"The values of {_quoted(facts[side])} are all {side} among {who} than among the others.")
+    return parts or ["No column does so alone; several do together."]
+
+
+def _quoted(labels: list[str]) -> str:
+    named = [f"“{label}”" for label in labels]
+    if len(named) > MOST_NAMED + 1:
+        named = [*named[:MOST_NAMED], f"{len(labels) - MOST_NAMED} more"]
+    return listed(named, "or")
 
 
 SENTENCES: dict[str, Sentence] = {

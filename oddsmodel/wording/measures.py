@@ -134,7 +134,15 @@ SENTENCES: dict[str, Sentence] = {
         "ratio: read as a risk ratio it would overstate it."
     ),
     # Models side by side
-    "compare-models-note": "{levels} intervals: profile-likelihood limits, or Wald limits where there are none.",
+    "compare-models-note": lambda facts: (
+        f"{facts['levels']} intervals: "
+        + ("exact limits where the method is exact, else " if facts["exact"] else "")
+        + "profile-likelihood limits, or Wald limits where there are none."
+    ),
+    "compare-models-one-sided": (
+        "{model} has no finite estimate for {label}; its interval has the one limit that there is."
+    ),
+    "model-added-said": "Added by the program.",
     "compare-models-different-records": (
         "The models rest on different records, so that a part of what differs may come from the records and not from "
         "the adjustment."

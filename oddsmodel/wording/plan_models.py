@@ -53,6 +53,10 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
         "A prior is used by the method log-F alone.",
         'Add method = "log-F", or take the prior out.',
     ),
+    "prior-of-no-column": (
+        "The prior names no column.",
+        'List the columns whose odds ratios it is for, such as columns = ["smoker"].',
+    ),
     "prior-not-in-formula": ("The prior names {column}, which is not in the formula.", _choose),
     "prior-no-odds-ratio": (
         "{column} has no odds ratio of its own in this model, so a prior cannot be stated for it.",
@@ -65,6 +69,10 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     "method-needs-memory": (
         "This method needs the records in memory, and they do not fit into the memory that the run may use.",
         "Raise [run] memory if the machine has more; so many records hardly need it.",
+    ),
+    "method-needs-one-machine": (
+        "This method needs all records in one place, and the run has them on workers.",
+        "Run the plan without workers, or take the method out of the model; so many records hardly need it.",
     ),
     "trend-repeated": ("{column} is listed twice.", "List it once."),
     "scores-not-rising": (

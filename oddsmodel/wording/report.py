@@ -76,6 +76,7 @@ SENTENCES: dict[str, Sentence] = {
     "heading-cautions": "Before you use this",
     "heading-provenance": "What it was made from",
     "heading-not-estimated": "Not estimated: {name}",
+    "heading-partly-estimated": "Estimated in part: {name}",
     "heading-stops": "Read this first",
     "heading-warnings": "Keep in mind",
     "fold-warnings": "More to keep in mind",
@@ -154,10 +155,13 @@ SENTENCES: dict[str, Sentence] = {
     "column-mid-p-p": "p-value, mid-P",
     "table-exposure-exact": "Odds ratios of the exposures by exact conditional inference",
     "exact-note": "All other columns of the model are conditioned upon, and so are the numbers of events.",
-    "partly-estimated": (
-        "The likelihood of this model has no maximum ({status}): odds ratios without a finite estimate show none, and "
-        "the others come from the records that are not separated."
+    "lead-separated": (
+        "The likelihood has no maximum. An odds ratio without a finite estimate shows the limit that the profile "
+        "likelihood sets on one side, and no other number; the others come from the records that are not separated, "
+        "with their profile interval and their Wald interval."
     ),
+    "partly-estimated": "The likelihood of this model has no maximum, so some of its odds ratios have no estimate.",
+    "by-method": "by {method}",
     "lead-wald": "The interval shown is the Wald interval, since this way of fitting has no likelihood to profile.",
     "p-caution": (
         "A p-value says how surprising the records would be if the odds ratio were exactly 1 and the model right. It "
@@ -186,7 +190,6 @@ SENTENCES: dict[str, Sentence] = {
     "versions": "Made with",
     "seed": "Seed of all random numbers",
     # Pictures
-    "figure-no-estimate": "no estimate",
     "figure-lower-odds": "← lower odds",
     "figure-higher-odds": "higher odds →",
     "figure-records-read": "records read",
@@ -205,6 +208,9 @@ SENTENCES: dict[str, Sentence] = {
     "figure-straight": "straight line",
     "figure-reference": "reference, {value}",
     "figure-odds-ratio-log": "Odds ratio (log scale)",
+    "figure-reported": "as reported",
+    "figure-unadjusted": "with no adjustment",
+    "figure-choices": "Choices of adjustment columns, in the order of their odds ratios",
     "figure-share-of-group": "Share of the group",
     "figure-bins-withheld": "Bins whose count is withheld are left empty.",
 }

@@ -80,6 +80,37 @@ def _answer(facts: Mapping[str, Any]) -> str:
     return f"{start} {direction}: {times} ({limits}{adjusted})."
 
 
+def one_sided(lower: float | None, upper: float | None) -> str:
+    """The one limit there is of an odds ratio without an estimate."""
+    if lower is None:
+        return "no estimate" if upper is None else f"at most {ratio(upper)}"
+    return f"at least {ratio(lower)}"
+
+
+def _answer_no_finite(facts: Mapping[str, Any]) -> str:
+    """One limit, and no estimate."""
+    above = facts["lower"] is not None
+    limit = facts["lower"] if above else facts["upper"]
+    start = _who(facts)
+    settled = limit > 1.0 if above else limit < 1.0
+    direction = f" {'higher' if above else 'lower'}:" if settled else ""
+    size = "times as high for each such step" if facts["reference"] is None else f"times {_compared(facts)}"
+    adjusted = "" if facts["adjusted"] else ", not adjusted"
+    limited = one_sided(facts["lower"], facts["upper"])
+    middle = "" if facts["median"] is None else f" The median-unbiased estimate is {ratio(facts['median'])}."
+    return (
+        f"{start[0].upper()}{start[1:]}{direction} {limited} {size} (the one limit of the {facts['percent']} "
+        f"interval{adjusted}). There is no finite estimate: the {'higher' if above else 'lower'} the odds ratio is "
+        f"taken to be, the better it fits these records.{middle}"
+    )
+
+
+def _beside(facts: Mapping[str, Any]) -> str:
+    limits = f"{facts['percent']} interval {interval(facts['lower'], facts['upper'])}"
+    value = ratio(facts["odds_ratio"])
+    return f"By penalised likelihood, which always has an answer, the odds ratio is {value} ({limits})."
+
+
 def _compatible(facts: Mapping[str, Any]) -> str:
     lower, upper = facts["lower"], facts["upper"]
     if lower is None and upper is None:
@@ -127,6 +158,11 @@ def _several_columns(facts: Mapping[str, Any]) -> str:
 
 SENTENCES: dict[str, Sentence] = {
     "answer": _answer,
+    "answer-no-finite": _answer_no_finite,
+    "answer-beside": _beside,
+    "at-limit": lambda facts: one_sided(facts["lower"], facts["upper"]),
+    "answer-beside-link": "All of that model",
+    "measure-no-finite": "{measure}, without a finite estimate",
     "compatible": _compatible,
     "answer-basis": _basis,
     "answer-no-estimate": "No odds ratio can be shown: {reason}",

@@ -7,8 +7,13 @@ from typing import Any
 
 from oddsmodel.wording.numbers import count, listed, plural
 from oddsmodel.wording.say import Sentence
+from oddsmodel.wording.study_methods import METHOD_WORDS, prior_words
 
 REFERENCES: dict[str, str] = {
+    "albert-anderson-1984": (
+        "Albert A, Anderson JA. On the existence of maximum likelihood estimates in logistic regression models. "
+        "Biometrika 1984; 71: 1–10."
+    ),
     "armitage-1955": (
         "Armitage P. Tests for linear trends in proportions and frequencies. Biometrics 1955; 11: 375–386."
     ),
@@ -66,6 +71,10 @@ REFERENCES: dict[str, str] = {
         "Hosmer DW, Lemeshow S. Goodness of fit tests for the multiple logistic regression model. Communications in "
         "Statistics: Theory and Methods 1980; 9: 1043–1069."
     ),
+    "konis-2007": (
+        "Konis K. Linear programming algorithms for detecting separated data in binary logistic regression models. "
+        "DPhil thesis, University of Oxford, 2007."
+    ),
     "liang-zeger-1986": (
         "Liang KY, Zeger SL. Longitudinal data analysis using generalized linear models. Biometrika 1986; 73: 13–22."
     ),
@@ -80,6 +89,14 @@ REFERENCES: dict[str, str] = {
     "pregibon-1981": "Pregibon D. Logistic regression diagnostics. Annals of Statistics 1981; 9: 705–724.",
     "prentice-pyke-1979": (
         "Prentice RL, Pyke R. Logistic disease incidence models and case-control studies. Biometrika 1979; 66: 403–411."
+    ),
+    "puhr-2017": (
+        "Puhr R, Heinze G, Nold M, Lusa L, Geroldinger A. Firth's logistic regression with rare events: accurate "
+        "effect estimates and predictions? Statistics in Medicine 2017; 36: 2302–2317."
+    ),
+    "santner-duffy-1986": (
+        "Santner TJ, Duffy DE. A note on A. Albert and J. A. Anderson's conditions for the existence of maximum "
+        "likelihood estimates in logistic regression models. Biometrika 1986; 73: 755–758."
     ),
     "venzon-moolgavkar-1988": (
         "Venzon DJ, Moolgavkar SH. A method for computing profile-likelihood-based confidence intervals. Journal of "
@@ -118,13 +135,13 @@ def _records(facts: Mapping[str, Any]) -> str:
     return f"{words}."
 
 
-METHODS = {
-    "maximum likelihood": "maximum likelihood",
-    "penalised": "penalised likelihood with Jeffreys' penalty (Firth, 1993; Heinze & Schemper, 2002)",
-    "log-F": "maximum likelihood with log-F priors (Greenland & Mansournia, 2015)",
-    "exact": "exact conditional inference (Hirji, Mehta & Patel, 1987; Mehta & Patel, 1995)",
+CITED = {
+    "maximum likelihood": "",
+    "penalised": " with Jeffreys' penalty (Firth, 1993; Heinze & Schemper, 2002)",
+    "log-F": " (Greenland & Mansournia, 2015)",
+    "exact": " (Hirji, Mehta & Patel, 1987; Mehta & Patel, 1995)",
 }
-"""How each method is told, by its name in the plan."""
+"""What is said of each method beside its name."""
 
 METHOD_REFERENCES: dict[str, tuple[str, ...]] = {
     "penalised": ("firth-1993", "heinze-schemper-2002"),
@@ -137,9 +154,24 @@ def _model(facts: Mapping[str, Any]) -> str:
     role = "exposure" if len(facts["exposures"]) == 1 else "exposures"
     words = (
         f"The odds of {facts['outcome']} were modelled by logistic regression (Cox, 1958), fitted by "
-        f"{METHODS[facts['method']]}, with {listed(facts['exposures'])} as {role}"
+        f"{METHOD_WORDS[facts['method']]}{CITED[facts['method']]}, with {listed(facts['exposures'])} as {role}"
     )
     return f"{words}, adjusted for {listed(facts['adjustment'])}." if facts["adjustment"] else f"{words}."
+
+
+def _profile_prior(facts: Mapping[str, Any]) -> str:
+    prior = facts["prior"]
+    held = f" With {prior_words(prior['m'], prior['labels'])}, intervals" if prior is not None else "Intervals"
+    return (
+        f"{held.strip()} at {facts['level']} were taken from the profile of the likelihood with its prior (Venzon & "
+        "Moolgavkar, 1988), with Wald intervals (Wald, 1943) beside them."
+    )
+
+
+def _other_method(facts: Mapping[str, Any]) -> str:
+    names = [f"“{name}”" for name in facts["names"]]
+    were = "was" if len(names) == 1 else "were"
+    return f"{listed(names)} {were} fitted by {METHOD_WORDS[facts['method']]}{CITED[facts['method']]}."
 
 
 def _several(facts: Mapping[str, Any]) -> str:
@@ -160,6 +192,25 @@ SENTENCES: dict[str, Sentence] = {
     "methods-profile": (
         "Intervals at {level} were taken from the profile likelihood (Venzon & Moolgavkar, 1988), with Wald intervals "
         "(Wald, 1943) beside them."
+    ),
+    "methods-profile-penalised": (
+        "Intervals at {level} were taken from the profile of the penalised likelihood, its penalty being that of the "
+        "whole model (Heinze & Schemper, 2002), with Wald intervals (Wald, 1943) beside them."
+    ),
+    "methods-profile-prior": _profile_prior,
+    "methods-separated": (
+        "Whether the likelihood has a maximum was decided by linear programming (Albert & Anderson, 1984; Santner & "
+        "Duffy, 1986; Konis, 2007). Odds ratios that have a finite estimate were estimated from the records that are "
+        "not separated; of the others the limit at {level} that the profile likelihood has on one side is given."
+    ),
+    "methods-penalised-beside": (
+        "Beside it the same model was fitted by penalised likelihood with Jeffreys' penalty (Firth, 1993), with "
+        "{level} intervals from the profile of the penalised likelihood (Heinze & Schemper, 2002)."
+    ),
+    "methods-other-method": _other_method,
+    "methods-corrected-intercept": (
+        "Intercepts for predicted risks were corrected so that the risks average to the share observed (Puhr et al., "
+        "2017)."
     ),
     "methods-exact": (
         "Limits at {level} are exact: each is that of a one-sided test of the conditional distribution, with mid-P "

@@ -22,6 +22,8 @@ MODULES = (
     "inference",
     "measures",
     "checks",
+    "checks_asked_form",
+    "checks_prediction",
     "disclosure",
     "study",
     "study_methods",

@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from oddsmodel.wording.numbers import count, interval, ratio
+from oddsmodel.wording.report_answer import one_sided
 from oddsmodel.wording.say import Sentence
 from oddsmodel.wording.study_models import SENTENCES as MODELS
 
@@ -17,9 +18,10 @@ def _flow(facts: Mapping[str, Any]) -> str:
 
 def _estimates(facts: Mapping[str, Any]) -> str:
     told = [
-        f"{label}, {series}: {ratio(estimate)} ({interval(lower, upper)})"
+        f"{label}, {series}: {one_sided(lower, upper) if estimate is None else ratio(estimate)}"
+        + ("" if estimate is None else f" ({interval(lower, upper)})")
         for label, series, estimate, lower, upper in facts["marks"]
-        if estimate is not None
+        if (estimate, lower, upper) != (None, None, None)
     ]
     words = f"Odds ratios with {facts['percent']:g}% intervals."
     return f"{words} {'; '.join(told)}." if told else f"{words} None can be shown."

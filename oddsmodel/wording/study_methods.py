@@ -2,11 +2,24 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
-from oddsmodel.wording.numbers import count, listed, ratio
+from oddsmodel.wording.numbers import count, listed, plural, ratio
 from oddsmodel.wording.say import Sentence
+
+METHOD_WORDS: dict[str, str] = {
+    "maximum likelihood": "maximum likelihood",
+    "penalised": "penalised likelihood",
+    "log-F": "maximum likelihood with log-F priors",
+    "exact": "exact conditional inference",
+}
+"""How each method of a plan is told."""
+
+
+def prior_words(m: float, labels: Sequence[str]) -> str:
+    """A prior in a few words."""
+    return f"a log-F({m:g}, {m:g}) prior for the odds ratio of {listed(list(labels))}"
 
 
 def _no_finite_estimate(facts: Mapping[str, Any]) -> str:
@@ -20,10 +33,12 @@ def _no_finite_estimate(facts: Mapping[str, Any]) -> str:
 
 
 def _beyond_budget(facts: Mapping[str, Any]) -> str:
+    budget = f"{facts['budget'] / 1e9:g} GB of memory" if facts["memory"] else f"{count(facts['budget'])} of them"
     return (
-        f"Exact inference was broken off at its budget of {facts['limit']}: of {count(facts['patterns'])} covariate "
-        f"patterns {count(facts['done'])} were worked off, with {count(facts['states'])} partial sums held. So many "
-        "records, or so many different values, do not need exact limits as a rule; the method penalised does without."
+        f"Exact inference was given up: after {count(facts['done'])} of "
+        f"{plural(facts['patterns'], 'covariate pattern')} it would have had to hold {count(facts['states'])} partial "
+        f"sums, more than its budget of {budget}. So many records, or so many different values, hardly need exact "
+        "limits: use the method penalised, or cut number columns into bands."
     )
 
 
@@ -38,9 +53,8 @@ def _sparse(facts: Mapping[str, Any]) -> str:
 
 def _disagree(facts: Mapping[str, Any]) -> str:
     return (
-        f"{facts['label']}: the profile-likelihood interval and the Wald interval disagree by "
-        f"{facts['distance']:.1f} standard errors at one end. The Wald interval rests on a symmetric likelihood, "
-        "which this is not: go by the profile interval."
+        f"{facts['label']}: the profile-likelihood interval and the Wald interval disagree noticeably. The Wald "
+        "interval rests on a symmetric likelihood, which this is not: go by the profile interval."
     )
 
 
@@ -76,12 +90,20 @@ SENTENCES: dict[str, Sentence] = {
     "penalised-name": "{name}, by penalised likelihood",
     "penalised-second-maximum": "The penalised likelihood has a second, lower maximum: its interval may not tell all "
     "values that fit the records.",
-    "no-certificate-of-method": "Digits are certified for maximum likelihood alone.",
+    "no-certificate-of-method": "Digits are certified for maximum likelihood, with or without a prior, and not for "
+    "this method.",
     "checks-of-method": "Checks that rest on the fit by maximum likelihood (goodness of fit, functional form, "
-    "influence) were not made, because this model was fitted in another way.",
-    "exact-no-tests": "Exact inference gives p-values for each coefficient of the exposure, no likelihood-ratio tests.",
+    "influence) were not made, because this model was not fitted by maximum likelihood alone.",
+    "no-certificate-without-maximum": "Where the likelihood has no maximum, no digits are certified.",
+    "separated-no-tests": "The likelihood of this model has no maximum, so trends and averages are not given.",
+    "average-without-contrast": "{label}: the levels stand against the reference, not against their average. {reason}",
+    "exact-no-tests": "Exact inference gives limits and p-values for each coefficient of the exposure, and neither "
+    "trends nor averages of levels.",
     "exact-no-likelihood": "Exact inference has no log-likelihood of the whole model.",
     "sparse-data-bias": _sparse,
+    "sparse-data-bias-withheld": "With few events for each coefficient, estimates by maximum likelihood lie too far "
+    "from 1 on average (Greenland, Mansournia & Altman 2016), and here an odds ratio by penalised likelihood is "
+    "noticeably nearer to it.",
     "limits-disagree": _disagree,
     "wald-fails": "{label}: the Wald test does not see what the likelihood-ratio test sees, as happens with large "
     "effects (Hauck & Donner 1977): go by the likelihood ratio and the profile interval.",

@@ -8,6 +8,7 @@ from typing import Any
 from oddsmodel.wording.numbers import decimal, listed
 from oddsmodel.wording.report_answer import AVERAGE
 from oddsmodel.wording.say import Sentence
+from oddsmodel.wording.study_methods import METHOD_WORDS, prior_words
 
 
 def _what_differs(facts: Mapping[str, Any]) -> str:
@@ -24,6 +25,10 @@ def _what_differs(facts: Mapping[str, Any]) -> str:
         parts.append(f"only records with {facts['keep']}")
     if facts["percent"]:
         parts.append(f"{facts['percent']} intervals")
+    if facts["method"] or facts["prior"]:
+        way = METHOD_WORDS[facts["method"]] if facts["method"] else ""
+        prior = prior_words(*facts["prior"]) if facts["prior"] else ""
+        parts.append(f"by {way}" if way and not prior else f"with {prior}")
     if facts["base"] is None:
         return "; ".join(parts)
     return f"As “{facts['base']}”, {'; '.join(parts)}" if parts else f"The same as “{facts['base']}”"

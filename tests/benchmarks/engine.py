@@ -1,6 +1,6 @@
 """Ratios of the engine against statsmodels and scikit-learn, side by side in one process.
 
-Run: python tests/benchmarks/engine.py [--quick] [--records 10000 100000 ...] [--columns 17 60]
+Run: python tests/benchmarks/engine.py [--quick] [--records 10000 100000 ...] [--columns 17 60] [--runs 5]
 The whole table takes about half an hour on two idle cores; --quick takes seconds, on few records.
 """
 
@@ -19,7 +19,6 @@ from timing import machine, side_by_side
 from oddsmodel.inference import Fit, maximise, profile_intervals
 from oddsmodel.likelihood import BinomialLikelihood
 
-RUNS = 5
 REFITTED = 2
 """So many limits are found by refitting; the time for all is that of these, multiplied."""
 
@@ -111,8 +110,9 @@ def main(arguments: Sequence[str] | None = None) -> None:
     parser.add_argument("--quick", action="store_true")
     parser.add_argument("--records", type=int, nargs="+", default=[10_000, 100_000, 1_000_000])
     parser.add_argument("--columns", type=int, nargs="+", default=[17, 60])
+    parser.add_argument("--runs", type=int, default=5)
     asked = parser.parse_args(arguments)
-    numbers, widths, runs = (asked.records, asked.columns, RUNS) if not asked.quick else ([2_000], [5], 1)
+    numbers, widths, runs = (asked.records, asked.columns, asked.runs) if not asked.quick else ([2_000], [5], 1)
     print(f"Medians of {runs} runs, one after another in turn; work of more than 20 s is done once. {machine()}")
     print("Others: multiples of the time of our fit (largest difference from it in standard errors).")
     print(f"Refitting: {REFITTED} limits by statsmodels Logit with an offset, their time multiplied to all limits,")

@@ -62,6 +62,46 @@ def test_statsmodels_agrees() -> None:
     assert steps.target_distance == pytest.approx(steps.distance, rel=1e-8)
 
 
+def test_the_table_of_patterns_holds_what_pregibon_names() -> None:
+    X, events, trials = counted()
+    result = check(grouped_model(X, events, trials, exposed=(1, 2)))
+    table = result.tables[1]
+    reference = sm.GLM(np.column_stack([events, trials - events]), X, family=sm.families.Binomial()).fit(tol=1e-14)
+    influence = reference.get_influence(observed=False)
+    h, pearson, deviance = influence.hat_matrix_diag, reference.resid_pearson, reference.resid_deviance
+    covariance = reference.cov_params()
+    raw = events - trials * reference.fittedvalues
+    shift = -((X @ covariance) * (raw / (1 - h))[:, None])
+    keys = [column.key for column in table.columns]
+    numbers = {
+        "leverage": h,
+        "pearson": pearson,
+        "deviance": deviance,
+        "delta_chi_square": pearson**2 / (1 - h),
+        "delta_deviance": deviance**2 + pearson**2 * h / (1 - h),
+        "distance": pearson**2 * h / (1 - h) ** 2,
+        "odds_ratio_1": np.exp(reference.params[1] + shift[:, 1]),
+        "odds_ratio_2": np.exp(reference.params[2] + shift[:, 2]),
+    }
+    order = ranked(steps_of(grouped_model(X, events, trials), (1, 2)).target_distance, 10)
+    for row, j in zip(table.rows, order, strict=True):
+        assert row[1:3] == (trials[j], events[j])
+        for key, values in numbers.items():
+            assert row[keys.index(key)] == pytest.approx(values[j], rel=1e-5, abs=1e-9)
+
+
+def test_the_table_of_vaso_names_patterns_4_and_18_first() -> None:
+    # Pregibon 1981, section 5: observations 4 and 18
+    X, y = vaso()
+    table = check(grouped_model(X, y, exposed=(1, 2))).tables[1]
+    keys = [column.key for column in table.columns]
+    pearson = [abs(row[keys.index("pearson")]) for row in table.rows]
+    reference = sm.GLM(y, X, family=sm.families.Binomial()).fit(tol=1e-14)
+    largest = np.sort(np.abs(reference.resid_pearson))[-2:]
+    assert np.sort(pearson[:2]) == pytest.approx(largest, rel=1e-6)
+    assert set(np.argsort(np.abs(reference.resid_pearson))[-2:]) == {3, 17}
+
+
 def test_one_step_is_newtons_first_step_without_the_pattern() -> None:
     X, events, trials = counted()
     model = grouped_model(X, events, trials)

@@ -13,8 +13,8 @@ from scipy.stats import skew
 from statsmodels.stats.weightstats import DescrStatsW
 
 from oddsmodel.measures.characteristics import characteristics, quartiles, study_characteristics
-from oddsmodel.model.kept import KeptRecords
 from oddsmodel.measures.groups import Groups, groups_of_study
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.records.types import Column
 from oddsmodel.results.tables import Table
 

@@ -11,9 +11,9 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from oddsmodel.model.kept import KeptRecords
 from oddsmodel.measures.crude_to_adjusted import adjustment_findings, crude_to_adjusted, crude_to_adjusted_table
 from oddsmodel.measures.wald import wald
+from oddsmodel.model.kept import KeptRecords
 from oddsmodel.results.study import CoefficientResult, CrudeEstimate, ProfileResult, WaldResult
 
 

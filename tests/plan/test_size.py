@@ -15,6 +15,8 @@ def test_sizes(text: str, size: int) -> None:
     assert bytes_of(text) == size
 
 
-@pytest.mark.parametrize("text", ["", "2", "GB", "two GB", "-2 GB", "999 MB", "2 gb", "2 GiB", "1e3 GB", "9" * 40 + " GB"])
+@pytest.mark.parametrize(
+    "text", ["", "2", "GB", "two GB", "-2 GB", "999 MB", "2 gb", "2 GiB", "1e3 GB", "9" * 40 + " GB"]
+)
 def test_no_sizes(text: str) -> None:
     assert bytes_of(text) is None

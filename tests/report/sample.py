@@ -10,12 +10,14 @@ from oddsmodel.results.figures import (
     CalibrationFigure,
     CalibrationGroup,
     CurveFigure,
+    CurvePoint,
     EstimateMark,
     EstimatesFigure,
     Figure,
     FlowFigure,
     HistogramFigure,
     ScatterFigure,
+    SpreadFigure,
     StepFigure,
 )
 from oddsmodel.results.study import (
@@ -186,6 +188,26 @@ def curve_figure() -> CurveFigure:
         tuple(
             (18 + 4 * k, 22 + 4 * k, None if k == 17 else int(300 * math.exp(-(((k - 9) / 5) ** 2)))) for k in range(18)
         ),
+    )
+
+
+def points_figure() -> CurveFigure:
+    """Groups in place of the curve; the last one's interval goes far beyond the rest."""
+    points = tuple(
+        CurvePoint(x, math.exp(0.02 * (x - 50)), 300, 0.5, 2.0 if x < 80 else 900.0) for x in (25, 40, 60, 85)
+    )
+    reference = CurvePoint(50.0, 1.0, 300)
+    return replace(curve_figure(), id="groups-age", curve=(), lower=(), upper=(), points=(*points, reference))
+
+
+def spread_figure() -> SpreadFigure:
+    return SpreadFigure(
+        "stability",
+        f"Odds ratios under all choices {HOSTILE}",
+        "From 1.12 to 1.75.",
+        tuple(1.12 + 0.01 * k for k in range(64)),
+        1.31,
+        1.75,
     )
 
 

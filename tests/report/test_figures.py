@@ -24,6 +24,8 @@ def every_kind(sample: ModuleType) -> list[Figure]:
         sample.calibration_figure(),
         sample.roc_figure(),
         sample.curve_figure(),
+        sample.points_figure(),
+        sample.spread_figure(),
         sample.histogram_figure(),
         sample.scatter_figure(),
     ]

@@ -188,8 +188,16 @@ def test_a_separated_model_has_no_number(tmp_path: Path) -> None:
     outcome, results = run(tmp_path, frame)
     model = results["models"][0]
     assert outcome.not_estimated
-    assert model["coefficients"] == []
-    assert model["log_likelihood"] is None
+    former = next(one for one in model["coefficients"] if one["level"] == "former")
+    assert former["odds_ratio"] is None
+    assert former["log_odds_ratio"] is None
+    assert former["profile"]["lower"] is None
+    assert former["reasons"]["odds_ratio"].startswith("No finite estimate: at or below")
+    others = [one for one in model["coefficients"] if one is not former]
+    assert all(one["odds_ratio"] is not None for one in others)
+    beside = results["models"][1]
+    assert (beside["id"], beside["method"], beside["added_by_program"]) == ("model-1-penalised", "penalised", True)
+    assert beside["status"] == "converged"
     stop = next(one for one in model["findings"] if one["code"] == "separated")
     assert "former" in stop["message"]
     assert "No finite estimate" in (outcome.folder / "report.html").read_text(encoding="utf-8")

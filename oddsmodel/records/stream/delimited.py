@@ -42,6 +42,7 @@ class DelimitedSource:
     decimal_point: str = "."
     first_row: int = 2
     reads_numbers_from_texts = True
+    any_order = True
 
     @property
     def name(self) -> str:

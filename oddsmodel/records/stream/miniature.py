@@ -21,6 +21,7 @@ from oddsmodel.records.arrow import (
 )
 from oddsmodel.records.raw import RawColumn, RawType
 from oddsmodel.records.rows import ROWS_NAMED, Positions, Weights
+from oddsmodel.records.stream.identity import IdentityTally
 from oddsmodel.records.stream.source import Source
 from oddsmodel.records.stream.tally import NumberTally, Tally, TextTally, WrittenNumberTally, one_spelling
 from oddsmodel.records.texts import text_column
@@ -32,14 +33,15 @@ class Miniature:
 
     raw: its different values (m,), each once, as `read_table` has them for every row. rows: behind each of them.
     different: how many numbers are met at least, where only the lowest and the highest are kept. days_only: whether all
-    its moments are midnights, of which only the day is kept. incomplete: the values are not known, since they did not
-    fit into memory.
+    its moments are midnights, of which only the day is kept. identity: of an identifier how many records have it, and
+    how many different ones there are, instead of its values. incomplete: neither is known, for want of memory.
     """
 
     raw: RawColumn
     rows: FoundRows
     different: int | None = None
     days_only: bool = False
+    identity: tuple[int, int] | None = None
     incomplete: bool = False
 
 
@@ -64,6 +66,15 @@ def miniature(source: Source, column: str, tally: Tally, kind: pa.DataType | Non
         return replace(found, days_only=days_only)
     rows = FoundRows(source, column, np.empty(0), np.arange(1), np.asarray([tally.rows]))
     return Miniature(RawColumn(pd.Series([np.nan]), "empty"), rows, incomplete=kind is not None)
+
+
+def identity_in_small(source: Source, column: str, tally: IdentityTally) -> Miniature:
+    """What was tallied of an identifier; the source is read again where few of them seem to repeat."""
+    different = tally.check(table[column] for table in source.tables([column]))
+    nothing = pd.Series(pd.Categorical([]))
+    rows = FoundRows(source, column, np.empty(0), np.empty(0, np.intp), np.empty(0, np.int64))
+    raw = RawColumn(nothing, "text", tally.stripped, tally.cleaned)
+    return Miniature(raw, rows, identity=(tally.records, different))
 
 
 def _of_texts(

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Iterator, Mapping, Sequence
+from collections import Counter
+from collections.abc import Collection, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Any
@@ -19,6 +20,8 @@ from oddsmodel.records.source import file_sha256, folder_sha256
 from oddsmodel.records.stream.source import Piece
 
 BUFFER = 1 << 20
+BYTES_OF_A_CODE = 4
+BYTES_OF_A_DICTIONARY = 1 << 20
 TEXTS = pa.dictionary(pa.int32(), pa.string())
 UNREADABLE = (pa.ArrowInvalid, pa.ArrowTypeError, pa.ArrowNotImplementedError, OSError)
 
@@ -38,17 +41,20 @@ class ParquetPart:
 
 @dataclass(frozen=True)
 class ParquetSource:
-    """See `Source`. schema: of the first file, to which the others are cast; as_texts: whole numbers kept as texts."""
+    """See `Source`. schema: of the first file, to which the others are cast. with_few_texts: columns (by their names in
+    the file) that are read as a dictionary of their texts and codes. as_texts: whole numbers kept as texts."""
 
     path: Path
     schema: pa.Schema
     parts: tuple[ParquetPart, ...]
     names: tuple[str, ...]
     block_rows: int
+    with_few_texts: frozenset[str] = frozenset()
     as_texts: frozenset[str] = frozenset()
     findings: tuple[Finding, ...] = ()
     first_row: int = 1
     reads_numbers_from_texts = False
+    any_order = False
 
     @property
     def name(self) -> str:
@@ -133,8 +139,8 @@ class ParquetSource:
 
         fields = {name: self._field(name) for name in columns}
         physical = [field.name for field in fields.values() if field.name not in part.constants]
-        texts = [field.name for field in fields.values() if field.name in physical and _as_dictionary(field.type)]
-        with pa_parquet.ParquetFile(part.path, read_dictionary=texts, pre_buffer=False, buffer_size=BUFFER) as file:
+        coded = [name for name in physical if name in self.with_few_texts]
+        with pa_parquet.ParquetFile(part.path, read_dictionary=coded, pre_buffer=False, buffer_size=BUFFER) as file:
             groups = list(range(group, len(part.groups)))
             rows_alone = physical or file.schema_arrow.names[:1]
             for batch in file.iter_batches(self.block_rows, row_groups=groups, columns=rows_alone):
@@ -146,7 +152,7 @@ class ParquetSource:
             array = pa.repeat(pa.scalar(part.constants[field.name], field.type), batch.num_rows)
         else:
             array = batch.column(field.name)
-        kind = TEXTS if _as_dictionary(field.type) else field.type
+        kind = TEXTS if field.name in self.with_few_texts else field.type
         if array.type != kind:
             array = array.cast(field.type)
             array = array.dictionary_encode() if kind is TEXTS else array
@@ -165,22 +171,33 @@ def open_parquet(path: Path, block_rows: int) -> ParquetSource:
     try:
         dataset = parquet_dataset(path, name)
         folders = {one.path: pa_dataset.get_partition_keys(one.partition_expression) for one in dataset.get_fragments()}
-        parts = []
+        parts, files = [], []
         for file in parquet_files(path) if path.is_dir() else [path]:
             metadata = pa_parquet.read_metadata(str(file))
             groups = tuple(metadata.row_group(at).num_rows for at in range(metadata.num_row_groups))
             parts.append(ParquetPart(str(file), groups, folders.get(str(file), {})))
+            files.append(metadata)
     except UNREADABLE as error:
         raise InputFault(fault("parquet-not-readable", name)) from error
     if not any(part.rows for part in parts):
         raise InputFault(fault("no-rows", name))
     names = vetted_names(dataset.schema.names, name)
-    return ParquetSource(path, dataset.schema, tuple(parts), tuple(names), block_rows)
+    few = frozenset(_with_few_texts(dataset.schema, files))
+    return ParquetSource(path, dataset.schema, tuple(parts), tuple(names), block_rows, few)
 
 
-def _as_dictionary(kind: pa.DataType) -> bool:
-    """Whether a column is read as a dictionary of its texts and their codes."""
-    return bool(pa.types.is_string(kind))
+def _with_few_texts(schema: pa.Schema, files: Iterable[Any]) -> Iterator[str]:
+    """The columns whose values take so few bytes in the files (their metadata) that most must be codes of texts."""
+    texts = {field.name for field in schema if pa.types.is_string(field.type)}
+    bytes_of, values_of = Counter[str](), Counter[str]()
+    for metadata in files:
+        for group in range(metadata.num_row_groups):
+            for at in range(metadata.num_columns):
+                column = metadata.row_group(group).column(at)
+                if column.path_in_schema in texts:
+                    bytes_of[column.path_in_schema] += column.total_uncompressed_size
+                    values_of[column.path_in_schema] += column.num_values
+    yield from (name for name in texts if bytes_of[name] <= BYTES_OF_A_DICTIONARY + BYTES_OF_A_CODE * values_of[name])
 
 
 def _plain_type(kind: pa.DataType) -> pa.DataType:

@@ -13,7 +13,7 @@ from oddsmodel.errors import Fault, InputFault
 from oddsmodel.findings import Finding
 from oddsmodel.plan.schema import StudyPlan
 from oddsmodel.progress import Progress
-from oddsmodel.records.coding import CodedColumn, RawValues, code_column, described
+from oddsmodel.records.coding import CodedColumn, RawValues, code_column, described, repeats_found
 from oddsmodel.records.condition import vet_condition
 from oddsmodel.records.counts import faults_of_counts
 from oddsmodel.records.dates import orders_of_dates, parse_dates
@@ -22,6 +22,7 @@ from oddsmodel.records.event_when import WHERE
 from oddsmodel.records.faults import fault, in_column
 from oddsmodel.records.follow_up import Days
 from oddsmodel.records.groups import faults_of_groups
+from oddsmodel.records.kinds import kind_by_plan
 from oddsmodel.records.made_outcome import (
     Table,
     column_of_outcome,
@@ -33,6 +34,7 @@ from oddsmodel.records.made_outcome import (
 )
 from oddsmodel.records.outcome import CodedOutcome, code_outcome
 from oddsmodel.records.plan_use import (
+    columns_in_use,
     columns_missing,
     columns_used,
     faults_of_conditions,
@@ -59,6 +61,7 @@ from oddsmodel.results.derived import DerivedColumn
 from oddsmodel.wording import finding
 
 BYTES_OF_A_GROUP = 200
+NOTHING = pd.Series(pd.Categorical([]))
 
 
 @dataclass(frozen=True)
@@ -156,10 +159,9 @@ class Settling:
 
     def _column(self, name: str, used: set[str]) -> CodedColumn:
         section, small = section_of(name, self.plan), self.in_small[name]
-        if small.incomplete:
-            nothing = pd.Series(pd.Categorical([]))
-            told = (finding("caution", "identifier-not-checked", column=name),)
-            return CodedColumn(nothing, described(name, "identifier", section), None, told)
+        if small.incomplete or small.identity is not None:
+            kind = kind_by_plan(section) or "identifier"
+            return CodedColumn(NOTHING, described(name, kind, section), None, _said(name, kind, small))
         coded = code_column(self.raw(name), section, use_of(name, used, self.plan))
         if coded.column.kind == "date" and name in self._dates and not coded.faults:
             try:
@@ -188,8 +190,9 @@ class Settling:
         return np.ones(len(counts.values)) if weights is None else weights
 
     def _codes(self) -> dict[str, ColumnCode]:
-        """How the columns that are not at fault are coded."""
-        ranges = plausible_ranges(self.plan)
+        """How the columns that are not at fault are coded, identifiers and dates only where the plan asks for them."""
+        ranges, in_use = plausible_ranges(self.plan), columns_in_use(self.plan, self.coded)
+        in_use.update(name for name in (self.plan.records.grouped_by,) if name is not None)
         return {
             name: ColumnCode(
                 column.column,
@@ -202,7 +205,7 @@ class Settling:
                 day_first=column.day_first,
             )
             for name, column in self.coded.items()
-            if not column.faults
+            if not column.faults and (name in in_use or column.column.kind not in ("identifier", "date"))
         }
 
     def _everyone(self, name: str, column: CodedColumn) -> tuple[str, ...] | None:
@@ -252,7 +255,7 @@ class Settling:
         except InputFault as refused:
             self.faults.extend(refused.faults)
             return None
-        self.coded[outcome.column_name] = CodedColumn(pd.Series(pd.Categorical([])), column_of_outcome(outcome))
+        self.coded[outcome.column_name] = CodedColumn(NOTHING, column_of_outcome(outcome))
         return told_of_late_events(self.together.late, outcome)
 
     def _dates_in_small(self) -> Table:
@@ -323,6 +326,18 @@ class _DatesInSmall(Table):
 
     def rows_of(self, name: str) -> Rows:
         return self.small[name].rows
+
+
+def _said(name: str, kind: str, small: Miniature) -> tuple[Finding, ...]:
+    """What is to be said of an identifier whose values are not kept."""
+    if kind == "date":
+        return ()
+    if small.identity is None:
+        return (finding("caution", "identifier-not-checked", column=name),)
+    records, different = small.identity
+    if records == 0:
+        return (finding("caution", "column-empty", column=name),)
+    return repeats_found(name, records, different)
 
 
 def outline_of(source: Source) -> RawTable:

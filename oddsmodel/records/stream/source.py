@@ -30,7 +30,7 @@ class Source(Protocol):
 
     name: what messages call it. names: of its columns; refused: those that hold no plain values, and what they hold.
     rows, blocks: how many. first_row: what its first row is called. reads_numbers_from_texts: whether the types of its
-    columns are told from what is written in them.
+    columns are told from what is written in them. any_order: whether a block costs the same alone as after another one.
     """
 
     @property
@@ -56,6 +56,9 @@ class Source(Protocol):
 
     @property
     def reads_numbers_from_texts(self) -> bool: ...
+
+    @property
+    def any_order(self) -> bool: ...
 
     def sha256(self) -> str: ...
 

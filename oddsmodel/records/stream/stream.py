@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, replace
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
@@ -25,6 +27,7 @@ from oddsmodel.records.renamed import renamed
 from oddsmodel.records.same_value import same_value_key
 from oddsmodel.records.source import GZIP, OLD_SPREADSHEET, PARQUET, ZIP
 from oddsmodel.records.stream.blocks import Blocks, CodedBlock
+from oddsmodel.records.stream.cursor import Cursor
 from oddsmodel.records.stream.delimited import open_delimited
 from oddsmodel.records.stream.parquet import open_parquet
 from oddsmodel.records.stream.settle import Settling, outline_of, with_repairs
@@ -32,6 +35,10 @@ from oddsmodel.records.stream.source import Source, rows_of_blocks
 from oddsmodel.records.stream.survey import Wanted, take_survey
 from oddsmodel.records.types import Column, LeftOut, Records
 from oddsmodel.results.derived import DerivedColumn
+
+GROUPED_BY = "the plan, [records] grouped_by"
+MOST_ROOM = 1 << 31
+"""Bytes of different texts beyond which one array cannot hold them."""
 
 
 @dataclass(frozen=True)
@@ -62,13 +69,20 @@ class RecordStream:
         return self.parts.source.blocks
 
     def block(self, number: int) -> Records:
-        """One block of at most `BLOCK` rows. Raises: InputFault for a file that is no longer what it was."""
-        return next(self.blocks(number, number + 1))
+        """One block of at most `BLOCK` rows, for any thread. Raises: InputFault for a file that is not what it was."""
+        return self._records(self.parts.coded(self._cursor.table(number), self.parts.codes))
 
     def blocks(self, first: int = 0, end: int | None = None) -> Iterator[Records]:
         """The blocks `first` up to `end`, all by default, each read once. Raises: InputFault as `block` does."""
         for coded in self.parts.read(self.parts.codes, first, end):
             yield self._records(coded)
+
+    @cached_property
+    def _cursor(self) -> Cursor:
+        return Cursor(self.parts.source, [code.in_file for code in self.parts.codes.values()])
+
+    def __getstate__(self) -> dict[str, Any]:
+        return {name: value for name, value in self.__dict__.items() if name != "_cursor"}
 
     def outcome_of(self, block: Records) -> CodedOutcome:
         """The outcome of a block, the event as it is among all records."""
@@ -114,10 +128,11 @@ def open_stream(path: Path, plan: StudyPlan, progress: Progress, *, memory: int)
     read = [name for name in names if name in used]
     in_file = dict(zip(names, [name for name in source.names if name not in source.refused], strict=True))
     wanted = {in_file[name]: _wanted(name, used, plan) for name in read}
-    source, surveyed = take_survey(source, wanted, progress, memory=memory // 4)
+    room = min(memory // 4, MOST_ROOM)
+    source, surveyed = take_survey(source, wanted, progress, memory=room)
     outline = with_repairs(outline, source, surveyed)
     in_small = {name: surveyed[in_file[name]] for name in read}
-    settled = Settling(plan, source, outline, in_small, progress, memory // 4, faults).settled()
+    settled = Settling(plan, source, outline, in_small, progress, room, faults).settled()
     return RecordStream(
         columns=settled.columns,
         read=settled.read,
@@ -136,8 +151,7 @@ def open_stream(path: Path, plan: StudyPlan, progress: Progress, *, memory: int)
 
 def _opened(path: Path, plan: StudyPlan, memory: int) -> Source:
     """The source of a kind told by the first bytes of the file."""
-    columns = 8 + len(plan.columns)
-    rows = rows_of_blocks(memory, columns)
+    rows = rows_of_blocks(memory, _columns_at_most(plan))
     if path.is_dir():
         return open_parquet(path, rows)
     if not path.exists():
@@ -163,13 +177,33 @@ def _opened(path: Path, plan: StudyPlan, memory: int) -> Source:
     )
 
 
+def _columns_at_most(plan: StudyPlan) -> int:
+    """A number that the columns of a block will not exceed: of the words of the plan that may be their names."""
+    texts = [text for model in plan.models for text in (model.formula, *model.add, *model.exposures, model.keep or "")]
+    texts += [plan.records.keep or "", plan.outcome.event_when or ""]
+    words = {word for text in texts for word in re.findall(r"\w+", text)}
+    sources = {source for section in plan.derived.values() for source in section.sources}
+    return len(words | sources | {*plan.columns, *plan.derived, *plan.outcome.dates}) + 3
+
+
 def _wanted(name: str, used: set[str], plan: StudyPlan) -> Wanted:
     """What must be known of a column before its blocks can be coded."""
     section, use = section_of(name, plan), use_of(name, used, plan)
     kind = kind_by_plan(section)
     every_value = use in ("outcome", "count") or (kind is not None and kind != "number")
-    may_remain_unknown = kind == "identifier" and use == "model" and name != plan.records.grouped_by
-    return Wanted(every_value, kind == "number" and use == "model", may_remain_unknown)
+    if kind not in ("identifier", "date") or use != "model" or name in _valued(plan):
+        asked_by = GROUPED_BY if name == plan.records.grouped_by else ""
+        return Wanted(every_value, kind == "number" and use == "model", asked_by=asked_by)
+    own = section.not_recorded if section is not None else None
+    texts = plan.records.not_recorded if own is None else own
+    keys = frozenset(same_value_key(text) for text in texts) if kind == "identifier" else None
+    return Wanted(every_value, identity=keys, if_it_fits=True)
+
+
+def _valued(plan: StudyPlan) -> set[str]:
+    """Columns of which every value must be known, whatever they are."""
+    sources = {source for section in plan.derived.values() for source in section.sources}
+    return {*sources, *plan.outcome.dates, *(name for name in (plan.records.grouped_by,) if name is not None)}
 
 
 def _number(label: str, numbers: np.ndarray) -> float:

@@ -11,7 +11,8 @@ from oddsmodel.errors import InputFault
 from oddsmodel.progress import Progress
 from oddsmodel.records.arrow import plain_values, what_it_holds
 from oddsmodel.records.faults import fault, in_column
-from oddsmodel.records.stream.miniature import Miniature, miniature
+from oddsmodel.records.stream.identity import IdentityTally
+from oddsmodel.records.stream.miniature import Miniature, identity_in_small, miniature
 from oddsmodel.records.stream.source import Source
 from oddsmodel.records.stream.tally import NumberTally, RowTally, Tally, TextTally, WrittenNumberTally
 
@@ -27,11 +28,15 @@ LADDER = [
 @dataclass(frozen=True, slots=True)
 class Wanted:
     """What must be known of a column. every_value: also of numbers however many different ones; numbers: the plan says
-    that it is one of numbers; if_it_fits: its values may remain unknown where they do not fit into memory."""
+    that it is one of numbers; identity: no more than whether its values repeat, `identity` being the keys of the texts
+    that mean "not recorded"; if_it_fits: nothing, where it does not fit into memory; asked_by: the key of the plan that
+    needs all values."""
 
     every_value: bool = False
     numbers: bool = False
+    identity: frozenset[str] | None = None
     if_it_fits: bool = False
+    asked_by: str = ""
 
 
 @dataclass
@@ -77,6 +82,8 @@ def _in_small(source: Source, name: str, one: _Column) -> Miniature:
     if one.tally is None:
         return miniature(source, name, one.nothing, None)
     one.tally.add_missing(one.nothing.rows)
+    if isinstance(one.tally, IdentityTally):
+        return identity_in_small(source, name, one.tally)
     return miniature(source, name, one.tally, one.types[0])
 
 
@@ -120,6 +127,8 @@ def _add(one: _Column, values: pa.ChunkedArray, source: Source, name: str) -> No
 
 def _tally_for(kind: pa.DataType, wanted: Wanted, source: Source, name: str) -> Tally:
     holds = what_it_holds(kind)
+    if wanted.identity is not None:
+        return IdentityTally(wanted.identity, as_texts=source.keeps_as_texts(name))
     if holds in ("numbers", "whole numbers") and not source.keeps_as_texts(name):
         return NumberTally(keep_all=wanted.every_value)
     if holds == "texts" and wanted.numbers and not wanted.every_value:
@@ -145,12 +154,20 @@ def _highest(types: list[pa.DataType]) -> pa.DataType:
 
 
 def _keep_to(memory: int, columns: Mapping[str, _Column], source: Source) -> None:
-    """Give up on the largest column where everything together takes too much. Raises: InputFault where it is needed."""
+    """Keep less of the largest column where everything together takes too much.
+
+    Raises: InputFault where all of it is needed.
+    """
     sizes = {name: one.tally.size for name, one in columns.items() if one.tally is not None}
     while sum(sizes.values()) > memory:
         name = max(sizes, key=lambda one: sizes[one])
         one = columns[name]
+        numbers = one.tally.numbers if isinstance(one.tally, WrittenNumberTally) else one.tally
+        if isinstance(numbers, NumberTally) and numbers.shorten():
+            sizes[name] = numbers.size
+            continue
         if not one.wanted.if_it_fits or one.tally is None:
-            raise InputFault(fault("too-many-values", in_column(source.name, name)))
+            told = fault("needs-memory", key) if (key := one.wanted.asked_by) else None
+            raise InputFault(told or fault("too-many-values", in_column(source.name, name)))
         one.tally = RowTally(one.tally.rows, one.tally.missing)
         sizes[name] = 0

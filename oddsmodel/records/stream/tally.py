@@ -19,6 +19,8 @@ EDGE = 64
 SMALL_RANGE = 65_536
 SMALL = 65_536
 WHOLE_BOUND = 2**53
+BYTES_OF_A_TEXT = 200
+"""What a text takes beside its letters while different ones are sought, and when a column is settled."""
 
 
 class Tally(Protocol):
@@ -85,7 +87,7 @@ class TextTally:
         order = np.arange(len(dictionary)) if self._by_dictionary else _as_met(codes, counts)
         self._pending.append((dictionary.take(pa.array(order)), counts[order]))
         self._waiting += len(order)
-        self._size += self._pending[-1][0].nbytes + 8 * len(order)
+        self._size += self._pending[-1][0].nbytes + BYTES_OF_A_TEXT * len(order)
         self._last = None
         known = 0 if self._values is None else len(self._values)
         if known + self._waiting <= SMALL or self._waiting >= known:
@@ -118,7 +120,7 @@ class TextTally:
         codes = encoded.indices.to_numpy().astype(np.intp)
         self._counts = occurrences(codes, len(self._values), np.concatenate(counts))
         self._pending, self._waiting = [], 0
-        self._size = self._values.nbytes + self._counts.nbytes
+        self._size = self._values.nbytes + BYTES_OF_A_TEXT * len(self._values)
 
 
 def _as_met(codes: Positions, counts: Weights) -> Positions:
@@ -141,7 +143,7 @@ class NumberTally:
         self.whole = True
         self.lowest = self.highest = np.nan
         self.different: int | None = None
-        self._keep_all = keep_all
+        self._keep_all, self._most = keep_all, MOST_NUMBERS
         self._values, self._counts = np.empty(0), np.empty(0, np.int64)
         self._pending: list[tuple[NDArray[np.float64], Weights]] = []
         self._waiting = 0
@@ -177,6 +179,14 @@ class NumberTally:
     def size(self) -> int:
         return 16 * (len(self._values) + self._waiting)
 
+    def shorten(self) -> bool:
+        """Keep the lowest and the highest numbers alone; whether that is allowed, and leaves fewer."""
+        if self._keep_all or len(self._values) + self._waiting <= 2 * EDGE:
+            return False
+        self._most = 0
+        self._merge()
+        return True
+
     def all(self) -> tuple[NDArray[np.float64], Weights]:
         """The different numbers (k,) that are kept, in order, and the rows that hold each."""
         self._merge()
@@ -206,7 +216,7 @@ class NumberTally:
             counts = np.concatenate([self._counts, *(part for _, part in self._pending)])
             self._values, self._counts = values, occurrences(at, len(values), counts)
             self._pending, self._waiting = [], 0
-        if self._keep_all or (self.different is None and len(self._values) <= MOST_NUMBERS):
+        if self._keep_all or (self.different is None and len(self._values) <= max(self._most, 2 * EDGE)):
             return
         if self.different is None:
             self.different = len(self._values)

@@ -66,6 +66,7 @@ def look_through(path: Path, source: str) -> TextBytes:
 
 def _utf_16(file: BinaryIO, path: Path, source: str, encoding: str) -> TextBytes:
     digest, decoder, lines = hashlib.sha256(), codecs.getincrementaldecoder(encoding)(), 1
+    nul_at: int | None = None
     while True:
         data = file.read(PART)
         digest.update(data)
@@ -73,11 +74,13 @@ def _utf_16(file: BinaryIO, path: Path, source: str, encoding: str) -> TextBytes
             text = decoder.decode(data, final=not data)
         except UnicodeDecodeError as error:
             raise InputFault(fault("encoding-not-read", source, encoding="damaged UTF-16")) from error
-        nul = text.find("\0")
-        if nul >= 0:
-            raise InputFault(fault("nul-bytes", f"{source}, row {lines + text.count(chr(10), 0, nul)}"))
+        at = text.find("\0")
+        if nul_at is None and at >= 0:
+            nul_at = lines + text.count("\n", 0, at)
         lines += text.count("\n")
         if not data:
+            if nul_at is not None:
+                raise InputFault(fault("nul-bytes", f"{source}, row {nul_at}"))
             told = finding("note", "encoding-converted", encoding="UTF-16")
             return TextBytes(path, digest.hexdigest(), encoding, 2, (told,))
 

@@ -15,7 +15,7 @@ from oddsmodel.records.delimiter import HEAD, detect_delimiter
 from oddsmodel.records.faults import fault
 from oddsmodel.records.header import header_end, header_names
 from oddsmodel.records.stream.text_bytes import PART, TextBytes, look_through
-from oddsmodel.records.stream.text_rows import LINE_FEED, row_ends, text_of_rows
+from oddsmodel.records.text_rows import blank_lines, row_ends, text_of_rows
 from oddsmodel.records.unreadable import LONGEST_FIELD
 from oddsmodel.wording import finding
 
@@ -198,8 +198,7 @@ class _Rows:
         """Blank lines before another row are worth a note."""
         if real.all() and not self._blank:
             return
-        characters = np.frombuffer(data, dtype=np.uint8)
-        blank = ~real & (characters[ends - 1] == LINE_FEED)
+        blank = blank_lines(data, ends)
         last = int(np.flatnonzero(real)[-1]) if real.any() else -1
         self.blank_lines = self.blank_lines or bool(blank[: last + 1].any()) or (self._blank and last >= 0)
         self._blank = bool(blank[last + 1 :].any()) or (self._blank and last < 0)

@@ -2,7 +2,18 @@
 
 from __future__ import annotations
 
-from oddsmodel.report.figures import calibration, curve, estimates, flow, histogram, precision, roc, scatter
+from oddsmodel.report.figures import (
+    calibration,
+    curve,
+    envelope,
+    estimates,
+    flow,
+    histogram,
+    precision,
+    roc,
+    scatter,
+    spread,
+)
 from oddsmodel.report.figures.canvas import Sheet
 from oddsmodel.results import figures as values
 
@@ -28,7 +39,11 @@ def _sheet(figure: values.Figure) -> Sheet:
             return precision.draw(figure)
         case values.CurveFigure():
             return curve.draw(figure)
+        case values.SpreadFigure():
+            return spread.draw(figure)
         case values.HistogramFigure():
             return histogram.draw(figure)
         case values.ScatterFigure():
             return scatter.draw(figure)
+        case values.EnvelopeFigure():
+            return envelope.draw(figure)

@@ -9,17 +9,17 @@ from oddsmodel.report.figures.lettering import fold
 from oddsmodel.report.figures.plot import Plot
 from oddsmodel.report.figures.scales import plain_labels, plain_ticks, ratio_label, ratio_range, ratio_ticks
 from oddsmodel.report.figures.strokes import marker, outline, wash
-from oddsmodel.results.figures import CurveFigure
+from oddsmodel.results.figures import CurveFigure, CurvePoint
 from oddsmodel.wording import say
 
 _LEFT, _WIDTH, _HEIGHT, _STRIP = 46.0, 326.0, 210.0, 46.0
-_STRAIGHT = (5.0, 3.0)
+_STRAIGHT, _SPOT = (5.0, 3.0), 7.0
 
 
 def draw(figure: CurveFigure) -> Sheet:
     title = fold(figure.x_label, SMALL, _WIDTH)
     entries = [
-        KeyEntry(say("figure-curve"), FIRST),
+        KeyEntry(say("figure-groups"), FIRST, ring=True) if figure.points else KeyEntry(say("figure-curve"), FIRST),
         KeyEntry(say("figure-straight"), SECOND, _STRAIGHT),
         KeyEntry(say("figure-reference", value=plain_labels([figure.reference])[0]), INK, ring=True, stroke=1.0),
     ]
@@ -30,7 +30,9 @@ def draw(figure: CurveFigure) -> Sheet:
     sheet.text(0, top - 8, say("figure-odds-ratio-log"), size=SMALL, colour=INK)
 
     across = (min(figure.x), max(figure.x))
-    low, high = ratio_range((*figure.curve, *figure.straight), (*figure.lower, *figure.upper), beyond=4.0)
+    limits = [limit for point in figure.points for limit in (point.lower, point.upper) if limit is not None]
+    estimates = (*figure.curve, *figure.straight, *(point.ratio for point in figure.points))
+    low, high = ratio_range(estimates, (*figure.lower, *figure.upper, *limits), beyond=4.0)
     plot = Plot(sheet, _LEFT, top, _WIDTH, _HEIGHT, x=across, y=(low, high), log=True)
     ticks = ratio_ticks(low, high, _HEIGHT, apart=26.0)
     plot.left_axis(ticks, [ratio_label(tick) for tick in ticks])
@@ -40,15 +42,27 @@ def draw(figure: CurveFigure) -> Sheet:
         _density(sheet, figure, across, top + _HEIGHT).bottom_axis(ticks, plain_labels(ticks))
     else:
         plot.bottom_axis(ticks, plain_labels(ticks))
-    plot.between(figure.x, figure.lower, figure.upper, FIRST, 0.16)
+    if figure.curve:
+        plot.between(figure.x, figure.lower, figure.upper, FIRST, 0.16)
     plot.level(1.0, MUTED, width=1.4)
     plot.line(figure.x, figure.straight, SECOND, width=1.8, dashes=_STRAIGHT)
-    plot.line(figure.x, figure.curve, FIRST, width=2.4)
+    if figure.curve:
+        plot.line(figure.x, figure.curve, FIRST, width=2.4)
+    for point in figure.points:
+        _point(plot, point)
     x, y = float(plot.x.at(figure.reference)), float(plot.y.at(1.0))
     plot.put(marker(x, y, "circle", RING, INK, PAPER, 1.0))
     for place, words in enumerate(title):
         sheet.text(_LEFT + _WIDTH, bottom + 36 + 16 * place, words, size=SMALL, anchor="end")
     return sheet
+
+
+def _point(plot: Plot, point: CurvePoint) -> None:
+    """A group: its odds ratio with its interval, the reference without one."""
+    if point.lower is not None and point.upper is not None:
+        plot.line([point.x, point.x], [point.lower, point.upper], FIRST, width=1.8)
+    x, y = float(plot.x.at(point.x)), float(plot.y.at(point.ratio))
+    plot.put(marker(x, y, "circle", _SPOT, FIRST, FIRST, 1.0))
 
 
 def _density(sheet: Sheet, figure: CurveFigure, across: tuple[float, float], top: float) -> Plot:

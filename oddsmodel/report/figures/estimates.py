@@ -96,9 +96,14 @@ def draw(figure: EstimatesFigure) -> Sheet:
     return sheet
 
 
+def _is_drawn(mark: EstimateMark) -> bool:
+    """Whether there is an estimate, or a limit on one side without one."""
+    return (mark.estimate, mark.lower, mark.upper) != (None, None, None)
+
+
 def _row(mark: EstimateMark, several: bool) -> _Row:
     if mark.estimate is None:
-        words = [say("figure-no-estimate")]
+        words = fold(say("at-limit", lower=mark.lower, upper=mark.upper), SMALL, _NUMBERS_WIDTH - 8.0)
     else:
         ratio = numbers.ratio(mark.estimate)
         room = _NUMBERS_WIDTH - 8.0
@@ -116,13 +121,13 @@ def _row(mark: EstimateMark, several: bool) -> _Row:
 
 
 def _axis(marks: tuple[EstimateMark, ...], left: float, right: float) -> _Axis:
-    low, high = ratio_range(
-        (mark.estimate for mark in marks if mark.estimate is not None),
-        (limit for mark in marks for limit in (mark.lower, mark.upper) if limit is not None),
-    )
+    limits = [limit for mark in marks for limit in (mark.lower, mark.upper) if limit is not None]
+    alone = [limit for mark in marks if mark.estimate is None for limit in (mark.lower, mark.upper) if limit]
+    low, high = ratio_range([*(mark.estimate for mark in marks if mark.estimate is not None), *alone], limits)
     open_room = (high / low) ** 0.12
-    low = low / open_room if any(mark.lower is None for mark in marks if mark.estimate is not None) else low
-    high = high * open_room if any(mark.upper is None for mark in marks if mark.estimate is not None) else high
+    drawn = [mark for mark in marks if _is_drawn(mark)]
+    low = low / open_room if any(mark.lower is None for mark in drawn) else low
+    high = high * open_room if any(mark.upper is None for mark in drawn) else high
     return _Axis(low, high, left, right)
 
 
@@ -155,9 +160,10 @@ def _estimate(sheet: Sheet, row: _Row, axis: _Axis, top: float, series: int) -> 
         sheet.text(0, middle + 4 + LINE * number, words, size=SMALL, colour=MUTED)
     x = axis.right + 14.0
     for number, words in enumerate(row.numbers):
-        sheet.text(x, middle + 4 + LINE * number, words, size=SMALL, colour=INK if mark.estimate else MUTED)
-    if mark.estimate is not None:
+        sheet.text(x, middle + 4 + LINE * number, words, size=SMALL, colour=INK if _is_drawn(mark) else MUTED)
+    if _is_drawn(mark):
         _interval(sheet, mark, axis, middle, colour)
+    if mark.estimate is not None:
         hollow = series % len(SERIES) != 0
         shape, size = SHAPES[series % len(SHAPES)], 8.0 if series == 0 else 7.0
         fill = PAPER if hollow else FIRST

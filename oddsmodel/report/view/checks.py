@@ -41,7 +41,8 @@ def checks(model: ModelResult, sheets: Sheets) -> ChecksView:
     return ChecksView(
         lines=tuple(_check(check, sheets) for check in model.checks if check.name in kept),
         further=tuple(_check(check, sheets) for check in model.checks if check.name not in kept),
-        certificate=say("certificate", digits=certificate.digits, condition=certificate.condition_number),
+        certificate=model.reasons.get("certificate")
+        or say("certificate", digits=certificate.digits, condition=certificate.condition_number),
     )
 
 

@@ -5,7 +5,8 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 
-from oddsmodel.results.lead import EXACT, exposures_shown, has_profile, is_estimated
+from oddsmodel.report.view.models import method_beside
+from oddsmodel.results.lead import EXACT, SEPARATED, companion, exposures_shown, has_profile, is_told
 from oddsmodel.results.study import DisclosedResults, ModelResult, StudyResults
 from oddsmodel.wording import numbers, say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
@@ -18,20 +19,21 @@ Told = tuple[str, tuple[str, ...]]
 @dataclass(frozen=True, slots=True)
 class MethodsView:
     paragraphs: tuple[str, ...]
-    formulas: tuple[tuple[str, str], ...]
+    formulas: tuple[tuple[str, str, str], ...]
+    """Name, formula, and method in words where the models differ in it."""
     references: tuple[str, ...]
 
 
 def methods(disclosed: DisclosedResults, lead: ModelResult | None) -> MethodsView:
     study = disclosed.study
     parts = [list(_records(study, lead))]
-    if lead is not None and is_estimated(lead):
+    if lead is not None and is_told(lead):
         parts += [list(_model(study, lead)), list(_described(study, lead))]
     parts.append(list(_written(disclosed)))
     cited = sorted({reference for part in parts for _, references in part for reference in references})
     return MethodsView(
         paragraphs=tuple(" ".join(sentence for sentence, _ in part) for part in parts if part),
-        formulas=tuple((model.name, model.formula) for model in study.models),
+        formulas=tuple((model.name, model.formula, method_beside(study, model)) for model in study.models),
         references=tuple(REFERENCES[code] for code in cited),
     )
 
@@ -58,8 +60,16 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
         groups, column = lead.groups, lead.grouped_by
         told = say("methods-grouped", groups=groups, df=groups - 1, column=column, level=level)
         yield told, ("cameron-miller-2015", "liang-zeger-1986", "wald-1943")
+    elif lead.status == SEPARATED:
+        yield from _separated(study, lead, level)
     elif lead.method == EXACT:
         yield say("methods-exact", level=level), ()
+    elif lead.method == "penalised":
+        yield say("methods-profile-penalised", level=level), ("heinze-schemper-2002", "wald-1943")
+    elif lead.method == "log-F":
+        prior = next((one.facts for one in lead.findings if one.code == "prior-in-words"), None)
+        told = say("methods-profile-prior", level=level, prior=prior)
+        yield told, ("greenland-mansournia-2015", "venzon-moolgavkar-1988", "wald-1943")
     elif has_profile(lead):
         yield say("methods-profile", level=level), ("venzon-moolgavkar-1988", "wald-1943")
     else:
@@ -70,6 +80,8 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
         yield say("methods-terms"), ()
     if any(one.crude is not None for one in exposures_shown(lead)):
         yield say("methods-crude"), ("greenland-1999",)
+    if any(table.id == "corrected_intercept" for model in study.models for table in model.tables):
+        yield say("methods-corrected-intercept"), ("puhr-2017",)
     if any(table.id.startswith("two_by_two") for table in lead.tables):
         yield say("methods-two-by-two"), ("woolf-1955", "breslow-day-1980")
     if lead.adjustment:
@@ -87,6 +99,17 @@ def _model(study: StudyResults, lead: ModelResult) -> Iterator[Told]:
     others = [model.name for model in study.models if not model.added_by_program]
     if len(others) > 1:
         yield say("methods-several-models", number=len(others), names=others), ()
+    for method in dict.fromkeys(model.method for model in study.models if not model.added_by_program):
+        if method != lead.method:
+            named = [model.name for model in study.models if model.method == method and not model.added_by_program]
+            yield say("methods-other-method", method=method, names=named), METHOD_REFERENCES.get(method, ())
+
+
+def _separated(study: StudyResults, lead: ModelResult, level: str) -> Iterator[Told]:
+    """How separation was found, and what is told of a model that has no maximum."""
+    yield say("methods-separated", level=level), ("albert-anderson-1984", "konis-2007", "santner-duffy-1986")
+    if companion(study, lead) is not None:
+        yield say("methods-penalised-beside", level=level), METHOD_REFERENCES["penalised"]
 
 
 def _described(study: StudyResults, lead: ModelResult) -> Iterator[Told]:

@@ -11,10 +11,11 @@ from oddsmodel.report.view.counted import ABOUT_ADJUSTMENT
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.report.view.tables import TableView
 from oddsmodel.results.figures import EstimatesFigure, FlowFigure
-from oddsmodel.results.lead import EXACT, exposures_shown, has_profile, is_estimated
+from oddsmodel.results.lead import EXACT, SEPARATED, exposures_shown, has_profile, is_estimated, is_told
 from oddsmodel.results.study import ModelResult, Role, StudyResults
 from oddsmodel.results.tables import Cell, Interval, Table, TableColumn
 from oddsmodel.wording import numbers, say
+from oddsmodel.wording.study_methods import METHOD_WORDS
 
 CRUDE_TABLES = ("levels", "crude_to_adjusted")
 
@@ -42,7 +43,8 @@ class CrudeView:
 
 @dataclass(frozen=True, slots=True)
 class OtherModelView:
-    """A model beside the one that answers, or one that could not be estimated (`estimates` None)."""
+    """A model beside the one that answers, or one that could not be estimated, or in part (`estimates` None where none
+    of it could). method: in words, where the models of the study differ in it."""
 
     id: str
     name: str
@@ -50,6 +52,8 @@ class OtherModelView:
     why: str
     added: str
     formula: str
+    method: str
+    heading: str
     estimates: EstimatesView | None
     picture: FigureView | None
     checks: ChecksView | None
@@ -110,6 +114,8 @@ def _lead(model: ModelResult) -> str:
         return "lead-grouped"
     if model.method == EXACT:
         return "lead-exact"
+    if model.status == SEPARATED:
+        return "lead-separated"
     if model.method in ("penalised", "log-F"):
         return f"lead-{model.method.lower()}"
     return "lead-profile" if has_profile(model) else "lead-wald"
@@ -230,19 +236,30 @@ def _terms_of_groups(model: ModelResult) -> Table:
 def other_models(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> tuple[OtherModelView, ...]:
     """The estimated models beside the one that answers."""
     return tuple(
-        _other(model, place, sheets)
+        _other(study, model, place, sheets)
         for place, model in enumerate(study.models)
         if model is not lead and is_estimated(model)
     )
 
 
-def not_estimated(study: StudyResults, sheets: Sheets) -> tuple[OtherModelView, ...]:
-    """The models that could not be estimated, in words."""
-    return tuple(_other(model, place, sheets) for place, model in enumerate(study.models) if not is_estimated(model))
+def not_estimated(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> tuple[OtherModelView, ...]:
+    """The models that could not be estimated, in words, but for the one that answers where it is told of in full."""
+    return tuple(
+        _other(study, model, place, sheets)
+        for place, model in enumerate(study.models)
+        if not is_estimated(model) and not (model is lead and is_told(model))
+    )
 
 
-def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
-    estimated = is_estimated(model)
+def method_beside(study: StudyResults, model: ModelResult) -> str:
+    """A model's method in words, where the models of the study are not all by maximum likelihood."""
+    if all(one.method == "maximum likelihood" for one in study.models):
+        return ""
+    return say("by-method", method=METHOD_WORDS[model.method])
+
+
+def _other(study: StudyResults, model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
+    estimated, told = is_estimated(model), is_told(model)
     picture = next((figure for figure in model.figures if isinstance(figure, EstimatesFigure)), None)
     return OtherModelView(
         id=f"model-{place + 1}",
@@ -251,11 +268,13 @@ def _other(model: ModelResult, place: int, sheets: Sheets) -> OtherModelView:
         why=say("model-why", why=model.why) if model.why else "",
         added=say("added-by-program") if model.added_by_program else "",
         formula=model.formula,
-        picture=sheets.figure(picture) if estimated and picture is not None and picture.marks else None,
-        estimates=estimates(model, sheets) if estimated or model.coefficients else None,
+        method=method_beside(study, model),
+        heading="heading-partly-estimated" if told else "heading-not-estimated",
+        picture=sheets.figure(picture) if told and picture is not None and picture.marks else None,
+        estimates=estimates(model, sheets) if told else None,
         checks=checks(model, sheets) if estimated else None,
         findings=model.findings,
-        status=say("partly-estimated" if model.coefficients else "not-estimated", status=model.status),
+        status=say("partly-estimated" if told else "not-estimated", status=model.status),
     )
 
 

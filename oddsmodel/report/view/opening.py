@@ -8,7 +8,7 @@ from oddsmodel.export.answer import MOST_ANSWERS, Answer, answers
 from oddsmodel.findings import Finding
 from oddsmodel.report.view.sheet import FigureView, Sheets
 from oddsmodel.results.figures import EstimatesFigure
-from oddsmodel.results.lead import exposures_shown, is_estimated
+from oddsmodel.results.lead import companion, exposures_shown, is_told
 from oddsmodel.results.study import ModelResult, StudyResults
 from oddsmodel.wording import say
 from oddsmodel.wording.report_answer import CASE_CONTROL, outcome_words
@@ -25,6 +25,8 @@ class OpeningView:
     basis: str
     sampling: str
     picture: FigureView | None
+    beside: tuple[str, str] | None
+    """Where in the page the model is that was added because this one has no finite answer, and its name."""
     stops: tuple[Finding, ...]
     warnings: tuple[Finding, ...]
     further_warnings: tuple[Finding, ...]
@@ -32,7 +34,10 @@ class OpeningView:
 
 def opening(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> OpeningView:
     more, basis, picture = "", "", None
-    if lead is not None and is_estimated(lead):
+    beside = None
+    if lead is not None and is_told(lead):
+        added = companion(study, lead)
+        beside = None if added is None else (f"model-{study.models.index(added) + 1}", added.name)
         number = len(exposures_shown(lead))
         more = say("answer-more", number=number) if number > MOST_ANSWERS else ""
         basis = say(
@@ -56,6 +61,7 @@ def opening(study: StudyResults, lead: ModelResult | None, sheets: Sheets) -> Op
         basis=basis,
         sampling=say("answer-case-control", outcome=outcome) if study.design in CASE_CONTROL else "",
         picture=picture,
+        beside=beside,
         stops=tuple(one for one in found if one.severity == "stop"),
         warnings=cautions[:MOST_WARNINGS],
         further_warnings=cautions[MOST_WARNINGS:],

@@ -14,12 +14,14 @@ MOST_DIGITS = 6
 
 @dataclass(frozen=True, slots=True)
 class CellView:
-    """`stem` is the beginning that a row has in common with the rows of its block, told apart so that it can recede."""
+    """`stem` is the beginning that a row has in common with the rows of its block, told apart so that it can recede.
+    wordy: numbers among so many words that they may be broken over lines."""
 
     text: str
     numeric: bool = False
     withheld: bool = False
     stem: str = ""
+    wordy: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,7 +74,8 @@ def _cell(cell: Cell, column: TableColumn, write: Callable[[Cell], str]) -> Cell
         return CellView("", numeric=column.kind != "text")
     if isinstance(cell, str):
         return CellView(cell, numeric=column.kind != "text")
-    return CellView(write(cell), numeric=True)
+    wordy = isinstance(cell, Interval) and (cell.lower is None or cell.upper is None)
+    return CellView(write(cell), numeric=True, wordy=wordy)
 
 
 def _writer(column: TableColumn, cells: Sequence[Cell]) -> Callable[[Cell], str]:

@@ -20,6 +20,7 @@ from oddsmodel.study.check import CheckedPlan
 from oddsmodel.study.prepare import VettedModels, vet_models
 from oddsmodel.study.streamed.gather import Gather
 from oddsmodel.study.streamed.records import StreamedRecords, prepare_streamed
+from oddsmodel.wording.plain import quoted
 
 FOR_MODELS = ("number", "category", "ordered", "yes-no")
 
@@ -62,6 +63,11 @@ def gather_of(stream: RecordStream, plan: StudyPlan, vetted: VettedModels) -> Ga
 
 
 def refuse_what_needs_memory(plan: StudyPlan, code: str = "needs-memory") -> None:
-    """InputFault of a code for keys of the plan whose work needs all records at once."""
-    if plan.records.grouped_by is not None:
-        raise InputFault(fault(code, "the plan, [records] grouped_by"))
+    """InputFault of a code for keys of the plan whose work needs all records at once; methods have codes of their own,
+    which begin with "method-"."""
+    faults = [] if plan.records.grouped_by is None else [fault(code, "the plan, [records] grouped_by")]
+    for model in plan.models:
+        if model.method in ("exact", "log-F"):
+            faults.append(fault(f"method-{code}", f"the plan, [[models]] {quoted(model.name)} method"))
+    if faults:
+        raise InputFault(faults)

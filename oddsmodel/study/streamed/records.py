@@ -185,7 +185,8 @@ def prepare_streamed(data: StreamedRecords, tallies: Sequence[Sequence[Tally]]) 
 
 
 def _number(prepared: Prepared) -> int:
-    return int(prepared.id.removeprefix("model-")) - 1
+    """The place of the plan's model that it is, or stands beside."""
+    return int(prepared.id.split("-")[1]) - 1
 
 
 @dataclass(frozen=True)

@@ -42,6 +42,13 @@ def text_of_rows(data: bytes, ends: Ends) -> Ends:
     return lengths
 
 
+def blank_lines(data: bytes, ends: Ends) -> NDArray[np.bool_]:
+    """Which rows have nothing but a line feed at their end."""
+    characters = np.frombuffer(data, dtype=np.uint8)
+    blank: NDArray[np.bool_] = (text_of_rows(data, ends) == 0) & (characters[ends - 1] == LINE_FEED)
+    return blank
+
+
 def _line_ends(data: bytes, characters: NDArray[np.uint8], final: bool) -> Ends:
     """Positions after each line end: a line feed with or without a return before it, or a return alone."""
     ends = np.flatnonzero(characters == LINE_FEED) + 1
@@ -82,9 +89,10 @@ def _one_by_one(data: bytes, lines: Ends, quotes: Ends, delimiter: int, final: b
         last = len(lines) if end is None else int(np.searchsorted(lines, end, side="right"))
         if last == len(lines):
             kept.append(lines[-1:] if final else lines[:0])
-            return np.concatenate(kept), broken or (line < len(lines) - 1) or (end is None and _is_broken(data))
+            broken = broken or bool(line < len(lines) - 1) or (end is None and _is_broken(data))
+            return np.concatenate(kept), broken
         kept.append(lines[last : last + 1])
-        broken, done = broken or last > line, last + 1
+        broken, done = broken or bool(last > line), last + 1
     kept.append(lines[done:])
     return np.concatenate(kept), broken
 
