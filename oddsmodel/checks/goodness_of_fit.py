@@ -117,7 +117,7 @@ def check(model: FittedModel) -> CheckResult:
 
     None of them rests on the intercept: in a case-control study they compare outcomes and probabilities among these
     records, for which a logistic model holds where it does for the population (Prentice & Pyke 1979, Biometrika
-    66:403-411). With many records the smallest misfit is found, so that its size decides: see `_verdict`.
+    66:403-411). With many records the smallest misfit is found, so that its size decides: see `Weighed`.
     """
     reason = _left_out(model)
     if reason is not None:

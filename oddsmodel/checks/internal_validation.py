@@ -30,7 +30,7 @@ BY_CONSTRUCTION = ("slope", "in_the_large")
 """On the records that a model with an intercept was fitted to these are 1 and 0, which says nothing."""
 
 MOST_RESAMPLES, FEWEST_RESAMPLES = 200, 20
-FOLDS, FEWEST_FOLDS = 10, 5
+FOLDS = 10
 RESAMPLES_A_REPEAT = 20
 """Cross-validation is repeated once for so many resamples: 10 times 10 folds beside 200 resamples."""
 

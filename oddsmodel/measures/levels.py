@@ -97,7 +97,10 @@ def levels(
             own = (row.adjusted, row.adjusted_interval) if adjusted else ()
             rows.append((row.label, row.records, row.events, *per_100, row.crude, row.crude_interval, *own))
             blocks.append(block)
-    note = say("levels-note" if adjusted else "levels-note-unadjusted")
+    by_likelihood = model.method == "maximum likelihood"
+    note = say("levels-note" if adjusted else "levels-note-unadjusted" if by_likelihood else "levels-note-other-method")
+    if adjusted and model.method == "exact":
+        note += " " + say("levels-note-exact")
     for term in dict.fromkeys(one.term for one in averages):
         label = next(model.columns[one.sources[0]].label for one in model.design.columns if one.term == term)
         note += " " + say("average-note", label=label, levels=sum(one.term == term for one in averages))

@@ -14,8 +14,8 @@ from oddsmodel.progress import Progress
 from oddsmodel.results.study import CoefficientResult, ExactResult, ProfileResult, WaldResult
 from oddsmodel.wording import finding, say
 
-BUDGET = Budget(seconds=None)
-"""Of states and bytes, not of time: whether there is an answer depends on the records alone."""
+BUDGET = Budget(seconds=None, work=5_000_000_000)
+"""About a minute for each odds ratio, without a clock: whether there is an answer depends on the records alone."""
 
 NUMBERS = ("log_odds_ratio", "standard_error", "odds_ratio", "wald", "profile")
 
@@ -31,7 +31,7 @@ class ExactEstimates:
 def exact_coefficients(model: FittedModel, crude: Mapping[int, Crude], progress: Progress) -> ExactEstimates:
     """The exposure's coefficients by exact conditional inference; all others are conditioned upon and have no number.
 
-    Refused beyond a budget of states and bytes, and where a column has so many values that nothing can be said.
+    Refused beyond the budget, and where a column has so many values that nothing can be said.
     """
     X, events, trials = model.binomial.rows_apart()
     found: list[CoefficientResult] = []
@@ -103,8 +103,8 @@ def _refused(beyond: BeyondBudget) -> Finding:
     return finding(
         "stop",
         "exact-beyond-budget",
-        memory=beyond.limit == "bytes",
-        budget=BUDGET.bytes if beyond.limit == "bytes" else BUDGET.states,
+        limit=beyond.limit,
+        budget={"states": BUDGET.states, "bytes": BUDGET.bytes}.get(beyond.limit, BUDGET.work),
         done=int(beyond.patterns_done),
         patterns=int(beyond.patterns),
         states=int(beyond.states),

@@ -107,6 +107,11 @@ SENTENCES: dict[str, Sentence] = {
         "Intervals are profile-likelihood limits, or Wald limits where there are none. The model adjusts for nothing, "
         "so its odds ratios are the crude ones."
     ),
+    "levels-note-other-method": (
+        "Crude odds ratios are by maximum likelihood, with profile-likelihood limits, or Wald limits where there are "
+        "none. The model adjusts for nothing; its own odds ratios, by another method, stand among the estimates."
+    ),
+    "levels-note-exact": "The adjusted intervals are exact.",
     "crude-beside-adjusted-note": (
         "Crude and adjusted rest on the same records. The difference of logs is the adjusted log odds ratio less the "
         "crude one; the change is that of the odds ratio, as a percentage of the crude one. Where more records have "

@@ -33,12 +33,15 @@ def _no_finite_estimate(facts: Mapping[str, Any]) -> str:
 
 
 def _beyond_budget(facts: Mapping[str, Any]) -> str:
-    budget = f"{facts['budget'] / 1e9:g} GB of memory" if facts["memory"] else f"{count(facts['budget'])} of them"
+    budget = facts["budget"]
+    allowed = f"{budget / 1e9:g} GB of memory" if facts["limit"] == "bytes" else f"{count(budget)} of them"
+    sums = f"{count(facts['states'])} partial sums"
+    did = f"had worked out {sums} in all" if facts["limit"] == "work" else f"would have had to hold {sums} at once"
     return (
         f"Exact inference was given up: after {count(facts['done'])} of "
-        f"{plural(facts['patterns'], 'covariate pattern')} it would have had to hold {count(facts['states'])} partial "
-        f"sums, more than its budget of {budget}. So many records, or so many different values, hardly need exact "
-        "limits: use the method penalised, or cut number columns into bands."
+        f"{plural(facts['patterns'], 'covariate pattern')} it {did}, more than its budget of {allowed}. So many "
+        "records, or so many different values, hardly need exact limits: use the method penalised, or cut number "
+        "columns into bands."
     )
 
 

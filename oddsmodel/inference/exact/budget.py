@@ -8,7 +8,7 @@ from typing import Literal
 
 from oddsmodel.errors import OddsmodelError
 
-Limit = Literal["states", "bytes", "seconds"]
+Limit = Literal["states", "bytes", "seconds", "work"]
 
 
 @dataclass(frozen=True, slots=True)
@@ -16,19 +16,21 @@ class Budget:
     """The most that one exact calculation may take.
 
     states: pairs of sums (of the nuisance columns, of the column of interest) held at once. bytes: memory for them.
-    seconds: by the clock; None for no limit, so that whether there is an answer does not depend on the machine.
+    seconds: by the clock; None for no limit, so that whether there is an answer does not depend on the machine. work:
+    states held, added up over all covariate patterns, which bounds the time on any machine; None for no limit.
     """
 
     states: int = 60_000_000
     bytes: int = 1_500_000_000
     seconds: float | None = 60.0
+    work: int | None = None
 
 
 class BeyondBudget(OddsmodelError):
     """The calculation was given up: `limit` says which part of the budget did not suffice.
 
     patterns_done of patterns covariate patterns were worked off; states: those held, or the number that would have
-    been needed for the next step where memory was the limit; seconds: time taken until then.
+    been needed for the next step where memory was the limit, or in all where work was; seconds: time taken until then.
     """
 
     def __init__(self, limit: Limit, patterns_done: int, patterns: int, states: int, seconds: float) -> None:
@@ -45,6 +47,7 @@ class Meter:
         self.patterns_done = 0
         self.most_states = 1
         self.elsewhere = 0
+        self.work = 0
         self._start = time.monotonic()
 
     def hold(self, states: int, size: int) -> None:
@@ -54,6 +57,9 @@ class Meter:
         if size + self.elsewhere > self.budget.bytes:
             self._give_up("bytes", states)
         self.most_states = max(self.most_states, states)
+        self.work += states
+        if self.budget.work is not None and self.work > self.budget.work:
+            self._give_up("work", self.work)
         self.look()
 
     def look(self) -> None:
