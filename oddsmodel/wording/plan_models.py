@@ -47,7 +47,7 @@ FAULTS: dict[str, tuple[Sentence, Sentence]] = {
     ),
     "log-f-without-prior": (
         "The method log-F needs a prior: how strong it is, and for which columns.",
-        'Add a line such as prior = {m = 2, columns = ["smoker"]}.',
+        'Add a line such as prior = {{m = 2, columns = ["smoker"]}}.',
     ),
     "prior-without-log-f": (
         "A prior is used by the method log-F alone.",
