@@ -34,8 +34,8 @@ def flac(likelihood: BinomialLikelihood, penalised: Fit) -> Array | None:
     records and 0 else, takes up what they say of the average risk ("FLAC": the same paper). Where the
     model has an intercept, the average predicted risk of the records is then the share of events observed.
 
-    likelihood: of the same rows without the penalty, in memory; penalised: its penalised fit, converged. None where
-    all records or none have the event.
+    likelihood: of the same rows without the penalty; penalised: its penalised fit, converged. The rows are brought into
+    memory, twice. None where all records or none have the event.
     """
     space = penalised.space
     plain = likelihood if space.to_beta is None else likelihood.transformed(space.to_beta)
@@ -43,26 +43,23 @@ def flac(likelihood: BinomialLikelihood, penalised: Fit) -> Array | None:
     if information is None:
         raise TypeError("hat values need the information")
     inverse = solve(information[0], np.eye(len(information[0])))
-    X, events, trials = plain.rows_apart()
-    hat = np.concatenate(list(plain.passes.each(_hat_values, (penalised.working, inverse))))
+    tasks = list(plain.passes.each(_with_hat_values, (penalised.working, inverse)))
+    X, events, trials, offset, hat = (np.concatenate(parts) for parts in zip(*tasks, strict=True))
     twice = np.zeros((2 * len(X), X.shape[1] + 1))
     twice[: len(X), :-1] = twice[len(X) :, :-1] = X
     twice[len(X) :, -1] = 1.0
-    offsets = list(plain.passes.each(_offsets))
-    offset = None if offsets[0] is None else np.tile(np.concatenate(offsets), 2)
-    both = BinomialLikelihood(twice, np.concatenate([events, hat / 2.0]), np.concatenate([trials, hat]), offset)
+    both = BinomialLikelihood(
+        twice, np.concatenate([events, hat / 2.0]), np.concatenate([trials, hat]), np.tile(offset, 2)
+    )
     fit = maximise(both)
     return space.beta(fit.coefficients[:-1]) if fit.status == "converged" else None
 
 
-def _hat_values(rows: Leaf, first: int, state: tuple[Array, Array]) -> Array:
-    """n mu (1 - mu) x'I^-1 x of each row, from the coefficients and the inverse information."""
+def _with_hat_values(rows: Leaf, first: int, state: tuple[Array, Array]) -> tuple[Array, Array, Array, Array, Array]:
+    """X, events, trials, offset and n mu (1 - mu) x'I^-1 x of the rows, from coefficients and inverse information."""
     beta, inverse = state
-    X = rows["X"]
-    small, whole, _ = logistic(X @ beta + rows.get("offset", 0.0))
-    weight = small / (whole * whole) * rows.get("trials", 1.0)
-    return np.asarray(weight * np.einsum("ij,ij->i", X @ inverse, X))
-
-
-def _offsets(rows: Leaf, first: int, state: None) -> Array | None:
-    return rows.get("offset")
+    X, events = rows["X"], rows["events"]
+    trials, offset = rows.get("trials", np.ones(len(X))), rows.get("offset", np.zeros(len(X)))
+    small, whole, _ = logistic(X @ beta + offset)
+    hat = trials * small / (whole * whole) * np.einsum("ij,ij->i", X @ inverse, X)
+    return X, events, trials, offset, hat

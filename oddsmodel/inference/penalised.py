@@ -19,6 +19,9 @@ WEAKER = (1.0 / 16.0, 1.0 / 4.0)
 SLIGHT = 0.01
 """Change of the curvature by the penalty, relative to the information, below which one search is enough."""
 
+CONVEX = 0.005
+"""The same for the convex part of that change alone, on the slices of a profile."""
+
 SAME_PLACE = 1e-4
 """Distance, in standard errors, within which two searches have ended at one maximum."""
 
@@ -30,17 +33,24 @@ NEARBY = 4.0
 class PenalisedFit:
     """fit: at the highest maximum found. lower_maximum: another one little lower, where a search ended there.
 
-    bend: the largest change of the curvature at the maximum by the penalty, relative to the expected information.
+    bend, convex: the largest change of the curvature at the maximum by the penalty, relative to the expected
+    information, and that by the convex part of its Hessian, which alone makes further maxima.
     """
 
     fit: Fit
     lower_maximum: Fit | None
-    bend: float = 0.0
+    bend: float = np.inf
+    convex: float = np.inf
 
     @property
     def slight(self) -> bool:
-        """Whether the penalty changes so little that its value is taken to have one maximum."""
-        return self.bend < SLIGHT
+        """Whether the penalty bends so little that every slice is taken to have one maximum.
+
+        Among 3,258 simulated data sets of 10 to 300 records, with normal or long-tailed columns, whole numbers or 0 and
+        1, the 412 where a slice at a limit had a higher one had a bend of 0.026 or more and a convex part of 0.015 or
+        more.
+        """
+        return self.bend < SLIGHT or self.convex < CONVEX
 
 
 def maximise_penalised(
@@ -62,17 +72,16 @@ def maximise_penalised(
     if first.status == "aliased":
         return PenalisedFit(first, None)
     if first.status == "converged":
-        fit, bend = _with_expected_covariance(first, basis)
-        if bend < SLIGHT:
-            return PenalisedFit(fit, None, bend)
+        alone = _described(first, basis, None)
+        if alone.bend < SLIGHT:
+            return alone
     ends = highest_maxima(likelihood, [Problem(basis, origin, first.coefficients)])[0]
     if not ends:
         return PenalisedFit(first, None)
     best = ends[0]
     others = (end for end in ends[1:] if best.log_likelihood - end.log_likelihood <= NEARBY)
     lower = next((end for end in others if _distance(best, end) > SAME_PLACE), None)
-    fit, bend = _with_expected_covariance(best, basis)
-    return PenalisedFit(fit, None if lower is None else _with_expected_covariance(lower, basis)[0], bend)
+    return _described(best, basis, lower)
 
 
 def highest_maxima(
@@ -83,9 +92,9 @@ def highest_maxima(
     They begin at the problem's start; at the point of its space with the smallest linear predictors, where the penalty
     alone is about largest; at the end of a path from a sixteenth and a quarter of the penalty, which comes from the
     side of the likelihood; halfway between the last two; and at `begin`, one point for each problem, if given. Together
-    they miss the highest maximum known in one of 130 problems with long-tailed columns of 6 to 40 records (a single
-    search: one of 12), and in none with columns of 0 and 1. That is as much as searches can do: they prove no maximum
-    to be the highest.
+    they missed the highest maximum known in one of 130 slices of simulated data of 6 to 40 records with normal or
+    long-tailed columns (a single search: in one of 12). That is as much as searches can do: they prove no maximum to be
+    the highest.
     """
     least = [_smallest(likelihood, problem) for problem in problems]
     path: list[Array] = [point if one.start is None else one.start for one, point in zip(problems, least, strict=True)]
@@ -126,24 +135,23 @@ def _distance(one: Fit, other: Fit) -> float:
     return float(np.sqrt(np.maximum(0.0, apart @ one.working_information @ apart)))
 
 
-def _with_expected_covariance(fit: Fit, basis: Array | None) -> tuple[Fit, float]:
-    """The fit with the inverse of the likelihood's expected information, on the space of the basis, as covariance.
-
-    With it, the largest change of the curvature by the penalty in that space, relative to that information.
-    """
+def _described(fit: Fit, basis: Array | None, lower: Fit | None) -> PenalisedFit:
+    """The fit with the inverse of the expected information, on the space of the basis, as its covariance."""
     space, working = fit.space, fit.space.working
     if not isinstance(working, JeffreysPenalisedLikelihood):
         raise TypeError("a fit of a penalised likelihood is needed")
-    information = working.expected_information(fit.working)
+    information, penalty, convex = working.parts_of_curvature(fit.working)
     moved = np.eye(len(information)) if basis is None else space.gamma(np.asarray(basis, dtype=np.float64).T).T
-    reduced = moved.T @ information @ moved
-    inverse = solve(reduced, np.eye(len(reduced)))
+    inverse = solve(moved.T @ information @ moved, np.eye(moved.shape[1]))
     values, vectors = np.linalg.eigh(inverse)
-    root = vectors * np.sqrt(np.maximum(values, 0.0))
-    change = root.T @ (moved.T @ fit.working_information @ moved - reduced) @ root
-    bend = float(np.abs(np.linalg.eigvalsh(change)).max(initial=0.0))
+    root = moved @ (vectors * np.sqrt(np.maximum(values, 0.0)))
+    bend, arched = (
+        np.inf if part is None else float(np.abs(np.linalg.eigvalsh(root.T @ part @ root)).max(initial=0.0))
+        for part in (penalty, convex)
+    )
     covariance = moved @ inverse @ moved.T
     if space.to_beta is not None and space.from_beta is not None:
         covariance = space.to_beta @ covariance @ space.to_beta.T
         information = space.from_beta.T @ information @ space.from_beta
-    return replace(fit, information=information, covariance=(covariance + covariance.T) / 2.0), bend
+    expected = replace(fit, information=information, covariance=(covariance + covariance.T) / 2.0)
+    return PenalisedFit(expected, lower, bend, arched)

@@ -32,8 +32,8 @@ def profile_penalised(found: PenalisedFit, contrasts: Array, level: float = 0.95
     among simulated data of 6 to 40 records with normal or long-tailed columns, one limit in twenty. So every slice is
     maximised anew by the searches of `highest_maxima`, one of them from the quadratic approximation at the maximum. A
     point below what they reach is no limit; the limit is then sought further out, by Brent's method on the highest of
-    the maxima, from the outermost point known to belong to the interval. Where the penalty changes the curvature at
-    the maximum by less than one per cent, as in large data without sparse columns, the steps are taken at their word.
+    the maxima, from the outermost point known to belong to the interval. Where the penalty bends too little for
+    further maxima (`PenalisedFit.slight`), as in large data, the steps are taken at their word.
 
     Raises ValueError where the fit has not converged on the whole space or level is not between 0 and 1.
     """

@@ -29,12 +29,15 @@ class TraceDerivatives:
 
     gradient (k, p): tr(M dI/dbeta_a). Where asked for, hessian (k, p, p): tr(M d2I/dbeta_a dbeta_b), and products
     (k, p, p): tr(M dI/dbeta_a M dI/dbeta_b). With M the inverse information these are the gradient of log|I| and the
-    two parts of its Hessian, `hessian - products`. The last two guide steps and may be approximate.
+    two parts of its Hessian, `hessian - products`. squares (k, p, p), where the information is a sum over rows of
+    w x x': the sum of w'^2/w (x'Mx) x x', so that `squares - products` is the convex part of that Hessian. The last
+    three guide steps and searches and may be approximate.
     """
 
     gradient: Array
-    hessian: Array | None
-    products: Array | None
+    hessian: Array | None = None
+    products: Array | None = None
+    squares: Array | None = None
 
 
 class Likelihood(Protocol):

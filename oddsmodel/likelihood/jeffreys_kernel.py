@@ -19,8 +19,9 @@ def trace_derivatives(passes: Passes, beta: Array, roots: Array, second: bool) -
     """The derivatives of `TraceDerivatives` for binomial rows at beta (k, p) with M = R R', R of roots (k, p, r)."""
     answer = passes.reduce([_TraceKernel(roots, second)], beta)[0]
     if not second:
-        return TraceDerivatives(answer[0], None, None)
-    return TraceDerivatives(answer[0], answer[1], np.matmul(answer[2], answer[2].transpose(0, 2, 1)))
+        return TraceDerivatives(answer[0])
+    gradient, hessian, squares, tensor = answer
+    return TraceDerivatives(gradient, hessian, np.matmul(tensor, tensor.transpose(0, 2, 1)), squares)
 
 
 class _TraceKernel:
@@ -29,8 +30,9 @@ class _TraceKernel:
         w' = w (1 - 2 mu),    w'' = w ((1 - 2 mu)^2 - 2 mu (1 - mu)),
 
     its derivatives in the linear predictor: the gradient sum w' (z'z) x (k, p); where asked, the Hessian
-    sum w'' (z'z) x x' (k, p, p) and the tensor sum w' x (z z') (k, p, r(r+1)/2), packed by the upper triangle with
-    off-diagonal entries times the root of 2, so that its own inner product is that of whole matrices.
+    sum w'' (z'z) x x', the squares sum w'^2/w (z'z) x x' (k, p, p each) and the tensor sum w' x (z z')
+    (k, p, r(r+1)/2), packed by the upper triangle with off-diagonal entries times the root of 2, so that its own inner
+    product is that of whole matrices.
 
     Second derivatives only guide steps. With M the inverse information, the rows of z'z <= q left out of them change
     the Hessian of log|I|, in units of the information, by at most q, and the square of their part of the tensor is at
@@ -57,7 +59,7 @@ class _TraceKernel:
                 weight *= rows["trials"][:, None]
         slope = 1.0 - 2.0 * risk
         gradient = np.zeros((k, p))
-        hessian = np.zeros((k, p, p))
+        hessian, squares = np.zeros((k, p, p)), np.zeros((k, p, p))
         tensor = np.zeros((k, p, self.first.size))
         for one in np.flatnonzero(self.roots.any(axis=(1, 2))):
             Z = X @ self.roots[one]
@@ -70,8 +72,11 @@ class _TraceKernel:
             for start in range(0, heavy.size, self.step):
                 some = heavy[start : start + self.step]
                 x, z = X[some], Z[some]
-                curve = weight[some, one] * (1.0 - 6.0 * risk[some, one] * (1.0 - risk[some, one])) * reach[some]
-                hessian[one] += x.T @ (x * curve[:, None])
+                square = slope[some, one] ** 2
+                share = weight[some, one] * reach[some]
+                squares[one] += x.T @ (x * (share * square)[:, None])
+                # 2 mu (1 - mu) is (1 - (1 - 2 mu)^2) / 2
+                hessian[one] += x.T @ (x * (share * (1.5 * square - 0.5))[:, None])
                 pairs = z[:, self.first] * z[:, self.other] * self.twice
                 tensor[one] += (x * first[some, None]).T @ pairs
-        return (gradient, hessian, tensor) if self.second else (gradient,)
+        return (gradient, hessian, squares, tensor) if self.second else (gradient,)

@@ -34,12 +34,12 @@ class JeffreysPenalisedLikelihood:
 
         - 2 sum h_ii mu_i (1 - mu_i) x_i x_i' + 1/2 sum_ij h_ij^2 (d_i x_i - d_j x_j)(d_i x_i - d_j x_j)',
 
-    and its second sum, though mostly small, can win. Columns of 0 and 1 have not been seen to give two maxima; columns
-    with far-out values do. Use `oddsmodel.inference.maximise_penalised`, which looks for a second one.
+    and its second sum, though mostly small, can win. Two maxima are seen with values far out, hardly ever with columns
+    of 0 and 1. `maximise_penalised` and `profile_penalised` of the inference floor look for them.
 
     The information given is minus the exact Hessian, its eigenvalues relative to I raised to 0.1 where they are
-    smaller, so that every step goes up and steps near a maximum are Newton's. `expected_information` is I, whose
-    inverse is by convention the estimate's covariance (Heinze & Schemper 2002, section 2).
+    smaller, so that every step goes up and steps near a maximum are Newton's. By convention the estimate's covariance
+    is not its inverse, but that of I (Heinze & Schemper 2002, section 2): see `maximise_penalised`.
 
     The value is minus infinity where the information is singular.
     """
@@ -98,12 +98,20 @@ class JeffreysPenalisedLikelihood:
         """A matrix (..., p, p) of second derivatives in the coefficients of the subspace."""
         return matrix if self.within is None else self.within.T @ matrix @ self.within
 
-    def expected_information(self, beta: Array) -> Array:
-        """The information (p, p) of the likelihood alone at beta (p,)."""
-        plain = self.likelihood.evaluate(self._points(beta))
-        if plain.information is None:
+    def parts_of_curvature(self, beta: Array) -> tuple[Array, Array | None, Array | None]:
+        """At beta (p,): the expected information (p, p) of the likelihood alone, the Hessian of the penalty, and the
+        convex part of that Hessian; None for what the likelihood does not give."""
+        points = self._points(beta)
+        information = self.likelihood.evaluate(points).information
+        if information is None:
             raise TypeError("the penalty needs the information")
-        return self._both(plain.information[0])
+        roots, _ = _inverse_roots(information, VANISHED * np.diag(self.likelihood.gram()))
+        change = self.likelihood.trace_derivatives(points, roots, second=True)
+        parts = [
+            None if part is None or change.products is None else self._both(self.power * (part[0] - change.products[0]))
+            for part in (change.hessian, change.squares)
+        ]
+        return self._both(information[0]), parts[0], parts[1]
 
     def with_power(self, power: float) -> JeffreysPenalisedLikelihood:
         """The same rows with another power of the penalty."""

@@ -38,7 +38,7 @@ def check_models(models: Mapping[int, ModelSection], written: Sequence[Any], at:
         for key, terms in (("add", model.add), ("leave_out", model.leave_out)):
             yield from _repeated(terms, at("models", position, key), "change-repeated", "term")
         yield from _repeated(model.trend, at("models", position, "trend"), "trend-repeated", "column")
-        yield from _method(position, model, settled, at)
+        yield from _method(position, model, given, settled, at)
         if position == 0 and model.role is not None:
             yield fault("role-of-the-first", at("models", position, "role"))
 
@@ -59,11 +59,15 @@ def methods(models: Mapping[int, ModelSection]) -> dict[int, tuple[Method | None
 
 
 def _method(
-    position: int, model: ModelSection, settled: Mapping[int, tuple[Method | None, Prior | None]], at: At
+    position: int,
+    model: ModelSection,
+    given: Mapping[str, Any],
+    settled: Mapping[int, tuple[Method | None, Prior | None]],
+    at: At,
 ) -> Iterator[Fault]:
-    """A prior and the method that uses it belong together."""
+    """A prior and the method that uses it belong together. given: the model as written, with keys at fault."""
     method, prior = settled[position]
-    if model.method == "log-F" and prior is None:
+    if model.method == "log-F" and prior is None and "prior" not in given:
         yield fault("log-f-without-prior", at("models", position, "method"))
     if model.prior is not None:
         where = at("models", position, "prior")

@@ -83,8 +83,11 @@ def answer(checked: CheckedPlan, progress: Progress | None = None) -> tuple[Stud
 
 
 def _penalised_beside(prepared: Prepared, found: Fitted) -> Prepared | None:
-    """The same model by penalised likelihood, where the plan named no method and maximum likelihood has no answer."""
-    if found.status != "no finite maximum" or prepared.section.method is not None:
+    """The same model by penalised likelihood, where the plan named no method and maximum likelihood has no answer.
+
+    None for records that belong to groups, which have no likelihood to penalise.
+    """
+    if found.separated is None or prepared.section.method is not None:
         return None
     name = say("penalised-name", name=prepared.section.name)
     changes = {"name": name, "method": "penalised", "based_on": prepared.section.name, "trend": ()}

@@ -5,6 +5,7 @@ from __future__ import annotations
 from oddsmodel.likelihood import JeffreysPenalisedLikelihood
 from oddsmodel.measures.risks import QUANTITY
 from oddsmodel.model.fitted import FittedModel
+from oddsmodel.model.rows import MOST_PATTERNS
 from oddsmodel.results.tables import Table, TableColumn
 from oddsmodel.wording import say
 
@@ -23,11 +24,14 @@ def corrected_intercepts(model: FittedModel) -> tuple[Table, ...]:
         TableColumn("method", "Intercept"),
         TableColumn("intercept", "Log odds", "number"),
     )
-    augmented = flac(model.binomial, model.fit) if model.held is not None else None
-    rows = (
+    kept = flic(model.binomial, model.fit.coefficients, constant)
+    # covariate patterns are in memory, wherever the records are
+    augmented = flac(model.binomial, model.fit) if model.rows.number <= MOST_PATTERNS else None
+    found = (
         ("Penalised likelihood", float(model.fit.coefficients[constant])),
-        ("Corrected, other coefficients kept (FLIC)", flic(model.binomial, model.fit.coefficients, constant)),
+        ("Corrected, other coefficients kept (FLIC)", kept),
         ("From augmented records (FLAC)", None if augmented is None else float(augmented[constant])),
     )
+    rows = tuple(row for row in found if row[1] is not None)
     note = say("corrected-intercept-note")
     return (Table("corrected_intercept", say("corrected-intercept-table"), columns, rows, note),)

@@ -61,7 +61,7 @@ def estimate(
     findings = (
         *fitted.findings,
         *of_method(model, prepared),
-        *near_the_edge(model, found, tests.tests),
+        *near_the_edge(model, found),
         *common_outcome(model),
         *adjustment_findings(plan.study.design, adjusted),
     )

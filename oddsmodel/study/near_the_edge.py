@@ -7,11 +7,12 @@ from collections.abc import Sequence
 
 from oddsmodel.findings import Finding
 from oddsmodel.inference.penalised import maximise_penalised
+from oddsmodel.inference.wald_failure import wald_failure
 from oddsmodel.likelihood import JeffreysPenalisedLikelihood
 from oddsmodel.likelihood.log_f import prior_interval
 from oddsmodel.measures.scale import exponential
 from oddsmodel.model.fitted import FittedModel
-from oddsmodel.results.study import CoefficientResult, TermTest
+from oddsmodel.results.study import CoefficientResult
 from oddsmodel.study.prepare import Prepared
 from oddsmodel.study.priors import prior_positions
 from oddsmodel.wording import finding
@@ -25,8 +26,6 @@ BIAS = math.log(1.1)
 
 APART = 0.25
 """Distance of a profile limit from its Wald limit, in standard errors, from which it is told (common practice)."""
-
-SEEN, UNSEEN = 0.01, 0.05
 
 
 def of_method(model: FittedModel, prepared: Prepared) -> tuple[Finding, ...]:
@@ -42,11 +41,9 @@ def of_method(model: FittedModel, prepared: Prepared) -> tuple[Finding, ...]:
     return tuple(told)
 
 
-def near_the_edge(
-    model: FittedModel, found: Sequence[CoefficientResult], tests: Sequence[TermTest]
-) -> tuple[Finding, ...]:
+def near_the_edge(model: FittedModel, found: Sequence[CoefficientResult]) -> tuple[Finding, ...]:
     """Sparse-data bias, intervals that disagree, and Wald tests that fail, of the exposure's odds ratios."""
-    if model.method != "maximum likelihood" or model.grouping is not None:
+    if not model.at_maximum_likelihood or model.grouping is not None:
         return ()
     told: list[Finding] = []
     parameters = max(1, len(model.design.columns) - 1)
@@ -54,9 +51,15 @@ def near_the_edge(
     shown = [position for position in model.exposure_indices if model.design.columns[position].shown]
     if fewest < FEW_EVENTS * parameters and model.rows.number <= MOST_ROWS and shown:
         told.extend(_bias(model, shown))
-    for position in shown:
-        told.extend(_disagreement(found[position]))
-        told.extend(_wald_that_fails(found[position], tests))
+    apart = {position: _distance(found[position]) for position in shown}
+    far = [position for position in shown if apart[position] >= APART]
+    # where profile and Wald limits agree, the Wald test says what the likelihood says
+    falling = wald_failure(model.fit).falling if far else None
+    for position in far:
+        label = found[position].label
+        told.append(finding("note", "limits-disagree", label=label, distance=apart[position]))
+        if falling is not None and falling[position]:
+            told.append(finding("caution", "wald-fails", label=label))
     return tuple(told)
 
 
@@ -74,21 +77,11 @@ def _bias(model: FittedModel, shown: Sequence[int]) -> list[Finding]:
     return told
 
 
-def _disagreement(one: CoefficientResult) -> list[Finding]:
-    error = one.standard_error
-    if not error:
-        return []
+def _distance(one: CoefficientResult) -> float:
+    """How far the profile limits are from the Wald limits at most, in standard errors."""
+    if not one.standard_error:
+        return 0.0
     pairs = ((one.profile.lower, one.wald.lower), (one.profile.upper, one.wald.upper))
-    apart = [abs(math.log(limit / other)) / error for limit, other in pairs if limit and other]
-    distance = max(apart, default=0.0)
-    return [finding("note", "limits-disagree", label=one.label, distance=distance)] if distance >= APART else []
-
-
-def _wald_that_fails(one: CoefficientResult, tests: Sequence[TermTest]) -> list[Finding]:
-    """Hauck & Donner 1977, Journal of the American Statistical Association 72:851-853: the Wald statistic of a large
-    effect falls as the effect grows. Told of a term of one coefficient that the likelihood ratio sees clearly."""
-    test = next((test for test in tests if test.term == one.term and test.df == 1), None)
-    if test is None or test.p is None or one.wald.p is None:
-        return []
-    fails = test.p < SEEN and one.wald.p > UNSEEN
-    return [finding("caution", "wald-fails", label=one.label)] if fails else []
+    return max(
+        (abs(math.log(limit / other)) / one.standard_error for limit, other in pairs if limit and other), default=0.0
+    )

@@ -108,8 +108,8 @@ SENTENCES: dict[str, Sentence] = {
     "from 1 on average (Greenland, Mansournia & Altman 2016), and here an odds ratio by penalised likelihood is "
     "noticeably nearer to it.",
     "limits-disagree": _disagree,
-    "wald-fails": "{label}: the Wald test does not see what the likelihood-ratio test sees, as happens with large "
-    "effects (Hauck & Donner 1977): go by the likelihood ratio and the profile interval.",
+    "wald-fails": "{label}: the odds ratio is so far from 1 that its Wald statistic no longer grows with it (Hauck & "
+    "Donner 1977), and the Wald p-value is too large. Go by the likelihood-ratio test and the profile interval.",
     "prior-in-words": _prior,
     "corrected-intercept-table": "Intercepts for predicted risks",
     "corrected-intercept-note": "Penalised likelihood pulls predicted risks towards one half on average. With the "

@@ -40,9 +40,11 @@ def test_stages_are_drawn_on_a_terminal(monkeypatch: pytest.MonkeyPatch, colour:
         progress.stage("fitting", 2)
         progress.advance()
         progress.advance(5)
+        progress.stage("counting outcomes", 3)
+        progress.advance()
         progress.stage("[red]unforeseen", 0)
     drawn = terminal.getvalue()
-    for words in ("Reading the records", "Fitting the models", "[red]unforeseen"):
+    for words in ("Reading the records", "Fitting the models", "Counting outcomes", "[red]unforeseen"):
         assert words in drawn
     assert ("\x1b[38" in drawn) is colour
     last_picture = drawn[drawn.rindex("Reading the records") :]

@@ -105,6 +105,9 @@ def test_collapsed_rows_and_offsets_are_reckoned_with() -> None:
         for likelihood in (apart, collapsed)
     )
     assert one == pytest.approx(other, abs=1e-9)
+    made = BinomialLikelihood.over(apart.passes.mapped(dict), 3)  # rows made anew in every pass
+    again = flac(made, maximise_penalised(JeffreysPenalisedLikelihood(made)).fit)
+    assert again == pytest.approx(one, abs=1e-12)
     offset = rng.normal(size=40)
     shifted = BinomialLikelihood(X, y, offset=offset)
     fit = maximise_penalised(JeffreysPenalisedLikelihood(shifted)).fit

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+from dataclasses import replace
 from pathlib import Path
 
 import mpmath
@@ -218,6 +219,22 @@ def test_where_the_penalty_is_slight_one_search_is_enough() -> None:
     assert np.array_equal(limits.lower, steps.lower)
     plain = maximise(BinomialLikelihood(X, y))
     assert found.fit.coefficients == pytest.approx(plain.coefficients, abs=1e-3)
+
+
+def test_a_sparse_cell_of_large_data_bends_but_makes_no_further_maxima() -> None:
+    # the penalty of one cell is concave: the limits are those that all searches give
+    rng = np.random.default_rng(12)
+    X = np.column_stack([np.ones(5000), rng.normal(size=5000), np.arange(5000) < 8])
+    y = (rng.random(5000) < 0.3).astype(float)
+    y[:8] = 0.0
+    found = maximise_penalised(JeffreysPenalisedLikelihood(BinomialLikelihood(X, y)))
+    assert found.bend > 0.1
+    assert found.slight
+    assert found.lower_maximum is None
+    quick = profile_penalised(found, np.eye(3))
+    searched = profile_penalised(replace(found, bend=1.0, convex=1.0), np.eye(3))
+    assert quick.lower == pytest.approx(searched.lower, abs=1e-7)
+    assert quick.upper == pytest.approx(searched.upper, abs=1e-7)
 
 
 def test_raw_powers_of_a_calendar_year() -> None:

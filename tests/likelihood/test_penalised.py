@@ -88,6 +88,10 @@ def test_derivatives_of_the_trace_against_differences() -> None:
         changes = [(information(beta[k] + 1e-5 * e) - information(beta[k] - 1e-5 * e)) / 2e-5 for e in np.eye(3)]
         products = [[np.trace(M @ one @ M @ other) for one in changes] for other in changes]
         assert found.products[k] == pytest.approx(np.array(products), rel=1e-4, abs=1e-4)
+        risk = 1 / (1 + np.exp(-X @ beta[k] - offset))
+        squares = trials * risk * (1 - risk) * (1 - 2 * risk) ** 2 * np.einsum("ij,jk,ik->i", X, M, X)
+        assert found.squares is not None
+        assert found.squares[k] == pytest.approx(X.T @ (X * squares[:, None]), rel=1e-9)
 
 
 def test_the_information_given_is_minus_the_exact_hessian() -> None:
