@@ -1,6 +1,6 @@
 """Whether Spiegelhalter's test keeps its level on the records fitted, and whether validation tells the truth.
 
-Run with `.venv/bin/python tests/studies/prediction_null.py` (some fifteen minutes on two processors; `--replications`
+Run with `.venv/bin/python tests/studies/prediction_null.py` (some ten minutes on two processors; `--replications`
 makes it shorter). It writes its tables to prediction_null.md beside it, and ends with status 1 where a share or a mean
 lies outside its band.
 
