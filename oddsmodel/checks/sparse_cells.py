@@ -45,8 +45,10 @@ def check(model: FittedModel) -> CheckResult:
     findings: list[Finding] = []
     if exposure:
         exact = model.method == "exact"
+        # of a separated model the same is said already, and more
+        quiet = exact or model.fit.status != "converged"
         findings.append(
-            finding("note" if exact else "caution", "sparse-exposure-levels", levels=exposure, few=FEW, exact=exact)
+            finding("note" if quiet else "caution", "sparse-exposure-levels", levels=exposure, few=FEW, exact=exact)
         )
     if adjustment:
         findings.append(finding("note", "sparse-adjustment-levels", levels=adjustment, few=FEW))

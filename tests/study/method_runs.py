@@ -44,6 +44,8 @@ COLUMNS = {
     "ward": 'kind = "category"\nlevels = ["A", "B", "C"]',
 }
 
+ORDERED = 'kind = "ordered"\nlevels = ["A", "B", "C"]'
+
 HALF_QUANTILE = float(stats.chi2.ppf(0.95, 1)) / 2.0
 
 

@@ -19,6 +19,8 @@ from oddsmodel.cli.run import run_command
 from oddsmodel.export.results_json import results_schema
 from oddsmodel.model import rows
 from oddsmodel.study import check
+from oddsmodel.wording import say
+from oddsmodel.wording.inference import PROOFS
 
 sys.path.insert(0, str(Path(__file__).parent))
 from method_runs import (
@@ -150,6 +152,19 @@ def test_the_proof_and_the_pattern_are_told(tmp_path: Path) -> None:
     words = stop_of(results["models"][0])["message"]
     # the reference is separated, and so are all contrasts with it
     assert "None of the records with “ward: C” is a case. Every record with “ward: A” is one." in words
+
+
+@pytest.mark.parametrize("proof", ["exact", "within rounding", "too many columns", "too many steps"])
+def test_how_far_the_proof_was_checked_is_said(proof: str) -> None:
+    facts = {"rising": ["dose"], "falling": [], "undetermined": ["ward"], "without": [], "always": ["dose: high"]}
+    facts |= {"higher": [], "lower": ["age"]}
+    words = say("separated", **facts, complete=False, proof=proof, limits=True, case_control=False)
+    assert PROOFS[proof] in words
+    assert ("in exact arithmetic." in words) == (proof in ("exact", "too many columns"))
+    assert "Every record with “dose: high” has the event." in words
+    assert "The values of “age” are all lower among records with the event than among the others." in words
+    assert "the odds ratio of dose rises without end" in words
+    assert "do not settle which way ward would go" in words
 
 
 def test_separation_by_several_columns_together_names_none(tmp_path: Path) -> None:
